@@ -1,0 +1,73 @@
+use nalgebra::DMatrix;
+
+use super::{Gaussian, Support};
+
+/// The marginal of a Gaussian on some of its components, and the way back.
+///
+/// A sensor that reads 2 of 6 state components needs 2 dimensions of points. The cross-covariance of the
+/// others follows exactly, because x_o given x_a is linear in x_a: C_o = P_oa P_aa^+ C_a.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Marginal {
+    law: Gaussian,
+    lift: Option<DMatrix<f64>>,
+}
+
+impl Marginal {
+    /// The marginal of `law` (n) on the components `kept` (a), in their order.
+    ///
+    /// # Panics
+    /// If an index in `kept` is not below n or stands twice.
+    #[track_caller]
+    pub fn new(law: &Gaussian, kept: &[usize]) -> Self {
+        let n = law.dimension();
+        assert!(kept.iter().all(|&i| i < n), "components {kept:?} of a state of {n}");
+        assert!((1..kept.len()).all(|i| !kept[..i].contains(&kept[i])), "a component stands twice in {kept:?}");
+        if kept.iter().copied().eq(0..n) {
+            return Self { law: law.clone(), lift: None };
+        }
+        let mean = law.mean().select_rows(kept);
+        let p = law.covariance();
+        let block = p.select_rows(kept).select_columns(kept);
+        let support = Support::of(&block);
+        // P_xa P_aa^+ with P_aa^+ = W'W; on the kept components themselves this is the projection on the
+        // support, which leaves every C_a of a measurement as it is, so identity stands there exactly.
+        let mut lift = p.select_columns(kept) * support.whitener().transpose() * support.whitener();
+        for (column, &i) in kept.iter().enumerate() {
+            lift.row_mut(i).fill(0.0);
+            lift[(i, column)] = 1.0;
+        }
+        Self { law: Gaussian::from_checked(mean, block), lift: Some(lift) }
+    }
+
+    /// The marginal law (a components).
+    pub fn law(&self) -> &Gaussian {
+        &self.law
+    }
+
+    /// The cross-covariance of the whole state (n x p) from that of the kept components (a x p).
+    pub fn lift(&self, cross_covariance: DMatrix<f64>) -> DMatrix<f64> {
+        match &self.lift {
+            None => cross_covariance,
+            Some(lift) => lift * cross_covariance,
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use nalgebra::{dmatrix, dvector};
+
+    #[test]
+    fn the_lift_is_the_regression_of_the_others() {
+        let p = dmatrix![4.0, 0.6, 1.2; 0.6, 9.0, -0.3; 1.2, -0.3, 1.0];
+        let law = Gaussian::new(dvector![1.0, 2.0, 3.0], p.clone()).unwrap();
+        let marginal = Marginal::new(&law, &[2, 0]);
+        assert_eq!(marginal.law().mean(), &dvector![3.0, 1.0]);
+        // A linear reading h x of components 2 and 0 has C = P h' on the whole state.
+        let h_full = dvector![-0.5, 0.0, 2.0];
+        let c_kept = marginal.law().covariance() * dvector![2.0, -0.5];
+        let c = marginal.lift(DMatrix::from_column_slice(2, 1, c_kept.as_slice()));
+        assert!((c.column(0) - &p * h_full).amax() < 1e-14);
+    }
+}

@@ -1,0 +1,21 @@
+//! Gaussworthy measures how wrong each Gaussian approximation of a nonlinear measurement is, for
+//! *your* sensor and *your* operating conditions, and says where it can be trusted.
+//!
+//! Data flows one way: [`suite`] makes cases; [`reference`](mod@reference) samples their true moments
+//! beside the [`method`]s that approximate them; [`score`] compares the two; [`trust`] judges; [`survey`]
+//! runs it all in parallel; [`report`] writes it down. [`gaussian`] and [`sensor`] are the ground they
+//! stand on.
+//!
+//! Results guide a choice, they certify nothing: before an estimator steers, lands, stops or warns
+//! anything, the reader's own verification process, the applicable standards and codes, and licensed or
+//! responsible engineers decide.
+
+pub mod gaussian;
+pub mod method;
+pub mod reference;
+pub mod report;
+pub mod score;
+pub mod sensor;
+pub mod suite;
+pub mod survey;
+pub mod trust;

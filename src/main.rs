@@ -1,0 +1,2 @@
+//! The command-line program; everything is in the library.
+fn main() {}

@@ -1,0 +1,41 @@
+use std::fmt::Debug;
+
+use nalgebra::DMatrix;
+
+use crate::gaussian::{Gaussian, Moments};
+use crate::sensor::Sensor;
+
+/// One transform to do: the sensor, the prior of the components that it reads, the noise covariance.
+#[derive(Debug, Clone, Copy)]
+pub struct Problem<'a> {
+    /// h, on a inputs and p outputs.
+    pub sensor: &'a dyn Sensor,
+    /// Prior of the read components (a).
+    pub prior: &'a Gaussian,
+    /// R (p x p), zero where there is no noise.
+    pub noise: &'a DMatrix<f64>,
+}
+
+/// A published approximation with its parameters fixed.
+pub trait Method: Debug + Send + Sync {
+    /// Lays out weights and workspace for `a` read components and `p` outputs.
+    ///
+    /// # Errors
+    /// [`Refusal`] says why this method cannot serve these dimensions.
+    fn plan(&self, a: usize, p: usize) -> Result<Box<dyn Transform>, Refusal>;
+}
+
+/// A method laid out for one pair of dimensions: what an estimator would run at every measurement.
+pub trait Transform: Debug + Send {
+    /// Writes the method's moments of the problem into `moments` (mean p, covariance p x p with noise,
+    /// cross-covariance a x p).
+    ///
+    /// Angular outputs are worked in the chart centred at h(m) and the mean is wrapped back to (-pi, pi].
+    /// An indefinite or non-finite result is written as it comes: the scores flag it.
+    fn apply(&mut self, problem: Problem<'_>, moments: &mut Moments);
+}
+
+/// Why a method cannot serve a problem, for the person who asked for it.
+#[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
+#[error("{0}")]
+pub struct Refusal(pub String);

@@ -1,0 +1,85 @@
+use std::fmt::Debug;
+
+use nalgebra::DMatrix;
+use smallvec::SmallVec;
+
+use super::{Derivatives, Number, Output, derivatives};
+
+/// A measurement function as its author writes it: once, generic over the number.
+///
+/// The formula sees only the state components that it reads, in the order of [`Formula::reads`], so the same
+/// code serves a position anywhere in a state of any size.
+pub trait Formula: Debug + Send + Sync {
+    /// Which state components are read (indices from 0, each once): the inputs of [`Formula::evaluate`].
+    fn reads(&self) -> &[usize];
+
+    /// The p outputs, in order.
+    fn outputs(&self) -> &[Output];
+
+    /// Writes h at the read components `x` into `y` (p).
+    ///
+    /// # Panics
+    /// May panic if `x` or `y` is shorter than [`Formula::reads`] or [`Formula::outputs`].
+    fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]);
+}
+
+/// A measurement function as the rest of the program uses it. Every [`Formula`] is one.
+///
+/// `x` always holds the read components only (a of them), `y` the p outputs.
+pub trait Sensor: Debug + Send + Sync {
+    /// Which state components are read: indices from 0, each once.
+    fn reads(&self) -> &[usize];
+
+    /// The p outputs, in order.
+    fn outputs(&self) -> &[Output];
+
+    /// Writes h(x) into `y` (p).
+    fn value(&self, x: &[f64], y: &mut [f64]);
+
+    /// Writes h of `length` points into `y`: both lie one array a coordinate, coordinate i of point k at
+    /// `i * length + k`.
+    fn values(&self, length: usize, x: &[f64], y: &mut [f64]);
+
+    /// Writes h(x) into `y` and the exact Jacobian dh_j/dx_i into `jacobian` (p x a).
+    fn jacobian(&self, x: &[f64], y: &mut [f64], jacobian: &mut DMatrix<f64>);
+
+    /// Writes value, exact Jacobian and exact Hessians at x.
+    fn hessians(&self, x: &[f64], at: &mut Derivatives);
+}
+
+impl<F: Formula> Sensor for F {
+    fn reads(&self) -> &[usize] {
+        Formula::reads(self)
+    }
+
+    fn outputs(&self) -> &[Output] {
+        Formula::outputs(self)
+    }
+
+    fn value(&self, x: &[f64], y: &mut [f64]) {
+        self.evaluate(x, y);
+    }
+
+    fn values(&self, length: usize, x: &[f64], y: &mut [f64]) {
+        let (a, p) = (Formula::reads(self).len(), Formula::outputs(self).len());
+        let mut point: SmallVec<[f64; 8]> = SmallVec::from_elem(0.0, a);
+        let mut output: SmallVec<[f64; 8]> = SmallVec::from_elem(0.0, p);
+        for k in 0..length {
+            for i in 0..a {
+                point[i] = x[i * length + k];
+            }
+            self.evaluate(&point, &mut output);
+            for j in 0..p {
+                y[j * length + k] = output[j];
+            }
+        }
+    }
+
+    fn jacobian(&self, x: &[f64], y: &mut [f64], jacobian: &mut DMatrix<f64>) {
+        derivatives::jacobian(self, x, y, jacobian);
+    }
+
+    fn hessians(&self, x: &[f64], at: &mut Derivatives) {
+        derivatives::hessians(self, x, at);
+    }
+}

@@ -1,0 +1,149 @@
+use std::sync::Arc;
+
+use serde::Serialize;
+use serde::de::DeserializeOwned;
+use serde_json::{Map, Value};
+
+use super::{ParameterError, Sensor, bearing_only, linear, quadratic, range_bearing};
+
+/// A sensor that a suite or a case record can name.
+#[derive(Debug, Clone, Copy)]
+pub struct Kind {
+    /// Its name there.
+    pub name: &'static str,
+    /// One sentence.
+    pub summary: &'static str,
+    /// The measurement function.
+    pub formula: &'static str,
+    /// Its parameters with shapes and units.
+    pub parameters: &'static str,
+    /// Where the formula is published.
+    pub source: &'static str,
+    build: fn(Map<String, Value>, usize) -> Result<Built, BuildError>,
+}
+
+type Built = (Map<String, Value>, Arc<dyn Sensor>);
+
+/// Every built-in sensor. A new one is one line here.
+pub const KINDS: &[Kind] = &[
+    Kind {
+        name: "range-bearing",
+        summary: "range and bearing of a planar position from one station",
+        formula: "r = hypot(x - sx, y - sy) [m], theta = atan2(y - sy, x - sx) [rad, angular]",
+        parameters: "station [x, y] m; position [i, j] = [0, 1]",
+        source: "Bar-Shalom, Li, Kirubarajan 2001",
+        build: |map, n| built(map, n, range_bearing::RangeBearing::from_parameters),
+    },
+    Kind {
+        name: "bearing-only",
+        summary: "bearings of a planar position from one or several stations",
+        formula: "theta_j = atan2(y - sy_j, x - sx_j) [rad, angular]",
+        parameters: "station [x, y] m or stations [[x, y], ...] m; position [i, j] = [0, 1]",
+        source: "Bar-Shalom, Li, Kirubarajan 2001",
+        build: |map, n| built(map, n, bearing_only::BearingOnly::from_parameters),
+    },
+    Kind {
+        name: "quadratic",
+        summary: "quadratic forms of the state",
+        formula: "y_j = x' A_j x + b_j' x + c_j",
+        parameters: "A: p matrices n x n; b: p x n = 0; c: p = 0",
+        source: "Mathai, Provost 1992",
+        build: |map, n| built(map, n, quadratic::Quadratic::from_parameters),
+    },
+    Kind {
+        name: "linear",
+        summary: "linear reading, the sanity sensor: every method is exact on it",
+        formula: "y = H x + offset",
+        parameters: "H: p x n; offset: p = 0",
+        source: "Kalman 1960",
+        build: |map, n| built(map, n, linear::Linear::from_parameters),
+    },
+];
+
+/// Why a sensor could not be made from what a suite or a case record says.
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+#[error("{key}: {message}")]
+pub struct BuildError {
+    /// Path of the key at fault below `sensor`, such as `station[1]`; empty for the sensor as a whole.
+    pub key: String,
+    /// What is wrong and what would be right.
+    pub message: String,
+}
+
+impl From<ParameterError> for BuildError {
+    fn from(e: ParameterError) -> Self {
+        Self { key: e.key, message: e.message }
+    }
+}
+
+/// A sensor and how it was written: kind and parameters, defaults filled in.
+#[derive(Debug, Clone, Serialize)]
+pub struct SensorSpec {
+    kind: &'static str,
+    #[serde(flatten)]
+    parameters: Map<String, Value>,
+    #[serde(skip)]
+    sensor: Arc<dyn Sensor>,
+}
+
+impl SensorSpec {
+    /// Makes the sensor that a JSON object describes (`kind` and its parameters) for a state of `n`
+    /// components.
+    ///
+    /// # Errors
+    /// [`BuildError`] with the key at fault: no `kind`, an unknown one, an unknown or missing parameter, one
+    /// of wrong shape or value.
+    pub fn from_json(mut described: Map<String, Value>, n: usize) -> Result<Self, BuildError> {
+        let names = || KINDS.iter().map(|k| k.name).collect::<Vec<_>>().join(", ");
+        let error = |key: &str, message: String| BuildError { key: key.into(), message };
+        let kind = match described.shift_remove("kind") {
+            Some(Value::String(kind)) => kind,
+            Some(other) => return Err(error("kind", format!("is {other}; give one of {}", names()))),
+            None => return Err(error("", format!("`kind` is missing; give one of {}", names()))),
+        };
+        let kind = KINDS
+            .iter()
+            .find(|k| k.name == kind)
+            .ok_or_else(|| error("kind", format!("there is no sensor `{kind}`; give one of {}", names())))?;
+        let (parameters, sensor) = (kind.build)(described, n)?;
+        Ok(Self { kind: kind.name, parameters, sensor })
+    }
+
+    /// The sensor's name among [`KINDS`].
+    pub fn kind(&self) -> &'static str {
+        self.kind
+    }
+
+    /// The parameters, defaults filled in.
+    pub fn parameters(&self) -> &Map<String, Value> {
+        &self.parameters
+    }
+
+    /// The sensor.
+    pub fn sensor(&self) -> &dyn Sensor {
+        self.sensor.as_ref()
+    }
+}
+
+fn built<P, S>(
+    map: Map<String, Value>,
+    n: usize,
+    make: impl Fn(P, usize) -> Result<S, ParameterError>,
+) -> Result<Built, BuildError>
+where
+    P: DeserializeOwned + Serialize,
+    S: Sensor + 'static,
+{
+    let parameters: P = serde_path_to_error::deserialize(Value::Object(map)).map_err(|e| {
+        let path = e.path().to_string();
+        let key = if path == "." { String::new() } else { path };
+        BuildError { key, message: e.into_inner().to_string() }
+    })?;
+    let echoed = match serde_json::to_value(&parameters) {
+        Ok(Value::Object(map)) => map,
+        // A parameter that is not finite has no JSON form; the constructor names it.
+        _ => Map::new(),
+    };
+    let sensor = make(parameters, n)?;
+    Ok((echoed, Arc::new(sensor)))
+}

@@ -1,0 +1,33 @@
+/// A parameter of a sensor that cannot be meant.
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+#[error("{key}: {message}")]
+pub struct ParameterError {
+    /// Which parameter, as it is spelled in a suite; with an index where one entry is at fault.
+    pub key: String,
+    /// What is wrong and what would be right.
+    pub message: String,
+}
+
+impl ParameterError {
+    /// The parameter at fault and what to say about it.
+    pub fn new(key: impl Into<String>, message: impl Into<String>) -> Self {
+        Self { key: key.into(), message: message.into() }
+    }
+}
+
+/// The components for which `read` holds; the first one if none does, for a sensor needs an input.
+pub(super) fn read_components(n: usize, read: impl Fn(usize) -> bool) -> Vec<usize> {
+    let reads: Vec<usize> = (0..n).filter(|&i| read(i)).collect();
+    if reads.is_empty() { vec![0] } else { reads }
+}
+
+/// Checks length and finiteness of a list of numbers.
+pub(super) fn checked_row(key: &str, row: &[f64], length: usize) -> Result<(), ParameterError> {
+    if row.len() != length {
+        return Err(ParameterError::new(key, format!("has {} numbers; {length} are needed", row.len())));
+    }
+    match row.iter().position(|v| !v.is_finite()) {
+        Some(i) => Err(ParameterError::new(format!("{key}[{i}]"), format!("{} is not a finite number", row[i]))),
+        None => Ok(()),
+    }
+}

@@ -1,0 +1,191 @@
+use nalgebra::{DMatrix, DVector};
+use serde::{Deserialize, Serialize};
+use serde_json::{Map, Value};
+
+use crate::gaussian::{Gaussian, GaussianError, Marginal, checked_covariance};
+use crate::sensor::{self, Sensor, SensorSpec};
+
+/// One question: one sensor with its parameters, one prior, one noise.
+#[derive(Debug, Clone)]
+pub struct Case {
+    id: String,
+    sensor: SensorSpec,
+    prior: Gaussian,
+    marginal: Marginal,
+    noise: Option<DMatrix<f64>>,
+}
+
+/// What is wrong with a case record, and where in it.
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+#[error("{key}: {message}")]
+pub struct CaseError {
+    /// Path of the key at fault, such as `sensor.station[1]`.
+    pub key: String,
+    /// What is wrong and what would be right.
+    pub message: String,
+}
+
+impl CaseError {
+    /// The key at fault and what to say about it.
+    pub fn new(key: impl Into<String>, message: impl Into<String>) -> Self {
+        Self { key: key.into(), message: message.into() }
+    }
+}
+
+/// A case as it stands in a case record (one JSON object a line).
+#[derive(Debug, Clone, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct Record {
+    case: String,
+    sensor: Map<String, Value>,
+    prior: PriorRecord,
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    noise: Option<NoiseRecord>,
+}
+
+#[derive(Debug, Clone, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct PriorRecord {
+    mean: Vec<f64>,
+    covariance: Vec<Vec<f64>>,
+}
+
+#[derive(Debug, Clone, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct NoiseRecord {
+    covariance: Value,
+}
+
+impl Case {
+    /// A case from its parts; `noise` is R (p x p), `None` for none.
+    ///
+    /// # Errors
+    /// [`CaseError`] if R does not fit the sensor's outputs or is not a covariance, or the sensor reads a
+    /// component that the prior does not have.
+    pub fn new(
+        id: impl Into<String>,
+        sensor: SensorSpec,
+        prior: Gaussian,
+        noise: Option<DMatrix<f64>>,
+    ) -> Result<Self, CaseError> {
+        let n = prior.dimension();
+        if let Some(i) = sensor.sensor().reads().iter().find(|&&i| i >= n) {
+            return Err(CaseError::new("sensor", format!("reads component {i} of a state of {n}")));
+        }
+        let p = sensor.sensor().outputs().len();
+        let noise = noise
+            .map(|r| checked_covariance(r, p).map_err(|e| CaseError::new("noise.covariance", e.to_string())))
+            .transpose()?;
+        let marginal = Marginal::new(&prior, sensor.sensor().reads());
+        Ok(Self { id: id.into(), sensor, prior, marginal, noise })
+    }
+
+    /// Reads a case record: an object with `case`, `sensor`, `prior` and perhaps `noise`.
+    ///
+    /// # Errors
+    /// [`CaseError`] with the key at fault.
+    pub fn from_json(record: Value) -> Result<Self, CaseError> {
+        let record: Record = serde_path_to_error::deserialize(record)
+            .map_err(|e| CaseError::new(e.path().to_string(), e.inner().to_string()))?;
+        let n = record.prior.mean.len();
+        let covariance = matrix(&record.prior.covariance, "prior.covariance")?;
+        let prior = Gaussian::new(DVector::from_vec(record.prior.mean), covariance).map_err(|e| {
+            let key = if matches!(e, GaussianError::MeanNotFinite { .. } | GaussianError::Empty) {
+                "prior.mean"
+            } else {
+                "prior.covariance"
+            };
+            CaseError::new(key, e.to_string())
+        })?;
+        let sensor = SensorSpec::from_json(record.sensor, n).map_err(sensor_error)?;
+        let p = sensor.sensor().outputs().len();
+        let noise = record.noise.map(|noise| noise_covariance(noise.covariance, p)).transpose()?;
+        Self::new(record.case, sensor, prior, noise)
+    }
+
+    /// The case record: everything needed to ask the same question again.
+    pub fn to_json(&self) -> Value {
+        let mut sensor = Map::new();
+        sensor.insert("kind".into(), self.sensor.kind().into());
+        sensor.extend(self.sensor.parameters().clone());
+        let record = Record {
+            case: self.id.clone(),
+            sensor,
+            prior: PriorRecord {
+                mean: self.prior.mean().iter().copied().collect(),
+                covariance: rows(self.prior.covariance()),
+            },
+            noise: self.noise.as_ref().map(|r| NoiseRecord { covariance: serde_json::json!(rows(r)) }),
+        };
+        serde_json::to_value(record).unwrap_or(Value::Null)
+    }
+
+    /// Name of the case, unique in its suite.
+    pub fn id(&self) -> &str {
+        &self.id
+    }
+
+    /// How the sensor was written.
+    pub fn spec(&self) -> &SensorSpec {
+        &self.sensor
+    }
+
+    /// The sensor.
+    pub fn sensor(&self) -> &dyn Sensor {
+        self.sensor.sensor()
+    }
+
+    /// Prior of the whole state (n).
+    pub fn prior(&self) -> &Gaussian {
+        &self.prior
+    }
+
+    /// Prior of the read components (a) and the way back to the whole state.
+    pub fn marginal(&self) -> &Marginal {
+        &self.marginal
+    }
+
+    /// R (p x p); `None` when there is no additive noise.
+    pub fn noise(&self) -> Option<&DMatrix<f64>> {
+        self.noise.as_ref()
+    }
+
+    /// R (p x p), zero when there is none.
+    pub fn noise_or_zero(&self) -> DMatrix<f64> {
+        let p = self.sensor().outputs().len();
+        self.noise.clone().unwrap_or_else(|| DMatrix::zeros(p, p))
+    }
+}
+
+fn sensor_error(e: sensor::BuildError) -> CaseError {
+    let key = if e.key.is_empty() { "sensor".into() } else { format!("sensor.{}", e.key) };
+    CaseError::new(key, e.message)
+}
+
+/// The rows of a matrix, as JSON writes them.
+pub(crate) fn rows(m: &DMatrix<f64>) -> Vec<Vec<f64>> {
+    m.row_iter().map(|r| r.iter().copied().collect()).collect()
+}
+
+/// A matrix from its rows, all of one length.
+pub(crate) fn matrix(rows: &[Vec<f64>], key: &str) -> Result<DMatrix<f64>, CaseError> {
+    let columns = rows.first().map_or(0, Vec::len);
+    if let Some(i) = rows.iter().position(|r| r.len() != columns) {
+        return Err(CaseError::new(
+            format!("{key}[{i}]"),
+            format!("has {} numbers, but the first row has {columns}", rows[i].len()),
+        ));
+    }
+    Ok(DMatrix::from_row_iterator(rows.len(), columns, rows.iter().flatten().copied()))
+}
+
+/// R from a matrix, or from a single number that stands for itself times the identity.
+fn noise_covariance(value: Value, p: usize) -> Result<DMatrix<f64>, CaseError> {
+    const KEY: &str = "noise.covariance";
+    if let Some(variance) = value.as_f64() {
+        return Ok(DMatrix::from_diagonal_element(p, p, variance));
+    }
+    let rows: Vec<Vec<f64>> = serde_json::from_value(value)
+        .map_err(|e| CaseError::new(KEY, format!("{e}; give a {p} x {p} matrix or one number")))?;
+    matrix(&rows, KEY)
+}

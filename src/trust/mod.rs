@@ -1,0 +1,5 @@
+//! Trust: limits and verdicts.
+
+mod limits;
+
+pub use limits::Limits;
