@@ -120,6 +120,15 @@ impl Case {
         serde_json::to_value(record).unwrap_or(Value::Null)
     }
 
+    /// The case record without its name: what the answer depends on, as one line of text.
+    pub fn question(&self) -> String {
+        let mut record = self.to_json();
+        if let Value::Object(fields) = &mut record {
+            fields.shift_remove("case");
+        }
+        record.to_string()
+    }
+
     /// Name of the case, unique in its suite.
     pub fn id(&self) -> &str {
         &self.id

@@ -1,5 +1,7 @@
-//! Trust: limits and verdicts.
+//! Trust: limits, and the verdicts they give on scores.
 
 mod limits;
+mod verdict;
 
 pub use limits::Limits;
+pub use verdict::{Finding, Judge, Side, Standing, Trust, Verdict};

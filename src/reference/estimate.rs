@@ -1,0 +1,88 @@
+use nalgebra::DMatrix;
+use serde::Serialize;
+
+use crate::gaussian::{Gaussian, Moments};
+
+/// How far a reference can be believed.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[serde(rename_all = "kebab-case")]
+#[non_exhaustive]
+pub enum Soundness {
+    /// Every moment is as precise as asked.
+    Sound,
+    /// The cap came first: the standard errors are true, but wider than asked.
+    Wide,
+    /// No moments: see the reason. No verdict rests on it.
+    Refused,
+}
+
+/// The moments of a case by heavy sampling.
+#[derive(Debug, Clone)]
+pub struct Reference {
+    /// The estimate: mean (p), covariance (p x p, noise included), cross-covariance (n x p).
+    pub moments: Moments,
+    /// Standard error of every entry: the spread of the replicates over the root of their number.
+    pub standard_error: Moments,
+    /// The replicates' own moments, independent of each other; angular means unwrapped beside the estimate's.
+    pub replicates: Vec<Moments>,
+    /// Samples of h taken in all replicates together.
+    pub points: u64,
+    /// Largest standardised standard error: mean over the output's sd, covariance and cross-covariance in
+    /// correlation units.
+    pub worst_error: f64,
+    /// How far it can be believed.
+    pub soundness: Soundness,
+    /// Why it was refused.
+    pub reason: Option<String>,
+}
+
+/// Mean of the replicates and standard error of every entry.
+pub(super) fn combine(replicates: &[Moments]) -> (Moments, Moments) {
+    let count = replicates.len() as f64;
+    let mut mean = replicates[0].clone();
+    for other in &replicates[1..] {
+        mean.mean += &other.mean;
+        mean.covariance += &other.covariance;
+        mean.cross_covariance += &other.cross_covariance;
+    }
+    mean.mean /= count;
+    mean.covariance /= count;
+    mean.cross_covariance /= count;
+    let mut error = Moments::zeros(mean.cross_covariance.nrows(), mean.mean.len());
+    for r in replicates {
+        error.mean += (&r.mean - &mean.mean).map(|d| d * d);
+        error.covariance += (&r.covariance - &mean.covariance).map(|d| d * d);
+        error.cross_covariance += (&r.cross_covariance - &mean.cross_covariance).map(|d| d * d);
+    }
+    let scale = 1.0 / (count * (count - 1.0));
+    error.mean.apply(|v| *v = (*v * scale).sqrt());
+    error.covariance.apply(|v| *v = (*v * scale).sqrt());
+    error.cross_covariance.apply(|v| *v = (*v * scale).sqrt());
+    (mean, error)
+}
+
+/// The largest standard error in natural units; an entry without spread of its own (a state known exactly)
+/// counts only if it has an error.
+pub(super) fn worst_standardised(moments: &Moments, error: &Moments, prior: &Gaussian) -> f64 {
+    let sd = |m: &DMatrix<f64>, i: usize| m[(i, i)].max(0.0).sqrt();
+    let ratio = |e: f64, scale: f64| if e == 0.0 { 0.0 } else { e / scale };
+    let (n, p) = moments.cross_covariance.shape();
+    let mut worst: f64 = 0.0;
+    let mut seen = |v: f64| {
+        // A NaN must win: max() would drop it.
+        if v > worst || v.is_nan() {
+            worst = v;
+        }
+    };
+    for j in 0..p {
+        let sd_j = sd(&moments.covariance, j);
+        seen(ratio(error.mean[j], sd_j));
+        for k in 0..p {
+            seen(ratio(error.covariance[(j, k)], sd_j * sd(&moments.covariance, k)));
+        }
+        for i in 0..n {
+            seen(ratio(error.cross_covariance[(i, j)], sd_j * sd(prior.covariance(), i)));
+        }
+    }
+    worst
+}

@@ -1,0 +1,199 @@
+use nalgebra::DMatrix;
+use rayon::prelude::*;
+
+use super::estimate::{Reference, Soundness, combine, worst_standardised};
+use super::pilot::{BLOCK, FIRST_BLOCKS, Pilot};
+use super::replicate::{Ground, Replicate};
+use super::stream::Key;
+use crate::gaussian::{Gaussian, Marginal, Moments, wrap};
+use crate::sensor::Sensor;
+use crate::suite::Case;
+
+/// Independent replicates of a reference unless told otherwise.
+pub const DEFAULT_REPLICATES: usize = 32;
+/// Below this resultant length an angle has no mean direction to centre its chart on. Ours, no source: at 0.1
+/// the directions are all but uniform, and where the cut lies decides the moments.
+const LEAST_RESULTANT: f64 = 0.1;
+
+/// How a reference is to be sampled.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct SamplerSettings {
+    /// Seed of all random numbers.
+    pub seed: u64,
+    /// Independent replicates, at least 2.
+    pub replicates: usize,
+    /// Largest standardised standard error asked for.
+    pub precision: f64,
+    /// Most samples of h in all replicates together.
+    pub cap: u64,
+}
+
+impl Default for SamplerSettings {
+    /// Seed 1, 32 replicates, precision 1e-3, at most 2^24 samples.
+    fn default() -> Self {
+        Self { seed: 1, replicates: DEFAULT_REPLICATES, precision: 1e-3, cap: 1 << 24 }
+    }
+}
+
+/// The cap does not leave one block for each replicate.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, thiserror::Error)]
+#[error("a cap of {cap} samples is too small: {replicates} replicates need at least {least}")]
+pub struct CapTooSmall {
+    /// Cap asked for.
+    pub cap: u64,
+    /// Replicates asked for.
+    pub replicates: usize,
+    /// Least cap that would do.
+    pub least: u64,
+}
+
+/// Samples the moments of one case, deeper at every call; nothing sampled is thrown away.
+///
+/// The result depends on the case, the seed and the number of points only: the same bits on any number of
+/// threads.
+#[derive(Debug)]
+pub struct Sampler<'a> {
+    ground: Ground<'a>,
+    marginal: &'a Marginal,
+    prior: &'a Gaussian,
+    noise: DMatrix<f64>,
+    settings: SamplerSettings,
+    replicates: Vec<Replicate>,
+    blocks: u64,
+}
+
+impl<'a> Sampler<'a> {
+    /// A sampler of `case`.
+    ///
+    /// # Errors
+    /// [`CapTooSmall`] if the cap does not leave 1024 samples a replicate.
+    pub fn new(case: &'a Case, settings: SamplerSettings) -> Result<Self, CapTooSmall> {
+        let key = Key::new(settings.seed, &case.question());
+        Self::of_parts(case.sensor(), case.prior(), case.marginal(), case.noise_or_zero(), key, settings)
+    }
+
+    /// A sampler of a sensor of the caller's own; `marginal` is the prior's on the components that the sensor
+    /// reads, `noise` is R (p x p), `key` names the question.
+    ///
+    /// # Errors
+    /// As [`Sampler::new`].
+    pub fn of_parts(
+        sensor: &'a dyn Sensor,
+        prior: &'a Gaussian,
+        marginal: &'a Marginal,
+        noise: DMatrix<f64>,
+        key: Key,
+        settings: SamplerSettings,
+    ) -> Result<Self, CapTooSmall> {
+        let least = BLOCK as u64 * settings.replicates as u64;
+        if settings.cap < least {
+            return Err(CapTooSmall { cap: settings.cap, replicates: settings.replicates, least });
+        }
+        let law = marginal.law();
+        let root = law.root();
+        let ground = Ground {
+            key,
+            sensor,
+            prior: law,
+            angular: sensor.outputs().iter().map(|o| o.angular).collect(),
+            pilot: Pilot::run(&key, sensor, law, &root),
+            root,
+        };
+        let replicates = (0..settings.replicates as u64).map(|r| Replicate::new(r, &ground)).collect();
+        Ok(Self { ground, marginal, prior, noise, settings, replicates, blocks: 0 })
+    }
+
+    /// Samples of h so far, all replicates together.
+    pub fn points(&self) -> u64 {
+        self.replicates.iter().map(Replicate::points).sum()
+    }
+
+    /// Doubles the number of points (the first time: takes the first 4096 a replicate), within the cap.
+    /// Returns whether there was room for any.
+    pub fn deepen(&mut self) -> bool {
+        let room = self.settings.cap / (BLOCK * self.replicates.len()) as u64;
+        let blocks = if self.blocks == 0 { FIRST_BLOCKS } else { 2 * self.blocks }.min(room);
+        // A last partial doubling of less than a half again would cost without telling much.
+        if blocks <= self.blocks || (self.blocks > 0 && 2 * blocks < 3 * self.blocks) {
+            return false;
+        }
+        self.blocks = blocks;
+        let ground = &self.ground;
+        self.replicates.par_iter_mut().for_each(|r| r.deepen(blocks, ground));
+        true
+    }
+
+    /// Samples until the asked precision or the cap.
+    pub fn run(mut self) -> Reference {
+        while self.deepen() {
+            let reference = self.reference();
+            if reference.soundness != Soundness::Wide {
+                return reference;
+            }
+        }
+        self.reference()
+    }
+
+    /// The moments as far as they are known.
+    ///
+    /// # Panics
+    /// If nothing was sampled yet.
+    pub fn reference(&self) -> Reference {
+        assert!(self.blocks > 0, "a reference before the first sample");
+        let mut replicates: Vec<Moments> =
+            self.replicates.iter().map(|r| self.lifted(r.moments(&self.ground, &self.noise))).collect();
+        let first = replicates[0].mean.clone();
+        for moments in &mut replicates[1..] {
+            for (j, &angular) in self.ground.angular.iter().enumerate() {
+                if angular {
+                    moments.mean[j] = first[j] + wrap(moments.mean[j] - first[j]);
+                }
+            }
+        }
+        let (mut moments, standard_error) = combine(&replicates);
+        for (j, &angular) in self.ground.angular.iter().enumerate() {
+            if angular {
+                let turn = wrap(moments.mean[j]) - moments.mean[j];
+                moments.mean[j] = wrap(moments.mean[j]);
+                for r in &mut replicates {
+                    r.mean[j] += turn;
+                }
+            }
+        }
+        let worst_error = worst_standardised(&moments, &standard_error, self.prior);
+        let reason = self.refusal(&moments);
+        let soundness = match &reason {
+            Some(_) => Soundness::Refused,
+            None if worst_error <= self.settings.precision => Soundness::Sound,
+            None => Soundness::Wide,
+        };
+        Reference { moments, standard_error, replicates, points: self.points(), worst_error, soundness, reason }
+    }
+
+    fn lifted(&self, moments: Moments) -> Moments {
+        let cross_covariance = self.marginal.lift(moments.cross_covariance);
+        Moments { cross_covariance, ..moments }
+    }
+
+    fn refusal(&self, moments: &Moments) -> Option<String> {
+        let outputs = self.ground.sensor.outputs();
+        if !moments.is_finite() {
+            let which = (0..outputs.len()).find(|&j| !moments.covariance[(j, j)].is_finite()).unwrap_or(0);
+            return Some(format!("output `{}` is not a finite number at every sample", outputs[which].name));
+        }
+        let charts = self.replicates.iter().map(Replicate::charts);
+        let least = charts.clone().filter_map(|c| c.least_resultant()).min_by(|a, b| a.1.total_cmp(&b.1));
+        if let Some((j, resultant)) = least
+            && !(resultant >= LEAST_RESULTANT)
+        {
+            return Some(format!(
+                "output `{}` has no mean direction: its resultant length is {resultant:.3}, {LEAST_RESULTANT} is needed",
+                outputs[j].name
+            ));
+        }
+        charts
+            .clone()
+            .any(|c| c.lost)
+            .then(|| "the mean direction of an angle moved by more than chance allows".into())
+    }
+}

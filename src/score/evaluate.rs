@@ -1,0 +1,106 @@
+use nalgebra::{Cholesky, DMatrix};
+
+use super::ScoreKind;
+use super::whitened::{Whitened, WhitenedMethod};
+
+/// An eigenvalue below this share of the largest, on the wrong side of zero, is rounding and not indefinite.
+const ROUNDING: f64 = 1e-9;
+
+/// Why a method's answer is no Gaussian.
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+#[non_exhaustive]
+pub enum Invalid {
+    /// A value is NaN or infinite.
+    #[error("a value is not finite")]
+    NotFinite,
+    /// The covariance of the measurement has a negative eigenvalue.
+    #[error("its covariance has the eigenvalue {0:.3e} in reference units: not positive definite")]
+    Covariance(f64),
+    /// The joint covariance of state and measurement has a negative eigenvalue.
+    #[error("its joint covariance is indefinite: the conditional covariance has the eigenvalue {0:.3e}")]
+    Joint(f64),
+}
+
+/// Whether the method's answer is a Gaussian at all, judged in the reference's units.
+pub(super) fn validity(method: &WhitenedMethod) -> Result<(), Invalid> {
+    let finite = |m: &DMatrix<f64>| m.iter().all(|v| v.is_finite());
+    if !(finite(&method.covariance) && finite(&method.coupling) && method.shift.iter().all(|v| v.is_finite())) {
+        return Err(Invalid::NotFinite);
+    }
+    let eigenvalues = method.covariance.symmetric_eigenvalues();
+    let (least, greatest) = (eigenvalues.min(), eigenvalues.max());
+    if least <= 0.0 {
+        return Err(Invalid::Covariance(least));
+    }
+    let least = residual(method).symmetric_eigenvalues().min();
+    if least < -ROUNDING * greatest {
+        return Err(Invalid::Joint(least));
+    }
+    Ok(())
+}
+
+/// Every score in the order of [`ScoreKind::ALL`]; NaN where one is undefined (a joint that is singular).
+pub(super) fn evaluate(reference: &Whitened, method: &WhitenedMethod) -> [f64; ScoreKind::COUNT] {
+    let p = method.shift.len();
+    let identity = DMatrix::identity(p, p);
+    let eigenvalues = method.covariance.symmetric_eigenvalues();
+    let (nees, worst, lost) = update_scores(reference, method).unwrap_or((f64::NAN, f64::NAN, f64::NAN));
+    [
+        method.shift.norm(),
+        (&method.covariance - identity).norm(),
+        eigenvalues.min(),
+        eigenvalues.max(),
+        (&method.coupling - &reference.coupling).norm(),
+        excess(reference, method).unwrap_or(f64::NAN),
+        nees,
+        worst,
+        lost,
+    ]
+}
+
+/// O^ = S^ - G^' G^ (p x p).
+fn residual(method: &WhitenedMethod) -> DMatrix<f64> {
+    &method.covariance - method.coupling.transpose() * &method.coupling
+}
+
+/// A Cholesky factor, unless the matrix is singular but for rounding: in whitened units, where entries are of
+/// order one, a squared pivot under 1e-13 is noise.
+fn definite(a: DMatrix<f64>) -> Option<Cholesky<f64, nalgebra::Dyn>> {
+    const LEAST_PIVOT: f64 = 1e-13;
+    let factor = Cholesky::new(a)?;
+    factor.l_dirty().diagonal().iter().all(|d| d * d > LEAST_PIVOT).then_some(factor)
+}
+
+fn excess(reference: &Whitened, method: &WhitenedMethod) -> Option<f64> {
+    let of = definite(reference.residual.clone())?;
+    let from = definite(residual(method))?;
+    let slope = (&reference.coupling - &method.coupling).transpose();
+    let spread = &reference.residual + &slope * slope.transpose();
+    let trace = from.solve(&spread).trace();
+    let quadratic = method.shift.dot(&from.solve(&method.shift));
+    let p = method.shift.len() as f64;
+    Some(0.5 * (trace - p + from.ln_determinant() - of.ln_determinant() + quadratic))
+}
+
+/// Expected NEES ratio, worst NEES direction and information lost.
+fn update_scores(reference: &Whitened, method: &WhitenedMethod) -> Option<(f64, f64, f64)> {
+    let (r, p) = method.coupling.shape();
+    let identity = DMatrix::<f64>::identity(r, r);
+    let gain = definite(method.covariance.clone())?.solve(&method.coupling.transpose()).transpose();
+    let claimed = &identity - &gain * method.coupling.transpose();
+    let cross = &gain * reference.coupling.transpose();
+    let second = DMatrix::identity(p, p) + &method.shift * method.shift.transpose();
+    let actual = &identity - &cross - cross.transpose() + &gain * second * gain.transpose();
+    let claimed = definite((&claimed + claimed.transpose()) * 0.5)?;
+    // L^-1 M L'^-1 shares its eigenvalues with P+^-1/2 M P+^-1/2.
+    let mut half = actual.clone();
+    claimed.l_dirty().solve_lower_triangular_mut(&mut half);
+    let mut ratio = half.transpose();
+    claimed.l_dirty().solve_lower_triangular_mut(&mut ratio);
+    let ratio = (&ratio + ratio.transpose()) * 0.5;
+    let eigenvalues = ratio.symmetric_eigenvalues();
+    let best = definite(&identity - &reference.coupling * reference.coupling.transpose())?;
+    let actual = definite(actual)?;
+    let lost = 0.5 * (actual.ln_determinant() - best.ln_determinant());
+    Some((eigenvalues.sum() / r as f64, eigenvalues.max(), lost))
+}
