@@ -1,0 +1,212 @@
+use std::sync::Arc;
+
+use serde_json::{Map, Number, Value};
+
+use super::{BuildError, KINDS, Kind, Method};
+
+/// A method and how it was written.
+#[derive(Debug, Clone)]
+pub struct MethodSpec {
+    kind: &'static Kind,
+    label: String,
+    method: Arc<dyn Method>,
+}
+
+impl MethodSpec {
+    /// Makes the method that a JSON object describes: `id` and its parameters.
+    ///
+    /// # Errors
+    /// [`BuildError`] with the key at fault: no `id`, an unknown one, an unknown parameter, one of wrong type
+    /// or value.
+    pub fn from_json(mut described: Map<String, Value>) -> Result<Self, BuildError> {
+        match described.shift_remove("id") {
+            Some(Value::String(id)) => Self::build(&id, described),
+            Some(other) => Err(BuildError::new("id", format!("is {other}; give one of {}", known_ids()))),
+            None => Err(BuildError::new("id", format!("is missing; give one of {}", known_ids()))),
+        }
+    }
+
+    /// Makes the method of a command line: `id:parameter=number:parameter=number`.
+    ///
+    /// # Errors
+    /// As [`MethodSpec::from_json`], and if a parameter is not of this form or stands twice.
+    ///
+    /// ```
+    /// use gaussworthy::method::MethodSpec;
+    /// let method = MethodSpec::parse("unscented-scaled:beta=2:alpha=5e-1").unwrap();
+    /// assert_eq!(method.label(), "unscented-scaled:alpha=0.5:beta=2");
+    /// let error = MethodSpec::parse("gauss-hermite:order=21").unwrap_err();
+    /// assert_eq!(error.to_string(), "order: is 21; give 2 to 20 points an axis");
+    /// ```
+    pub fn parse(text: &str) -> Result<Self, BuildError> {
+        let mut parts = text.split(':').map(str::trim);
+        let id = parts.next().unwrap_or_default();
+        let mut parameters = Map::new();
+        for part in parts {
+            let Some((key, value)) = part.split_once('=') else {
+                return Err(BuildError::new(
+                    "",
+                    format!("`{part}` in `{text}` is not of the form parameter=number"),
+                ));
+            };
+            let (key, value) = (key.trim(), value.trim());
+            if parameters.insert(key.to_string(), number(key, value)?).is_some() {
+                return Err(BuildError::new(key, format!("stands twice in `{text}`")));
+            }
+        }
+        Self::build(id, parameters)
+    }
+
+    fn build(id: &str, parameters: Map<String, Value>) -> Result<Self, BuildError> {
+        let kind = KINDS.iter().find(|k| k.id == id).ok_or_else(|| {
+            BuildError::new("id", format!("there is no method `{id}`; give one of {}", known_ids()))
+        })?;
+        let (written, method) = (kind.build)(parameters)?;
+        let mut label = kind.id.to_string();
+        for (key, value) in &written {
+            label.push_str(&format!(":{key}={}", shortest(value)));
+        }
+        Ok(Self { kind, label, method })
+    }
+
+    /// The command-line form of what was written, in a fixed order and without what was left to its default;
+    /// [`MethodSpec::parse`] makes the same method of it.
+    pub fn label(&self) -> &str {
+        &self.label
+    }
+
+    /// Its entry in [`KINDS`].
+    pub fn kind(&self) -> &'static Kind {
+        self.kind
+    }
+
+    /// The method.
+    pub fn method(&self) -> &dyn Method {
+        self.method.as_ref()
+    }
+}
+
+/// What is measured when nobody names methods: every kind with its defaults, and Gauss-Hermite of orders 3
+/// and 5.
+pub fn default_methods() -> Vec<MethodSpec> {
+    let labels = [
+        "taylor-1",
+        "taylor-2",
+        "unscented",
+        "unscented-scaled",
+        "cubature-3",
+        "gauss-hermite:order=3",
+        "gauss-hermite:order=5",
+    ];
+    labels.map(|label| MethodSpec::parse(label).expect("a built-in label names a built-in method")).to_vec()
+}
+
+fn known_ids() -> String {
+    KINDS.iter().map(|k| k.id).collect::<Vec<_>>().join(", ")
+}
+
+fn number(key: &str, text: &str) -> Result<Value, BuildError> {
+    if let Ok(whole) = text.parse::<i64>() {
+        return Ok(whole.into());
+    }
+    match text.parse::<f64>().map(Number::from_f64) {
+        Ok(Some(number)) => Ok(Value::Number(number)),
+        Ok(None) => Err(BuildError::new(key, format!("is {text}; a finite number is needed"))),
+        Err(_) => Err(BuildError::new(key, format!("is `{text}`; a number is needed"))),
+    }
+}
+
+/// The shortest text that reads back as the same number.
+fn shortest(value: &Value) -> String {
+    match value.as_f64() {
+        Some(number) => {
+            let text = format!("{number:?}");
+            text.strip_suffix(".0").unwrap_or(&text).to_string()
+        }
+        None => value.to_string(),
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use serde_json::json;
+
+    fn from(described: Value) -> Result<MethodSpec, BuildError> {
+        let Value::Object(map) = described else { panic!("write an object") };
+        MethodSpec::from_json(map)
+    }
+
+    #[test]
+    fn a_label_reads_back_as_the_same_method() {
+        let described = [
+            (json!({"id": "taylor-1"}), "taylor-1"),
+            (json!({"id": "unscented", "kappa": 0}), "unscented:kappa=0"),
+            (json!({"id": "unscented", "kappa": -0.1}), "unscented:kappa=-0.1"),
+            (json!({"id": "unscented", "kappa": 1e300}), "unscented:kappa=1e300"),
+            (json!({"id": "unscented", "kappa": 0.1 + 0.2}), "unscented:kappa=0.30000000000000004"),
+            (json!({"beta": 0.0, "alpha": 1e-7, "id": "unscented-scaled"}), "unscented-scaled:alpha=1e-7:beta=0"),
+            (json!({"id": "gauss-hermite"}), "gauss-hermite"),
+            (
+                json!({"id": "gauss-hermite", "max_nodes": 5e5, "order": 7}),
+                "gauss-hermite:order=7:max_nodes=500000",
+            ),
+        ];
+        for (described, label) in described {
+            let spec = from(described).unwrap();
+            assert_eq!(spec.label(), label);
+            let again = MethodSpec::parse(label).unwrap();
+            assert_eq!(again.label(), label);
+            assert_eq!(again.kind().id, spec.kind().id);
+            assert_eq!(format!("{:?}", again.method()), format!("{:?}", spec.method()));
+        }
+    }
+
+    #[test]
+    fn the_defaults_cover_every_kind() {
+        let methods = default_methods();
+        assert_eq!(methods.len(), 7);
+        for kind in KINDS {
+            assert!(methods.iter().any(|m| m.kind().id == kind.id), "{} is missing", kind.id);
+        }
+    }
+
+    #[test]
+    fn what_is_wrong_is_named() {
+        let known = "give one of taylor-1, taylor-2, unscented, unscented-scaled, cubature-3, gauss-hermite";
+        let texts = [
+            ("", "id", format!("there is no method ``; {known}")),
+            ("ekf", "id", format!("there is no method `ekf`; {known}")),
+            ("unscented:3", "", "`3` in `unscented:3` is not of the form parameter=number".into()),
+            ("unscented:kappa=1:kappa=1", "kappa", "stands twice in `unscented:kappa=1:kappa=1`".into()),
+            ("unscented:kappa=nan", "kappa", "is nan; a finite number is needed".into()),
+            ("unscented:kappa=-inf", "kappa", "is -inf; a finite number is needed".into()),
+            ("unscented:kappa=", "kappa", "is ``; a number is needed".into()),
+            ("unscented:kapa=1", "kapa", "unknown field `kapa`, expected `kappa`".into()),
+            ("unscented:id=1", "id", "unknown field `id`, expected `kappa`".into()),
+            ("taylor-1:order=1", "order", "unknown field `order`, there are no fields".into()),
+            ("unscented-scaled:alpha=0", "alpha", "is 0; the spread of the points is above zero, 1e-3 to 1".into()),
+            ("gauss-hermite:order=1", "order", "is 1; give 2 to 20 points an axis".into()),
+            ("gauss-hermite:order=2.5", "order", "is 2.5; a whole number is needed".into()),
+            ("gauss-hermite:order=-3", "order", "is -3; a whole number is needed".into()),
+            (
+                "gauss-hermite:max_nodes=2",
+                "max_nodes",
+                "is 2; give a cap from 3 (one axis of this order) to 10000000".into(),
+            ),
+        ];
+        for (text, key, message) in texts {
+            assert_eq!(MethodSpec::parse(text).unwrap_err(), BuildError::new(key, message), "{text}");
+        }
+        let objects = [
+            (json!({"kappa": 1}), "id", format!("is missing; {known}")),
+            (json!({"id": 3}), "id", format!("is 3; {known}")),
+            // A NaN of a TOML file arrives as null: it must not pass for the default.
+            (json!({"id": "unscented", "kappa": null}), "kappa", "invalid type: null, expected f64".into()),
+            (json!({"id": "unscented", "kappa": "1"}), "kappa", "invalid type: string \"1\", expected f64".into()),
+        ];
+        for (object, key, message) in objects {
+            assert_eq!(from(object.clone()).unwrap_err(), BuildError::new(key, message), "{object}");
+        }
+    }
+}
