@@ -1,2 +1,7 @@
-//! The command-line program; everything is in the library.
-fn main() {}
+//! The command-line program: it reads what was typed and calls the library.
+
+mod cli;
+
+fn main() -> std::process::ExitCode {
+    cli::main()
+}

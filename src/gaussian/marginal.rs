@@ -51,6 +51,14 @@ impl Marginal {
             Some(lift) => lift * cross_covariance,
         }
     }
+
+    /// As [`Marginal::lift`], written into `whole` (n x p); where every component is kept in order there is
+    /// nothing to do and `whole` is left alone.
+    pub fn lift_into(&self, cross_covariance: &DMatrix<f64>, whole: &mut DMatrix<f64>) {
+        if let Some(lift) = &self.lift {
+            lift.mul_to(cross_covariance, whole);
+        }
+    }
 }
 
 #[cfg(test)]

@@ -1,4 +1,4 @@
-use nalgebra::{DMatrix, DVector};
+use nalgebra::{Cholesky, DMatrix, DVector};
 use rand::RngExt;
 use rand_distr::StandardNormal;
 use rand_pcg::Pcg64Dxsm;
@@ -101,6 +101,8 @@ impl Pilot {
         let mut centre = first_centre(key, sensor, prior, root, &angular, &mut block);
         let mut tally = Tally::empty(a, p);
         let mut part = Tally::empty(a, p);
+        let mut squares = Tally::empty(a, a);
+        let mut square_part = Tally::empty(a, a);
         let mut circles = vec![CircularSum::default(); p];
         let mut far = vec![false; p];
         for b in 0..PILOT_BLOCKS {
@@ -112,6 +114,8 @@ impl Pilot {
                     far[j] |= e.iter().any(|d| d.abs() > FAR);
                 }
             }
+            square_part.of_block(BLOCK, &mut block.z.clone(), &mut block.z.clone());
+            squares.merge(&square_part);
             part.of_block(BLOCK, &mut block.z, &mut block.e);
             tally.merge(&part);
         }
@@ -127,11 +131,12 @@ impl Pilot {
                 angular[j].then(|| circles[j].band((first * BLOCK as u64) as f64))
             })
             .collect();
-        // E[z z'] = I is known, so the covariance with z is itself the regression slope.
-        let mut slope = tally.ze.transpose() / (tally.count - 1.0);
-        if !slope.iter().all(|v| v.is_finite()) {
-            slope.fill(0.0);
-        }
+        // Least squares, not the covariance with z: on a linear sensor the fit is then exact and nothing is
+        // left to chance, however small the noise is beside the spread.
+        let slope = Cholesky::new(squares.ee)
+            .map(|zz| zz.solve(&tally.ze).transpose())
+            .filter(|slope| slope.iter().all(|v| v.is_finite()))
+            .unwrap_or_else(|| DMatrix::zeros(p, a));
         Self { centre, slope, far, bands }
     }
 }

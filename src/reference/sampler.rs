@@ -35,6 +35,20 @@ impl Default for SamplerSettings {
     }
 }
 
+impl SamplerSettings {
+    /// Checks that the cap leaves one block for each replicate.
+    ///
+    /// # Errors
+    /// [`CapTooSmall`] with the least cap that would do.
+    pub fn check(&self) -> Result<(), CapTooSmall> {
+        let least = BLOCK as u64 * self.replicates as u64;
+        if self.cap < least {
+            return Err(CapTooSmall { cap: self.cap, replicates: self.replicates, least });
+        }
+        Ok(())
+    }
+}
+
 /// The cap does not leave one block for each replicate.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, thiserror::Error)]
 #[error("a cap of {cap} samples is too small: {replicates} replicates need at least {least}")]
@@ -85,10 +99,7 @@ impl<'a> Sampler<'a> {
         key: Key,
         settings: SamplerSettings,
     ) -> Result<Self, CapTooSmall> {
-        let least = BLOCK as u64 * settings.replicates as u64;
-        if settings.cap < least {
-            return Err(CapTooSmall { cap: settings.cap, replicates: settings.replicates, least });
-        }
+        settings.check()?;
         let law = marginal.law();
         let root = law.root();
         let ground = Ground {

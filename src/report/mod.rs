@@ -1,1 +1,12 @@
-//! x
+//! Reports: what surveys found, as files for machines and tables for people. Nothing is computed here.
+
+mod catalogue;
+mod folder;
+mod manifest;
+mod records;
+mod scores_csv;
+mod table;
+
+pub use catalogue::{method_table, score_table, sensor_table};
+pub use folder::{FolderError, ResultsFolder};
+pub use table::{CAUTION, write_summary};

@@ -61,16 +61,17 @@ impl<F: Formula> Sensor for F {
     }
 
     fn values(&self, length: usize, x: &[f64], y: &mut [f64]) {
-        let (a, p) = (Formula::reads(self).len(), Formula::outputs(self).len());
-        let mut point: SmallVec<[f64; 8]> = SmallVec::from_elem(0.0, a);
-        let mut output: SmallVec<[f64; 8]> = SmallVec::from_elem(0.0, p);
+        let mut point: SmallVec<[f64; 8]> = SmallVec::from_elem(0.0, Formula::reads(self).len());
+        let mut output: SmallVec<[f64; 8]> = SmallVec::from_elem(0.0, Formula::outputs(self).len());
+        // Plain slices: through the small vectors each access would ask again where the numbers are kept.
+        let (point, output) = (point.as_mut_slice(), output.as_mut_slice());
         for k in 0..length {
-            for i in 0..a {
-                point[i] = x[i * length + k];
+            for (coordinate, column) in point.iter_mut().zip(x.chunks_exact(length)) {
+                *coordinate = column[k];
             }
-            self.evaluate(&point, &mut output);
-            for j in 0..p {
-                y[j * length + k] = output[j];
+            self.evaluate(point, output);
+            for (value, column) in output.iter().zip(y.chunks_exact_mut(length)) {
+                column[k] = *value;
             }
         }
     }

@@ -1,1 +1,13 @@
-//! x
+//! Surveys: every case of a suite sampled, every method scored and judged, cases over threads.
+
+mod case_run;
+mod run;
+mod settings;
+mod summary;
+mod timing;
+
+pub use case_run::{Answer, Answered, CaseResult};
+pub use run::{SurveyResult, Watch, survey};
+pub use settings::{SurveyError, SurveyPlan, SurveySettings};
+pub use summary::{MethodSummary, Summary, summarise};
+pub use timing::{Cost, Quartiles, Timing, time_methods};

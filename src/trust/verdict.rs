@@ -72,11 +72,13 @@ impl Finding {
         }
     }
 
-    /// What this limit says of a method that breaks it, such as `overconfident` or `mean error`.
+    /// What this limit says of a method that breaks it, such as `update overconfident`.
     pub fn fault(&self) -> &'static str {
         match (self.score, self.side) {
-            (ScoreKind::VarianceRatioLow, _) => "covariance too small",
-            (ScoreKind::VarianceRatioHigh, _) => "covariance too large",
+            (ScoreKind::MeanError, _) => "mean biased",
+            (ScoreKind::VarianceRatioLow, _) => "variance too small",
+            (ScoreKind::VarianceRatioHigh, _) => "variance too large",
+            (ScoreKind::CrossCovarianceError, _) => "cross-covariance off",
             (ScoreKind::NeesRatio, Side::AtMost) => "update overconfident",
             (ScoreKind::NeesRatio, Side::AtLeast) => "update too cautious",
             (kind, _) => kind.name(),
@@ -98,11 +100,11 @@ impl Finding {
                     Standing::Open => "too near its limit to tell".into(),
                     Standing::Kept => "inside its limit".into(),
                 };
-                format!(
-                    "{name} {value:.4} +- {standard_error:.1e} is {place} ({side} {}): {}",
-                    self.limit,
-                    self.fault()
-                )
+                let fault = match self.standing {
+                    Standing::Broken => format!("{}: ", self.fault()),
+                    Standing::Open | Standing::Kept => String::new(),
+                };
+                format!("{fault}{name} {value:.4} +- {standard_error:.1e} is {place} ({side} {})", self.limit)
             }
         }
     }
@@ -113,8 +115,8 @@ impl Finding {
 pub struct Verdict {
     /// The word.
     pub trust: Trust,
-    /// What decided it: the limit that is broken by the largest factor; for an undecided one the first that is
-    /// open. `None` for a trusted method or an invalid answer.
+    /// What decided it: the limit that is broken by the largest factor (the excess only where nothing else is
+    /// broken); for an undecided one the first that is open. `None` for a trusted method or an invalid answer.
     pub finding: Option<Finding>,
     /// The reason in one sentence.
     pub reason: String,
@@ -159,10 +161,12 @@ impl Judge {
             }
         };
         let findings = self.findings(scores);
-        let broken = findings
-            .iter()
-            .filter(|f| f.standing == Standing::Broken)
-            .max_by(|a, b| a.exceedance().total_cmp(&b.exceedance()));
+        // The excess sums up everything and names no direction: it leads only where it stands alone.
+        let broken = findings.iter().filter(|f| f.standing == Standing::Broken).max_by(|a, b| {
+            let rank = |f: &Finding| (f.score != ScoreKind::Excess, f.exceedance());
+            let ((a, x), (b, y)) = (rank(a), rank(b));
+            a.cmp(&b).then(x.total_cmp(&y))
+        });
         let open = || findings.iter().find(|f| f.standing == Standing::Open);
         if let Some(finding) = broken {
             Verdict { trust: Trust::Rejected, finding: Some(*finding), reason: finding.sentence() }
@@ -196,8 +200,9 @@ impl Judge {
     pub fn floor(&self, floor: &Floor) -> Standing {
         match floor {
             Floor::Known(estimate) => self.standing(*estimate, Side::AtMost, self.limits.floor),
-            Floor::Unbounded => Standing::Broken,
-            Floor::Undefined => Standing::Open,
+            // Without noise the true joint is no density and the divergence is infinite whatever the sensor, so
+            // it tells nothing of this one.
+            Floor::Unbounded | Floor::Undefined => Standing::Open,
         }
     }
 

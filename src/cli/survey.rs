@@ -1,0 +1,118 @@
+use std::io::Write;
+use std::path::PathBuf;
+
+use anyhow::{Context, anyhow};
+use clap::Args;
+use gaussworthy::method::MethodSpec;
+use gaussworthy::report::{CAUTION, ResultsFolder, write_summary};
+use gaussworthy::suite::Suite;
+use gaussworthy::survey::{SurveyPlan, SurveySettings, summarise, survey};
+
+use super::Failure;
+use super::progress::{Progress, heed_interrupts};
+
+#[derive(Debug, Args)]
+pub struct Arguments {
+    /// Bundled suites by name, or suite files ending in .toml; the three demonstration suites unless told
+    suites: Vec<String>,
+    /// Case records (JSON Lines) in place of a suite
+    #[arg(long, value_name = "FILE", conflicts_with = "suites")]
+    cases: Option<PathBuf>,
+    /// Where results folders go
+    #[arg(long, value_name = "DIR", default_value = "results")]
+    out: PathBuf,
+    /// Seed of draws and samples; the suite's, or 1, unless told
+    #[arg(long, value_name = "N")]
+    seed: Option<u64>,
+    /// Threads; all cores unless told. Results do not depend on it
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=1024))]
+    threads: Option<u16>,
+    /// Largest standardised standard error of every reference moment, such as 1e-3
+    #[arg(long, value_name = "X")]
+    precision: Option<f64>,
+    /// Most samples a case may take
+    #[arg(long, value_name = "N")]
+    cap: Option<u64>,
+    /// Methods, such as taylor-1,gauss-hermite:order=5 (see `catalogue methods`)
+    #[arg(long, value_name = "M,...", value_delimiter = ',')]
+    methods: Option<Vec<String>>,
+    /// Leave the timing phase out
+    #[arg(long)]
+    no_timing: bool,
+}
+
+pub fn run(arguments: Arguments) -> Result<(), Failure> {
+    let settings = SurveySettings {
+        seed: arguments.seed,
+        precision: arguments.precision,
+        cap: arguments.cap,
+        methods: arguments.methods.as_deref().map(methods).transpose()?,
+    };
+    let jobs = suites(&arguments)?
+        .into_iter()
+        .map(|suite| {
+            let plan = SurveyPlan::new(&suite, &settings)
+                .with_context(|| format!("suite `{}`", suite.name))
+                .map_err(Failure::Input)?;
+            let folder = ResultsFolder::open(&arguments.out, &suite.name)
+                .context("results folder")
+                .map_err(Failure::Input)?;
+            Ok((suite, plan, folder))
+        })
+        .collect::<Result<Vec<_>, Failure>>()?;
+    if let Some(threads) = arguments.threads {
+        rayon::ThreadPoolBuilder::new().num_threads(threads.into()).build_global().map_err(Failure::unfinished)?;
+    }
+    heed_interrupts().map_err(Failure::unfinished)?;
+
+    let mut out = std::io::stdout().lock();
+    for (suite, plan, folder) in &jobs {
+        let progress = Progress::new(&suite.name, suite.cases.len());
+        let result = survey(suite, plan, !arguments.no_timing, &progress);
+        progress.finish();
+        folder.write(&result).map_err(Failure::unfinished)?;
+        write_summary(&result, &summarise(&result), &mut out)?;
+        writeln!(out, "  Written to {}\n", folder.path().display())?;
+        if Progress::interrupted() {
+            return Err(Failure::Unfinished(anyhow!(
+                "interrupted in suite `{}`: {} of {} cases are finished and written",
+                suite.name,
+                result.cases.len(),
+                suite.cases.len()
+            )));
+        }
+    }
+    writeln!(out, "{CAUTION}")?;
+    Ok(())
+}
+
+fn suites(arguments: &Arguments) -> Result<Vec<Suite>, Failure> {
+    if let Some(path) = &arguments.cases {
+        return Ok(vec![Suite::from_case_records(path).map_err(Failure::input)?]);
+    }
+    let names: Vec<String> = if arguments.suites.is_empty() {
+        gaussworthy::suite::DEMONSTRATION.iter().map(ToString::to_string).collect()
+    } else {
+        arguments.suites.clone()
+    };
+    let suites = names
+        .iter()
+        .map(|name| Suite::load(name, arguments.seed).map_err(Failure::input))
+        .collect::<Result<Vec<_>, _>>()?;
+    for (i, suite) in suites.iter().enumerate() {
+        if suites[..i].iter().any(|s| s.name == suite.name) {
+            return Err(Failure::Input(anyhow!(
+                "two suites are called `{}`: their results would share a folder",
+                suite.name
+            )));
+        }
+    }
+    Ok(suites)
+}
+
+fn methods(labels: &[String]) -> Result<Vec<MethodSpec>, Failure> {
+    labels
+        .iter()
+        .map(|label| MethodSpec::parse(label).with_context(|| format!("--methods {label}")).map_err(Failure::Input))
+        .collect()
+}

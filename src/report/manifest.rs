@@ -1,0 +1,125 @@
+use std::io::{self, Write};
+
+use serde::Serialize;
+
+use crate::survey::{Quartiles, SurveyResult};
+use crate::trust::Limits;
+
+/// What a results folder is: enough to make it again and to know what its times mean.
+#[derive(Serialize)]
+struct Manifest<'a> {
+    version: &'static str,
+    build: Build,
+    suite: SuiteEntry<'a>,
+    seed: u64,
+    settings: Settings<'a>,
+    machine: Machine,
+    cases: Cases,
+    samples: u64,
+    times: Times,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    cost: Option<Vec<MethodCost<'a>>>,
+}
+
+#[derive(Serialize)]
+struct Build {
+    profile: &'static str,
+    target: String,
+}
+
+#[derive(Serialize)]
+struct SuiteEntry<'a> {
+    name: &'a str,
+    title: &'a str,
+    note: &'a str,
+    /// SHA-256 of the suite's text.
+    hash: &'a str,
+}
+
+#[derive(Serialize)]
+struct Settings<'a> {
+    precision: f64,
+    cap: u64,
+    replicates: usize,
+    methods: Vec<&'a str>,
+    limits: &'a Limits,
+}
+
+#[derive(Serialize)]
+struct Machine {
+    threads: usize,
+    cores: usize,
+    architecture: &'static str,
+    system: &'static str,
+}
+
+#[derive(Serialize)]
+struct Cases {
+    asked: usize,
+    finished: usize,
+    complete: bool,
+}
+
+#[derive(Serialize)]
+struct Times {
+    /// RFC 3339, UTC.
+    started: String,
+    sampling_seconds: f64,
+    timing_seconds: f64,
+}
+
+#[derive(Serialize)]
+struct MethodCost<'a> {
+    method: &'a str,
+    /// Quartiles over the timed cases of the ratio to first-order Taylor.
+    time_ratio: Option<Quartiles>,
+    /// On all threads.
+    transforms_per_second: Option<f64>,
+}
+
+pub(super) fn write(survey: &SurveyResult<'_>, to: &mut dyn Write) -> io::Result<()> {
+    let (suite, plan) = (survey.suite, survey.plan);
+    let labels: Vec<&str> = plan.methods.iter().map(|m| m.label()).collect();
+    let manifest = Manifest {
+        version: env!("CARGO_PKG_VERSION"),
+        build: Build {
+            profile: if cfg!(debug_assertions) { "debug" } else { "release" },
+            target: format!("{}-{}", std::env::consts::ARCH, std::env::consts::OS),
+        },
+        suite: SuiteEntry { name: &suite.name, title: &suite.title, note: &suite.note, hash: &suite.hash },
+        seed: plan.sampler.seed,
+        settings: Settings {
+            precision: plan.sampler.precision,
+            cap: plan.sampler.cap,
+            replicates: plan.sampler.replicates,
+            methods: labels.clone(),
+            limits: &plan.limits,
+        },
+        machine: Machine {
+            threads: rayon::current_num_threads(),
+            cores: std::thread::available_parallelism().map_or(1, usize::from),
+            architecture: std::env::consts::ARCH,
+            system: std::env::consts::OS,
+        },
+        cases: Cases { asked: suite.cases.len(), finished: survey.cases.len(), complete: survey.is_complete() },
+        samples: survey.points(),
+        times: Times {
+            started: humantime::format_rfc3339_seconds(survey.started).to_string(),
+            sampling_seconds: survey.sampling_time.as_secs_f64(),
+            timing_seconds: survey.timing_time.as_secs_f64(),
+        },
+        cost: survey.timing.as_ref().map(|timing| {
+            labels
+                .iter()
+                .enumerate()
+                .map(|(m, &method)| MethodCost {
+                    method,
+                    time_ratio: timing.ratio[m],
+                    transforms_per_second: timing.throughput[m],
+                })
+                .collect()
+        }),
+    };
+    serde_json::to_writer_pretty(&mut *to, &manifest)?;
+    writeln!(to)
+}

@@ -1,0 +1,135 @@
+use std::io::{self, Write};
+
+use comfy_table::{CellAlignment, ColumnConstraint, ContentArrangement, Table, presets};
+
+use crate::method::Evaluations;
+use crate::survey::{MethodSummary, Summary, SurveyResult};
+
+/// What every published page says.
+pub const CAUTION: &str = "\
+Results guide a choice, they certify nothing: before an estimator steers, lands, stops or warns
+anything, your own verification process, the applicable standards and codes, and licensed or
+responsible engineers decide.";
+
+/// Columns that a table may take.
+const WIDTH: u16 = 100;
+
+/// A table without borders that fits [`WIDTH`] columns; `right` are the columns of numbers.
+pub(super) fn plain_table(header: &[&str], right: std::ops::Range<usize>) -> Table {
+    let mut table = Table::new();
+    table.load_style(presets::NOTHING).set_width(WIDTH).set_content_arrangement(ContentArrangement::Dynamic);
+    table.set_header(header.to_vec());
+    for (i, column) in table.column_iter_mut().enumerate() {
+        column.set_padding((0, 2));
+        if right.contains(&i) {
+            column.set_cell_alignment(CellAlignment::Right);
+        }
+    }
+    table
+}
+
+/// Keeps the words of these columns on one line.
+fn keep_whole(table: &mut Table, columns: std::ops::Range<usize>) {
+    for i in columns {
+        if let Some(column) = table.column_mut(i) {
+            column.set_constraint(ColumnConstraint::ContentWidth);
+        }
+    }
+}
+
+/// Writes what a survey found, one table a suite.
+///
+/// # Errors
+/// What the writer says.
+pub fn write_summary(survey: &SurveyResult<'_>, summary: &Summary, to: &mut dyn Write) -> io::Result<()> {
+    let suite = survey.suite;
+    writeln!(to, "{} - {}", suite.name, suite.title)?;
+    writeln!(
+        to,
+        "{} of {} cases, {:.3e} samples in {:.1} s; references to {:.0e} (worst standardised standard error)",
+        summary.cases,
+        suite.cases.len(),
+        survey.points() as f64,
+        survey.sampling_time.as_secs_f64(),
+        survey.plan.sampler.precision,
+    )?;
+    let mut table =
+        plain_table(&["method", "evals", "time", "trusted", "rejected", "undecided", "what breaks first"], 1..6);
+    keep_whole(&mut table, 0..6);
+    for method in &summary.methods {
+        table.add_row(row(method));
+    }
+    writeln!(to, "{}", lines(&table))?;
+    for note in notes(survey, summary) {
+        writeln!(to, "  {note}")?;
+    }
+    writeln!(to)
+}
+
+fn row(m: &MethodSummary) -> Vec<String> {
+    let share = |count: usize| match m.served() {
+        0 => "-".to_string(),
+        served => format!("{:.0} %", 100.0 * count as f64 / served as f64),
+    };
+    vec![
+        m.label.clone(),
+        m.evaluations.map_or("-".into(), evaluations),
+        m.time_ratio.map_or("-".into(), |q| format!("{:.1}", q.median)),
+        share(m.trusted),
+        share(m.rejected),
+        share(m.undecided),
+        m.breaks_first.map_or("-".into(), |(fault, count)| {
+            format!("{fault} ({:.0} %)", 100.0 * count as f64 / m.rejected as f64)
+        }),
+    ]
+}
+
+/// Evaluations of h as a number, with a Jacobian as J and a set of Hessians as H beside it.
+fn evaluations((least, most): (Evaluations, Evaluations)) -> String {
+    let mut parts = Vec::new();
+    if most.values > 0 {
+        parts.push(if least.values == most.values {
+            most.values.to_string()
+        } else {
+            format!("{}-{}", least.values, most.values)
+        });
+    }
+    for (count, mark) in [(most.jacobians, "J"), (most.hessians, "H")] {
+        if count > 0 {
+            parts.push(format!("{count} {mark}"));
+        }
+    }
+    parts.join(" + ")
+}
+
+fn notes(survey: &SurveyResult<'_>, summary: &Summary) -> Vec<String> {
+    let mut notes = Vec::new();
+    let limits = &survey.plan.limits;
+    if summary.beyond_gaussian > 0 {
+        notes.push(format!(
+            "No Gaussian should be trusted in {} of {} cases: their floor is above {} nats.",
+            summary.beyond_gaussian, summary.cases, limits.floor
+        ));
+    }
+    if summary.wide > 0 {
+        notes.push(format!(
+            "{} references fell short of the asked precision at the cap of {} samples; their standard errors say by \
+             how much.",
+            summary.wide, survey.plan.sampler.cap
+        ));
+    }
+    if summary.refused > 0 {
+        notes.push(format!("{} references are refused; no verdict rests on them.", summary.refused));
+    }
+    for method in &summary.methods {
+        if let Some(reason) = &method.skip_reason {
+            notes.push(format!("{} was skipped in {} cases: {reason}.", method.label, method.skipped));
+        }
+    }
+    notes
+}
+
+/// The table without the blanks that end its lines.
+pub(super) fn lines(table: &Table) -> String {
+    table.trim_fmt()
+}

@@ -1,0 +1,135 @@
+use crate::gaussian::Moments;
+use crate::method::{Counted, Evaluations, MethodSpec, Problem, Refusal, Transform};
+use crate::reference::{Reference, Sampler, Soundness};
+use crate::score::{Floor, Invalid, Scorer, Scores};
+use crate::suite::Case;
+use crate::trust::{Standing, Trust, Verdict};
+
+use super::SurveyPlan;
+
+/// What a survey found on one case.
+#[derive(Debug, Clone)]
+pub struct CaseResult {
+    /// Its place in the suite.
+    pub index: usize,
+    /// Its reference (the replicates are dropped once everything is scored).
+    pub reference: Reference,
+    /// How far the true law is from any Gaussian.
+    pub floor: Floor,
+    /// The floor against its limit.
+    pub floor_standing: Standing,
+    /// One a method, in the plan's order.
+    pub answers: Vec<Answer>,
+}
+
+/// A method's answer, or why it gave none.
+pub type Answer = Result<Answered, Refusal>;
+
+/// A method's answer on one case.
+#[derive(Debug, Clone)]
+pub struct Answered {
+    /// Its moments of the whole state.
+    pub moments: Moments,
+    /// What it evaluated, counted.
+    pub evaluations: Evaluations,
+    /// Its scores, or why it is no Gaussian.
+    pub scores: Result<Scores, Invalid>,
+    /// The verdict.
+    pub verdict: Verdict,
+}
+
+/// One transform of a case, lifted to the whole state.
+pub(super) fn transform(case: &Case, problem: Problem<'_>, transform: &mut dyn Transform) -> Moments {
+    let mut moments = Moments::zeros(problem.prior.dimension(), problem.sensor.outputs().len());
+    transform.apply(problem, &mut moments);
+    let cross_covariance = case.marginal().lift(moments.cross_covariance);
+    Moments { cross_covariance, ..moments }
+}
+
+struct Candidate {
+    moments: Moments,
+    evaluations: Evaluations,
+}
+
+fn candidate(case: &Case, method: &MethodSpec) -> Result<Candidate, Refusal> {
+    let prior = case.marginal().law();
+    let mut planned = method.method().plan(prior.dimension(), case.sensor().outputs().len())?;
+    let counted = Counted::new(case.sensor());
+    let noise = case.noise_or_zero();
+    let problem = Problem { sensor: &counted, prior, noise: &noise };
+    let moments = transform(case, problem, planned.as_mut());
+    Ok(Candidate { moments, evaluations: counted.evaluations() })
+}
+
+/// Samples, scores and judges one case: deepens the reference until it is as precise as asked and every
+/// verdict is decided, or the cap is reached. `None` when `stop` came first.
+pub(super) fn run_case(
+    case: &Case,
+    index: usize,
+    plan: &SurveyPlan,
+    stop: &dyn Fn() -> bool,
+) -> Option<CaseResult> {
+    let candidates: Vec<Result<Candidate, Refusal>> = plan.methods.iter().map(|m| candidate(case, m)).collect();
+    // The plan has checked the cap already.
+    let mut sampler = Sampler::new(case, plan.sampler).ok()?;
+    loop {
+        if stop() {
+            return None;
+        }
+        let more = sampler.deepen();
+        let reference = sampler.reference();
+        if reference.soundness == Soundness::Wide && more {
+            continue;
+        }
+        let scorer = Scorer::new(case.prior(), case.sensor().outputs(), &reference);
+        let judged: Vec<_> = candidates
+            .iter()
+            .map(|c| c.as_ref().ok().map(|c| judge(&scorer, &reference, &c.moments, plan)))
+            .collect();
+        let floor = scorer.floor(case.noise());
+        let floor_standing = plan.judge.floor(&floor);
+        // More points cannot define what is undefined, nor mend a refused reference.
+        let undecided = judged
+            .iter()
+            .flatten()
+            .any(|(_, v)| v.trust == Trust::Undecided && v.finding.is_some_and(|f| f.estimate.is_some()))
+            || (floor_standing == Standing::Open && matches!(floor, Floor::Known(_)));
+        if undecided && more && reference.soundness != Soundness::Refused {
+            continue;
+        }
+        let answers = candidates
+            .into_iter()
+            .zip(judged)
+            .map(|(candidate, judged)| match (candidate, judged) {
+                (Ok(Candidate { moments, evaluations }), Some((scores, verdict))) => {
+                    Ok(Answered { moments, evaluations, scores, verdict })
+                }
+                (Err(refusal), _) => Err(refusal),
+                (Ok(_), None) => Err(Refusal("was not judged".into())),
+            })
+            .collect();
+        let reference = Reference { replicates: Vec::new(), ..reference };
+        return Some(CaseResult { index, reference, floor, floor_standing, answers });
+    }
+}
+
+fn judge(
+    scorer: &Scorer<'_>,
+    reference: &Reference,
+    moments: &Moments,
+    plan: &SurveyPlan,
+) -> (Result<Scores, Invalid>, Verdict) {
+    let scores = scorer.score(moments);
+    let verdict = match &reference.reason {
+        Some(reason) => undecided(format!("the reference is refused: {reason}")),
+        None if !scorer.is_defined() => {
+            undecided("the covariance of the measurement is singular: add noise or drop an output".into())
+        }
+        None => plan.judge.verdict(&scores),
+    };
+    (scores, verdict)
+}
+
+fn undecided(reason: String) -> Verdict {
+    Verdict { trust: Trust::Undecided, finding: None, reason }
+}

@@ -1,0 +1,73 @@
+use std::time::{Duration, Instant, SystemTime};
+
+use rayon::prelude::*;
+
+use super::case_run::{CaseResult, run_case};
+use super::settings::SurveyPlan;
+use super::timing::{Timing, time_methods};
+use crate::suite::Suite;
+
+/// Who watches a survey: progress goes out, the wish to stop comes in.
+pub trait Watch: Sync {
+    /// A case is finished after so many samples.
+    fn case_done(&self, points: u64);
+
+    /// Whether the survey should stop; what is finished stays.
+    fn stop(&self) -> bool;
+}
+
+/// What a survey of one suite found.
+#[derive(Debug)]
+pub struct SurveyResult<'a> {
+    /// The suite.
+    pub suite: &'a Suite,
+    /// What was done.
+    pub plan: &'a SurveyPlan,
+    /// The finished cases, in the suite's order.
+    pub cases: Vec<CaseResult>,
+    /// What the methods cost, if that was asked for.
+    pub timing: Option<Timing>,
+    /// When it began.
+    pub started: SystemTime,
+    /// How long sampling, scoring and judging took.
+    pub sampling_time: Duration,
+    /// How long timing took.
+    pub timing_time: Duration,
+}
+
+impl SurveyResult<'_> {
+    /// Whether every case was finished.
+    pub fn is_complete(&self) -> bool {
+        self.cases.len() == self.suite.cases.len()
+    }
+
+    /// Samples taken in all cases.
+    pub fn points(&self) -> u64 {
+        self.cases.iter().map(|c| c.reference.points).sum()
+    }
+}
+
+/// Surveys a suite on rayon's current threads: samples, scores and judges its cases in parallel, then (when
+/// `timed` and not stopped) times the methods with nothing else running.
+///
+/// Everything but the times is the same to the bit on any number of threads.
+pub fn survey<'a>(suite: &'a Suite, plan: &'a SurveyPlan, timed: bool, watch: &dyn Watch) -> SurveyResult<'a> {
+    let started = SystemTime::now();
+    let clock = Instant::now();
+    let cases: Vec<CaseResult> = suite
+        .cases
+        .par_iter()
+        .enumerate()
+        // One case at a time: some take a thousand times longer than others.
+        .with_max_len(1)
+        .filter_map(|(index, case)| {
+            let result = run_case(case, index, plan, &|| watch.stop())?;
+            watch.case_done(result.reference.points);
+            Some(result)
+        })
+        .collect();
+    let sampling_time = clock.elapsed();
+    let clock = Instant::now();
+    let timing = (timed && !watch.stop()).then(|| time_methods(suite, &plan.methods));
+    SurveyResult { suite, plan, cases, timing, started, sampling_time, timing_time: clock.elapsed() }
+}

@@ -1,0 +1,113 @@
+use std::collections::BTreeMap;
+
+use super::run::SurveyResult;
+use super::timing::Quartiles;
+use crate::method::Evaluations;
+use crate::reference::Soundness;
+use crate::trust::{Standing, Trust};
+
+/// A survey of one suite in a few numbers.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Summary {
+    /// Cases finished.
+    pub cases: usize,
+    /// Cases in which the floor is above its limit: no Gaussian should be trusted there.
+    pub beyond_gaussian: usize,
+    /// Cases in which it cannot be told whether the floor is above its limit.
+    pub floor_open: usize,
+    /// Cases whose reference fell short of the asked precision at the cap.
+    pub wide: usize,
+    /// Cases whose reference is refused.
+    pub refused: usize,
+    /// One a method, in the plan's order.
+    pub methods: Vec<MethodSummary>,
+}
+
+/// How one method fared in a suite.
+#[derive(Debug, Clone, PartialEq)]
+pub struct MethodSummary {
+    /// The method's label.
+    pub label: String,
+    /// What a transform evaluates at the least and at the most; `None` if it was skipped everywhere.
+    pub evaluations: Option<(Evaluations, Evaluations)>,
+    /// Time of a transform as a ratio to first-order Taylor, quartiles over cases.
+    pub time_ratio: Option<Quartiles>,
+    /// Transforms a second on all threads.
+    pub throughput: Option<f64>,
+    /// Cases in which it is trusted.
+    pub trusted: usize,
+    /// Cases in which it is rejected.
+    pub rejected: usize,
+    /// Cases in which the reference cannot tell.
+    pub undecided: usize,
+    /// Cases that it cannot serve.
+    pub skipped: usize,
+    /// Why, of the first of those.
+    pub skip_reason: Option<String>,
+    /// What is broken by the largest factor most often, and in how many of the rejected cases.
+    pub breaks_first: Option<(&'static str, usize)>,
+}
+
+impl MethodSummary {
+    /// Cases that it could serve.
+    pub fn served(&self) -> usize {
+        self.trusted + self.rejected + self.undecided
+    }
+}
+
+/// Counts a survey's verdicts.
+pub fn summarise(survey: &SurveyResult<'_>) -> Summary {
+    let count = |holds: &dyn Fn(&super::CaseResult) -> bool| survey.cases.iter().filter(|c| holds(c)).count();
+    Summary {
+        cases: survey.cases.len(),
+        beyond_gaussian: count(&|c| c.floor_standing == Standing::Broken),
+        floor_open: count(&|c| c.floor_standing == Standing::Open),
+        wide: count(&|c| c.reference.soundness == Soundness::Wide),
+        refused: count(&|c| c.reference.soundness == Soundness::Refused),
+        methods: (0..survey.plan.methods.len()).map(|m| summarise_method(survey, m)).collect(),
+    }
+}
+
+fn summarise_method(survey: &SurveyResult<'_>, m: usize) -> MethodSummary {
+    let timing = survey.timing.as_ref();
+    let mut summary = MethodSummary {
+        label: survey.plan.methods[m].label().into(),
+        evaluations: None,
+        time_ratio: timing.and_then(|t| t.ratio[m]),
+        throughput: timing.and_then(|t| t.throughput[m]),
+        trusted: 0,
+        rejected: 0,
+        undecided: 0,
+        skipped: 0,
+        skip_reason: None,
+        breaks_first: None,
+    };
+    let mut faults: BTreeMap<&'static str, usize> = BTreeMap::new();
+    for case in &survey.cases {
+        let answered = match &case.answers[m] {
+            Ok(answered) => answered,
+            Err(refusal) => {
+                summary.skipped += 1;
+                summary.skip_reason.get_or_insert_with(|| refusal.to_string());
+                continue;
+            }
+        };
+        let here = answered.evaluations;
+        let (least, most) = summary.evaluations.unwrap_or((here, here));
+        summary.evaluations = Some((
+            if here.values < least.values { here } else { least },
+            if here.values > most.values { here } else { most },
+        ));
+        match answered.verdict.trust {
+            Trust::Trusted => summary.trusted += 1,
+            Trust::Undecided => summary.undecided += 1,
+            Trust::Rejected => {
+                summary.rejected += 1;
+                let fault = answered.verdict.finding.map_or("no Gaussian", |f| f.fault());
+                *faults.entry(fault).or_default() += 1;
+            }
+        }
+    }
+    summary.breaks_first = faults.into_iter().max_by_key(|&(_, count)| count);
+    summary
+}

@@ -1,0 +1,180 @@
+use std::hint::black_box;
+use std::time::{Duration, Instant};
+
+use nalgebra::DMatrix;
+use serde::Serialize;
+
+use crate::gaussian::Moments;
+use crate::method::{MethodSpec, Problem, Transform};
+use crate::suite::{Case, Suite};
+
+/// Rounds of a measurement: methods in turn, round by round, so that what slows the machine slows all alike.
+const ROUNDS: usize = 11;
+/// A batch of transforms lasts at least this long, well above the clock's step.
+const BATCH: Duration = Duration::from_micros(10);
+/// Cases timed in a suite, evenly chosen where there are more.
+const TIMED_CASES: usize = 240;
+/// How long the transforms of one method run on all threads.
+const THROUGHPUT_TIME: Duration = Duration::from_millis(40);
+/// Every ratio is to this method in the same round.
+const BASELINE: &str = "taylor-1";
+
+/// Median and quartiles of repeated measurements.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+pub struct Quartiles {
+    /// First quartile.
+    pub lower: f64,
+    /// Median.
+    pub median: f64,
+    /// Third quartile.
+    pub upper: f64,
+}
+
+impl Quartiles {
+    /// Of a list of measurements (linear between order statistics); `None` of none.
+    pub fn of(mut values: Vec<f64>) -> Option<Self> {
+        values.sort_by(f64::total_cmp);
+        let last = values.len().checked_sub(1)?;
+        let at = |share: f64| {
+            let place = share * last as f64;
+            let (low, high) = (values[place.floor() as usize], values[place.ceil() as usize]);
+            low + (high - low) * place.fract()
+        };
+        Some(Self { lower: at(0.25), median: at(0.5), upper: at(0.75) })
+    }
+}
+
+/// What one transform costs.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+pub struct Cost {
+    /// Time of one transform on one thread \[ns\].
+    pub nanoseconds: Quartiles,
+    /// The same as a ratio to first-order Taylor in the same round.
+    pub ratio: Quartiles,
+}
+
+/// What the methods of a suite cost.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Timing {
+    /// By case (index in the suite) and method (in the plan's order); `None` where the method refuses.
+    pub cases: Vec<(usize, Vec<Option<Cost>>)>,
+    /// By method: quartiles over the timed cases of their median ratio to first-order Taylor.
+    pub ratio: Vec<Option<Quartiles>>,
+    /// By method: transforms a second on all threads.
+    pub throughput: Vec<Option<f64>>,
+}
+
+/// Times the methods on a suite's cases; nothing else of ours should run meanwhile.
+pub fn time_methods(suite: &Suite, methods: &[MethodSpec]) -> Timing {
+    let step = suite.cases.len().div_ceil(TIMED_CASES).max(1);
+    let chosen: Vec<usize> = (0..suite.cases.len()).step_by(step).collect();
+    let cases: Vec<(usize, Vec<Option<Cost>>)> =
+        chosen.iter().map(|&i| (i, time_case(&suite.cases[i], methods))).collect();
+    let ratio = (0..methods.len())
+        .map(|m| Quartiles::of(cases.iter().filter_map(|(_, costs)| costs[m].map(|c| c.ratio.median)).collect()))
+        .collect();
+    let throughput = methods
+        .iter()
+        .map(|method| throughput(&chosen.iter().map(|&i| &suite.cases[i]).collect::<Vec<_>>(), method))
+        .collect();
+    Timing { cases, ratio, throughput }
+}
+
+/// One case with the transform of one method, ready to run again and again.
+struct Bench<'a> {
+    case: &'a Case,
+    noise: DMatrix<f64>,
+    planned: Box<dyn Transform>,
+    moments: Moments,
+    whole: DMatrix<f64>,
+}
+
+impl<'a> Bench<'a> {
+    fn new(case: &'a Case, method: &MethodSpec) -> Option<Self> {
+        let (a, p) = (case.marginal().law().dimension(), case.sensor().outputs().len());
+        Some(Self {
+            case,
+            noise: case.noise_or_zero(),
+            planned: method.method().plan(a, p).ok()?,
+            moments: Moments::zeros(a, p),
+            whole: DMatrix::zeros(case.prior().dimension(), p),
+        })
+    }
+
+    fn once(&mut self) {
+        let marginal = self.case.marginal();
+        let problem = Problem { sensor: self.case.sensor(), prior: marginal.law(), noise: &self.noise };
+        self.planned.apply(black_box(problem), &mut self.moments);
+        marginal.lift_into(&self.moments.cross_covariance, &mut self.whole);
+        black_box((&self.moments, &self.whole));
+    }
+
+    /// Time of one transform \[ns\], over a batch of `batch`.
+    fn time(&mut self, batch: u32) -> f64 {
+        let clock = Instant::now();
+        for _ in 0..batch {
+            self.once();
+        }
+        clock.elapsed().as_secs_f64() * 1e9 / f64::from(batch)
+    }
+
+    /// A batch long enough for the clock; warms caches and branch predictors on the way.
+    fn batch(&mut self) -> u32 {
+        let mut batch = 1;
+        while self.time(batch) * f64::from(batch) < BATCH.as_secs_f64() * 1e9 && batch < 1 << 20 {
+            batch *= 2;
+        }
+        batch
+    }
+}
+
+fn time_case(case: &Case, methods: &[MethodSpec]) -> Vec<Option<Cost>> {
+    let baseline = MethodSpec::parse(BASELINE).ok().and_then(|m| Bench::new(case, &m));
+    let Some(mut baseline) = baseline else { return vec![None; methods.len()] };
+    let baseline_batch = baseline.batch();
+    let mut benches: Vec<Option<(Bench<'_>, u32)>> = methods
+        .iter()
+        .map(|m| {
+            let mut bench = Bench::new(case, m)?;
+            let batch = bench.batch();
+            Some((bench, batch))
+        })
+        .collect();
+    let mut times = vec![Vec::with_capacity(ROUNDS); methods.len()];
+    let mut ratios = times.clone();
+    for _ in 0..ROUNDS {
+        let unit = baseline.time(baseline_batch);
+        for (m, bench) in benches.iter_mut().enumerate() {
+            if let Some((bench, batch)) = bench {
+                let time = bench.time(*batch);
+                times[m].push(time);
+                ratios[m].push(time / unit);
+            }
+        }
+    }
+    times
+        .into_iter()
+        .zip(ratios)
+        .map(|(times, ratios)| Some(Cost { nanoseconds: Quartiles::of(times)?, ratio: Quartiles::of(ratios)? }))
+        .collect()
+}
+
+fn throughput(cases: &[&Case], method: &MethodSpec) -> Option<f64> {
+    let rates: Vec<f64> = rayon::broadcast(|_| {
+        let mut benches: Vec<Bench<'_>> = cases.iter().filter_map(|case| Bench::new(case, method)).collect();
+        if benches.is_empty() {
+            return 0.0;
+        }
+        let clock = Instant::now();
+        let mut done = 0u64;
+        while clock.elapsed() < THROUGHPUT_TIME {
+            for bench in &mut benches {
+                bench.once();
+            }
+            done += benches.len() as u64;
+        }
+        done as f64 / clock.elapsed().as_secs_f64()
+    });
+    let total: f64 = rates.iter().sum();
+    (total > 0.0).then_some(total)
+}
