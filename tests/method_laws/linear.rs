@@ -143,6 +143,19 @@ fn a_linear_angle_is_exact_in_its_chart() {
 }
 
 #[test]
+fn the_chart_is_centred_at_the_value_at_the_mean() {
+    // An angle with sd 2: two points 2 rad to either side of h(m) are inside its chart, but more than pi from
+    // each other, so a chart centred at a point would wrap one of them.
+    let sensor = Shaped::<Sum>::new(1, Output::angle("theta"));
+    let prior = Gaussian::new(dvector![3.0], dmatrix![4.0]).unwrap();
+    for label in ["cubature-3", "gauss-hermite:order=2", "unscented:kappa=0"] {
+        let got = moments(&MethodSpec::parse(label).unwrap(), &sensor, &prior, &dmatrix![0.0]);
+        assert_close(got.mean[0], 3.0, TIGHT, 3.0, label);
+        assert_close(got.covariance[(0, 0)], 4.0, TIGHT, 4.0, label);
+    }
+}
+
+#[test]
 fn a_large_mean_with_a_small_spread_keeps_its_digits() {
     // y = 1e6 + x with sd(x) = 1e-3: a value is rounded to 1e6 * 1.1e-16 = 1.2e-10, 1.2e-7 sd, and so is what
     // a rule makes of it; a plain sum of squares would have lost 1e12 * 1.1e-16 = 1.2e-4, 120 variances.
