@@ -4,7 +4,9 @@ use super::{BuildError, Method, PointSet, PointTransform, Refusal, Transform};
 
 /// The third-degree spherical-radial cubature rule: 2a points
 ///
-///     z = +-sqrt(a) e_i, weight 1 / (2 a) each
+/// ```text
+/// z = +-sqrt(a) e_i, weight 1 / (2 a) each
+/// ```
 ///
 /// Exact for polynomials of degree 3 in the mean, 2 in the cross-covariance, 1 in the covariance. No weight
 /// is negative, so the covariance never comes out indefinite but for rounding.

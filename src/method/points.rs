@@ -70,8 +70,10 @@ impl PointSet {
 ///
 /// With P = L L', x_k = m + L z_k and a centre c:
 ///
-///     d_k = h(x_k) - c (wrapped where angular),  e = sum_k wm_k d_k,  mu = c + e (wrapped where angular)
-///     S = sum_k wc_k (d_k - e)(d_k - e)' + R,    C = L sum_k wc_k z_k (d_k - e)'
+/// ```text
+/// d_k = h(x_k) - c (wrapped where angular),  e = sum_k wm_k d_k,  mu = c + e (wrapped where angular)
+/// S = sum_k wc_k (d_k - e)(d_k - e)' + R,    C = L sum_k wc_k z_k (d_k - e)'
+/// ```
 ///
 /// Because the mean weights sum to one, this is the published sum wm_k h(x_k) with its deviations, for any c;
 /// a c close to the values keeps the digits that a sum of large values loses (a mean of 1e6, a spread of

@@ -7,9 +7,13 @@ use crate::sensor::{Derivatives, Output};
 
 /// First-order Taylor expansion at the mean, as in the extended Kalman filter: with J = h'(m) (p x a),
 ///
-///     mu = h(m),  S = J P J' + R,  C = P J'
+/// ```text
+/// mu = h(m),  S = J P J' + R,  C = P J'
+/// ```
 ///
-/// Exact for polynomials of degree 1. One Jacobian a transform.
+/// Mean and covariance are exact for polynomials of degree 1, the cross-covariance for degree 2: there
+/// Cov(x, y) = P E\[h'\]' (Stein's identity), and a linear h' has its expectation at the mean. One Jacobian a
+/// transform.
 ///
 /// Source: A. H. Jazwinski, Stochastic Processes and Filtering Theory (Academic Press, 1970), ch. 8 (chapter
 /// from memory).
@@ -19,7 +23,9 @@ pub struct FirstOrderTaylor;
 /// Second-order Taylor expansion at the mean under a Gaussian prior: with the Hessians H_i (a x a) of the
 /// outputs,
 ///
-///     mu_i = h_i(m) + 1/2 tr(H_i P),  S_ij = (J P J')_ij + 1/2 tr(H_i P H_j P) + R_ij,  C = P J'
+/// ```text
+/// mu_i = h_i(m) + 1/2 tr(H_i P),  S_ij = (J P J')_ij + 1/2 tr(H_i P H_j P) + R_ij,  C = P J'
+/// ```
 ///
 /// All three are exact for polynomials of degree 2; the mean even for degree 3, whose third central moments
 /// vanish. One set of Hessians a transform.

@@ -5,7 +5,9 @@ use super::{BuildError, Method, PointSet, PointTransform, Refusal, Transform};
 
 /// The unscented transform: 2a + 1 points
 ///
-///     z_0 = 0, weight kappa / (a + kappa);  z = +-sqrt(a + kappa) e_i, weight 1 / (2 (a + kappa)) each
+/// ```text
+/// z_0 = 0, weight kappa / (a + kappa);  z = +-sqrt(a + kappa) e_i, weight 1 / (2 (a + kappa)) each
+/// ```
 ///
 /// Exact for polynomials of degree 3 in the mean, 2 in the cross-covariance, 1 in the covariance. kappa =
 /// 3 - a, the default, also matches E\[z_i^4\]; from a = 4 on it makes the centre weight negative, and the
@@ -54,8 +56,10 @@ impl Method for Unscented {
 
 /// The scaled unscented transform: with s = alpha^2 (a + kappa) and lambda = s - a, 2a + 1 points
 ///
-///     z_0 = 0, weights lambda / s (mean) and lambda / s + 1 - alpha^2 + beta (covariance);
-///     z = +-sqrt(s) e_i, weight 1 / (2 s) each
+/// ```text
+/// z_0 = 0, weights lambda / s (mean) and lambda / s + 1 - alpha^2 + beta (covariance);
+/// z = +-sqrt(s) e_i, weight 1 / (2 s) each
+/// ```
 ///
 /// Defaults alpha = 1e-3, beta = 2, kappa = 0. Exact for polynomials of degree 3 in the mean, 2 in the
 /// cross-covariance, 1 in the covariance.
@@ -122,6 +126,7 @@ impl Method for ScaledUnscented {
 /// `factor` (a + kappa): the square of the points' distance, which must be a positive number whose inverse is
 /// a weight.
 fn positive_scale(a: usize, kappa: f64, factor: f64) -> Result<f64, Refusal> {
+    Refusal::unless_something_is_read(a)?;
     let sum = a as f64 + kappa;
     if sum <= 0.0 {
         return Err(Refusal(format!(

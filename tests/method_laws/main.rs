@@ -1,0 +1,9 @@
+//! Laws that every method must keep, held on every built-in method and against published values.
+
+mod cases;
+mod cost;
+mod linear;
+mod polynomial;
+mod published;
+mod robust;
+mod rotation;
