@@ -28,7 +28,10 @@ pub fn scaled_difference(a: &DMatrix<f64>, b: &DMatrix<f64>, rows: &[f64], colum
 /// The same for vectors.
 #[track_caller]
 pub fn scaled_vector_difference(a: &DVector<f64>, b: &DVector<f64>, scales: &[f64]) -> f64 {
-    let (a, b) = (DMatrix::from_column_slice(a.len(), 1, a.as_slice()), DMatrix::from_column_slice(b.len(), 1, b.as_slice()));
+    let (a, b) = (
+        DMatrix::from_column_slice(a.len(), 1, a.as_slice()),
+        DMatrix::from_column_slice(b.len(), 1, b.as_slice()),
+    );
     scaled_difference(&a, &b, scales, &[1.0])
 }
 

@@ -44,9 +44,8 @@ pub fn symmetric(a: DMatrix<f64>) -> DMatrix<f64> {
 /// Largest over smallest eigenvalue of the correlation matrix: how far rounding is amplified, units aside.
 pub fn condition(covariance: &DMatrix<f64>) -> f64 {
     let n = covariance.nrows();
-    let correlation = DMatrix::from_fn(n, n, |i, j| {
-        covariance[(i, j)] / (covariance[(i, i)].sqrt() * covariance[(j, j)].sqrt())
-    });
+    let correlation =
+        DMatrix::from_fn(n, n, |i, j| covariance[(i, j)] / (covariance[(i, i)].sqrt() * covariance[(j, j)].sqrt()));
     let eigenvalues = correlation.symmetric_eigenvalues();
     eigenvalues.max() / eigenvalues.min()
 }
