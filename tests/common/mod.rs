@@ -6,3 +6,4 @@
 pub mod close;
 pub mod random;
 pub mod records;
+pub mod trials;
