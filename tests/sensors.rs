@@ -82,20 +82,20 @@ fn jacobian_matches(trial: &Trial, x: &[f64]) {
 fn hessians_match(trial: &Trial, x: &[f64]) {
     let sensor = trial.spec.sensor();
     let exact = derivatives(sensor, x).hessians;
-    for j in 0..exact.len() {
-        assert_eq!(exact[j], exact[j].transpose(), "{}: a Hessian is symmetric", trial.name);
+    for (j, hessian) in exact.iter().enumerate() {
+        assert_eq!(hessian, &hessian.transpose(), "{}: a Hessian is symmetric", trial.name);
         let bend = trial.bend(x, j);
         let tolerance = bend.step.powi(2) / 6.0 * bend.fourth + ULPS * f64::EPSILON * bend.slope / bend.step;
         for k in 0..x.len() {
             let (below, above, distance) = around(x, k, bend.step);
             let rise = jacobian(sensor, &above).row(j) - jacobian(sensor, &below).row(j);
             for i in 0..x.len() {
-                let difference = (rise[i] / distance - exact[j][(i, k)]).abs();
+                let difference = (rise[i] / distance - hessian[(i, k)]).abs();
                 assert!(
                     difference <= tolerance,
                     "{} at {x:?}: d2y{j}/dx{i}dx{k} is {}: off by {difference:.1e}, over {tolerance:.1e}",
                     trial.name,
-                    exact[j][(i, k)]
+                    hessian[(i, k)]
                 );
             }
         }
