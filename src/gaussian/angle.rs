@@ -1,6 +1,6 @@
 use std::f64::consts::{PI, TAU};
 
-/// The angle `a` [rad] wrapped to (-pi, pi].
+/// The angle `a` \[rad\] wrapped to (-pi, pi].
 ///
 /// A value already inside is returned with its own bits, so wrapping twice is wrapping once. A value that
 /// is not finite comes back as NaN.

@@ -25,7 +25,7 @@ pub trait Number:
     fn sin(self) -> Self;
     /// cos(self), radians.
     fn cos(self) -> Self;
-    /// Angle of the point (x, self) [rad] in \[-pi, pi\], counter-clockwise from the x axis.
+    /// Angle of the point (x, self) \[rad\] in \[-pi, pi\], counter-clockwise from the x axis.
     fn atan2(self, x: Self) -> Self;
     /// sqrt(self^2 + other^2).
     fn hypot(self, other: Self) -> Self;
