@@ -221,3 +221,15 @@ fn semi_definite_laws_keep_the_laws_of_their_support() {
         assert_eq!(Support::of(&a).rank(), rank, "rank of {a}");
     });
 }
+
+/// The comparison itself: it sees a difference in the scale it was given, and no floor hides one.
+#[test]
+fn the_comparison_rejects_what_differs() {
+    let a = DMatrix::from_row_slice(1, 2, &[1.0, 1e-12]);
+    let b = DMatrix::from_row_slice(1, 2, &[1.0, 1.1e-12]);
+    assert!((scaled_difference(&a, &b, &[1e-6], &[1.0, 1e-6]) - 0.1).abs() < 1e-12);
+    assert_eq!(scaled_difference(&a, &b, &[0.0], &[1.0, 1.0]), f64::INFINITY);
+    let nan = DMatrix::from_row_slice(1, 2, &[f64::NAN, 1e-12]);
+    assert_eq!(scaled_difference(&nan, &b, &[1.0], &[1.0, 1.0]), f64::INFINITY);
+    assert_eq!(scaled_difference(&a, &a, &[0.0], &[0.0, 0.0]), 0.0);
+}

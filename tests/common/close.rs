@@ -13,13 +13,8 @@ pub fn scaled_difference(a: &DMatrix<f64>, b: &DMatrix<f64>, rows: &[f64], colum
         for j in 0..a.ncols() {
             let difference = (a[(i, j)] - b[(i, j)]).abs();
             let scaled = if difference == 0.0 { 0.0 } else { difference / (rows[i] * columns[j]) };
-            // Not `max`: it would drop a NaN.
-            if scaled.is_nan() || scaled > largest {
-                largest = scaled;
-            }
-            if largest.is_nan() {
-                return f64::INFINITY;
-            }
+            // `max` would drop a NaN: what cannot be compared does not agree.
+            largest = if scaled.is_nan() { f64::INFINITY } else { scaled.max(largest) };
         }
     }
     largest
