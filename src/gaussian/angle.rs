@@ -1,6 +1,6 @@
 use std::f64::consts::{PI, TAU};
 
-/// The angle `a` [rad] wrapped to (-pi, pi].
+/// The angle `a` \[rad\] wrapped to (-pi, pi].
 ///
 /// A value already inside is returned with its own bits, so wrapping twice is wrapping once. A value that
 /// is not finite comes back as NaN.
@@ -16,8 +16,15 @@ pub fn wrap(a: f64) -> f64 {
     if a > -PI && a <= PI {
         return a;
     }
-    let turned = a - TAU * (a / TAU).round();
-    if turned <= -PI { turned + TAU } else { turned }
+    // The remainder is exact, so that nothing near the cut slips out by rounding, however many turns.
+    let rest = a % TAU;
+    if rest > PI {
+        rest - TAU
+    } else if rest <= -PI {
+        rest + TAU
+    } else {
+        rest
+    }
 }
 
 #[cfg(test)]
@@ -31,6 +38,23 @@ mod tests {
             let w = wrap(a);
             assert!(w > -PI && w <= PI, "wrap({a}) = {w}");
             assert!((w.sin() - a.sin()).abs() < 1e-13 && (w.cos() - a.cos()).abs() < 1e-13);
+        }
+    }
+
+    #[test]
+    fn neighbours_of_the_cut_land_inside_and_stay() {
+        for turns in (-20_001..20_000).step_by(2) {
+            let cut = f64::from(turns) * PI;
+            let mut a = cut;
+            for _ in 0..8 {
+                a = a.next_down();
+            }
+            for _ in 0..16 {
+                let w = wrap(a);
+                assert!(w > -PI && w <= PI, "wrap({a:e}) = {w:e}");
+                assert_eq!(wrap(w), w);
+                a = a.next_up();
+            }
         }
     }
 

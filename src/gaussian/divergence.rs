@@ -1,5 +1,6 @@
-use nalgebra::{Cholesky, DMatrix};
+use nalgebra::DMatrix;
 
+use super::root::{definite, definite_residual};
 use super::{Gaussian, Moments};
 
 /// KL( `of` || `from` ) in nats, of two Gaussians on the same components:
@@ -14,8 +15,8 @@ use super::{Gaussian, Moments};
 #[track_caller]
 pub fn divergence(of: &Gaussian, from: &Gaussian) -> Option<f64> {
     assert_eq!(of.dimension(), from.dimension(), "divergence of laws of different dimension");
-    let p0 = Cholesky::new(of.covariance().clone())?;
-    let p1 = Cholesky::new(from.covariance().clone())?;
+    let p0 = definite(of.covariance())?;
+    let p1 = definite(from.covariance())?;
     let shift = of.mean() - from.mean();
     let trace = p1.solve(of.covariance()).trace();
     let quadratic = shift.dot(&p1.solve(&shift));
@@ -27,14 +28,17 @@ pub fn divergence(of: &Gaussian, from: &Gaussian) -> Option<f64> {
 /// 1/2 \[ tr(Omega^^-1 Omega) - p + ln det Omega^ - ln det Omega + tr(Omega^^-1 (B - B^) P (B - B^)')
 /// + b' Omega^^-1 b \].
 ///
-/// `None` when a residual covariance Omega is not positive definite.
+/// `None` when a residual covariance Omega is not positive definite, or is so small against S that it is only
+/// the rounding of the difference (a linear reading without noise).
 ///
 /// Source: chain rule of the divergence (Cover & Thomas, Elements of Information Theory, 2nd ed., thm. 2.5.3)
 /// on p(x) p(y | x): the prior is common, so only the conditionals count.
 pub fn joint_divergence(prior: &Gaussian, of: &Moments, from: &Moments) -> Option<f64> {
     let shift = &of.mean - &from.mean;
+    let (whole, whole_hat) = (&of.covariance, &from.covariance);
     let (of, from) = (of.regression(prior), from.regression(prior));
-    let (omega, omega_hat) = (Cholesky::new(of.residual.clone())?, Cholesky::new(from.residual)?);
+    let omega = definite_residual(&of.residual, whole)?;
+    let omega_hat = definite_residual(&from.residual, whole_hat)?;
     let slope: DMatrix<f64> = of.slope - from.slope;
     let spread = &slope * prior.covariance() * slope.transpose();
     let trace = omega_hat.solve(&(of.residual + spread)).trace();

@@ -1,5 +1,6 @@
 use nalgebra::{DMatrix, DVector};
 
+use super::root::definite;
 use super::{Gaussian, Support};
 
 /// The three moments that an approximation must get right: of y = h(x) + v with x ~ N(m, P).
@@ -28,7 +29,7 @@ impl Moments {
     /// the Schur complement of the joint \[\[P, C\], \[C', S\]\]: gain K = C S^-1, mean m + K d,
     /// covariance P - K S K'. By Cholesky solves; nothing is inverted.
     ///
-    /// `None` when S is not positive definite.
+    /// `None` when S is not positive definite beyond rounding.
     ///
     /// Source: R. E. Kalman, "A new approach to linear filtering and prediction problems", Trans. ASME J.
     /// Basic Eng. 82 (1960) 35-45, for the linear case; the Schur complement form is standard.
@@ -43,7 +44,7 @@ impl Moments {
     /// assert!((after.mean[0] - 0.8).abs() < 1e-15 && (after.covariance[(0, 0)] - 0.8).abs() < 1e-15);
     /// ```
     pub fn conditional(&self, prior: &Gaussian, innovation: &DVector<f64>) -> Option<Conditional> {
-        let factor = nalgebra::Cholesky::new(self.covariance.clone())?;
+        let factor = definite(&self.covariance)?;
         let gain = factor.solve(&self.cross_covariance.transpose()).transpose();
         let mean = prior.mean() + &gain * innovation;
         // C L'^-1 first: the product with its own transpose is exactly symmetric.

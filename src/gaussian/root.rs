@@ -1,7 +1,9 @@
-use nalgebra::{Cholesky, DMatrix};
+use nalgebra::{Cholesky, DMatrix, Dyn};
 
 /// An eigenvalue of the correlation matrix at or below this share of the largest counts as zero.
 const RANK_SLACK: f64 = 1e-13;
+/// A squared pivot at or below this share of its diagonal entry is rounding, not variance.
+const PIVOT_SLACK: f64 = 1e-14;
 
 /// A square root F of a covariance A, F F' = A, and how it was found.
 #[derive(Debug, Clone, PartialEq)]
@@ -42,7 +44,6 @@ impl SquareRoot {
 /// # Errors
 /// A zero matrix: `a` is not positive definite.
 pub fn cholesky_in_place(a: DMatrix<f64>) -> Result<DMatrix<f64>, DMatrix<f64>> {
-    const PIVOT_SLACK: f64 = 1e-14;
     let n = a.nrows();
     let variances: smallvec::SmallVec<[f64; 8]> = (0..n).map(|i| a[(i, i)]).collect();
     let Some(factor) = Cholesky::new(a) else {
@@ -59,6 +60,25 @@ pub fn cholesky_in_place(a: DMatrix<f64>) -> Result<DMatrix<f64>, DMatrix<f64>> 
         lower.fill(0.0);
         Err(lower)
     }
+}
+
+/// The Cholesky factorisation of `a` if it is positive definite beyond rounding: with the same guard as
+/// [`cholesky_in_place`], so that no divergence or gain is made of a pivot that is noise.
+pub(super) fn definite(a: &DMatrix<f64>) -> Option<Cholesky<f64, Dyn>> {
+    definite_beyond(a, |i| PIVOT_SLACK * a[(i, i)])
+}
+
+/// The Cholesky factorisation of the residual `omega` = `whole` - (what is explained) if it is positive
+/// definite beyond the rounding of that difference, which is judged against `whole`: where nothing is left,
+/// the difference is noise in the last digits of `whole`.
+pub(super) fn definite_residual(omega: &DMatrix<f64>, whole: &DMatrix<f64>) -> Option<Cholesky<f64, Dyn>> {
+    definite_beyond(omega, |i| RANK_SLACK * whole[(i, i)])
+}
+
+fn definite_beyond(a: &DMatrix<f64>, least: impl Fn(usize) -> f64) -> Option<Cholesky<f64, Dyn>> {
+    let factor = Cholesky::new(a.clone())?;
+    let pivot = |i| factor.l_dirty()[(i, i)];
+    (0..a.nrows()).all(|i| pivot(i) * pivot(i) > least(i)).then_some(factor)
 }
 
 fn eigen_root(a: &DMatrix<f64>) -> DMatrix<f64> {

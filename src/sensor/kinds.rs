@@ -83,6 +83,8 @@ pub struct SensorSpec {
     #[serde(flatten)]
     parameters: Map<String, Value>,
     #[serde(skip)]
+    state_dimension: usize,
+    #[serde(skip)]
     sensor: Arc<dyn Sensor>,
 }
 
@@ -106,7 +108,7 @@ impl SensorSpec {
             .find(|k| k.name == kind)
             .ok_or_else(|| error("kind", format!("there is no sensor `{kind}`; give one of {}", names())))?;
         let (parameters, sensor) = (kind.build)(described, n)?;
-        Ok(Self { kind: kind.name, parameters, sensor })
+        Ok(Self { kind: kind.name, parameters, state_dimension: n, sensor })
     }
 
     /// The sensor's name among [`KINDS`].
@@ -117,6 +119,11 @@ impl SensorSpec {
     /// The parameters, defaults filled in.
     pub fn parameters(&self) -> &Map<String, Value> {
         &self.parameters
+    }
+
+    /// Number n of components of the state that it was made for.
+    pub fn state_dimension(&self) -> usize {
+        self.state_dimension
     }
 
     /// The sensor.

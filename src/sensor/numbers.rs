@@ -81,7 +81,15 @@ macro_rules! dual_number {
             }
             #[inline]
             fn atan2(self, x: Self) -> Self {
-                DualNum::atan2(&self, x)
+                // The crate's own atan2 differentiates atan(y / x), which is NaN due north (x = 0). The larger
+                // coordinate below the line is defined everywhere but at the origin.
+                let mut angle = if self.re.abs() > x.re.abs() {
+                    -DualNum::atan(&(x / self))
+                } else {
+                    DualNum::atan(&(self / x))
+                };
+                angle.re = self.re.atan2(x.re);
+                angle
             }
             #[inline]
             fn hypot(self, other: Self) -> Self {

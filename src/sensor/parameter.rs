@@ -21,8 +21,11 @@ pub(super) fn read_components(n: usize, read: impl Fn(usize) -> bool) -> Vec<usi
     if reads.is_empty() { vec![0] } else { reads }
 }
 
-/// Checks length and finiteness of a list of numbers.
+/// Checks length and finiteness of a list of numbers; none at all can only be for a state without components.
 pub(super) fn checked_row(key: &str, row: &[f64], length: usize) -> Result<(), ParameterError> {
+    if length == 0 {
+        return Err(ParameterError::new(key, "a state needs at least one component"));
+    }
     if row.len() != length {
         return Err(ParameterError::new(key, format!("has {} numbers; {length} are needed", row.len())));
     }

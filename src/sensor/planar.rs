@@ -10,7 +10,7 @@ pub(super) fn checked_position(position: [usize; 2], n: usize) -> Result<(), Par
     if let Some(k) = (0..2).find(|&k| position[k] >= n) {
         return Err(ParameterError::new(
             format!("position[{k}]"),
-            format!("{} is outside the state, whose components are 0 to {}", position[k], n - 1),
+            format!("{} is outside the state, which has {n} components counted from 0", position[k]),
         ));
     }
     if position[0] == position[1] {

@@ -32,6 +32,9 @@ impl CaseError {
     }
 }
 
+/// What a case record holds, for messages.
+const KEYS: &str = "`case`, `sensor`, `prior` and perhaps `noise`";
+
 /// A case as it stands in a case record (one JSON object a line).
 #[derive(Debug, Clone, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
@@ -60,8 +63,8 @@ impl Case {
     /// A case from its parts; `noise` is R (p x p), `None` for none.
     ///
     /// # Errors
-    /// [`CaseError`] if R does not fit the sensor's outputs or is not a covariance, or the sensor reads a
-    /// component that the prior does not have.
+    /// [`CaseError`] if R does not fit the sensor's outputs or is not a covariance, or the sensor was made for
+    /// a state of another size than the prior's.
     pub fn new(
         id: impl Into<String>,
         sensor: SensorSpec,
@@ -69,8 +72,9 @@ impl Case {
         noise: Option<DMatrix<f64>>,
     ) -> Result<Self, CaseError> {
         let n = prior.dimension();
-        if let Some(i) = sensor.sensor().reads().iter().find(|&&i| i >= n) {
-            return Err(CaseError::new("sensor", format!("reads component {i} of a state of {n}")));
+        if sensor.state_dimension() != n {
+            let made_for = sensor.state_dimension();
+            return Err(CaseError::new("sensor", format!("is made for {made_for} components; the prior has {n}")));
         }
         let p = sensor.sensor().outputs().len();
         let noise = noise
@@ -85,8 +89,20 @@ impl Case {
     /// # Errors
     /// [`CaseError`] with the key at fault.
     pub fn from_json(record: Value) -> Result<Self, CaseError> {
-        let record: Record = serde_path_to_error::deserialize(record)
-            .map_err(|e| CaseError::new(e.path().to_string(), e.inner().to_string()))?;
+        // Serde would take a list for an object, its entries by position: not what the format says.
+        if !record.is_object() {
+            return Err(CaseError::new("record", format!("give an object with {KEYS}")));
+        }
+        if record.get("prior").is_some_and(|prior| !prior.is_object()) {
+            return Err(CaseError::new("prior", "give an object with `mean` and `covariance`"));
+        }
+        if record.get("noise").is_some_and(|noise| !noise.is_object() && !noise.is_null()) {
+            return Err(CaseError::new("noise", "give an object with `covariance`"));
+        }
+        let record: Record = serde_path_to_error::deserialize(record).map_err(|e| {
+            let path = e.path().to_string();
+            CaseError::new(if path == "." { "record".into() } else { path }, e.inner().to_string())
+        })?;
         let n = record.prior.mean.len();
         let covariance = matrix(&record.prior.covariance, "prior.covariance")?;
         let prior = Gaussian::new(DVector::from_vec(record.prior.mean), covariance).map_err(|e| {
@@ -194,7 +210,10 @@ fn noise_covariance(value: Value, p: usize) -> Result<DMatrix<f64>, CaseError> {
     if let Some(variance) = value.as_f64() {
         return Ok(DMatrix::from_diagonal_element(p, p, variance));
     }
-    let rows: Vec<Vec<f64>> = serde_json::from_value(value)
-        .map_err(|e| CaseError::new(KEY, format!("{e}; give a {p} x {p} matrix or one number")))?;
+    let rows: Vec<Vec<f64>> = serde_path_to_error::deserialize(value).map_err(|e| {
+        let path = e.path().to_string();
+        let key = if path == "." { KEY.into() } else { format!("{KEY}{path}") };
+        CaseError::new(key, format!("{}; give a {p} x {p} matrix or one number", e.inner()))
+    })?;
     matrix(&rows, KEY)
 }

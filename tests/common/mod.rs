@@ -1,0 +1,9 @@
+//! What the outside checks share: the check files, seeded random covariances, comparisons.
+
+// Every test binary compiles this module whole and uses a part of it.
+#![allow(dead_code)]
+
+pub mod close;
+pub mod random;
+pub mod records;
+pub mod trials;
