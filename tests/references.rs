@@ -83,21 +83,28 @@ fn outside_values_lie_within_four_standard_errors() {
 }
 
 /// The chart of an angle is centred at an estimate; where its law has mass at the cut, that estimate decides on
-/// which side samples fall. 2^24 samples bring the standard errors to 1e-4, well below what a chart centred at
-/// a first look (1/128 rad off) would do. Odds of a false alarm over seeds: 12 entries beyond 4, 0.5 %.
+/// which side samples fall. Eight seeds of 2^23 samples bring the standard error of the mean to 4e-4, well below
+/// what charts left at a first look (1/128 rad off, times the density at the cut) would do: with those, the
+/// sum of squared deviations of the mean was above 100 when this was written.
+///
+/// False alarms over seeds: 32 entries beyond 4 have odds of 1.2 %; the sum of 8 squared t deviates (31 degrees
+/// of freedom) above 30 has odds of 5e-4.
 #[test]
 fn moments_of_a_very_wide_bearing_belong_to_its_own_chart() {
-    for record in load::<Record>("f04_bearing.json") {
-        if !["F04-P04", "F04-P07", "F04-P09"].contains(&record.id.as_str()) {
-            continue;
-        }
-        let case = case_of(&record).unwrap();
-        let reference = reference(&case, 1 << 24);
+    let record = load::<Record>("f04_bearing.json").into_iter().find(|r| r.id == "F04-P04").unwrap();
+    let case = case_of(&record).unwrap();
+    let mut sum = 0.0;
+    for seed in 1..=8 {
+        let settings = SamplerSettings { seed, precision: 1e-9, cap: 1 << 23, ..SamplerSettings::default() };
+        let reference = Sampler::new(&case, settings).unwrap().run();
         for (entry, z) in deviations(&record, &case, &reference) {
-            assert!(z.abs() < 4.0, "{entry}: {z:.2} standard errors off");
+            assert!(z.abs() < 4.0, "seed {seed}, {entry}: {z:.2} standard errors off");
+            if entry.ends_with("mean[0]") {
+                sum += z * z;
+            }
         }
-        assert!(reference.worst_error < 1e-3, "{}: {:.1e}", record.id, reference.worst_error);
     }
+    assert!(sum < 30.0, "squared deviations of the mean sum up to {sum:.1}");
 }
 
 fn bits(moments: &Moments) -> Vec<u64> {

@@ -173,3 +173,70 @@ impl Charts {
         });
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::gaussian::wrap;
+    use rand::{RngExt, SeedableRng};
+    use rand_distr::StandardNormal;
+    use rand_pcg::Pcg64;
+
+    /// Two wide angles of 4000 samples, tallied in charts that are off centre, and one plain output between
+    /// them: after recentring the tally must be that of the final charts, computed afresh.
+    #[test]
+    fn recentred_sums_are_those_of_the_final_chart() {
+        const N: usize = 4000;
+        let mut rng = Pcg64::seed_from_u64(7);
+        let mut normal = || -> f64 { rng.sample(StandardNormal) };
+        let z: Vec<f64> = (0..N).map(|_| normal()).collect();
+        let outputs: [Vec<f64>; 3] = [
+            z.iter().map(|z| wrap(2.9 + 1.1 * z + 0.4 * normal())).collect(),
+            z.iter().map(|z| 0.3 * z + normal()).collect(),
+            (0..N).map(|_| wrap(-1.0 + 1.2 * normal())).collect(),
+        ];
+        let angular = [true, false, true];
+        let start = DVector::from_vec(vec![2.75, 0.1, -1.2]);
+        let mut charts = Charts::new(start.clone(), &[Some(0.5), None, Some(0.5)]);
+        let deviate = |centre: &DVector<f64>| -> Vec<f64> {
+            (0..3)
+                .flat_map(|j| outputs[j].iter().map(move |v| (j, *v)))
+                .map(|(j, v)| if angular[j] { wrap(v - centre[j]) } else { v - centre[j] })
+                .collect()
+        };
+        let tally_of = |columns: &[f64]| {
+            let mut tally = Tally::empty(1, 3);
+            tally.of_block(N, &mut z.clone(), &mut columns.to_vec());
+            tally
+        };
+        let columns = deviate(&start);
+        for j in [0, 2] {
+            charts.observe(j, &columns[j * N..(j + 1) * N]);
+        }
+        for k in charts.points_near_cut(N, &columns) {
+            let point = DVector::from_fn(3, |j, _| columns[j * N + k]);
+            charts.remember(DVector::from_element(1, z[k]), point.clone(), point);
+        }
+        let mut tally = tally_of(&columns);
+        charts.recentre(&mut tally);
+        assert!(!charts.lost);
+        let moved = (0..3).map(|j| (charts.centre[j] - start[j]).abs()).collect::<Vec<_>>();
+        assert!(moved[0] > 0.05 && moved[1] == 0.0 && moved[2] > 0.05, "nothing to see: {moved:?}");
+        let final_columns = deviate(&charts.centre);
+        let step = charts.centre[0] - start[0];
+        let jumped = (0..N).filter(|&k| (final_columns[k] - columns[k] + step).abs() > 1.0).count();
+        assert!(jumped >= 10, "only {jumped} samples crossed the cut");
+        let fresh = tally_of(&final_columns);
+        assert!((&tally.mean_e - &fresh.mean_e).amax() < 1e-12);
+        assert!((&tally.ee - &fresh.ee).amax() < 1e-8, "{} {}", tally.ee, fresh.ee);
+        assert!((&tally.ze - &fresh.ze).amax() < 1e-9);
+    }
+
+    #[test]
+    fn a_centre_that_moves_further_than_kept_ready_is_lost() {
+        let mut charts = Charts::new(DVector::from_element(1, 0.0), &[Some(0.01)]);
+        charts.observe(0, &[0.5, 0.6]);
+        charts.recentre(&mut Tally::empty(1, 1));
+        assert!(charts.lost);
+    }
+}
