@@ -5,6 +5,9 @@ use serde_json::{Map, Value};
 use crate::gaussian::{Gaussian, GaussianError, Marginal, checked_covariance};
 use crate::sensor::{self, Sensor, SensorSpec};
 
+use super::name::flaw;
+use super::wording::plain;
+
 /// One question: one sensor with its parameters, one prior, one noise.
 #[derive(Debug, Clone)]
 pub struct Case {
@@ -17,9 +20,9 @@ pub struct Case {
 
 /// What is wrong with a case record, and where in it.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
-#[error("{key}: {message}")]
+#[error("{}{message}", if key.is_empty() { String::new() } else { format!("{key}: ") })]
 pub struct CaseError {
-    /// Path of the key at fault, such as `sensor.station[1]`.
+    /// Path of the key at fault, such as `sensor.station[1]`; empty for the record as a whole.
     pub key: String,
     /// What is wrong and what would be right.
     pub message: String,
@@ -64,13 +67,18 @@ impl Case {
     ///
     /// # Errors
     /// [`CaseError`] if R does not fit the sensor's outputs or is not a covariance, or the sensor was made for
-    /// a state of another size than the prior's.
+    /// a state of another size than the prior's, or `id` is no name: 1 to 120 printable characters, no comma, no
+    /// quotes, no blank at either end.
     pub fn new(
         id: impl Into<String>,
         sensor: SensorSpec,
         prior: Gaussian,
         noise: Option<DMatrix<f64>>,
     ) -> Result<Self, CaseError> {
+        let id = id.into();
+        if let Some(flaw) = flaw(&id) {
+            return Err(CaseError::new("case", flaw));
+        }
         let n = prior.dimension();
         if sensor.state_dimension() != n {
             let made_for = sensor.state_dimension();
@@ -81,7 +89,7 @@ impl Case {
             .map(|r| checked_covariance(r, p).map_err(|e| CaseError::new("noise.covariance", e.to_string())))
             .transpose()?;
         let marginal = Marginal::new(&prior, sensor.sensor().reads());
-        Ok(Self { id: id.into(), sensor, prior, marginal, noise })
+        Ok(Self { id, sensor, prior, marginal, noise })
     }
 
     /// Reads a case record: an object with `case`, `sensor`, `prior` and perhaps `noise`.
@@ -91,7 +99,7 @@ impl Case {
     pub fn from_json(record: Value) -> Result<Self, CaseError> {
         // Serde would take a list for an object, its entries by position: not what the format says.
         if !record.is_object() {
-            return Err(CaseError::new("record", format!("give an object with {KEYS}")));
+            return Err(CaseError::new("", format!("give an object with {KEYS}")));
         }
         if record.get("prior").is_some_and(|prior| !prior.is_object()) {
             return Err(CaseError::new("prior", "give an object with `mean` and `covariance`"));
@@ -99,10 +107,8 @@ impl Case {
         if record.get("noise").is_some_and(|noise| !noise.is_object() && !noise.is_null()) {
             return Err(CaseError::new("noise", "give an object with `covariance`"));
         }
-        let record: Record = serde_path_to_error::deserialize(record).map_err(|e| {
-            let path = e.path().to_string();
-            CaseError::new(if path == "." { "record".into() } else { path }, e.inner().to_string())
-        })?;
+        let record: Record = serde_path_to_error::deserialize(record)
+            .map_err(|e| CaseError::new(path(&e), plain(&e.inner().to_string())))?;
         let n = record.prior.mean.len();
         let covariance = matrix(&record.prior.covariance, "prior.covariance")?;
         let prior = Gaussian::new(DVector::from_vec(record.prior.mean), covariance).map_err(|e| {
@@ -184,7 +190,13 @@ impl Case {
 
 fn sensor_error(e: sensor::BuildError) -> CaseError {
     let key = if e.key.is_empty() { "sensor".into() } else { format!("sensor.{}", e.key) };
-    CaseError::new(key, e.message)
+    CaseError::new(key, plain(&e.message))
+}
+
+/// Path of the key at fault; the whole is called `.` by the deserialiser.
+fn path<E>(e: &serde_path_to_error::Error<E>) -> String {
+    let path = e.path().to_string();
+    if path == "." { String::new() } else { path }
 }
 
 /// The rows of a matrix, as JSON writes them.
@@ -210,10 +222,10 @@ fn noise_covariance(value: Value, p: usize) -> Result<DMatrix<f64>, CaseError> {
     if let Some(variance) = value.as_f64() {
         return Ok(DMatrix::from_diagonal_element(p, p, variance));
     }
-    let rows: Vec<Vec<f64>> = serde_path_to_error::deserialize(value).map_err(|e| {
-        let path = e.path().to_string();
-        let key = if path == "." { KEY.into() } else { format!("{KEY}{path}") };
-        CaseError::new(key, format!("{}; give a {p} x {p} matrix or one number", e.inner()))
-    })?;
+    if !value.is_array() {
+        return Err(CaseError::new(KEY, format!("is {value}; give a {p} x {p} matrix or one number")));
+    }
+    let rows: Vec<Vec<f64>> = serde_path_to_error::deserialize(value)
+        .map_err(|e| CaseError::new(format!("{KEY}{}", path(&e)), plain(&e.inner().to_string())))?;
     matrix(&rows, KEY)
 }

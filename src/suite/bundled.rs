@@ -1,0 +1,37 @@
+/// A suite that comes with the program.
+#[derive(Debug, Clone, Copy)]
+pub struct Bundled {
+    /// What the command line calls it.
+    pub name: &'static str,
+    /// One line: its title.
+    pub summary: &'static str,
+    /// Its TOML, as it stands in `suites/`.
+    pub text: &'static str,
+}
+
+/// The suites that are surveyed when none is named: those that show what the program is for.
+pub const DEMONSTRATION: [&str; 3] = ["harbour-radar", "listening-buoys", "power-meter"];
+
+/// Every bundled suite, in the order in which they are surveyed. A new one is one line here.
+pub(super) const ALL: &[Bundled] = &[
+    Bundled {
+        name: "harbour-radar",
+        summary: "Harbour radar of Brackmoor Sound: range and bearing, near to far, round to very flat priors",
+        text: include_str!("../../suites/harbour-radar.toml"),
+    },
+    Bundled {
+        name: "listening-buoys",
+        summary: "Listening buoys of Brackmoor Sound: bearings from one buoy and from two, also across the cut",
+        text: include_str!("../../suites/listening-buoys.toml"),
+    },
+    Bundled {
+        name: "power-meter",
+        summary: "Power meters of Brackmoor Sound: quadratic readings in 1, 2 and 6 dimensions",
+        text: include_str!("../../suites/power-meter.toml"),
+    },
+    Bundled {
+        name: "smoke",
+        summary: "A few cases of every sensor, measured in seconds",
+        text: include_str!("../../suites/smoke.toml"),
+    },
+];

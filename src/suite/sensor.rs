@@ -1,0 +1,47 @@
+//! The `[sensor]` section: `kind` and parameters; lengths may carry units.
+
+use super::SuiteError;
+use super::node::{Item, Node};
+use super::quantity::{Quantity, Wanted};
+use super::wording::{plain, proposal};
+use crate::sensor::{KINDS, SensorSpec};
+
+/// Parameters that are lengths, at whatever depth their numbers stand.
+const LENGTHS: [&str; 2] = ["station", "stations"];
+
+/// Makes the sensor of the section for a state of `n` components.
+pub(super) fn read(section: &Node, n: usize) -> Result<SensorSpec, SuiteError> {
+    if let Some(kind) = section.get("kind") {
+        let name = kind.text()?;
+        if !KINDS.iter().any(|k| k.name == name) {
+            let names: Vec<_> = KINDS.iter().map(|k| k.name).collect();
+            let near = proposal(name, names.iter().copied());
+            return Err(kind.error(format!("there is no sensor `{name}`; {near}give one of {}", names.join(", "))));
+        }
+    }
+    let entries = section
+        .entries()?
+        .iter()
+        .map(|(name, node)| {
+            let node = if LENGTHS.contains(&name.as_str()) { in_metres(node)? } else { node.clone() };
+            Ok((name.clone(), node))
+        })
+        .collect::<Result<_, SuiteError>>()?;
+    let described = Node { place: section.place.clone(), item: Item::Table(entries) };
+    SensorSpec::from_json(described.object()?, n).map_err(|e| {
+        let at = section.at(&e.key);
+        let missing_below = format!("{}.{}", section.place.key, e.key) != *at.place.key && !e.key.is_empty();
+        // A parameter that is only there by default, or not at all, is named in the message.
+        let message = plain(&e.message);
+        at.error(if missing_below { format!("`{}` {message}", e.key) } else { message })
+    })
+}
+
+fn in_metres(node: &Node) -> Result<Node, SuiteError> {
+    let item = match &node.item {
+        Item::List(list) => Item::List(list.iter().map(in_metres).collect::<Result<_, _>>()?),
+        Item::Text(_) | Item::Quantity(_) => Quantity { value: Wanted::Length.read(node)?, dimension: None }.item(),
+        other => other.clone(),
+    };
+    Ok(Node { place: node.place.clone(), item })
+}
