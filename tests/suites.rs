@@ -82,7 +82,7 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (spread("sd = [30, -20]"), "x.toml:7: prior.sd[1]: -20 is below 0; a standard deviation is 0 or above".into()),
         (spread("sd = [30]"), "x.toml:7: prior.sd: has 1 entries, but `mean` has 2".into()),
         (spread("sd = [30, 20]\ncorrelation = [[0, 1, 1.5]]"), "x.toml:8: prior.correlation: components 0 and 1: 1.5 is outside -1 to 1".into()),
-        (spread("sd = [30, 20]\ncorrelation = [[0, 2, 0.5]]"), "x.toml:8: prior.correlation[0][1]: 2 is outside the state, which has 2 components counted from 0".into()),
+        (spread("sd = [30, 20]\ncorrelation = [[0, 2, 0.5]]"), "x.toml:8: prior.correlation[0][1]: 2 is outside the state, whose components are 0 to 1".into()),
         (spread("sd = [30, 20]\ncorrelation = [[1, 0.5], [0.4, 1]]"), "x.toml:8: prior.correlation[0][1]: is 0.5, but [1][0] is 0.4; the matrix is symmetric".into()),
         (spread("sd = [30, 20]\ncorrelation = [[1, 0.5], [0.5, 2]]"), "x.toml:8: prior.correlation[1][1]: is 2; a correlation matrix has 1 here".into()),
         (planar("bearing = \"30 deg\"", "bearing = 30"), "x.toml:7: prior.bearing: 30 has no unit; an angle needs one: \"30 deg\" or \"30 rad\"".into()),
