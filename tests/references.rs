@@ -196,11 +196,7 @@ fn a_linear_sensor_is_exact() {
     let sd: Vec<f64> = exact.covariance.diagonal().iter().map(|v| v.sqrt()).collect();
     let prior_sd: Vec<f64> = case.prior().covariance().diagonal().iter().map(|v| v.sqrt()).collect();
     assert_within(scaled_difference(&found.covariance, &exact.covariance, &sd, &sd), 1e-13, "S");
-    assert_within(
-        scaled_difference(&found.cross_covariance, &exact.cross_covariance, &prior_sd, &sd),
-        1e-13,
-        "C",
-    );
+    assert_within(scaled_difference(&found.cross_covariance, &exact.cross_covariance, &prior_sd, &sd), 1e-13, "C");
 }
 
 #[test]
@@ -244,8 +240,8 @@ fn a_state_known_exactly_is_sampled_on_its_support() {
         "noise": {"covariance": [[0.01, 0], [0, 1e-4]]},
     }));
     let reference = reference(&case.unwrap(), 1 << 20);
-    let mean = (2.0 / std::f64::consts::PI).sqrt() * (-4.5f64).exp()
-        + 3.0 * statrs::function::erf::erf(3.0 / 2f64.sqrt());
+    let mean =
+        (2.0 / std::f64::consts::PI).sqrt() * (-4.5f64).exp() + 3.0 * statrs::function::erf::erf(3.0 / 2f64.sqrt());
     let variance = 10.0 - mean * mean + 0.01;
     let z = (reference.moments.mean[0] - mean) / reference.standard_error.mean[0];
     assert!(z.abs() < 4.0, "mean {z:.2} standard errors off");

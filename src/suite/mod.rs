@@ -81,7 +81,7 @@ mod sweep;
 mod wording;
 
 pub use bundled::{Bundled, DEMONSTRATION};
-pub use case::{Case, CaseError};
 pub(crate) use case::rows;
+pub use case::{Case, CaseError};
 pub use definition::Suite;
 pub use error::SuiteError;
