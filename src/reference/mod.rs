@@ -11,8 +11,10 @@ mod pilot;
 mod replicate;
 mod sampler;
 mod stream;
+mod tails;
 mod tally;
 
 pub use estimate::{Reference, Soundness};
 pub use sampler::{CapTooSmall, DEFAULT_REPLICATES, Sampler, SamplerSettings};
 pub use stream::Key;
+pub use tails::{ParetoFit, fit_pareto};
