@@ -93,7 +93,9 @@ impl Finding {
         };
         let name = self.score.name();
         match self.estimate {
-            None => format!("{name} is undefined: the joint of state and measurement is singular"),
+            None => {
+                format!("{name} is undefined: the joint of state and measurement is singular to working precision")
+            }
             Some(Estimate { value, standard_error }) => {
                 let place = match self.standing {
                     Standing::Broken => format!("{crossed} its limit by a factor of {:.2}", self.exceedance()),
