@@ -15,6 +15,10 @@ pub const DEFAULT_REPLICATES: usize = 32;
 /// the directions are all but uniform, and where the cut lies decides the moments.
 const LEAST_RESULTANT: f64 = 0.1;
 
+/// The least standard deviation of an output as a share of its mean: 1e4 units in the last place of a double.
+/// Ours, no source: the rounding of a value, a few units, is then under 1e-3 of what is measured.
+const LEAST_SPREAD: f64 = 1e4 * f64::EPSILON;
+
 /// How a reference is to be sampled.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct SamplerSettings {
@@ -190,7 +194,20 @@ impl<'a> Sampler<'a> {
         let outputs = self.ground.sensor.outputs();
         if !moments.is_finite() {
             let which = (0..outputs.len()).find(|&j| !moments.covariance[(j, j)].is_finite()).unwrap_or(0);
-            return Some(format!("output `{}` is not a finite number at every sample", outputs[which].name));
+            return Some(format!(
+                "output `{}` or its square is not a finite number at every sample",
+                outputs[which].name
+            ));
+        }
+        for (j, output) in outputs.iter().enumerate() {
+            let (sd, size) = (moments.covariance[(j, j)].sqrt(), moments.mean[j].abs());
+            if sd > 0.0 && sd < LEAST_SPREAD * size {
+                return Some(format!(
+                    "output `{}` spreads by {sd:.1e} around {:.1e}: the digits of a number do not show it; measure \
+                     it from an origin nearer by",
+                    output.name, moments.mean[j]
+                ));
+            }
         }
         let charts = self.replicates.iter().map(Replicate::charts);
         let least = charts.clone().filter_map(|c| c.least_resultant()).min_by(|a, b| a.1.total_cmp(&b.1));

@@ -43,16 +43,16 @@ fn keep_whole(table: &mut Table, columns: std::ops::Range<usize>) {
 /// What the writer says.
 pub fn write_summary(survey: &SurveyResult<'_>, summary: &Summary, to: &mut dyn Write) -> io::Result<()> {
     let suite = survey.suite;
-    writeln!(to, "{} - {}", suite.name, suite.title)?;
-    writeln!(
-        to,
+    writeln!(to, "{}", wrapped(&format!("{} - {}", suite.name, suite.title), 0))?;
+    let facts = format!(
         "{} of {} cases, {:.3e} samples in {:.1} s; references to {:.0e} (worst standardised standard error)",
         summary.cases,
         suite.cases.len(),
         survey.points() as f64,
         survey.sampling_time.as_secs_f64(),
         survey.plan.sampler.precision,
-    )?;
+    );
+    writeln!(to, "{}", wrapped(&facts, 0))?;
     let mut table =
         plain_table(&["method", "evals", "time", "trusted", "rejected", "undecided", "what breaks first"], 1..6);
     keep_whole(&mut table, 0..6);
@@ -61,7 +61,7 @@ pub fn write_summary(survey: &SurveyResult<'_>, summary: &Summary, to: &mut dyn 
     }
     writeln!(to, "{}", lines(&table))?;
     for note in notes(survey, summary) {
-        writeln!(to, "  {note}")?;
+        writeln!(to, "{}", wrapped(&note, 2))?;
     }
     writeln!(to)
 }
@@ -127,6 +127,17 @@ fn notes(survey: &SurveyResult<'_>, summary: &Summary) -> Vec<String> {
         }
     }
     notes
+}
+
+/// A paragraph that keeps to [`WIDTH`] columns, indented.
+pub(super) fn wrapped(text: &str, indent: u16) -> String {
+    let mut table = Table::new();
+    table.load_style(presets::NOTHING).set_width(WIDTH).set_content_arrangement(ContentArrangement::Dynamic);
+    table.add_row([text]);
+    if let Some(column) = table.column_mut(0) {
+        column.set_padding((indent, 0));
+    }
+    lines(&table)
 }
 
 /// The table without the blanks that end its lines.

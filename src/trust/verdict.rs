@@ -93,10 +93,14 @@ impl Finding {
         };
         let name = self.score.name();
         match self.estimate {
-            None => format!("{name} is undefined: the joint of state and measurement is singular"),
+            None => {
+                format!("{name} is undefined: the joint of state and measurement is singular to working precision")
+            }
             Some(Estimate { value, standard_error }) => {
                 let place = match self.standing {
-                    Standing::Broken => format!("{crossed} its limit by a factor of {:.2}", self.exceedance()),
+                    Standing::Broken => {
+                        format!("{crossed} its limit by a factor of {}", short(self.exceedance(), 2))
+                    }
                     Standing::Open => "too near its limit to tell".into(),
                     Standing::Kept => "inside its limit".into(),
                 };
@@ -104,10 +108,16 @@ impl Finding {
                     Standing::Broken => format!("{}: ", self.fault()),
                     Standing::Open | Standing::Kept => String::new(),
                 };
-                format!("{fault}{name} {value:.4} +- {standard_error:.1e} is {place} ({side} {})", self.limit)
+                let value = short(value, 4);
+                format!("{fault}{name} {value} +- {standard_error:.1e} is {place} ({side} {})", self.limit)
             }
         }
     }
+}
+
+/// A number with some decimals, or with an exponent where it is too large for them to be read.
+fn short(value: f64, decimals: usize) -> String {
+    if value.abs() < 1e6 { format!("{value:.decimals$}") } else { format!("{value:.3e}") }
 }
 
 /// What is said of one method on one case, and why.
