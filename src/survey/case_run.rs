@@ -1,5 +1,5 @@
 use crate::gaussian::Moments;
-use crate::method::{Counted, Evaluations, MethodSpec, Problem, Refusal, Transform};
+use crate::method::{Counted, Evaluations, MethodSpec, Problem, Refusal};
 use crate::reference::{Reference, Sampler, Soundness};
 use crate::score::{Floor, Invalid, Scorer, Scores};
 use crate::suite::Case;
@@ -38,14 +38,7 @@ pub struct Answered {
     pub verdict: Verdict,
 }
 
-/// One transform of a case, lifted to the whole state.
-pub(super) fn transform(case: &Case, problem: Problem<'_>, transform: &mut dyn Transform) -> Moments {
-    let mut moments = Moments::zeros(problem.prior.dimension(), problem.sensor.outputs().len());
-    transform.apply(problem, &mut moments);
-    let cross_covariance = case.marginal().lift(moments.cross_covariance);
-    Moments { cross_covariance, ..moments }
-}
-
+/// A method's moments of the whole state, yet to be scored.
 struct Candidate {
     moments: Moments,
     evaluations: Evaluations,
@@ -53,11 +46,13 @@ struct Candidate {
 
 fn candidate(case: &Case, method: &MethodSpec) -> Result<Candidate, Refusal> {
     let prior = case.marginal().law();
-    let mut planned = method.method().plan(prior.dimension(), case.sensor().outputs().len())?;
+    let (a, p) = (prior.dimension(), case.sensor().outputs().len());
+    let mut transform = method.method().plan(a, p)?;
     let counted = Counted::new(case.sensor());
     let noise = case.noise_or_zero();
-    let problem = Problem { sensor: &counted, prior, noise: &noise };
-    let moments = transform(case, problem, planned.as_mut());
+    let mut moments = Moments::zeros(a, p);
+    transform.apply(Problem { sensor: &counted, prior, noise: &noise }, &mut moments);
+    moments.cross_covariance = case.marginal().lift(moments.cross_covariance);
     Ok(Candidate { moments, evaluations: counted.evaluations() })
 }
 
@@ -82,9 +77,9 @@ pub(super) fn run_case(
             continue;
         }
         let scorer = Scorer::new(case.prior(), case.sensor().outputs(), &reference);
-        let judged: Vec<_> = candidates
+        let judged: Vec<Result<_, Refusal>> = candidates
             .iter()
-            .map(|c| c.as_ref().ok().map(|c| judge(&scorer, &reference, &c.moments, plan)))
+            .map(|c| c.as_ref().map(|c| judge(&scorer, &reference, &c.moments, plan)).map_err(Refusal::clone))
             .collect();
         let floor = scorer.floor(case.noise());
         let floor_standing = plan.judge.floor(&floor);
@@ -100,12 +95,10 @@ pub(super) fn run_case(
         let answers = candidates
             .into_iter()
             .zip(judged)
-            .map(|(candidate, judged)| match (candidate, judged) {
-                (Ok(Candidate { moments, evaluations }), Some((scores, verdict))) => {
-                    Ok(Answered { moments, evaluations, scores, verdict })
-                }
-                (Err(refusal), _) => Err(refusal),
-                (Ok(_), None) => Err(Refusal("was not judged".into())),
+            .map(|(candidate, judged)| {
+                let Candidate { moments, evaluations } = candidate?;
+                let (scores, verdict) = judged?;
+                Ok(Answered { moments, evaluations, scores, verdict })
             })
             .collect();
         let reference = Reference { replicates: Vec::new(), ..reference };

@@ -33,8 +33,10 @@ pub struct SurveyPlan {
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
 #[non_exhaustive]
 pub enum SurveyError {
-    /// The precision is no positive number.
-    #[error("precision {0} is not above 0; give the standardised standard error to reach, such as 1e-3")]
+    /// The precision is not between 0 and 1.
+    #[error(
+        "precision {0} is not above 0 and below 1; give the standardised standard error to reach, such as 1e-3"
+    )]
     Precision(f64),
     /// The cap is too small.
     #[error(transparent)]
@@ -60,7 +62,7 @@ impl SurveyPlan {
             cap: settings.cap.or(suite.cap).unwrap_or(default.cap),
             replicates: default.replicates,
         };
-        if !(sampler.precision > 0.0 && sampler.precision.is_finite()) {
+        if !(sampler.precision > 0.0 && sampler.precision < 1.0) {
             return Err(SurveyError::Precision(sampler.precision));
         }
         sampler.check()?;

@@ -50,7 +50,7 @@ impl Quartiles {
 }
 
 /// What one transform costs.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Cost {
     /// Time of one transform on one thread \[ns\].
     pub nanoseconds: Quartiles,

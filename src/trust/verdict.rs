@@ -1,12 +1,10 @@
-use serde::Serialize;
 use statrs::distribution::{ContinuousCDF, StudentsT};
 
 use super::Limits;
 use crate::score::{Estimate, Floor, Invalid, ScoreKind, Scores};
 
 /// Whether a method can be trusted on a case.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, Serialize)]
-#[serde(rename_all = "kebab-case")]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
 pub enum Trust {
     /// Every limit is kept, with the asked confidence.
     Trusted,
