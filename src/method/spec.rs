@@ -165,7 +165,6 @@ mod tests {
     #[test]
     fn the_defaults_cover_every_kind() {
         let methods = default_methods();
-        assert_eq!(methods.len(), 7);
         for kind in KINDS {
             assert!(methods.iter().any(|m| m.kind().id == kind.id), "{} is missing", kind.id);
         }
@@ -173,7 +172,7 @@ mod tests {
 
     #[test]
     fn what_is_wrong_is_named() {
-        let known = "give one of taylor-1, taylor-2, unscented, unscented-scaled, cubature-3, gauss-hermite";
+        let known = format!("give one of {}", KINDS.iter().map(|k| k.id).collect::<Vec<_>>().join(", "));
         let texts = [
             ("", "id", format!("there is no method ``; {known}")),
             ("ekf", "id", format!("there is no method `ekf`; {known}")),

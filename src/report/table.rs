@@ -111,6 +111,13 @@ fn notes(survey: &SurveyResult<'_>, summary: &Summary) -> Vec<String> {
             summary.beyond_gaussian, summary.cases, limits.floor
         ));
     }
+    if summary.floor_open > 0 {
+        notes.push(format!(
+            "Whether any Gaussian can be trusted cannot be told in {} of {} cases: their floor is too near its limit, \
+             undefined for want of noise, or that of a refused reference.",
+            summary.floor_open, summary.cases
+        ));
+    }
     if summary.wide > 0 {
         notes.push(format!(
             "{} references fell short of the asked precision at the cap of {} samples; their standard errors say by \

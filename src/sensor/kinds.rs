@@ -62,7 +62,7 @@ pub const KINDS: &[Kind] = &[
 
 /// Why a sensor could not be made from what a suite or a case record says.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
-#[error("{key}: {message}")]
+#[error("{}{message}", if key.is_empty() { String::new() } else { format!("{key}: ") })]
 pub struct BuildError {
     /// Path of the key at fault below `sensor`, such as `station[1]`; empty for the sensor as a whole.
     pub key: String,
@@ -77,14 +77,11 @@ impl From<ParameterError> for BuildError {
 }
 
 /// A sensor and how it was written: kind and parameters, defaults filled in.
-#[derive(Debug, Clone, Serialize)]
+#[derive(Debug, Clone)]
 pub struct SensorSpec {
     kind: &'static str,
-    #[serde(flatten)]
     parameters: Map<String, Value>,
-    #[serde(skip)]
     state_dimension: usize,
-    #[serde(skip)]
     sensor: Arc<dyn Sensor>,
 }
 
