@@ -28,9 +28,9 @@ type Built = (Map<String, Value>, Arc<dyn Sensor>);
 pub const KINDS: &[Kind] = &[
     Kind {
         name: "range-bearing",
-        summary: "range and bearing of a planar position from one station",
-        formula: "r = hypot(x - sx, y - sy) [m], theta = atan2(y - sy, x - sx) [rad, angular]",
-        parameters: "station [x, y] m; position [i, j] = [0, 1]",
+        summary: "range and bearing of a planar position from one or several stations",
+        formula: "r_j = hypot(x - sx_j, y - sy_j) [m], theta_j = atan2(y - sy_j, x - sx_j) [rad, angular]",
+        parameters: "station [x, y] m or stations [[x, y], ...] m; position [i, j] = [0, 1]",
         source: "Bar-Shalom, Li, Kirubarajan 2001",
         build: |map, n| built(map, n, range_bearing::RangeBearing::from_parameters),
     },
