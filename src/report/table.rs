@@ -45,7 +45,7 @@ pub fn write_summary(survey: &SurveyResult<'_>, summary: &Summary, to: &mut dyn 
     let suite = survey.suite;
     writeln!(to, "{}", wrapped(&format!("{} - {}", suite.name, suite.title), 0))?;
     let facts = format!(
-        "{} of {} cases, {:.3e} samples in {:.1} s; references to {:.0e} (worst standardised standard error)",
+        "{} of {} cases, {:.3e} samples in {:.1} s; references to {:e} (worst standardised standard error)",
         summary.cases,
         suite.cases.len(),
         survey.points() as f64,
