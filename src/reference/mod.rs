@@ -14,5 +14,5 @@ mod stream;
 mod tally;
 
 pub use estimate::{Reference, Soundness};
-pub use sampler::{CapTooSmall, DEFAULT_REPLICATES, Sampler, SamplerSettings};
+pub use sampler::{DEFAULT_REPLICATES, Sampler, SamplerError, SamplerSettings};
 pub use stream::Key;

@@ -40,29 +40,42 @@ impl Default for SamplerSettings {
 }
 
 impl SamplerSettings {
-    /// Checks that the cap leaves one block for each replicate.
+    /// Checks that there are at least two replicates and that the cap leaves one block for each.
     ///
     /// # Errors
-    /// [`CapTooSmall`] with the least cap that would do.
-    pub fn check(&self) -> Result<(), CapTooSmall> {
+    /// [`SamplerError`] with what would do.
+    pub fn check(&self) -> Result<(), SamplerError> {
+        if self.replicates < 2 {
+            return Err(SamplerError::TooFewReplicates { replicates: self.replicates });
+        }
         let least = BLOCK as u64 * self.replicates as u64;
         if self.cap < least {
-            return Err(CapTooSmall { cap: self.cap, replicates: self.replicates, least });
+            return Err(SamplerError::CapTooSmall { cap: self.cap, replicates: self.replicates, least });
         }
         Ok(())
     }
 }
 
-/// The cap does not leave one block for each replicate.
+/// Settings under which nothing can be sampled.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, thiserror::Error)]
-#[error("a cap of {cap} samples is too small: {replicates} replicates need at least {least}")]
-pub struct CapTooSmall {
-    /// Cap asked for.
-    pub cap: u64,
-    /// Replicates asked for.
-    pub replicates: usize,
-    /// Least cap that would do.
-    pub least: u64,
+#[non_exhaustive]
+pub enum SamplerError {
+    /// Without two replicates there is no standard error.
+    #[error("{replicates} replicates are too few: a standard error needs at least 2")]
+    TooFewReplicates {
+        /// Replicates asked for.
+        replicates: usize,
+    },
+    /// The cap does not leave one block for each replicate.
+    #[error("a cap of {cap} samples is too small: {replicates} replicates need at least {least}")]
+    CapTooSmall {
+        /// Cap asked for.
+        cap: u64,
+        /// Replicates asked for.
+        replicates: usize,
+        /// Least cap that would do.
+        least: u64,
+    },
 }
 
 /// Samples the moments of one case, deeper at every call; nothing sampled is thrown away.
@@ -84,8 +97,8 @@ impl<'a> Sampler<'a> {
     /// A sampler of `case`.
     ///
     /// # Errors
-    /// [`CapTooSmall`] if the cap does not leave 1024 samples a replicate.
-    pub fn new(case: &'a Case, settings: SamplerSettings) -> Result<Self, CapTooSmall> {
+    /// [`SamplerError`] if there are fewer than two replicates or the cap does not leave each 1024 samples.
+    pub fn new(case: &'a Case, settings: SamplerSettings) -> Result<Self, SamplerError> {
         let key = Key::new(settings.seed, &case.question());
         Self::of_parts(case.sensor(), case.prior(), case.marginal(), case.noise_or_zero(), key, settings)
     }
@@ -102,7 +115,7 @@ impl<'a> Sampler<'a> {
         noise: DMatrix<f64>,
         key: Key,
         settings: SamplerSettings,
-    ) -> Result<Self, CapTooSmall> {
+    ) -> Result<Self, SamplerError> {
         settings.check()?;
         let law = marginal.law();
         let root = law.root();

@@ -4,6 +4,8 @@ use serde::Serialize;
 use serde::de::DeserializeOwned;
 use serde_json::{Map, Value};
 
+use crate::wording::{plain, proposal};
+
 use super::{ParameterError, Sensor, bearing_only, linear, quadratic, range_bearing};
 
 /// A sensor that a suite or a case record can name.
@@ -100,10 +102,10 @@ impl SensorSpec {
             Some(other) => return Err(error("kind", format!("is {other}; give one of {}", names()))),
             None => return Err(error("", format!("`kind` is missing; give one of {}", names()))),
         };
-        let kind = KINDS
-            .iter()
-            .find(|k| k.name == kind)
-            .ok_or_else(|| error("kind", format!("there is no sensor `{kind}`; give one of {}", names())))?;
+        let kind = KINDS.iter().find(|k| k.name == kind).ok_or_else(|| {
+            let near = proposal(&kind, KINDS.iter().map(|k| k.name));
+            error("kind", format!("there is no sensor `{kind}`; {near}give one of {}", names()))
+        })?;
         let (parameters, sensor) = (kind.build)(described, n)?;
         Ok(Self { kind: kind.name, parameters, state_dimension: n, sensor })
     }
@@ -141,7 +143,7 @@ where
     let parameters: P = serde_path_to_error::deserialize(Value::Object(map)).map_err(|e| {
         let path = e.path().to_string();
         let key = if path == "." { String::new() } else { path };
-        BuildError { key, message: e.into_inner().to_string() }
+        BuildError { key, message: plain(&e.into_inner().to_string()) }
     })?;
     let echoed = match serde_json::to_value(&parameters) {
         Ok(Value::Object(map)) => map,

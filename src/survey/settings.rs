@@ -1,5 +1,5 @@
 use crate::method::{MethodSpec, default_methods};
-use crate::reference::{CapTooSmall, SamplerSettings};
+use crate::reference::{SamplerError, SamplerSettings};
 use crate::suite::Suite;
 use crate::trust::{Judge, Limits};
 
@@ -38,9 +38,9 @@ pub enum SurveyError {
         "precision {0} is not above 0 and below 1; give the standardised standard error to reach, such as 1e-3"
     )]
     Precision(f64),
-    /// The cap is too small.
+    /// Nothing can be sampled under these settings.
     #[error(transparent)]
-    Cap(#[from] CapTooSmall),
+    Sampler(#[from] SamplerError),
     /// Two methods carry the same label.
     #[error("method `{0}` stands twice; its rows could not be told apart")]
     MethodTwice(String),

@@ -408,7 +408,11 @@ mod tests {
                 Some(estimate(0.101, 1e-3)),
                 "mean error 0.1010 +- 1.0e-3 is too near its limit to tell (at most 0.1)",
             ),
-            (ScoreKind::Excess, None, "excess is undefined: the joint of state and measurement is singular"),
+            (
+                ScoreKind::Excess,
+                None,
+                "excess is undefined: the joint of state and measurement is singular to working precision",
+            ),
         ] {
             assert_eq!(verdict(&[(kind, estimate)]).reason, reason);
         }
