@@ -19,3 +19,4 @@ pub mod sensor;
 pub mod suite;
 pub mod survey;
 pub mod trust;
+mod wording;

@@ -117,7 +117,7 @@ fn every_mistake_is_answered_with_its_key() {
         (("/sensor/kind", json!(3)), "sensor.kind", "give one of"),
         (("/sensor/kind", json!("sonar")), "sensor.kind", "no sensor `sonar`"),
         (("/sensor/colour", json!(3)), "sensor.colour", "unknown key `colour`"),
-        (("/sensor/station", json!(null)), "sensor", "`station` is missing"),
+        (("/sensor/station", json!(null)), "sensor.station", "is missing; give `station` [x, y] or"),
         (("/sensor/station", json!([1.0])), "sensor.station", "length"),
         (("/sensor/station/1", json!("y")), "sensor.station[1]", "give a number"),
         (("/sensor/position", json!([0, 3])), "sensor.position[1]", "3 components counted from 0"),

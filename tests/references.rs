@@ -226,6 +226,9 @@ fn a_cap_that_leaves_nothing_is_refused() {
     let settings = SamplerSettings { cap: 1000, ..SamplerSettings::default() };
     let error = Sampler::new(&case, settings).unwrap_err();
     assert_eq!(error.to_string(), "a cap of 1000 samples is too small: 32 replicates need at least 32768");
+    let settings = SamplerSettings { replicates: 1, ..SamplerSettings::default() };
+    let error = Sampler::new(&case, settings).unwrap_err();
+    assert_eq!(error.to_string(), "1 replicates are too few: a standard error needs at least 2");
 }
 
 /// A prior that knows a component exactly: the sampler and the closed form of the range along one axis agree.

@@ -54,14 +54,14 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         // Unknown keys, with the nearest known one.
         (with("[noise]", "[nosie]"), "x.toml:8: nosie: unknown key `nosie`; did you mean `noise`? allowed: title, note, seed, precision, cap, draws, limits, method, family, sensor, prior, noise".into()),
         (with("covariance", "covarience"), "x.toml:7: prior.covarience: unknown key `covarience`; did you mean `covariance`? allowed: mean, covariance, sd, correlation, range, bearing, along_sd, across_sd, seen_from, rest_mean, rest_sd".into()),
-        (with("station =", "statoin ="), "x.toml:4: sensor.statoin: unknown key `statoin`; did you mean `station`? allowed: station, position".into()),
+        (with("station =", "statoin ="), "x.toml:4: sensor.statoin: unknown key `statoin`; did you mean `station`? allowed: station, stations, position".into()),
         (with("sd =", "std ="), "x.toml:9: noise.std: unknown key `std`; did you mean `sd`? allowed: sd, covariance".into()),
         (with("", "[[family]]\nname = \"a\"\nnotes = 1\n"), "x.toml:12: family[0].notes: unknown key `notes`; did you mean `noise`? allowed: name, draws, sensor, prior, noise".into()),
         // Sensors.
-        (with("range-bearing", "range-baering"), "x.toml:3: sensor.kind: there is no sensor `range-baering`; did you mean `range-bearing`? give one of range-bearing, bearing-only, quadratic, linear".into()),
-        (with("kind = \"range-bearing\"", "kind = 5"), "x.toml:3: sensor.kind: is 5; give a text in quotes".into()),
-        (with("kind = \"range-bearing\"", ""), "x.toml:2: sensor: `kind` is missing; give one of range-bearing, bearing-only, quadratic, linear".into()),
-        (with("station = [0, 0]", ""), "x.toml:2: sensor: `station` is missing".into()),
+        (with("range-bearing", "range-baering"), "x.toml:3: sensor.kind: there is no sensor `range-baering`; did you mean `range-bearing`? give one of KINDS".into()),
+        (with("kind = \"range-bearing\"", "kind = 5"), "x.toml:3: sensor.kind: is 5; give one of range-bearing, bearing-only, quadratic, linear".into()),
+        (with("kind = \"range-bearing\"", ""), "x.toml:2: sensor: `kind` is missing; give one of KINDS".into()),
+        (with("station = [0, 0]", ""), "x.toml:2: sensor: `station` is missing; give `station` [x, y] or `stations` [[x, y], ...]".into()),
         (with("station = [0, 0]", "station = [0]"), "x.toml:4: sensor.station: has length 1; give a list of length 2".into()),
         (with("station = [0, 0]", "station = [0, \"3 deg\"]"), "x.toml:4: sensor.station[1]: \"3 deg\" is an angle; a length is needed: m, km, cm, mm".into()),
         (with("station = [0, 0]", "station = [0, 0]\nposition = [0, 2]"), "x.toml:5: sensor.position[1]: 2 is outside the state, which has 2 components counted from 0".into()),
@@ -140,9 +140,11 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (with("", "[[method]]\nid = \"taylor-1\"\n[[method]]\nid = \"taylor-1\"\n"), "x.toml:12: method[1]: `taylor-1` stands on line 10 already; delete one".into()),
     ]
     .into();
+    let kinds = gaussworthy::sensor::KINDS.iter().map(|k| k.name).collect::<Vec<_>>().join(", ");
     let wrong: Vec<_> = table
         .into_iter()
         .filter_map(|(text, expected)| {
+            let expected = expected.replace("KINDS", &kinds);
             let said = read(&text).err().unwrap_or_else(|| "was read without complaint".into());
             (said != expected).then(|| format!("expected {expected}\n    said {said}\n"))
         })

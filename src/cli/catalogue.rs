@@ -4,6 +4,7 @@ use clap::{Args, ValueEnum};
 use gaussworthy::report::{method_table, score_table, sensor_table};
 
 use super::Failure;
+use super::stdout::Stdout;
 
 #[derive(Debug, Args)]
 pub struct Arguments {
@@ -20,7 +21,7 @@ enum Shelf {
 }
 
 pub fn run(arguments: &Arguments) -> Result<(), Failure> {
-    let mut out = std::io::stdout().lock();
+    let mut out = Stdout::new();
     let shelves = [
         (Shelf::Sensors, sensor_table as fn() -> String),
         (Shelf::Methods, method_table),

@@ -1,7 +1,9 @@
 //! The commands, one file each. Exit codes are decided here and nowhere else.
 
 mod catalogue;
+
 mod progress;
+mod stdout;
 mod survey;
 
 use std::process::ExitCode;
@@ -43,7 +45,7 @@ impl Failure {
     }
 }
 
-/// Writing to the terminal or a pipe.
+/// Writing to standard output; a reader that leaves early is no error, see [`stdout::Stdout`].
 impl From<std::io::Error> for Failure {
     fn from(error: std::io::Error) -> Self {
         Self::Unfinished(anyhow::Error::new(error).context("standard output"))
@@ -59,22 +61,18 @@ pub fn main() -> ExitCode {
     match done {
         Ok(()) => ExitCode::SUCCESS,
         Err(Failure::Input(error)) => complain(&error, 2),
-        // A reader that has seen enough, such as `head`, closed the pipe.
-        Err(Failure::Unfinished(error)) if is_closed_pipe(&error) => ExitCode::SUCCESS,
         Err(Failure::Unfinished(error)) => complain(&error, 3),
     }
 }
 
 fn complain(error: &anyhow::Error, code: u8) -> ExitCode {
     use std::io::Write;
-    // With standard error gone too there is nobody left to tell.
-    let _ = writeln!(std::io::stderr(), "gaussworthy: {error:#}");
+    // What was typed may hold anything; the message stays one line.
+    let mut line = String::from("gaussworthy: ");
+    for c in format!("{error:#}").chars() {
+        if c.is_control() { line.extend(c.escape_default()) } else { line.push(c) }
+    }
+    // With standard error gone there is nobody left to tell.
+    let _ = writeln!(std::io::stderr(), "{line}");
     ExitCode::from(code)
-}
-
-fn is_closed_pipe(error: &anyhow::Error) -> bool {
-    error
-        .chain()
-        .filter_map(|e| e.downcast_ref::<std::io::Error>())
-        .any(|e| e.kind() == std::io::ErrorKind::BrokenPipe)
 }

@@ -10,6 +10,7 @@ use gaussworthy::survey::{SurveyPlan, SurveySettings, summarise, survey};
 
 use super::Failure;
 use super::progress::{Progress, heed_interrupts};
+use super::stdout::Stdout;
 
 #[derive(Debug, Args)]
 pub struct Arguments {
@@ -65,7 +66,7 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
     }
     heed_interrupts().map_err(Failure::unfinished)?;
 
-    let mut out = std::io::stdout().lock();
+    let mut out = Stdout::new();
     for (suite, plan, folder) in &jobs {
         let progress = Progress::new(&suite.name, suite.cases.len());
         let result = survey(suite, plan, !arguments.no_timing, &progress);

@@ -118,7 +118,7 @@ pub fn checked_covariance(mut covariance: DMatrix<f64>, dimension: usize) -> Res
         }
     }
     let eigenvalue = least_correlation_eigenvalue(&covariance);
-    if eigenvalue < -EIGENVALUE_SLACK * dimension as f64 {
+    if !(eigenvalue >= -EIGENVALUE_SLACK * dimension as f64) {
         return Err(GaussianError::Indefinite { eigenvalue });
     }
     Ok(covariance)
@@ -128,12 +128,14 @@ pub fn checked_covariance(mut covariance: DMatrix<f64>, dimension: usize) -> Res
 /// kilometres beside microradians is judged fairly. A zero variance with a covariance beside it counts as
 /// indefinite.
 fn least_correlation_eigenvalue(covariance: &DMatrix<f64>) -> f64 {
+    // A correlation far beyond one is as impossible as one just beyond; the bound keeps it from overflowing.
+    const BOUND: f64 = 1e6;
     let n = covariance.nrows();
     let scaled = DMatrix::from_fn(n, n, |i, j| {
         let scale = covariance[(i, i)].sqrt() * covariance[(j, j)].sqrt();
         let entry = covariance[(i, j)];
         if scale > 0.0 {
-            entry / scale
+            (entry / scale).clamp(-BOUND, BOUND)
         } else if i == j {
             1.0
         } else if entry == 0.0 {
@@ -176,7 +178,9 @@ mod tests {
             panic!("a correlation of 1.5 was let through")
         };
         assert!((eigenvalue + 0.5).abs() < 1e-12, "1 - 1.5 = -0.5, not {eigenvalue}");
-        assert!(matches!(refuse(dmatrix![0.0, 0.1; 0.1, 4.0]), GaussianError::Indefinite { .. }));
+        for impossible in [dmatrix![0.0, 0.1; 0.1, 4.0], dmatrix![1e-300, 1e300; 1e300, 1e-300]] {
+            assert!(matches!(refuse(impossible), GaussianError::Indefinite { .. }));
+        }
         assert!(matches!(
             Gaussian::new(dvector![0.0, f64::INFINITY], DMatrix::identity(2, 2)),
             Err(GaussianError::MeanNotFinite { index: 1, .. })

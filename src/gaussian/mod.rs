@@ -15,4 +15,5 @@ pub use error::GaussianError;
 pub use joint::{Conditional, Moments, Regression};
 pub use law::{Gaussian, checked_covariance};
 pub use marginal::Marginal;
-pub use root::{SquareRoot, Support, cholesky_in_place};
+pub(crate) use root::cholesky_in_place;
+pub use root::{SquareRoot, Support};

@@ -22,8 +22,8 @@ impl SquareRoot {
     /// rounding taken as zero.
     pub fn of(a: &DMatrix<f64>) -> Self {
         match cholesky_in_place(a.clone()) {
-            Ok(lower) => Self::Cholesky(lower),
-            Err(_) => Self::Eigen(eigen_root(a)),
+            Some(lower) => Self::Cholesky(lower),
+            None => Self::Eigen(eigen_root(a)),
         }
     }
 
@@ -35,31 +35,20 @@ impl SquareRoot {
     }
 }
 
-/// The Cholesky factor of `a` in `a`'s own storage, its upper triangle cleared; `Err` gives a fresh zero
-/// matrix of the same size back when `a` is not positive definite.
+/// The Cholesky factor of `a` in `a`'s own storage, its upper triangle cleared; `None` when `a` is not positive
+/// definite.
 ///
 /// nalgebra's factorisation accepts a pivot of any positive size, so a matrix that is singular but for
 /// rounding would pass with a worthless last column: a pivot under 1e-14 of its diagonal entry is refused.
-///
-/// # Errors
-/// A zero matrix: `a` is not positive definite.
-pub fn cholesky_in_place(a: DMatrix<f64>) -> Result<DMatrix<f64>, DMatrix<f64>> {
+pub(crate) fn cholesky_in_place(a: DMatrix<f64>) -> Option<DMatrix<f64>> {
     let n = a.nrows();
     let variances: smallvec::SmallVec<[f64; 8]> = (0..n).map(|i| a[(i, i)]).collect();
-    let Some(factor) = Cholesky::new(a) else {
-        return Err(DMatrix::zeros(n, n));
-    };
-    let mut lower = factor.unpack();
+    let lower = Cholesky::new(a)?.unpack();
     let sound = (0..n).all(|i| {
         let pivot = lower[(i, i)];
         pivot * pivot > PIVOT_SLACK * variances[i]
     });
-    if sound {
-        Ok(lower)
-    } else {
-        lower.fill(0.0);
-        Err(lower)
-    }
+    sound.then_some(lower)
 }
 
 /// The Cholesky factorisation of `a` if it is positive definite beyond rounding: with the same guard as

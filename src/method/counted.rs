@@ -20,7 +20,7 @@ pub struct Evaluations {
 /// ```
 /// use gaussworthy::method::Counted;
 /// use gaussworthy::sensor::{RangeBearing, Sensor};
-/// let radar = RangeBearing::new([0.0, 0.0], [0, 1], 2).unwrap();
+/// let radar = RangeBearing::new(vec![[0.0, 0.0]], [0, 1], 2).unwrap();
 /// let counted = Counted::new(&radar);
 /// counted.value(&[3.0, 4.0], &mut [0.0; 2]);
 /// counted.values(2, &[3.0, 6.0, 4.0, 8.0], &mut [0.0; 4]);

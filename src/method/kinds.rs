@@ -4,6 +4,8 @@ use serde::de::{DeserializeOwned, Error};
 use serde::{Deserialize, Deserializer, Serialize};
 use serde_json::{Map, Value};
 
+use crate::wording::plain;
+
 use super::{Method, cubature, gauss_hermite, taylor, unscented};
 
 /// A method that a suite or the command line can name.
@@ -105,7 +107,7 @@ where
 {
     let parameters: P = serde_path_to_error::deserialize(Value::Object(map)).map_err(|e| {
         let path = e.path().to_string();
-        BuildError::new(if path == "." { String::new() } else { path }, e.into_inner().to_string())
+        BuildError::new(if path == "." { String::new() } else { path }, plain(&e.into_inner().to_string()))
     })?;
     let written = match serde_json::to_value(&parameters) {
         Ok(Value::Object(map)) => map,

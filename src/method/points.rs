@@ -131,7 +131,7 @@ impl PointTransform {
         // The factorisation works in the storage it is given: lend it ours. An empty matrix costs nothing.
         let mut storage = std::mem::replace(&mut self.root, DMatrix::zeros(0, 0));
         storage.copy_from(prior.covariance());
-        self.root = cholesky_in_place(storage).unwrap_or_else(|_| prior.root());
+        self.root = cholesky_in_place(storage).unwrap_or_else(|| prior.root());
     }
 
     /// x_k = m + L z_k, the mean added last so that it rounds once.

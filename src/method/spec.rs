@@ -2,6 +2,8 @@ use std::sync::Arc;
 
 use serde_json::{Map, Number, Value};
 
+use crate::wording::proposal;
+
 use super::{BuildError, KINDS, Kind, Method};
 
 /// A method and how it was written.
@@ -59,7 +61,8 @@ impl MethodSpec {
 
     fn build(id: &str, parameters: Map<String, Value>) -> Result<Self, BuildError> {
         let kind = KINDS.iter().find(|k| k.id == id).ok_or_else(|| {
-            BuildError::new("id", format!("there is no method `{id}`; give one of {}", known_ids()))
+            let near = proposal(id, KINDS.iter().map(|k| k.id));
+            BuildError::new("id", format!("there is no method `{id}`; {near}give one of {}", known_ids()))
         })?;
         let (written, method) = (kind.build)(parameters)?;
         let mut label = kind.id.to_string();
@@ -165,7 +168,6 @@ mod tests {
     #[test]
     fn the_defaults_cover_every_kind() {
         let methods = default_methods();
-        assert_eq!(methods.len(), 7);
         for kind in KINDS {
             assert!(methods.iter().any(|m| m.kind().id == kind.id), "{} is missing", kind.id);
         }
@@ -173,7 +175,7 @@ mod tests {
 
     #[test]
     fn what_is_wrong_is_named() {
-        let known = "give one of taylor-1, taylor-2, unscented, unscented-scaled, cubature-3, gauss-hermite";
+        let known = format!("give one of {}", KINDS.iter().map(|k| k.id).collect::<Vec<_>>().join(", "));
         let texts = [
             ("", "id", format!("there is no method ``; {known}")),
             ("ekf", "id", format!("there is no method `ekf`; {known}")),
@@ -182,9 +184,9 @@ mod tests {
             ("unscented:kappa=nan", "kappa", "is nan; a finite number is needed".into()),
             ("unscented:kappa=-inf", "kappa", "is -inf; a finite number is needed".into()),
             ("unscented:kappa=", "kappa", "is ``; a number is needed".into()),
-            ("unscented:kapa=1", "kapa", "unknown field `kapa`, expected `kappa`".into()),
-            ("unscented:id=1", "id", "unknown field `id`, expected `kappa`".into()),
-            ("taylor-1:order=1", "order", "unknown field `order`, there are no fields".into()),
+            ("unscented:kapa=1", "kapa", "unknown key `kapa`; did you mean `kappa`? allowed: kappa".into()),
+            ("unscented:id=1", "id", "unknown key `id`; allowed: kappa".into()),
+            ("taylor-1:order=1", "order", "unknown key `order`; none is allowed here".into()),
             ("unscented-scaled:alpha=0", "alpha", "is 0; the spread of the points is above zero, 1e-3 to 1".into()),
             ("gauss-hermite:order=1", "order", "is 1; give 2 to 20 points an axis".into()),
             ("gauss-hermite:order=2.5", "order", "is 2.5; a whole number is needed".into()),
@@ -202,7 +204,7 @@ mod tests {
             (json!({"kappa": 1}), "id", format!("is missing; {known}")),
             (json!({"id": 3}), "id", format!("is 3; {known}")),
             // A NaN of a TOML file arrives as null: it must not pass for the default.
-            (json!({"id": "unscented", "kappa": null}), "kappa", "invalid type: null, expected f64".into()),
+            (json!({"id": "unscented", "kappa": null}), "kappa", "is null; give a number".into()),
             (json!({"id": "unscented", "kappa": "1"}), "kappa", "invalid type: string \"1\", expected f64".into()),
         ];
         for (object, key, message) in objects {

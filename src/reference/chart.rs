@@ -7,6 +7,10 @@ use super::tally::{Tally, sum};
 /// How many standard errors of its centre a chart keeps ready to move: a step beyond has odds under 1e-14.
 const READY: f64 = 8.0;
 
+/// How far rounding alone may move a centre (rad): the angles of a state known exactly do not spread, and their
+/// mean is off by some units in the last place of pi.
+const ROUNDING: f64 = 1e-12;
+
 /// Sums of cos and sin of an angle's deviations, and of sin^2, for its circular mean and how sure it is.
 #[derive(Debug, Clone, Copy, Default, PartialEq)]
 pub(super) struct CircularSum {
@@ -46,7 +50,7 @@ impl CircularSum {
     /// How far a chart centred here may have to move once `more` further samples are in.
     pub fn band(&self, more: f64) -> f64 {
         let error = self.direction_error();
-        let band = READY * error * (1.0 + (self.count / more).sqrt());
+        let band = ROUNDING + READY * error * (1.0 + (self.count / more).sqrt());
         if band < PI { band } else { PI }
     }
 
@@ -230,6 +234,18 @@ mod tests {
         assert!((&tally.mean_e - &fresh.mean_e).amax() < 1e-12);
         assert!((&tally.ee - &fresh.ee).amax() < 1e-8, "{} {}", tally.ee, fresh.ee);
         assert!((&tally.ze - &fresh.ze).amax() < 1e-9);
+    }
+
+    #[test]
+    fn angles_without_spread_stay_in_their_chart() {
+        for angle in [0.0, 1e-16, -3e-16] {
+            let mut circle = CircularSum::default();
+            circle.add(&[angle; 4096]);
+            let mut charts = Charts::new(DVector::from_element(1, 0.0), &[Some(circle.band(4096.0))]);
+            charts.observe(0, &[angle; 4096]);
+            charts.recentre(&mut Tally::empty(1, 1));
+            assert!(!charts.lost, "{angle}");
+        }
     }
 
     #[test]

@@ -15,6 +15,6 @@ mod tails;
 mod tally;
 
 pub use estimate::{Reference, Soundness};
-pub use sampler::{CapTooSmall, DEFAULT_REPLICATES, Sampler, SamplerSettings};
+pub use sampler::{DEFAULT_REPLICATES, Sampler, SamplerError, SamplerSettings};
 pub use stream::Key;
 pub use tails::{ParetoFit, fit_pareto};

@@ -15,6 +15,10 @@ pub const DEFAULT_REPLICATES: usize = 32;
 /// the directions are all but uniform, and where the cut lies decides the moments.
 const LEAST_RESULTANT: f64 = 0.1;
 
+/// The least standard deviation of an output as a share of its mean: 1e4 units in the last place of a double.
+/// Ours, no source: the rounding of a value, a few units, is then under 1e-3 of what is measured.
+const LEAST_SPREAD: f64 = 1e4 * f64::EPSILON;
+
 /// How a reference is to be sampled.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct SamplerSettings {
@@ -36,29 +40,42 @@ impl Default for SamplerSettings {
 }
 
 impl SamplerSettings {
-    /// Checks that the cap leaves one block for each replicate.
+    /// Checks that there are at least two replicates and that the cap leaves one block for each.
     ///
     /// # Errors
-    /// [`CapTooSmall`] with the least cap that would do.
-    pub fn check(&self) -> Result<(), CapTooSmall> {
+    /// [`SamplerError`] with what would do.
+    pub fn check(&self) -> Result<(), SamplerError> {
+        if self.replicates < 2 {
+            return Err(SamplerError::TooFewReplicates { replicates: self.replicates });
+        }
         let least = BLOCK as u64 * self.replicates as u64;
         if self.cap < least {
-            return Err(CapTooSmall { cap: self.cap, replicates: self.replicates, least });
+            return Err(SamplerError::CapTooSmall { cap: self.cap, replicates: self.replicates, least });
         }
         Ok(())
     }
 }
 
-/// The cap does not leave one block for each replicate.
+/// Settings under which nothing can be sampled.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, thiserror::Error)]
-#[error("a cap of {cap} samples is too small: {replicates} replicates need at least {least}")]
-pub struct CapTooSmall {
-    /// Cap asked for.
-    pub cap: u64,
-    /// Replicates asked for.
-    pub replicates: usize,
-    /// Least cap that would do.
-    pub least: u64,
+#[non_exhaustive]
+pub enum SamplerError {
+    /// Without two replicates there is no standard error.
+    #[error("{replicates} replicates are too few: a standard error needs at least 2")]
+    TooFewReplicates {
+        /// Replicates asked for.
+        replicates: usize,
+    },
+    /// The cap does not leave one block for each replicate.
+    #[error("a cap of {cap} samples is too small: {replicates} replicates need at least {least}")]
+    CapTooSmall {
+        /// Cap asked for.
+        cap: u64,
+        /// Replicates asked for.
+        replicates: usize,
+        /// Least cap that would do.
+        least: u64,
+    },
 }
 
 /// Samples the moments of one case, deeper at every call; nothing sampled is thrown away.
@@ -80,8 +97,8 @@ impl<'a> Sampler<'a> {
     /// A sampler of `case`.
     ///
     /// # Errors
-    /// [`CapTooSmall`] if the cap does not leave 1024 samples a replicate.
-    pub fn new(case: &'a Case, settings: SamplerSettings) -> Result<Self, CapTooSmall> {
+    /// [`SamplerError`] if there are fewer than two replicates or the cap does not leave each 1024 samples.
+    pub fn new(case: &'a Case, settings: SamplerSettings) -> Result<Self, SamplerError> {
         let key = Key::new(settings.seed, &case.question());
         Self::of_parts(case.sensor(), case.prior(), case.marginal(), case.noise_or_zero(), key, settings)
     }
@@ -98,7 +115,7 @@ impl<'a> Sampler<'a> {
         noise: DMatrix<f64>,
         key: Key,
         settings: SamplerSettings,
-    ) -> Result<Self, CapTooSmall> {
+    ) -> Result<Self, SamplerError> {
         settings.check()?;
         let law = marginal.law();
         let root = law.root();
@@ -190,7 +207,20 @@ impl<'a> Sampler<'a> {
         let outputs = self.ground.sensor.outputs();
         if !moments.is_finite() {
             let which = (0..outputs.len()).find(|&j| !moments.covariance[(j, j)].is_finite()).unwrap_or(0);
-            return Some(format!("output `{}` is not a finite number at every sample", outputs[which].name));
+            return Some(format!(
+                "output `{}` or its square is not a finite number at every sample",
+                outputs[which].name
+            ));
+        }
+        for (j, output) in outputs.iter().enumerate() {
+            let (sd, size) = (moments.covariance[(j, j)].sqrt(), moments.mean[j].abs());
+            if sd > 0.0 && sd < LEAST_SPREAD * size {
+                return Some(format!(
+                    "output `{}` spreads by {sd:.1e} around {:.1e}: the digits of a number do not show it; measure \
+                     it from an origin nearer by",
+                    output.name, moments.mean[j]
+                ));
+            }
         }
         let charts = self.replicates.iter().map(Replicate::charts);
         let least = charts.clone().filter_map(|c| c.least_resultant()).min_by(|a, b| a.1.total_cmp(&b.1));

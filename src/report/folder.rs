@@ -12,7 +12,7 @@ pub struct ResultsFolder(PathBuf);
 
 /// A results folder could not be written.
 #[derive(Debug, thiserror::Error)]
-#[error("{}: cannot be written: {source}", path.display())]
+#[error("{}: cannot be written", path.display())]
 pub struct FolderError {
     /// The folder or file.
     pub path: PathBuf,

@@ -1,6 +1,5 @@
 use std::io::{self, Write};
 
-use nalgebra::DMatrix;
 use serde::Serialize;
 
 use crate::gaussian::Moments;
@@ -29,11 +28,10 @@ struct Entries {
 
 impl From<&Moments> for Entries {
     fn from(m: &Moments) -> Self {
-        let table = |m: &DMatrix<f64>| rows(m);
         Self {
             mean: m.mean.iter().copied().collect(),
-            covariance: table(&m.covariance),
-            cross_covariance: table(&m.cross_covariance),
+            covariance: rows(&m.covariance),
+            cross_covariance: rows(&m.cross_covariance),
         }
     }
 }

@@ -43,16 +43,16 @@ fn keep_whole(table: &mut Table, columns: std::ops::Range<usize>) {
 /// What the writer says.
 pub fn write_summary(survey: &SurveyResult<'_>, summary: &Summary, to: &mut dyn Write) -> io::Result<()> {
     let suite = survey.suite;
-    writeln!(to, "{} - {}", suite.name, suite.title)?;
-    writeln!(
-        to,
-        "{} of {} cases, {:.3e} samples in {:.1} s; references to {:.0e} (worst standardised standard error)",
+    writeln!(to, "{}", wrapped(&format!("{} - {}", suite.name, suite.title), 0))?;
+    let facts = format!(
+        "{} of {} cases, {:.3e} samples in {:.1} s; references to {:e} (worst standardised standard error)",
         summary.cases,
         suite.cases.len(),
         survey.points() as f64,
         survey.sampling_time.as_secs_f64(),
         survey.plan.sampler.precision,
-    )?;
+    );
+    writeln!(to, "{}", wrapped(&facts, 0))?;
     let mut table =
         plain_table(&["method", "evals", "time", "trusted", "rejected", "undecided", "what breaks first"], 1..6);
     keep_whole(&mut table, 0..6);
@@ -61,7 +61,7 @@ pub fn write_summary(survey: &SurveyResult<'_>, summary: &Summary, to: &mut dyn 
     }
     writeln!(to, "{}", lines(&table))?;
     for note in notes(survey, summary) {
-        writeln!(to, "  {note}")?;
+        writeln!(to, "{}", wrapped(&note, 2))?;
     }
     writeln!(to)
 }
@@ -111,6 +111,13 @@ fn notes(survey: &SurveyResult<'_>, summary: &Summary) -> Vec<String> {
             summary.beyond_gaussian, summary.cases, limits.floor
         ));
     }
+    if summary.floor_open > 0 {
+        notes.push(format!(
+            "Whether any Gaussian can be trusted cannot be told in {} of {} cases: their floor is too near its limit, \
+             undefined for want of noise, or that of a refused reference.",
+            summary.floor_open, summary.cases
+        ));
+    }
     if summary.wide > 0 {
         notes.push(format!(
             "{} references fell short of the asked precision at the cap of {} samples; their standard errors say by \
@@ -127,6 +134,17 @@ fn notes(survey: &SurveyResult<'_>, summary: &Summary) -> Vec<String> {
         }
     }
     notes
+}
+
+/// A paragraph that keeps to [`WIDTH`] columns, indented.
+pub(super) fn wrapped(text: &str, indent: u16) -> String {
+    let mut table = Table::new();
+    table.load_style(presets::NOTHING).set_width(WIDTH).set_content_arrangement(ContentArrangement::Dynamic);
+    table.add_row([text]);
+    if let Some(column) = table.column_mut(0) {
+        column.set_padding((indent, 0));
+    }
+    lines(&table)
 }
 
 /// The table without the blanks that end its lines.

@@ -1,7 +1,5 @@
-use serde::Serialize;
-
 /// A number known by sampling, with its standard error.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Estimate {
     /// The estimate.
     pub value: f64,

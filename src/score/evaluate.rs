@@ -1,4 +1,4 @@
-use nalgebra::{Cholesky, DMatrix};
+use nalgebra::{Cholesky, DMatrix, DVector};
 
 use super::ScoreKind;
 use super::whitened::{Whitened, WhitenedMethod};
@@ -23,16 +23,15 @@ pub enum Invalid {
 
 /// Whether the method's answer is a Gaussian at all, judged in the reference's units.
 pub(super) fn validity(method: &WhitenedMethod) -> Result<(), Invalid> {
-    let finite = |m: &DMatrix<f64>| m.iter().all(|v| v.is_finite());
     if !(finite(&method.covariance) && finite(&method.coupling) && method.shift.iter().all(|v| v.is_finite())) {
         return Err(Invalid::NotFinite);
     }
-    let eigenvalues = method.covariance.symmetric_eigenvalues();
-    let (least, greatest) = (eigenvalues.min(), eigenvalues.max());
+    let covariance = eigenvalues(&method.covariance).ok_or(Invalid::NotFinite)?;
+    let (least, greatest) = (covariance.min(), covariance.max());
     if least <= 0.0 {
         return Err(Invalid::Covariance(least));
     }
-    let least = residual(method).symmetric_eigenvalues().min();
+    let least = eigenvalues(&residual(method)).ok_or(Invalid::NotFinite)?.min();
     if least < -ROUNDING * greatest {
         return Err(Invalid::Joint(least));
     }
@@ -43,19 +42,30 @@ pub(super) fn validity(method: &WhitenedMethod) -> Result<(), Invalid> {
 pub(super) fn evaluate(reference: &Whitened, method: &WhitenedMethod) -> [f64; ScoreKind::COUNT] {
     let p = method.shift.len();
     let identity = DMatrix::identity(p, p);
-    let eigenvalues = method.covariance.symmetric_eigenvalues();
+    let (low, high) = eigenvalues(&method.covariance).map_or((f64::NAN, f64::NAN), |e| (e.min(), e.max()));
     let (nees, worst, lost) = update_scores(reference, method).unwrap_or((f64::NAN, f64::NAN, f64::NAN));
     [
         method.shift.norm(),
         (&method.covariance - identity).norm(),
-        eigenvalues.min(),
-        eigenvalues.max(),
+        low,
+        high,
         (&method.coupling - &reference.coupling).norm(),
         excess(reference, method).unwrap_or(f64::NAN),
         nees,
         worst,
         lost,
     ]
+}
+
+fn finite(a: &DMatrix<f64>) -> bool {
+    a.iter().all(|v| v.is_finite())
+}
+
+/// The eigenvalues of a symmetric matrix. `None` where it has none: nalgebra panics on an empty matrix (a state
+/// known exactly leaves nothing to whiten) and need not end on one that is not finite (squares of numbers
+/// beyond 1e154 overflow).
+fn eigenvalues(a: &DMatrix<f64>) -> Option<DVector<f64>> {
+    (!a.is_empty() && finite(a)).then(|| a.symmetric_eigenvalues())
 }
 
 /// O^ = S^ - G^' G^ (p x p).
@@ -82,7 +92,8 @@ fn excess(reference: &Whitened, method: &WhitenedMethod) -> Option<f64> {
     Some(0.5 * (trace - p + from.ln_determinant() - of.ln_determinant() + quadratic))
 }
 
-/// Expected NEES ratio, worst NEES direction and information lost.
+/// Expected NEES ratio, worst NEES direction and information lost; `None` where one is undefined, as all are for
+/// a state known exactly, which no measurement updates.
 fn update_scores(reference: &Whitened, method: &WhitenedMethod) -> Option<(f64, f64, f64)> {
     let (r, p) = method.coupling.shape();
     let identity = DMatrix::<f64>::identity(r, r);
@@ -98,9 +109,9 @@ fn update_scores(reference: &Whitened, method: &WhitenedMethod) -> Option<(f64, 
     let mut ratio = half.transpose();
     claimed.l_dirty().solve_lower_triangular_mut(&mut ratio);
     let ratio = (&ratio + ratio.transpose()) * 0.5;
-    let eigenvalues = ratio.symmetric_eigenvalues();
+    let ratio = eigenvalues(&ratio)?;
     let best = definite(&identity - &reference.coupling * reference.coupling.transpose())?;
     let actual = definite(actual)?;
     let lost = 0.5 * (actual.ln_determinant() - best.ln_determinant());
-    Some((eigenvalues.sum() / r as f64, eigenvalues.max(), lost))
+    Some((ratio.sum() / r as f64, ratio.max(), lost))
 }

@@ -1,5 +1,3 @@
-use serde::Serialize;
-
 use super::Estimate;
 
 /// How far the true joint law is from any Gaussian, KL( true joint || N(reference joint) ): what no method can
@@ -10,8 +8,7 @@ use super::Estimate;
 ///
 /// Source: the maximum-entropy property of the Gaussian (Cover & Thomas, Elements of Information Theory, 2nd
 /// ed., thm. 8.6.5) on the conditional of y given x.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
-#[serde(rename_all = "kebab-case")]
+#[derive(Debug, Clone, Copy, PartialEq)]
 pub enum Floor {
     /// In nats.
     Known(Estimate),

@@ -18,6 +18,12 @@ impl Scores {
     pub fn get(&self, kind: ScoreKind) -> Option<Estimate> {
         ScoreKind::ALL.iter().position(|&k| k == kind).and_then(|i| self.0[i])
     }
+
+    /// Made-up scores, for tests of what is made of them.
+    #[cfg(test)]
+    pub(crate) fn made_up(score: impl Fn(ScoreKind) -> Option<Estimate>) -> Self {
+        Self(ScoreKind::ALL.map(score))
+    }
 }
 
 /// One estimate of the reference, ready to be compared with.

@@ -4,6 +4,8 @@ use serde::Serialize;
 use serde::de::DeserializeOwned;
 use serde_json::{Map, Value};
 
+use crate::wording::{plain, proposal};
+
 use super::{ParameterError, Sensor, bearing_only, linear, quadratic, range_bearing};
 
 /// A sensor that a suite or a case record can name.
@@ -28,9 +30,9 @@ type Built = (Map<String, Value>, Arc<dyn Sensor>);
 pub const KINDS: &[Kind] = &[
     Kind {
         name: "range-bearing",
-        summary: "range and bearing of a planar position from one station",
-        formula: "r = hypot(x - sx, y - sy) [m], theta = atan2(y - sy, x - sx) [rad, angular]",
-        parameters: "station [x, y] m; position [i, j] = [0, 1]",
+        summary: "range and bearing of a planar position from one or several stations",
+        formula: "r_j = hypot(x - sx_j, y - sy_j) [m], theta_j = atan2(y - sy_j, x - sx_j) [rad, angular]",
+        parameters: "station [x, y] m or stations [[x, y], ...] m; position [i, j] = [0, 1]",
         source: "Bar-Shalom, Li, Kirubarajan 2001",
         build: |map, n| built(map, n, range_bearing::RangeBearing::from_parameters),
     },
@@ -62,7 +64,7 @@ pub const KINDS: &[Kind] = &[
 
 /// Why a sensor could not be made from what a suite or a case record says.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
-#[error("{key}: {message}")]
+#[error("{}{message}", if key.is_empty() { String::new() } else { format!("{key}: ") })]
 pub struct BuildError {
     /// Path of the key at fault below `sensor`, such as `station[1]`; empty for the sensor as a whole.
     pub key: String,
@@ -77,14 +79,11 @@ impl From<ParameterError> for BuildError {
 }
 
 /// A sensor and how it was written: kind and parameters, defaults filled in.
-#[derive(Debug, Clone, Serialize)]
+#[derive(Debug, Clone)]
 pub struct SensorSpec {
     kind: &'static str,
-    #[serde(flatten)]
     parameters: Map<String, Value>,
-    #[serde(skip)]
     state_dimension: usize,
-    #[serde(skip)]
     sensor: Arc<dyn Sensor>,
 }
 
@@ -103,10 +102,10 @@ impl SensorSpec {
             Some(other) => return Err(error("kind", format!("is {other}; give one of {}", names()))),
             None => return Err(error("", format!("`kind` is missing; give one of {}", names()))),
         };
-        let kind = KINDS
-            .iter()
-            .find(|k| k.name == kind)
-            .ok_or_else(|| error("kind", format!("there is no sensor `{kind}`; give one of {}", names())))?;
+        let kind = KINDS.iter().find(|k| k.name == kind).ok_or_else(|| {
+            let near = proposal(&kind, KINDS.iter().map(|k| k.name));
+            error("kind", format!("there is no sensor `{kind}`; {near}give one of {}", names()))
+        })?;
         let (parameters, sensor) = (kind.build)(described, n)?;
         Ok(Self { kind: kind.name, parameters, state_dimension: n, sensor })
     }
@@ -144,7 +143,7 @@ where
     let parameters: P = serde_path_to_error::deserialize(Value::Object(map)).map_err(|e| {
         let path = e.path().to_string();
         let key = if path == "." { String::new() } else { path };
-        BuildError { key, message: e.into_inner().to_string() }
+        BuildError { key, message: plain(&e.into_inner().to_string()) }
     })?;
     let echoed = match serde_json::to_value(&parameters) {
         Ok(Value::Object(map)) => map,

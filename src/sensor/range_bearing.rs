@@ -1,50 +1,42 @@
-use serde::{Deserialize, Serialize};
-
-use super::planar::{checked_position, checked_station, default_position, seen_from};
+use super::planar::{Lookout, Parameters};
 use super::{Formula, Number, Output, ParameterError};
 
-/// Range and bearing of a planar position from one station.
+/// Range and bearing of a planar position from one or several stations.
 ///
-/// r = sqrt((x - sx)^2 + (y - sy)^2) \[m\], theta = atan2(y - sy, x - sx) \[rad\], counter-clockwise from the
-/// x axis, angular. Undefined derivatives at the station itself.
+/// r_j = sqrt((x - sx_j)^2 + (y - sy_j)^2) \[m\], theta_j = atan2(y - sy_j, x - sx_j) \[rad\],
+/// counter-clockwise from the x axis, angular; range and bearing of the first station, then of the next.
+/// Undefined derivatives at a station itself.
 ///
 /// Source: Y. Bar-Shalom, X. R. Li, T. Kirubarajan, Estimation with Applications to Tracking and Navigation
 /// (Wiley, 2001), sec. 10.4.3 (polar measurements of a Cartesian state; section number from memory).
 #[derive(Debug, Clone, PartialEq)]
 pub struct RangeBearing {
-    station: [f64; 2],
-    position: [usize; 2],
-    outputs: [Output; 2],
-}
-
-/// What a suite or a case record says of a [`RangeBearing`].
-#[derive(Debug, Clone, Serialize, Deserialize)]
-#[serde(deny_unknown_fields)]
-pub(super) struct Parameters {
-    station: [f64; 2],
-    #[serde(default = "default_position")]
-    position: [usize; 2],
+    lookout: Lookout,
+    outputs: Vec<Output>,
 }
 
 impl RangeBearing {
-    /// A station at `station` \[m\] that reads the position at the components `position` of a state of `n`.
+    /// Stations \[m\] that read the position at the components `position` of a state of `n`.
     ///
     /// # Errors
-    /// [`ParameterError`] if a coordinate is not finite or a component is outside the state or stands twice.
-    pub fn new(station: [f64; 2], position: [usize; 2], n: usize) -> Result<Self, ParameterError> {
-        checked_station("station", station)?;
-        checked_position(position, n)?;
-        Ok(Self { station, position, outputs: [Output::plain("range", "m"), Output::angle("bearing")] })
+    /// [`ParameterError`] if there is no station, a coordinate is not finite, or a component is outside the
+    /// state or stands twice.
+    pub fn new(stations: Vec<[f64; 2]>, position: [usize; 2], n: usize) -> Result<Self, ParameterError> {
+        let lookout = Lookout::new(stations, position, n)?;
+        let outputs =
+            lookout.outputs(|called| vec![Output::plain(called("range"), "m"), Output::angle(called("bearing"))]);
+        Ok(Self { lookout, outputs })
     }
 
     pub(super) fn from_parameters(p: Parameters, n: usize) -> Result<Self, ParameterError> {
-        Self::new(p.station, p.position, n)
+        let (stations, position) = p.places()?;
+        Self::new(stations, position, n)
     }
 }
 
 impl Formula for RangeBearing {
     fn reads(&self) -> &[usize] {
-        &self.position
+        &self.lookout.position
     }
 
     fn outputs(&self) -> &[Output] {
@@ -53,8 +45,9 @@ impl Formula for RangeBearing {
 
     #[inline]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
-        let (east, north) = seen_from(x, self.station);
-        y[0] = east.hypot(north);
-        y[1] = north.atan2(east);
+        for ((east, north), pair) in self.lookout.seen(x).zip(y.chunks_exact_mut(2)) {
+            pair[0] = east.hypot(north);
+            pair[1] = north.atan2(east);
+        }
     }
 }

@@ -6,7 +6,7 @@ use crate::gaussian::{Gaussian, GaussianError, Marginal, checked_covariance};
 use crate::sensor::{self, Sensor, SensorSpec};
 
 use super::name::flaw;
-use super::wording::plain;
+use crate::wording::plain;
 
 /// One question: one sensor with its parameters, one prior, one noise.
 #[derive(Debug, Clone)]
@@ -190,7 +190,7 @@ impl Case {
 
 fn sensor_error(e: sensor::BuildError) -> CaseError {
     let key = if e.key.is_empty() { "sensor".into() } else { format!("sensor.{}", e.key) };
-    CaseError::new(key, plain(&e.message))
+    CaseError::new(key, e.message)
 }
 
 /// Path of the key at fault; the whole is called `.` by the deserialiser.

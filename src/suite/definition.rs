@@ -6,10 +6,10 @@ use sha2::{Digest, Sha256};
 use super::family::{Family, SECTIONS};
 use super::grid::MOST_CASES;
 use super::node::{Item, Node};
-use super::wording::proposal;
 use super::{Bundled, Case, SuiteError, bundled, name, records, settings, source};
 use crate::method::MethodSpec;
 use crate::trust::Limits;
+use crate::wording::proposal;
 
 /// Everything at the top of a suite.
 const KEYS: [&str; 12] = [

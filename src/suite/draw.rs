@@ -7,7 +7,7 @@ use sha2::{Digest, Sha256};
 use super::SuiteError;
 use super::node::{Item, Node, Place};
 use super::sweep::Bounds;
-use super::wording::proposal;
+use crate::wording::proposal;
 
 /// A value drawn between two bounds, uniformly or with a uniform logarithm.
 #[derive(Debug, Clone)]

@@ -78,7 +78,6 @@ mod sensor;
 mod settings;
 mod source;
 mod sweep;
-mod wording;
 
 pub use bundled::{Bundled, DEMONSTRATION};
 pub(crate) use case::rows;

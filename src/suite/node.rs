@@ -8,7 +8,7 @@ use toml::de::{DeTable, DeValue};
 
 use super::SuiteError;
 use super::quantity::Quantity;
-use super::wording::unknown_key;
+use crate::wording::unknown_key;
 
 /// Where a value stands.
 #[derive(Debug, Clone)]

@@ -3,22 +3,13 @@
 use super::SuiteError;
 use super::node::{Item, Node};
 use super::quantity::{Quantity, Wanted};
-use super::wording::{plain, proposal};
-use crate::sensor::{KINDS, SensorSpec};
+use crate::sensor::SensorSpec;
 
 /// Parameters that are lengths, at whatever depth their numbers stand.
 const LENGTHS: [&str; 2] = ["station", "stations"];
 
 /// Makes the sensor of the section for a state of `n` components.
 pub(super) fn read(section: &Node, n: usize) -> Result<SensorSpec, SuiteError> {
-    if let Some(kind) = section.get("kind") {
-        let name = kind.text()?;
-        if !KINDS.iter().any(|k| k.name == name) {
-            let names: Vec<_> = KINDS.iter().map(|k| k.name).collect();
-            let near = proposal(name, names.iter().copied());
-            return Err(kind.error(format!("there is no sensor `{name}`; {near}give one of {}", names.join(", "))));
-        }
-    }
     let entries = section
         .entries()?
         .iter()
@@ -32,8 +23,7 @@ pub(super) fn read(section: &Node, n: usize) -> Result<SensorSpec, SuiteError> {
         let at = section.at(&e.key);
         let missing_below = format!("{}.{}", section.place.key, e.key) != *at.place.key && !e.key.is_empty();
         // A parameter that is only there by default, or not at all, is named in the message.
-        let message = plain(&e.message);
-        at.error(if missing_below { format!("`{}` {message}", e.key) } else { message })
+        at.error(if missing_below { format!("`{}` {}", e.key, e.message) } else { e.message })
     })
 }
 

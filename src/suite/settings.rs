@@ -4,9 +4,9 @@ use serde_json::Value;
 
 use super::SuiteError;
 use super::node::Node;
-use super::wording::{plain, proposal};
-use crate::method::{self, MethodSpec};
+use crate::method::MethodSpec;
 use crate::trust::Limits;
+use crate::wording::plain;
 
 /// The whole number of a key, if it stands there.
 pub(super) fn whole(root: &Node, key: &str, least: u64) -> Result<Option<u64>, SuiteError> {
@@ -39,14 +39,7 @@ pub(super) fn methods(root: &Node) -> Result<Option<Vec<MethodSpec>>, SuiteError
     let Some(list) = root.get("method") else { return Ok(None) };
     let mut made: Vec<(MethodSpec, usize)> = Vec::new();
     for table in list.list().map_err(|e| SuiteError { message: format!("{}, as [[method]]", e.message), ..e })? {
-        let spec = MethodSpec::from_json(table.object()?).map_err(|e| {
-            let near = match table.get("id").and_then(|id| id.text().ok()) {
-                Some(id) if e.key == "id" => proposal(id, method::KINDS.iter().map(|k| k.id)),
-                _ => String::new(),
-            };
-            let message = plain(&e.message);
-            table.at(&e.key).error(if near.is_empty() { message } else { format!("{message}; {}", near.trim()) })
-        })?;
+        let spec = MethodSpec::from_json(table.object()?).map_err(|e| table.at(&e.key).error(e.message))?;
         if let Some((_, line)) = made.iter().find(|(other, _)| other.label() == spec.label()) {
             return Err(table.error(format!("`{}` stands on line {line} already; delete one", spec.label())));
         }

@@ -3,7 +3,7 @@
 use super::SuiteError;
 use super::node::{Item, Node, Place};
 use super::quantity::{Dimension, Quantity};
-use super::wording::proposal;
+use crate::wording::proposal;
 
 /// The two ends between which a value is swept or drawn.
 #[derive(Debug, Clone, Copy)]

@@ -1,5 +1,5 @@
 use crate::gaussian::Moments;
-use crate::method::{Counted, Evaluations, MethodSpec, Problem, Refusal, Transform};
+use crate::method::{Counted, Evaluations, MethodSpec, Problem, Refusal};
 use crate::reference::{Reference, Sampler, Soundness};
 use crate::score::{Floor, Invalid, Scorer, Scores};
 use crate::suite::Case;
@@ -38,14 +38,7 @@ pub struct Answered {
     pub verdict: Verdict,
 }
 
-/// One transform of a case, lifted to the whole state.
-pub(super) fn transform(case: &Case, problem: Problem<'_>, transform: &mut dyn Transform) -> Moments {
-    let mut moments = Moments::zeros(problem.prior.dimension(), problem.sensor.outputs().len());
-    transform.apply(problem, &mut moments);
-    let cross_covariance = case.marginal().lift(moments.cross_covariance);
-    Moments { cross_covariance, ..moments }
-}
-
+/// A method's moments of the whole state, yet to be scored.
 struct Candidate {
     moments: Moments,
     evaluations: Evaluations,
@@ -53,11 +46,13 @@ struct Candidate {
 
 fn candidate(case: &Case, method: &MethodSpec) -> Result<Candidate, Refusal> {
     let prior = case.marginal().law();
-    let mut planned = method.method().plan(prior.dimension(), case.sensor().outputs().len())?;
+    let (a, p) = (prior.dimension(), case.sensor().outputs().len());
+    let mut transform = method.method().plan(a, p)?;
     let counted = Counted::new(case.sensor());
     let noise = case.noise_or_zero();
-    let problem = Problem { sensor: &counted, prior, noise: &noise };
-    let moments = transform(case, problem, planned.as_mut());
+    let mut moments = Moments::zeros(a, p);
+    transform.apply(Problem { sensor: &counted, prior, noise: &noise }, &mut moments);
+    moments.cross_covariance = case.marginal().lift(moments.cross_covariance);
     Ok(Candidate { moments, evaluations: counted.evaluations() })
 }
 
@@ -81,31 +76,31 @@ pub(super) fn run_case(
         if reference.soundness == Soundness::Wide && more {
             continue;
         }
+        let refused = reference.soundness == Soundness::Refused;
         let scorer = Scorer::new(case.prior(), case.sensor().outputs(), &reference);
-        let judged: Vec<_> = candidates
+        let judged: Vec<Result<_, Refusal>> = candidates
             .iter()
-            .map(|c| c.as_ref().ok().map(|c| judge(&scorer, &reference, &c.moments, plan)))
+            .map(|c| c.as_ref().map(|c| judge(&scorer, &reference, &c.moments, plan)).map_err(Refusal::clone))
             .collect();
         let floor = scorer.floor(case.noise());
-        let floor_standing = plan.judge.floor(&floor);
+        // A refused reference says nothing, of the case no more than of a method.
+        let floor_standing = if refused { Standing::Open } else { plan.judge.floor(&floor) };
         // More points cannot define what is undefined, nor mend a refused reference.
         let undecided = judged
             .iter()
             .flatten()
             .any(|(_, v)| v.trust == Trust::Undecided && v.finding.is_some_and(|f| f.estimate.is_some()))
             || (floor_standing == Standing::Open && matches!(floor, Floor::Known(_)));
-        if undecided && more && reference.soundness != Soundness::Refused {
+        if undecided && more && !refused {
             continue;
         }
         let answers = candidates
             .into_iter()
             .zip(judged)
-            .map(|(candidate, judged)| match (candidate, judged) {
-                (Ok(Candidate { moments, evaluations }), Some((scores, verdict))) => {
-                    Ok(Answered { moments, evaluations, scores, verdict })
-                }
-                (Err(refusal), _) => Err(refusal),
-                (Ok(_), None) => Err(Refusal("was not judged".into())),
+            .map(|(candidate, judged)| {
+                let Candidate { moments, evaluations } = candidate?;
+                let (scores, verdict) = judged?;
+                Ok(Answered { moments, evaluations, scores, verdict })
             })
             .collect();
         let reference = Reference { replicates: Vec::new(), ..reference };
@@ -132,4 +127,30 @@ fn judge(
 
 fn undecided(reason: String) -> Verdict {
     Verdict { trust: Trust::Undecided, finding: None, reason }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::suite::Suite;
+    use crate::survey::SurveySettings;
+
+    #[test]
+    fn on_a_refused_reference_nothing_is_said_of_method_or_case() {
+        // A bearing from the middle of its prior: every direction is as likely. Scores and a floor of several nats could
+        // be computed, and would mean nothing.
+        let text = "[sensor]\nkind = \"bearing-only\"\nstation = [0, 0]\n[prior]\nmean = [0, 0]\nsd = [1, 1]\n\
+            [noise]\nsd = \"0.5 deg\"\n";
+        let suite = Suite::from_text("around", "around.toml", text, None).unwrap();
+        let plan = SurveyPlan::new(&suite, &SurveySettings { cap: Some(1 << 17), ..Default::default() }).unwrap();
+        let result = run_case(&suite.cases[0], 0, &plan, &|| false).unwrap();
+        assert_eq!(result.reference.soundness, Soundness::Refused);
+        assert!(matches!(result.floor, Floor::Known(e) if e.value > 1.0), "{:?}", result.floor);
+        assert_eq!(result.floor_standing, Standing::Open);
+        for answer in &result.answers {
+            let verdict = &answer.as_ref().unwrap().verdict;
+            assert_eq!(verdict.trust, Trust::Undecided);
+            assert!(verdict.reason.starts_with("the reference is refused: "), "{}", verdict.reason);
+        }
+    }
 }

@@ -1,5 +1,5 @@
 use crate::method::{MethodSpec, default_methods};
-use crate::reference::{CapTooSmall, SamplerSettings};
+use crate::reference::{SamplerError, SamplerSettings};
 use crate::suite::Suite;
 use crate::trust::{Judge, Limits};
 
@@ -33,12 +33,14 @@ pub struct SurveyPlan {
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
 #[non_exhaustive]
 pub enum SurveyError {
-    /// The precision is no positive number.
-    #[error("precision {0} is not above 0; give the standardised standard error to reach, such as 1e-3")]
+    /// The precision is not above 0 and below 1.
+    #[error(
+        "precision {0} is not above 0 and below 1; give the standardised standard error to reach, such as 1e-3"
+    )]
     Precision(f64),
-    /// The cap is too small.
+    /// Nothing can be sampled under these settings.
     #[error(transparent)]
-    Cap(#[from] CapTooSmall),
+    Sampler(#[from] SamplerError),
     /// Two methods carry the same label.
     #[error("method `{0}` stands twice; its rows could not be told apart")]
     MethodTwice(String),
@@ -60,7 +62,7 @@ impl SurveyPlan {
             cap: settings.cap.or(suite.cap).unwrap_or(default.cap),
             replicates: default.replicates,
         };
-        if !(sampler.precision > 0.0 && sampler.precision.is_finite()) {
+        if !(sampler.precision > 0.0 && sampler.precision < 1.0) {
             return Err(SurveyError::Precision(sampler.precision));
         }
         sampler.check()?;

@@ -32,8 +32,6 @@ pub struct MethodSummary {
     pub evaluations: Option<(Evaluations, Evaluations)>,
     /// Time of a transform as a ratio to first-order Taylor, quartiles over cases.
     pub time_ratio: Option<Quartiles>,
-    /// Transforms a second on all threads.
-    pub throughput: Option<f64>,
     /// Cases in which it is trusted.
     pub trusted: usize,
     /// Cases in which it is rejected.
@@ -69,12 +67,10 @@ pub fn summarise(survey: &SurveyResult<'_>) -> Summary {
 }
 
 fn summarise_method(survey: &SurveyResult<'_>, m: usize) -> MethodSummary {
-    let timing = survey.timing.as_ref();
     let mut summary = MethodSummary {
         label: survey.plan.methods[m].label().into(),
         evaluations: None,
-        time_ratio: timing.and_then(|t| t.ratio[m]),
-        throughput: timing.and_then(|t| t.throughput[m]),
+        time_ratio: survey.timing.as_ref().and_then(|t| t.ratio[m]),
         trusted: 0,
         rejected: 0,
         undecided: 0,

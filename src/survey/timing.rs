@@ -31,7 +31,12 @@ pub struct Quartiles {
 }
 
 impl Quartiles {
-    /// Of a list of measurements (linear between order statistics); `None` of none.
+    /// Of a list of measurements, in its unit; `None` of none.
+    ///
+    /// Linear between order statistics: Q(s) = x_(k) + f (x_(k+1) - x_(k)) with k + f = 1 + s (n - 1), x_(1) the least.
+    ///
+    /// Source: R. J. Hyndman, Y. Fan, "Sample quantiles in statistical packages", The American Statistician 50 (1996)
+    /// 361-365, definition 7.
     pub fn of(mut values: Vec<f64>) -> Option<Self> {
         values.sort_by(f64::total_cmp);
         let last = values.len().checked_sub(1)?;
@@ -45,7 +50,7 @@ impl Quartiles {
 }
 
 /// What one transform costs.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+#[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Cost {
     /// Time of one transform on one thread \[ns\].
     pub nanoseconds: Quartiles,
@@ -177,4 +182,40 @@ fn throughput(cases: &[&Case], method: &MethodSpec) -> Option<f64> {
     });
     let total: f64 = rates.iter().sum();
     (total > 0.0).then_some(total)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// Definition 7 as Hyndman and Fan (1996) write it: with m = 1 - s, j = floor(n s + m) and g = n s + m - j,
+    /// Q(s) = (1 - g) x_(j) + g x_(j+1).
+    fn definition_7(sorted: &[f64], share: f64) -> f64 {
+        let place = sorted.len() as f64 * share + 1.0 - share;
+        let (j, g) = (place.floor(), place.fract());
+        let order = |k: f64| sorted[(k as usize - 1).min(sorted.len() - 1)];
+        (1.0 - g) * order(j) + g * order(j + 1.0)
+    }
+
+    #[test]
+    fn quartiles_are_those_of_definition_7() {
+        // Two roundings of values up to 200.
+        const ROUNDING: f64 = 1e-13;
+        for n in 1..=12_u32 {
+            let sorted: Vec<f64> = (1..=n).map(|k| f64::from(k * k)).collect();
+            let found = Quartiles::of(sorted.iter().rev().copied().collect()).unwrap();
+            for (value, share) in [(found.lower, 0.25), (found.median, 0.5), (found.upper, 0.75)] {
+                let expected = definition_7(&sorted, share);
+                assert!((value - expected).abs() <= ROUNDING, "{n} values, {share}: {value}, not {expected}");
+            }
+        }
+    }
+
+    #[test]
+    fn quartiles_are_those_of_a_worked_example() {
+        // Of 1 to 10, by hand from definition 7: 1 + 9/4, 1 + 9/2, 1 + 27/4.
+        let found = Quartiles::of((1..=10).rev().map(f64::from).collect());
+        assert_eq!(found, Some(Quartiles { lower: 3.25, median: 5.5, upper: 7.75 }));
+        assert_eq!(Quartiles::of(Vec::new()), None);
+    }
 }

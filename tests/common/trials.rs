@@ -100,9 +100,10 @@ pub fn trials() -> Vec<Trial> {
     let mut rng = random::stream(41);
     let stations = vec![[3.0, -2.0], [-40.0, 15.0], [0.5, 800.0]];
     let mut trials = vec![
-        range_bearing([0.0, 0.0], [0, 1], 2),
-        range_bearing([3.0, -2.0], [3, 1], 4),
-        range_bearing([-120.0, 45.0], [4, 2], 6),
+        range_bearing(&[[0.0, 0.0]], [0, 1], 2),
+        range_bearing(&[[3.0, -2.0]], [3, 1], 4),
+        range_bearing(&[[-120.0, 45.0]], [4, 2], 6),
+        range_bearing(&stations, [1, 2], 4),
         bearing_only(&stations[..1], [0, 1], 2),
         bearing_only(&stations, [0, 2], 4),
         bearing_only(&stations, [5, 0], 6),
@@ -116,17 +117,21 @@ pub fn trials() -> Vec<Trial> {
     trials
 }
 
-fn range_bearing(station: [f64; 2], position: [usize; 2], n: usize) -> Trial {
-    let described = json!({"kind": "range-bearing", "station": station, "position": position});
-    Trial::new(described, n, Shape::Planar(vec![station]))
+fn range_bearing(stations: &[[f64; 2]], position: [usize; 2], n: usize) -> Trial {
+    // A range and a bearing each.
+    let shape = Shape::Planar(stations.iter().flat_map(|&s| [s, s]).collect());
+    Trial::new(planar("range-bearing", stations, position), n, shape)
 }
 
 fn bearing_only(stations: &[[f64; 2]], position: [usize; 2], n: usize) -> Trial {
-    let described = match stations {
-        [one] => json!({"kind": "bearing-only", "station": one, "position": position}),
-        several => json!({"kind": "bearing-only", "stations": several, "position": position}),
-    };
-    Trial::new(described, n, Shape::Planar(stations.to_vec()))
+    Trial::new(planar("bearing-only", stations, position), n, Shape::Planar(stations.to_vec()))
+}
+
+fn planar(kind: &str, stations: &[[f64; 2]], position: [usize; 2]) -> serde_json::Value {
+    match stations {
+        [one] => json!({"kind": kind, "station": one, "position": position}),
+        several => json!({"kind": kind, "stations": several, "position": position}),
+    }
 }
 
 /// A of order one and not symmetric.

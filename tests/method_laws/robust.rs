@@ -40,7 +40,7 @@ fn a_kappa_that_leaves_no_distance_is_refused_with_the_reason() {
 
 #[test]
 fn a_station_on_the_mean_gives_taylor_no_number_and_no_panic() {
-    let sensor = RangeBearing::new([3.0, 4.0], [0, 1], 2).unwrap();
+    let sensor = RangeBearing::new(vec![[3.0, 4.0]], [0, 1], 2).unwrap();
     let prior = Gaussian::new(dvector![3.0, 4.0], dmatrix![1.0, 0.2; 0.2, 2.0]).unwrap();
     for method in methods() {
         let got = moments(&method, &sensor, &prior, &DMatrix::zeros(2, 2));

@@ -29,7 +29,7 @@ impl Scene {
 
     fn sensor(&self) -> Box<dyn Sensor> {
         if self.with_range {
-            Box::new(RangeBearing::new(self.stations[0].into(), [0, 1], 2).unwrap())
+            Box::new(RangeBearing::new(vec![self.stations[0].into()], [0, 1], 2).unwrap())
         } else {
             Box::new(BearingOnly::new(self.stations.iter().map(|&s| s.into()).collect(), [0, 1], 2).unwrap())
         }

@@ -1,7 +1,7 @@
 //! Words for the reader of an error: lists, near misses, and what a deserialiser says, in plain English.
 
 /// The candidate that looks most like `word`, if one is close enough to be meant.
-pub(super) fn nearest<'a>(word: &str, candidates: impl IntoIterator<Item = &'a str>) -> Option<&'a str> {
+pub(crate) fn nearest<'a>(word: &str, candidates: impl IntoIterator<Item = &'a str>) -> Option<&'a str> {
     // Share of the letters left alone by the fewest edits (insert, delete, replace, swap); below 0.6 a proposal
     // misleads more often than it helps (our own choice).
     const CLOSE: f64 = 0.6;
@@ -14,12 +14,12 @@ pub(super) fn nearest<'a>(word: &str, candidates: impl IntoIterator<Item = &'a s
 }
 
 /// `did you mean `x`? ` or nothing.
-pub(super) fn proposal<'a>(word: &str, candidates: impl IntoIterator<Item = &'a str>) -> String {
+pub(crate) fn proposal<'a>(word: &str, candidates: impl IntoIterator<Item = &'a str>) -> String {
     nearest(word, candidates).map_or_else(String::new, |near| format!("did you mean `{near}`? "))
 }
 
 /// What to say of a key that has no meaning where it stands.
-pub(super) fn unknown_key(word: &str, allowed: &[&str]) -> String {
+pub(crate) fn unknown_key(word: &str, allowed: &[&str]) -> String {
     if allowed.is_empty() {
         return format!("unknown key `{word}`; none is allowed here");
     }
@@ -27,7 +27,7 @@ pub(super) fn unknown_key(word: &str, allowed: &[&str]) -> String {
 }
 
 /// A deserialiser's message in the words of this file: unknown and missing keys, wrong types.
-pub(super) fn plain(message: &str) -> String {
+pub(crate) fn plain(message: &str) -> String {
     if let Some(rest) = message.strip_prefix("unknown field `") {
         let mut quoted = rest.split('`').step_by(2);
         let word = quoted.next().unwrap_or_default();

@@ -1,0 +1,266 @@
+//! The machine formats, written down a second time: a key that is added, renamed or left out fails the tests.
+
+// Fields are here to be read into, whether or not a test looks at them.
+#![allow(dead_code)]
+
+use std::collections::HashMap;
+
+use serde::Deserialize;
+
+pub type Matrix = Vec<Vec<f64>>;
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct CaseRecord {
+    pub case: String,
+    pub sensor: Sensor,
+    pub prior: Prior,
+    pub noise: Option<Noise>,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(tag = "kind", rename_all = "kebab-case", deny_unknown_fields)]
+pub enum Sensor {
+    RangeBearing {
+        station: [f64; 2],
+        position: [usize; 2],
+    },
+    BearingOnly {
+        station: Option<[f64; 2]>,
+        stations: Option<Vec<[f64; 2]>>,
+        position: [usize; 2],
+    },
+    Quadratic {
+        #[serde(rename = "A")]
+        a: Vec<Matrix>,
+        b: Option<Matrix>,
+        c: Option<Vec<f64>>,
+    },
+    Linear {
+        #[serde(rename = "H")]
+        h: Matrix,
+        offset: Option<Vec<f64>>,
+    },
+}
+
+impl Sensor {
+    /// Number of outputs.
+    pub fn outputs(&self) -> usize {
+        match self {
+            Self::RangeBearing { .. } => 2,
+            Self::BearingOnly { stations, .. } => stations.as_ref().map_or(1, Vec::len),
+            Self::Quadratic { a, .. } => a.len(),
+            Self::Linear { h, .. } => h.len(),
+        }
+    }
+
+    pub fn is_linear(&self) -> bool {
+        matches!(self, Self::Linear { .. })
+    }
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Prior {
+    pub mean: Vec<f64>,
+    pub covariance: Matrix,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Noise {
+    pub covariance: Matrix,
+}
+
+/// A reference; an entry that is not finite is null.
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct MomentsRecord {
+    pub case: String,
+    pub mean: Vec<Option<f64>>,
+    pub covariance: Vec<Vec<Option<f64>>>,
+    pub cross_covariance: Vec<Vec<Option<f64>>>,
+    pub standard_error: Entries,
+    pub points: u64,
+    pub replicates: u64,
+    pub soundness: Soundness,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Entries {
+    pub mean: Vec<Option<f64>>,
+    pub covariance: Vec<Vec<Option<f64>>>,
+    pub cross_covariance: Vec<Vec<Option<f64>>>,
+}
+
+#[derive(Debug, Deserialize, Clone, Copy, PartialEq, Eq)]
+#[serde(rename_all = "kebab-case")]
+pub enum Soundness {
+    Sound,
+    Wide,
+    Disputed,
+    HeavyTailed,
+    Refused,
+}
+
+#[derive(Debug, Deserialize, Clone, Copy, PartialEq, Eq)]
+#[serde(rename_all = "kebab-case")]
+pub enum Verdict {
+    Trusted,
+    Rejected,
+    Undecided,
+    Skipped,
+}
+
+/// A row of `scores.csv`: an empty field is a value that does not exist.
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Row {
+    pub case: String,
+    pub method: String,
+    pub inputs: u64,
+    pub values: Option<u64>,
+    pub jacobians: Option<u64>,
+    pub hessians: Option<u64>,
+    pub verdict: Verdict,
+    pub reason: String,
+    pub mean_error: Option<f64>,
+    pub mean_error_standard_error: Option<f64>,
+    pub covariance_error: Option<f64>,
+    pub covariance_error_standard_error: Option<f64>,
+    pub variance_ratio_low: Option<f64>,
+    pub variance_ratio_low_standard_error: Option<f64>,
+    pub variance_ratio_high: Option<f64>,
+    pub variance_ratio_high_standard_error: Option<f64>,
+    pub cross_covariance_error: Option<f64>,
+    pub cross_covariance_error_standard_error: Option<f64>,
+    pub excess: Option<f64>,
+    pub excess_standard_error: Option<f64>,
+    pub nees_ratio: Option<f64>,
+    pub nees_ratio_standard_error: Option<f64>,
+    pub worst_nees: Option<f64>,
+    pub worst_nees_standard_error: Option<f64>,
+    pub information_lost: Option<f64>,
+    pub information_lost_standard_error: Option<f64>,
+    /// A number, or `unbounded`.
+    pub floor: String,
+    pub floor_standard_error: Option<f64>,
+    pub time_ns: Option<f64>,
+    pub time_ns_lower_quartile: Option<f64>,
+    pub time_ns_upper_quartile: Option<f64>,
+    pub time_ratio: Option<f64>,
+    pub time_ratio_lower_quartile: Option<f64>,
+    pub time_ratio_upper_quartile: Option<f64>,
+}
+
+impl Row {
+    /// Every score beside its standard error.
+    pub fn scores(&self) -> [(Option<f64>, Option<f64>); 9] {
+        [
+            (self.mean_error, self.mean_error_standard_error),
+            (self.covariance_error, self.covariance_error_standard_error),
+            (self.variance_ratio_low, self.variance_ratio_low_standard_error),
+            (self.variance_ratio_high, self.variance_ratio_high_standard_error),
+            (self.cross_covariance_error, self.cross_covariance_error_standard_error),
+            (self.excess, self.excess_standard_error),
+            (self.nees_ratio, self.nees_ratio_standard_error),
+            (self.worst_nees, self.worst_nees_standard_error),
+            (self.information_lost, self.information_lost_standard_error),
+        ]
+    }
+
+    pub fn times(&self) -> [Option<f64>; 6] {
+        [
+            self.time_ns_lower_quartile,
+            self.time_ns,
+            self.time_ns_upper_quartile,
+            self.time_ratio_lower_quartile,
+            self.time_ratio,
+            self.time_ratio_upper_quartile,
+        ]
+    }
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Manifest {
+    pub version: String,
+    pub build: Build,
+    pub suite: Suite,
+    pub seed: u64,
+    pub settings: Settings,
+    pub machine: Machine,
+    pub cases: Cases,
+    pub samples: u64,
+    pub times: Times,
+    /// Only where methods were timed.
+    pub cost: Option<Vec<Cost>>,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Build {
+    pub profile: String,
+    pub target: String,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Suite {
+    pub name: String,
+    pub title: String,
+    pub note: String,
+    pub hash: String,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Settings {
+    pub precision: f64,
+    pub cap: u64,
+    pub replicates: u64,
+    pub methods: Vec<String>,
+    pub limits: HashMap<String, f64>,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Machine {
+    pub threads: u64,
+    pub cores: u64,
+    pub architecture: String,
+    pub system: String,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Cases {
+    pub asked: usize,
+    pub finished: usize,
+    pub complete: bool,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Times {
+    pub started: String,
+    pub sampling_seconds: f64,
+    pub timing_seconds: f64,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Cost {
+    pub method: String,
+    pub time_ratio: Option<Quartiles>,
+    pub transforms_per_second: Option<f64>,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Quartiles {
+    pub lower: f64,
+    pub median: f64,
+    pub upper: f64,
+}

@@ -1,0 +1,11 @@
+//! The program as its users meet it: the built binary, run in a fresh folder, judged by its exit code, what it
+//! says and the files it leaves.
+
+mod bad_input;
+mod catalogue;
+mod contract;
+mod desk;
+mod endings;
+mod odd_input;
+mod options;
+mod results;
