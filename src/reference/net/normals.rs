@@ -8,7 +8,7 @@ const LANES: usize = 8;
 /// their cell, p = (w + 1/2) 2^-53, w = floor(bits / 2^11).
 ///
 /// The first bit is the sign, the other 52 give the tail probability q = (k + 1/2) 2^-53 exactly: never 0, never 1/2,
-/// the least is 2^-54. So the value is finite, at most 8.3 in size, not zero, rises with `bits`, and the complement
+/// the least is 2^-54. So the value is finite, at most 8.3 in size, not zero, rises with `bits` but for rounding, and the complement
 /// of `bits` gives its negative to the bit. Relative error and source as in
 /// [`normal_quantile`](super::normal_quantile).
 pub fn normal(bits: u64) -> f64 {
@@ -48,35 +48,44 @@ pub fn normals(bits: &[u64; BLOCK], out: &mut [f64; BLOCK]) {
         out[i] = signed(central(q[i]), bits[i]);
     }
 
-    let mut place = [0; BLOCK];
+    let mut masks = [0; BLOCK / WORD];
+    let mut tails = [0.0; BLOCK];
     let mut count = 0;
     for (word, q) in q.as_chunks::<WORD>().0.iter().enumerate() {
-        let mut mask = 0;
         for j in 0..WORD {
-            mask |= if q[j] < TAIL { ONE_BIT[j] } else { 0 };
+            masks[word] |= if q[j] < TAIL { ONE_BIT[j] } else { 0 };
         }
-        while mask != 0 {
-            place[count] = (WORD * word) as u8 + mask.trailing_zeros() as u8;
+        for j in set_bits(masks[word]) {
+            tails[count] = q[j];
             count += 1;
-            mask &= mask - 1;
         }
     }
-    let mut tails = [0.25; BLOCK];
-    for (t, &i) in tails.iter_mut().zip(&place[..count]) {
-        *t = q[usize::from(i)];
-    }
-    let padded = &mut tails[..count.next_multiple_of(LANES)];
-    let far = padded.iter().filter(|&&q| q < FAR_TAIL).count();
-    for t in padded.iter_mut() {
+    let padded = count.next_multiple_of(LANES);
+    tails[count..padded].fill(TAIL);
+    let far = tails[..padded].iter().filter(|&&q| q < FAR_TAIL).count();
+    for t in &mut tails[..padded] {
         *t = tail(*t);
     }
-    for (&t, &i) in tails.iter().zip(&place[..count]) {
-        let i = usize::from(i);
-        out[i] = signed(t, bits[i]);
+    let mut done = tails.iter();
+    for (word, &mask) in masks.iter().enumerate() {
+        for (j, &t) in set_bits(mask).zip(&mut done) {
+            let i = WORD * word + j;
+            out[i] = signed(t, bits[i]);
+        }
     }
     if far > 0 {
         far_tails(bits, out);
     }
+}
+
+/// Places of the bits set, rising.
+#[inline(always)]
+fn set_bits(mut mask: u64) -> impl Iterator<Item = usize> {
+    std::iter::from_fn(move || {
+        let place = mask.trailing_zeros() as usize;
+        mask &= mask.wrapping_sub(1);
+        (place < WORD).then_some(place)
+    })
 }
 
 /// Once in 140 million blocks.
