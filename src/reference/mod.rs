@@ -7,6 +7,7 @@
 
 mod chart;
 mod estimate;
+pub mod net;
 mod pilot;
 mod replicate;
 mod sampler;

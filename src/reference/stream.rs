@@ -33,12 +33,17 @@ impl Key {
         self.derived(b"pilot", 0, block)
     }
 
-    fn derived(&self, purpose: &[u8; 5], replicate: u64, block: u64) -> Pcg64Dxsm {
+    /// The stream that scrambles dimension `dimension` of the net of replicate `replicate`.
+    pub(super) fn scramble(&self, replicate: u64, dimension: u64) -> Pcg64Dxsm {
+        self.derived(b"digit", replicate, dimension)
+    }
+
+    fn derived(&self, purpose: &[u8; 5], replicate: u64, part: u64) -> Pcg64Dxsm {
         let mut hash = Sha256::new();
         hash.update(self.0);
         hash.update(purpose);
         hash.update(replicate.to_le_bytes());
-        hash.update(block.to_le_bytes());
+        hash.update(part.to_le_bytes());
         Pcg64Dxsm::from_seed(hash.finalize().into())
     }
 }
