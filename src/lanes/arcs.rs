@@ -88,7 +88,7 @@ impl<S: Simd> Lanes<S> {
 fn sides_rare(short: &mut [f64; 8], long: &mut [f64; 8]) {
     for (short, long) in short.iter_mut().zip(long) {
         (*short, *long) = match (*short, *long) {
-            (_, 0.0) => (0.0, 1.0),
+            (a, 0.0) if !a.is_nan() => (0.0, 1.0),
             (f64::INFINITY, f64::INFINITY) => (1.0, 1.0),
             (a, f64::INFINITY) if !a.is_nan() => (0.0, 1.0),
             (a, b) if b >= LONG => (0.25 * a, 0.25 * b),

@@ -30,10 +30,10 @@ pub(super) fn reduce<S: Simd>(x: Lanes<S>) -> (Lanes<S>, Lanes<S>, Lanes<S>) {
     (n, r, (high - r) - low)
 }
 
-/// exp(r + w) - 1 for |r| <= ln 2 / 2 and w far below it.
+/// exp(r + w) - 1 - r for |r| <= ln 2 / 2 and w far below it.
 #[inline(always)]
-pub(super) fn small_exp_m1<S: Simd>(r: Lanes<S>, w: Lanes<S>) -> Lanes<S> {
-    r + (r * r * polynomial(r, &EXP) + (w + w * r))
+pub(super) fn bend<S: Simd>(r: Lanes<S>, w: Lanes<S>) -> Lanes<S> {
+    r * r * polynomial(r, &EXP) + (w + w * r)
 }
 
 impl<S: Simd> Lanes<S> {
@@ -45,6 +45,6 @@ impl<S: Simd> Lanes<S> {
         // Beyond these the result is infinite or zero anyway; NaN passes.
         let x = Self::splat(-746.0).max(Self::splat(710.0).min(self));
         let (n, r, w) = reduce(x);
-        (1.0 + small_exp_m1(r, w)).scaled(n)
+        (1.0 + (r + bend(r, w))).scaled(n)
     }
 }

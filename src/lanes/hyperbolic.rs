@@ -1,4 +1,4 @@
-use super::exponential::{reduce, small_exp_m1};
+use super::exponential::{reduce, bend};
 use super::{Lanes, Simd};
 
 impl<S: Simd> Lanes<S> {
@@ -9,7 +9,10 @@ impl<S: Simd> Lanes<S> {
         let x = Self::splat(22.0).min(self.abs());
         let (n, r, w) = reduce(x + x);
         let power = Self::splat(1.0).scaled(n);
-        let grown = (power - 1.0) + power * small_exp_m1(r, w);
+        // In two parts, because power - 1 + power r cancels.
+        let (jump, line) = (power - 1.0, power * r);
+        let high = jump + line;
+        let grown = high + ((line - (high - jump)) + power * bend(r, w));
         (grown / (grown + 2.0)).copysign(self)
     }
 }

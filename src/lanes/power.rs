@@ -1,6 +1,6 @@
 use std::f64::consts::LN_2;
 
-use super::exponential::small_exp_m1;
+use super::exponential::bend;
 use super::{LEAST_NORMAL, Lanes, Simd, Words};
 
 /// ln 2 in two parts, the first of 26 bits.
@@ -31,7 +31,7 @@ impl<S: Simd> Lanes<S> {
         let u = part * LN_2_PARTS[0];
         let v = (low - (part - rest)) * LN_2 + part * LN_2_PARTS[1];
         let r = u + v;
-        let size = (1.0 + small_exp_m1(r, v - (r - u))).scaled(n);
+        let size = (1.0 + (r + bend(r, v - (r - u)))).scaled(n);
 
         let ordinary = self.at_least(Self::splat(LEAST_NORMAL))
             & self.at_most(Self::splat(f64::MAX))

@@ -19,8 +19,6 @@ pub fn edges() -> Vec<f64> {
     edges.extend((1..40).map(|k| f64::from(k) * std::f64::consts::FRAC_PI_4));
     edges.extend((17..1000).step_by(61).map(|k| f64::powi(2.0, k) * std::f64::consts::FRAC_PI_2));
     edges.extend([823_549.0, 823_550.0, 1_048_576.0 * std::f64::consts::FRAC_PI_2]);
-    // The double nearest to a multiple of pi/2 (Muller, Elementary Functions, 3rd ed., sec. 11.3.2; from memory).
-    edges.push(6_381_956_970_095_103.0 * f64::powi(2.0, 797));
     let neighbours: Vec<f64> = edges
         .iter()
         .filter(|v| v.is_finite())

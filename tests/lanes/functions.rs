@@ -59,8 +59,8 @@ functions! {
     Hypot 1 [-10.0, 10.0] true |x, y| x.hypot(y), x.hypot(y);
     Exp 1 [-750.0, 720.0] false |x, y| x.exp(), x.exp();
     Ln 1 [0.0, 10.0] false |x, y| x.ln(), x.ln();
-    Log10 1 [0.0, 10.0] false |x, y| x.log10(), x.log10();
-    Tanh 2 [-25.0, 25.0] false |x, y| x.tanh(), x.tanh();
+    Log10 2 [0.0, 10.0] false |x, y| x.log10(), x.log10();
+    Tanh 4 [-25.0, 25.0] false |x, y| x.tanh(), x.tanh();
     Powf 1 [-20.0, 20.0] true |x, y| x.powf(y), x.powf(y);
     PowiM7 1 [-10.0, 10.0] false |x, y| x.powi(-7), x.powf(-7.0);
     PowiM2 2 [-10.0, 10.0] false |x, y| x.powi(-2), x.powf(-2.0);
