@@ -47,9 +47,7 @@ impl<S: Simd> Words<S> {
     /// Which lanes have their highest bit set.
     #[inline(always)]
     pub fn highest_bit(self) -> Choice<S> {
-        // As a double: that bit and the exponent of 1 is 1 or -1.
-        let sign = Lanes::from_bits((self & Self::splat(1 << 63)) | Self::splat(1.0_f64.to_bits()));
-        sign.less(Lanes::splat(0.0))
+        Choice(S::highest_bit(self.0))
     }
 
     /// The words as doubles, exact; they must be below 2^52.

@@ -146,4 +146,8 @@ impl Operations for Avx512 {
         let count = instruction!(_mm_cvtsi32_si128(N as i32));
         instruction!(_mm512_srl_epi64(a, count))
     }
+    #[inline(always)]
+    fn highest_bit(a: __m512i) -> __mmask8 {
+        instruction!(_mm512_movepi64_mask(a))
+    }
 }

@@ -93,6 +93,7 @@ pub(super) mod sealed {
         fn word_and_not(a: Self::Word, b: Self::Word) -> Self::Word;
         fn shift_left<const N: u32>(a: Self::Word) -> Self::Word;
         fn shift_right<const N: u32>(a: Self::Word) -> Self::Word;
+        fn highest_bit(a: Self::Word) -> Self::Mask;
     }
 }
 

@@ -143,4 +143,8 @@ impl Operations for Plain {
     fn shift_right<const N: u32>(a: [u64; 8]) -> [u64; 8] {
         each(a, |a| a >> N)
     }
+    #[inline(always)]
+    fn highest_bit(a: [u64; 8]) -> [bool; 8] {
+        each(a, |a| a >> 63 == 1)
+    }
 }
