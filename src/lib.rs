@@ -11,6 +11,7 @@
 //! responsible engineers decide.
 
 pub mod gaussian;
+pub mod lanes;
 pub mod method;
 pub mod reference;
 pub mod report;

@@ -1,0 +1,29 @@
+use super::{Lanes, Simd};
+use crate::sensor::Number;
+
+impl<S: Simd> Number for Lanes<S> {
+    #[inline(always)]
+    fn constant(value: f64) -> Self {
+        Self::splat(value)
+    }
+    #[inline(always)]
+    fn sqrt(self) -> Self {
+        Self::sqrt(self)
+    }
+    #[inline(always)]
+    fn sin(self) -> Self {
+        Self::sin(self)
+    }
+    #[inline(always)]
+    fn cos(self) -> Self {
+        Self::cos(self)
+    }
+    #[inline(always)]
+    fn atan2(self, x: Self) -> Self {
+        Self::atan2(self, x)
+    }
+    #[inline(always)]
+    fn hypot(self, other: Self) -> Self {
+        Self::hypot(self, other)
+    }
+}
