@@ -1,4 +1,4 @@
-use super::exponential::{reduce, bend};
+use super::exponential::{bend, reduce};
 use super::{Lanes, Simd};
 
 impl<S: Simd> Lanes<S> {

@@ -2,6 +2,7 @@ use std::sync::atomic::{AtomicU64, Ordering};
 
 use nalgebra::DMatrix;
 
+use crate::lanes::Level;
 use crate::sensor::{Derivatives, Output, Sensor};
 
 /// How often a sensor was asked, and for what.
@@ -67,6 +68,11 @@ impl Sensor for Counted<'_> {
     fn values(&self, length: usize, x: &[f64], y: &mut [f64]) {
         self.values.fetch_add(length as u64, Ordering::Relaxed);
         self.sensor.values(length, x, y);
+    }
+
+    fn sample(&self, level: Level, length: usize, x: &[f64], y: &mut [f64]) {
+        self.values.fetch_add(length as u64, Ordering::Relaxed);
+        self.sensor.sample(level, length, x, y);
     }
 
     fn jacobian(&self, x: &[f64], y: &mut [f64], jacobian: &mut DMatrix<f64>) {

@@ -1,15 +1,20 @@
 use std::f64::consts::{PI, TAU};
 
 use nalgebra::DVector;
+use smallvec::SmallVec;
 
-use super::tally::{Tally, sum};
+use super::block::{Block, Column};
+use super::sums::Sums;
+use crate::lanes::{Lanes, Level, Simd, Task, dispatch};
 
 /// How many standard errors of its centre a chart keeps ready to move: a step beyond has odds under 1e-14.
 const READY: f64 = 8.0;
 
-/// How far rounding alone may move a centre (rad): the angles of a state known exactly do not spread, and their
-/// mean is off by some units in the last place of pi.
-const ROUNDING: f64 = 1e-12;
+/// Samples on the far side that a chart keeps ready for, whatever its standard error says. An angle that is narrow
+/// but for rare samples (a bearing whose station lies 4 sd away) has an error that its first samples do not know: one
+/// far sample among n moves the mean by up to 1/n. Ten among the first 256, none of which the pilot foretold, have
+/// odds under 1e-9.
+const FAR_SAMPLES: f64 = 10.0;
 
 /// Sums of cos and sin of an angle's deviations, and of sin^2, for its circular mean and how sure it is.
 #[derive(Debug, Clone, Copy, Default, PartialEq)]
@@ -22,11 +27,8 @@ pub(super) struct CircularSum {
 
 impl CircularSum {
     pub fn add(&mut self, angles: &[f64]) {
-        let (sines, cosines): (Vec<f64>, Vec<f64>) = angles.iter().map(|a| a.sin_cos()).unzip();
         self.count += angles.len() as f64;
-        self.cos += sum(&cosines);
-        self.sin += sum(&sines);
-        self.sin_squared += sines.iter().map(|s| s * s).sum::<f64>();
+        dispatch(Level::best(), Circle { angles, sum: self });
     }
 
     /// arg E[exp(i angle)] (rad).
@@ -47,11 +49,21 @@ impl CircularSum {
         (self.sin_squared / self.count).sqrt() / (self.count.sqrt() * self.resultant())
     }
 
+    /// The sums of these samples and of `other`'s, both seen from the same centre.
+    pub fn merged(mut self, other: Self) -> Self {
+        self.count += other.count;
+        self.cos += other.cos;
+        self.sin += other.sin;
+        self.sin_squared += other.sin_squared;
+        self
+    }
+
     /// How far a chart centred here may have to move once `more` further samples are in.
     pub fn band(&self, more: f64) -> f64 {
         let error = self.direction_error();
-        let band = ROUNDING + READY * error * (1.0 + (self.count / more).sqrt());
-        if band < PI { band } else { PI }
+        let band = READY * error * (1.0 + (self.count / more).sqrt());
+        // A band without number (no direction at all) is the whole circle.
+        if band < PI { band.max(FAR_SAMPLES / self.count.min(more)).min(PI) } else { PI }
     }
 
     /// The sums seen from a centre that moved by `step`.
@@ -61,22 +73,52 @@ impl CircularSum {
     }
 }
 
+/// Sums of sine and cosine, eight angles at a time.
+struct Circle<'a> {
+    angles: &'a [f64],
+    sum: &'a mut CircularSum,
+}
+
+impl Task for Circle<'_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn run<S: Simd>(self) {
+        let (eights, rest) = self.angles.as_chunks::<8>();
+        let zero = Lanes::<S>::splat(0.0);
+        let (mut cos, mut sin, mut squared) = (zero, zero, zero);
+        for eight in eights {
+            let angle = Lanes::<S>::from_array(eight);
+            let sine = angle.sin();
+            cos = cos + angle.cos();
+            sin = sin + sine;
+            squared = squared + sine * sine;
+        }
+        let fold = |lanes: Lanes<S>| lanes.to_array().iter().sum::<f64>();
+        self.sum.cos += fold(cos) + rest.iter().map(|a| a.cos()).sum::<f64>();
+        self.sum.sin += fold(sin) + rest.iter().map(|a| a.sin()).sum::<f64>();
+        self.sum.sin_squared += fold(squared) + rest.iter().map(|a| a.sin() * a.sin()).sum::<f64>();
+    }
+}
+
+type Few = SmallVec<[f64; 4]>;
+
 /// A sample near the cut of some angle: it may change sides when the centre of that chart moves.
 #[derive(Debug, Clone, PartialEq)]
 struct NearCut {
-    z: DVector<f64>,
-    /// Deviation less the linear fit (p), as tallied.
-    e: DVector<f64>,
+    z: Few,
+    /// Deviation less the linear fit (p), as summed.
+    e: Few,
     /// Deviation (p).
-    deviation: DVector<f64>,
+    deviation: Few,
 }
 
 /// The charts of one replicate's angular outputs.
 ///
 /// The moments of an angle are taken in the chart centred at its circular mean, which is itself estimated.
 /// When the estimate moves, the samples between the old cut and the new one jump by a full turn. Those that
-/// might are remembered: samples within eight standard errors of the cut, so their number grows as the square
-/// root of the sample size, and every moment is exactly that of the final chart with nothing sampled twice.
+/// might are remembered: samples within eight standard errors of the cut, so their number grows as the square root
+/// of the sample size, and every moment is exactly that of the final chart with nothing sampled twice.
 #[derive(Debug, Clone, PartialEq)]
 pub(super) struct Charts {
     /// Centre of each output (p); a plain output keeps the pilot's.
@@ -105,13 +147,12 @@ impl Charts {
         self.circles.iter().any(Option::is_some)
     }
 
-    /// Shortest resultant length among the angular outputs with its output, `None` without angles.
-    pub fn least_resultant(&self) -> Option<(usize, f64)> {
-        self.circles
-            .iter()
-            .enumerate()
-            .filter_map(|(j, c)| c.map(|c| (j, c.resultant())))
-            .min_by(|a, b| a.1.total_cmp(&b.1))
+    /// The sums of angular output `j`, turned back from its chart to the output's own angles; `None` where plain.
+    pub fn circle(&self, j: usize) -> Option<CircularSum> {
+        self.circles[j].map(|mut circle| {
+            circle.rotate(-self.centre[j]);
+            circle
+        })
     }
 
     /// Adds the deviations of output `j` to its circular mean.
@@ -121,27 +162,27 @@ impl Charts {
         }
     }
 
-    /// The points of a block (deviations, `length` an output) that lie near a cut.
-    pub fn points_near_cut(&self, length: usize, deviations: &[f64]) -> Vec<usize> {
+    /// Remembers the samples of a block that lie near a cut.
+    pub fn remember_near_cut(&mut self, block: &Block) {
         let mut points = Vec::new();
-        for (j, column) in deviations.chunks_exact(length).enumerate() {
+        for (j, column) in block.deviation.iter().enumerate() {
             if self.circles[j].is_some() {
                 let limit = PI - self.bands[j];
-                points.extend((0..length).filter(|&k| column[k].abs() > limit));
+                points.extend((0..column.len()).filter(|&k| column[k].abs() > limit));
             }
         }
         points.sort_unstable();
         points.dedup();
-        points
+        let at = |columns: &[Column], k: usize| columns.iter().map(|c| c[k]).collect();
+        self.near_cut.extend(points.into_iter().map(|k| NearCut {
+            z: at(&block.z, k),
+            e: at(&block.e, k),
+            deviation: at(&block.deviation, k),
+        }));
     }
 
-    /// Remembers a sample near a cut.
-    pub fn remember(&mut self, z: DVector<f64>, e: DVector<f64>, deviation: DVector<f64>) {
-        self.near_cut.push(NearCut { z, e, deviation });
-    }
-
-    /// Moves every chart to the circular mean of what was observed, and the tally with it.
-    pub fn recentre(&mut self, tally: &mut Tally) {
+    /// Moves every chart to the circular mean of what was observed, and the sums with it.
+    pub fn recentre(&mut self, sums: &mut Sums) {
         for j in 0..self.circles.len() {
             let Some(circle) = &mut self.circles[j] else { continue };
             let step = circle.direction();
@@ -153,7 +194,7 @@ impl Charts {
             // With twice the samples or more the next step is no longer than the present error.
             self.bands[j] = circle.band(f64::INFINITY);
             self.centre[j] += step;
-            tally.mean_e[j] -= step;
+            sums.move_origin(j, step);
             for point in &mut self.near_cut {
                 point.deviation[j] -= step;
                 point.e[j] -= step;
@@ -164,9 +205,7 @@ impl Charts {
                 } else {
                     continue;
                 };
-                let mut jump = DVector::zeros(point.e.len());
-                jump[j] = turn;
-                tally.move_point(&point.z, &point.e, &jump);
+                sums.move_point(&point.z, &point.e, j, turn);
                 point.deviation[j] += turn;
                 point.e[j] += turn;
             }
@@ -182,58 +221,65 @@ impl Charts {
 mod tests {
     use super::*;
     use crate::gaussian::wrap;
+    use crate::reference::basis::Basis;
+    use crate::reference::net::BLOCK;
+    use nalgebra::DMatrix;
     use rand::{RngExt, SeedableRng};
     use rand_distr::StandardNormal;
     use rand_pcg::Pcg64;
 
-    /// Two wide angles of 4000 samples, tallied in charts that are off centre, and one plain output between
-    /// them: after recentring the tally must be that of the final charts, computed afresh.
+    /// Two wide angles of 4096 samples, summed in charts that are off centre, and one plain output between them:
+    /// after recentring the sums must be those of the final charts, computed afresh.
     #[test]
     fn recentred_sums_are_those_of_the_final_chart() {
-        const N: usize = 4000;
         let mut rng = Pcg64::seed_from_u64(7);
         let mut normal = || -> f64 { rng.sample(StandardNormal) };
-        let z: Vec<f64> = (0..N).map(|_| normal()).collect();
-        let outputs: [Vec<f64>; 3] = [
-            z.iter().map(|z| wrap(2.9 + 1.1 * z + 0.4 * normal())).collect(),
-            z.iter().map(|z| 0.3 * z + normal()).collect(),
-            (0..N).map(|_| wrap(-1.0 + 1.2 * normal())).collect(),
-        ];
+        let basis = Basis::new(1, 0);
+        let blank = Block::new(Level::best(), 1, 3, &basis);
+        let raw: Vec<Block> = (0..16)
+            .map(|_| {
+                let mut block = blank.clone();
+                for k in 0..BLOCK {
+                    let z = normal();
+                    block.z[0][k] = z;
+                    block.deviation[0][k] = wrap(2.9 + 1.1 * z + 0.4 * normal());
+                    block.deviation[1][k] = 0.3 * z + normal();
+                    block.deviation[2][k] = wrap(-1.0 + 1.2 * normal());
+                }
+                block
+            })
+            .collect();
         let angular = [true, false, true];
+        let slope = DMatrix::from_column_slice(3, 1, &[0.2, 0.3, -0.1]);
+        let seen_from = |centre: &DVector<f64>| -> (Vec<Block>, Sums) {
+            let mut sums = Sums::empty(1, 3, 0);
+            let blocks = raw.iter().cloned().map(|mut block| {
+                block.subtract(centre, &angular, &slope);
+                block.add_to(&mut sums, &basis);
+                block
+            });
+            (blocks.collect(), sums)
+        };
         let start = DVector::from_vec(vec![2.75, 0.1, -1.2]);
         let mut charts = Charts::new(start.clone(), &[Some(0.5), None, Some(0.5)]);
-        let deviate = |centre: &DVector<f64>| -> Vec<f64> {
-            (0..3)
-                .flat_map(|j| outputs[j].iter().map(move |v| (j, *v)))
-                .map(|(j, v)| if angular[j] { wrap(v - centre[j]) } else { v - centre[j] })
-                .collect()
-        };
-        let tally_of = |columns: &[f64]| {
-            let mut tally = Tally::empty(1, 3);
-            tally.of_block(N, &mut z.clone(), &mut columns.to_vec());
-            tally
-        };
-        let columns = deviate(&start);
-        for j in [0, 2] {
-            charts.observe(j, &columns[j * N..(j + 1) * N]);
+        let (blocks, mut sums) = seen_from(&start);
+        for block in &blocks {
+            for (j, deviations) in block.deviation.iter().enumerate() {
+                charts.observe(j, deviations);
+            }
+            charts.remember_near_cut(block);
         }
-        for k in charts.points_near_cut(N, &columns) {
-            let point = DVector::from_fn(3, |j, _| columns[j * N + k]);
-            charts.remember(DVector::from_element(1, z[k]), point.clone(), point);
-        }
-        let mut tally = tally_of(&columns);
-        charts.recentre(&mut tally);
+        charts.recentre(&mut sums);
         assert!(!charts.lost);
         let moved = (0..3).map(|j| (charts.centre[j] - start[j]).abs()).collect::<Vec<_>>();
         assert!(moved[0] > 0.05 && moved[1] == 0.0 && moved[2] > 0.05, "nothing to see: {moved:?}");
-        let final_columns = deviate(&charts.centre);
+        let (after, fresh) = seen_from(&charts.centre);
         let step = charts.centre[0] - start[0];
-        let jumped = (0..N).filter(|&k| (final_columns[k] - columns[k] + step).abs() > 1.0).count();
+        let pairs = after.iter().zip(&blocks).flat_map(|(a, b)| a.deviation[0].iter().zip(&b.deviation[0]));
+        let jumped = pairs.filter(|(a, b)| (*a - *b + step).abs() > 1.0).count();
         assert!(jumped >= 10, "only {jumped} samples crossed the cut");
-        let fresh = tally_of(&final_columns);
-        assert!((&tally.mean_e - &fresh.mean_e).amax() < 1e-12);
-        assert!((&tally.ee - &fresh.ee).amax() < 1e-8, "{} {}", tally.ee, fresh.ee);
-        assert!((&tally.ze - &fresh.ze).amax() < 1e-9);
+        let close = |a: &[f64], b: &[f64]| a.iter().zip(b).all(|(a, b)| (a - b).abs() < 1e-8);
+        assert!(close(&sums.e, &fresh.e) && close(&sums.ee, &fresh.ee) && close(&sums.ze, &fresh.ze));
     }
 
     #[test]
@@ -243,16 +289,32 @@ mod tests {
             circle.add(&[angle; 4096]);
             let mut charts = Charts::new(DVector::from_element(1, 0.0), &[Some(circle.band(4096.0))]);
             charts.observe(0, &[angle; 4096]);
-            charts.recentre(&mut Tally::empty(1, 1));
+            charts.recentre(&mut Sums::empty(1, 1, 0));
             assert!(!charts.lost, "{angle}");
         }
+    }
+
+    /// The pilot saw 4096 samples of an angle with a spread of 1e-3 rad; among the 256 of the first block one lies a
+    /// radian off. The mean moves by sin 1 / 256 = 3.3e-3, six times the band of eight standard errors.
+    #[test]
+    fn a_rare_sample_far_off_does_not_lose_a_narrow_chart() {
+        let narrow: Vec<f64> = (0..256).map(|k| 1e-3 * (f64::from(k) * 0.7).sin()).collect();
+        let mut pilot = CircularSum::default();
+        (0..16).for_each(|_| pilot.add(&narrow));
+        let mut charts = Charts::new(DVector::from_element(1, 0.0), &[Some(pilot.band(256.0))]);
+        let mut block = narrow;
+        block[100] = 1.0;
+        charts.observe(0, &block);
+        charts.recentre(&mut Sums::empty(1, 1, 0));
+        assert!(!charts.lost);
+        assert!((charts.centre[0] - 1f64.sin() / 256.0).abs() < 1e-4, "{}", charts.centre[0]);
     }
 
     #[test]
     fn a_centre_that_moves_further_than_kept_ready_is_lost() {
         let mut charts = Charts::new(DVector::from_element(1, 0.0), &[Some(0.01)]);
         charts.observe(0, &[0.5, 0.6]);
-        charts.recentre(&mut Tally::empty(1, 1));
+        charts.recentre(&mut Sums::empty(1, 1, 0));
         assert!(charts.lost);
     }
 }

@@ -3,124 +3,137 @@ use rand::RngExt;
 use rand_distr::StandardNormal;
 use rand_pcg::Pcg64Dxsm;
 
+use super::basis::Basis;
+use super::block::Block;
 use super::chart::CircularSum;
+use super::control::{Controls, Means, Regression};
+use super::net::{BLOCK, Net};
 use super::stream::Key;
-use super::tally::Tally;
-use crate::gaussian::{Gaussian, wrap};
+use super::sums::{Sums, dot, total};
+use crate::gaussian::Gaussian;
+use crate::lanes::Level;
 use crate::sensor::Sensor;
 
-/// Points of a block: one stream each, small enough for the first-level cache.
-pub(super) const BLOCK: usize = 1024;
 /// Blocks that a replicate starts with.
 pub(super) const FIRST_BLOCKS: u64 = 4;
-/// Blocks of the pilot.
-const PILOT_BLOCKS: u64 = 16;
+/// Blocks of the linear fit, and again of the regression on control variates.
+const FIT_BLOCKS: u64 = 16;
+/// Small nets on which the degrees of control variates are tried, and blocks of each.
+const TRIALS: u64 = 16;
+const TRIAL_BLOCKS: u64 = 2;
+/// Most control variates: beyond, least squares on the pilot's 4096 points would be noise.
+const MOST_CONTROLS: usize = 300;
+/// A deviation beyond this \[rad\] in the pilot makes an angle a far one.
+const FAR: f64 = 1.0;
 
-/// Points laid out one array a coordinate: z (a), x (a), e (p).
-#[derive(Debug, Clone)]
-pub(super) struct Block {
-    pub z: Vec<f64>,
-    pub x: Vec<f64>,
-    pub e: Vec<f64>,
+/// What is asked of a case, as its sampler sees it: the sensor on the components that it reads.
+#[derive(Debug)]
+pub(super) struct Question<'a> {
+    pub sensor: &'a dyn Sensor,
+    /// Prior of the read components (a).
+    pub prior: &'a Gaussian,
+    /// Square root of its covariance (a x a).
+    pub root: DMatrix<f64>,
+    pub angular: Vec<bool>,
+    pub key: Key,
+    pub level: Level,
 }
 
-impl Block {
-    pub fn new(a: usize, p: usize) -> Self {
-        Self { z: vec![0.0; a * BLOCK], x: vec![0.0; a * BLOCK], e: vec![0.0; p * BLOCK] }
+impl Question<'_> {
+    pub fn inputs(&self) -> usize {
+        self.prior.dimension()
     }
 
-    /// Draws z ~ N(0, I), x = m + F z, and writes h(x) into e.
-    pub fn draw(&mut self, rng: &mut Pcg64Dxsm, sensor: &dyn Sensor, mean: &DVector<f64>, root: &DMatrix<f64>) {
-        for z in &mut self.z {
-            *z = rng.sample(StandardNormal);
-        }
-        for (i, x) in self.x.chunks_exact_mut(BLOCK).enumerate() {
-            x.fill(mean[i]);
-            for (k, z) in self.z.chunks_exact(BLOCK).enumerate() {
-                add_scaled(x, root[(i, k)], z);
-            }
-        }
-        sensor.values(BLOCK, &self.x, &mut self.e);
+    pub fn outputs(&self) -> usize {
+        self.angular.len()
     }
 
-    /// Turns the values in e into deviations from `centre`, wrapped where `angular`.
-    pub fn centre_on(&mut self, centre: &DVector<f64>, angular: &[bool]) {
-        for (j, e) in self.e.chunks_exact_mut(BLOCK).enumerate() {
-            for v in e.iter_mut() {
-                *v -= centre[j];
-            }
-            if angular[j] {
-                for v in e {
-                    *v = wrap(*v);
-                }
-            }
-        }
-    }
-
-    /// Subtracts the linear fit: e_j -= sum_k slope_jk z_k.
-    pub fn subtract_fit(&mut self, slope: &DMatrix<f64>) {
-        for (j, e) in self.e.chunks_exact_mut(BLOCK).enumerate() {
-            for (k, z) in self.z.chunks_exact(BLOCK).enumerate() {
-                add_scaled(e, -slope[(j, k)], z);
-            }
-        }
+    /// h of the normals that the block holds.
+    pub fn evaluate(&self, block: &mut Block) {
+        block.evaluate(self.sensor, self.prior.mean(), &self.root);
     }
 }
 
-#[inline]
-fn add_scaled(to: &mut [f64], factor: f64, from: &[f64]) {
-    if factor != 0.0 {
-        for (t, f) in to.iter_mut().zip(from) {
-            *t += factor * f;
-        }
+/// Fills a block with normals from a plain stream.
+pub(super) fn take_stream(block: &mut Block, rng: &mut Pcg64Dxsm) {
+    for z in block.z.as_flattened_mut() {
+        *z = rng.sample(StandardNormal);
     }
 }
 
-/// What a first look at a case fixes for all replicates: where each output is centred, and the linear fit that
-/// is subtracted from every sample. Its own streams; given the pilot, replicates are independent and unbiased.
+/// What a first look at a case fixes for all replicates. It has streams of its own: given the pilot, replicates are
+/// independent and unbiased.
 #[derive(Debug, Clone, PartialEq)]
 pub(super) struct Pilot {
     /// About where each output lies (p): the mean, the circular mean where angular.
     pub centre: DVector<f64>,
-    /// Fit of the deviation on z (p x a).
+    /// Linear fit of the deviation on z (p x a): it is subtracted from every sample, and its known moments are put
+    /// back.
     pub slope: DMatrix<f64>,
     /// Angular outputs whose samples come far from the centre, so that the place of the cut matters.
     pub far: Vec<bool>,
     /// How far each chart may have to move after the first blocks \[rad\]; `None` where an output is plain.
     pub bands: Vec<Option<f64>>,
+    /// Control variates that pay.
+    pub controls: Controls,
 }
 
-/// A deviation beyond this [rad] in the pilot makes an angle a far one.
-const FAR: f64 = 1.0;
-
 impl Pilot {
-    pub fn run(key: &Key, sensor: &dyn Sensor, prior: &Gaussian, root: &DMatrix<f64>) -> Self {
-        let angular: Vec<bool> = sensor.outputs().iter().map(|o| o.angular).collect();
-        let (a, p) = (prior.dimension(), angular.len());
-        let mut block = Block::new(a, p);
-        let mut centre = first_centre(key, sensor, prior, root, &angular, &mut block);
-        let mut tally = Tally::empty(a, p);
-        let mut part = Tally::empty(a, p);
-        let mut squares = Tally::empty(a, a);
-        let mut square_part = Tally::empty(a, a);
+    pub fn run(question: &Question<'_>) -> Self {
+        let mut pilot = Self::fit(question);
+        pilot.controls = pilot.choose_controls(question);
+        pilot
+    }
+
+    /// Centre and linear fit.
+    fn fit(question: &Question<'_>) -> Self {
+        let (a, p) = (question.inputs(), question.outputs());
+        let basis = Basis::new(a, 0);
+        let mut block = Block::new(question.level, a, p, &basis);
+        let mut centre = first_centre(question, &mut block);
+        let nothing = DMatrix::zeros(p, a);
+        let mut zz = DMatrix::zeros(a, a);
+        let mut zd = DMatrix::zeros(a, p);
+        let (mut z_sum, mut d_sum) = (DVector::zeros(a), DVector::zeros(p));
         let mut circles = vec![CircularSum::default(); p];
         let mut far = vec![false; p];
-        for b in 0..PILOT_BLOCKS {
-            block.draw(&mut key.pilot(b), sensor, prior.mean(), root);
-            block.centre_on(&centre, &angular);
-            for (j, e) in block.e.chunks_exact(BLOCK).enumerate() {
-                if angular[j] {
-                    circles[j].add(e);
-                    far[j] |= e.iter().any(|d| d.abs() > FAR);
+        for b in 0..FIT_BLOCKS {
+            take_stream(&mut block, &mut question.key.pilot(b));
+            question.evaluate(&mut block);
+            block.subtract(&centre, &question.angular, &nothing);
+            for (j, d) in block.deviation.iter().enumerate() {
+                if question.angular[j] {
+                    circles[j].add(d);
+                    far[j] |= d.iter().any(|d| d.abs() > FAR);
+                }
+                d_sum[j] += total(d);
+                for (i, z) in block.z.iter().enumerate() {
+                    zd[(i, j)] += dot(z, d);
                 }
             }
-            square_part.of_block(BLOCK, &mut block.z.clone(), &mut block.z.clone());
-            squares.merge(&square_part);
-            part.of_block(BLOCK, &mut block.z, &mut block.e);
-            tally.merge(&part);
+            for (i, z) in block.z.iter().enumerate() {
+                z_sum[i] += total(z);
+                for (k, other) in block.z.iter().enumerate() {
+                    zz[(i, k)] += dot(z, other);
+                }
+            }
         }
+        // Least squares, not the covariance with z: on a linear sensor the fit is then exact and nothing is left to
+        // chance, however small the noise is beside the spread.
+        let count = (FIT_BLOCKS * BLOCK as u64) as f64;
+        zz.ger(-1.0 / count, &z_sum, &z_sum, 1.0);
+        zd.ger(-1.0 / count, &z_sum, &d_sum, 1.0);
+        let slope = Cholesky::new(zz)
+            .map(|zz| zz.solve(&zd).transpose())
+            .filter(|slope| slope.iter().all(|v| v.is_finite()))
+            .unwrap_or(nothing);
         for j in 0..p {
-            let step = if angular[j] { circles[j].direction() } else { tally.mean_e[j] };
+            let step = if question.angular[j] {
+                circles[j].direction()
+            } else {
+                // The mean of the residual, where z has mean zero.
+                (d_sum[j] - slope.row(j).transpose().dot(&z_sum)) / count
+            };
             if step.is_finite() {
                 centre[j] += step;
             }
@@ -128,33 +141,107 @@ impl Pilot {
         let bands = (0..p)
             .map(|j| {
                 let first = if far[j] { FIRST_BLOCKS } else { 1 };
-                angular[j].then(|| circles[j].band((first * BLOCK as u64) as f64))
+                question.angular[j].then(|| circles[j].band((first * BLOCK as u64) as f64))
             })
             .collect();
-        // Least squares, not the covariance with z: on a linear sensor the fit is then exact and nothing is
-        // left to chance, however small the noise is beside the spread.
-        let slope = Cholesky::new(squares.ee)
-            .map(|zz| zz.solve(&tally.ze).transpose())
-            .filter(|slope| slope.iter().all(|v| v.is_finite()))
-            .unwrap_or_else(|| DMatrix::zeros(p, a));
-        Self { centre, slope, far, bands }
+        Self { centre, slope, far, bands, controls: Controls::none(a, p) }
     }
+
+    /// The degree of control variates that promises the least product of variance and cost, measured on small nets.
+    fn choose_controls(&self, question: &Question<'_>) -> Controls {
+        let (a, p) = (question.inputs(), question.outputs());
+        let degrees: Vec<usize> = [2, 4].into_iter().filter(|&d| Basis::count(a, d) <= MOST_CONTROLS).collect();
+        let Some(&highest) = degrees.last() else { return Controls::none(a, p) };
+        let mut regression = Regression::new(a, p, highest);
+        let mut block = Block::new(question.level, a, p, &Basis::new(a, highest));
+        for b in FIT_BLOCKS..2 * FIT_BLOCKS {
+            take_stream(&mut block, &mut question.key.pilot(b));
+            question.evaluate(&mut block);
+            block.subtract(&self.centre, &question.angular, &self.slope);
+            regression.add(&block);
+        }
+        let candidates: Vec<Controls> = std::iter::once(Controls::none(a, p))
+            .chain(degrees.iter().map(|&d| regression.solve(d, a, p)))
+            .collect();
+        let trials = self.trials(question, highest);
+        let price = |controls: &Controls| worst_variance(controls, &trials, self) * cost(controls, a, p);
+        let mut best = 0;
+        for candidate in 1..candidates.len() {
+            // A variance from sixteen trials is known to a third: a dearer degree must win clearly.
+            if price(&candidates[candidate]) < 0.7 * price(&candidates[best]) {
+                best = candidate;
+            }
+        }
+        candidates.into_iter().nth(best).unwrap_or_else(|| Controls::none(a, p))
+    }
+
+    /// Sums over small nets of their own scrambling; empty where nets do not reach.
+    fn trials(&self, question: &Question<'_>, degree: usize) -> Vec<Sums> {
+        let (a, p) = (question.inputs(), question.outputs());
+        let basis = Basis::new(a, degree);
+        let mut block = Block::new(question.level, a, p, &basis);
+        (0..TRIALS)
+            .filter_map(|t| {
+                let net = Net::new(&question.key.trial(), t, a, (TRIAL_BLOCKS * BLOCK as u64).ilog2()).ok()?;
+                let mut sums = Sums::empty(a, p, basis.len());
+                for b in 0..TRIAL_BLOCKS {
+                    block.take_net(&net, b);
+                    question.evaluate(&mut block);
+                    block.subtract(&self.centre, &question.angular, &self.slope);
+                    block.add_to(&mut sums, &basis);
+                }
+                Some(sums)
+            })
+            .collect()
+    }
+}
+
+/// Largest variance over the trials of any integrand's mean, in the natural scale of its moment.
+fn worst_variance(controls: &Controls, trials: &[Sums], pilot: &Pilot) -> f64 {
+    let means: Vec<Means> = trials.iter().map(|sums| controls.means(sums)).collect();
+    let Some(first) = means.first() else { return 0.0 };
+    let p = first.e.len();
+    let variance = |of: &dyn Fn(&Means) -> f64| {
+        let count = means.len() as f64;
+        let mean = means.iter().map(of).sum::<f64>() / count;
+        means.iter().map(|m| (of(m) - mean) * (of(m) - mean)).sum::<f64>() / count
+    };
+    let spread: Vec<f64> = (0..p)
+        .map(|j| {
+            let residual = means.iter().map(|m| m.ee[Sums::pair(j, j)]).sum::<f64>() / means.len() as f64;
+            pilot.slope.row(j).norm_squared() + residual.max(0.0)
+        })
+        .collect();
+    let a = first.ze.len() / p;
+    let mut worst: f64 = 0.0;
+    for j in 0..p {
+        worst = worst.max(variance(&|m| m.e[j]) / spread[j]);
+        for k in 0..=j {
+            worst = worst.max(variance(&|m| m.ee[Sums::pair(j, k)]) / (spread[j] * spread[k]));
+        }
+        for i in 0..a {
+            worst = worst.max(variance(&|m| m.ze[j * a + i]) / spread[j]);
+        }
+    }
+    worst
+}
+
+/// What a sample costs, in the time of one sum of products: a figure for choosing, fixed so that the choice, and with
+/// it every bit of a result, does not depend on the machine. Measured: a normal is about 40 sums, a sensor about 30
+/// an output.
+fn cost(controls: &Controls, a: usize, p: usize) -> f64 {
+    let sums = a + p + p * (p + 1) / 2 + a * p;
+    (40 * a + 30 * p + sums + controls.basis.columns() + controls.basis.len()) as f64
 }
 
 /// A first centre from the first block: the value of its first point where plain (any value near enough keeps
 /// the digits), the circular mean where angular.
-fn first_centre(
-    key: &Key,
-    sensor: &dyn Sensor,
-    prior: &Gaussian,
-    root: &DMatrix<f64>,
-    angular: &[bool],
-    block: &mut Block,
-) -> DVector<f64> {
-    block.draw(&mut key.pilot(0), sensor, prior.mean(), root);
-    DVector::from_fn(angular.len(), |j, _| {
-        let values = &block.e[j * BLOCK..(j + 1) * BLOCK];
-        let centre = if angular[j] {
+fn first_centre(question: &Question<'_>, block: &mut Block) -> DVector<f64> {
+    take_stream(block, &mut question.key.pilot(0));
+    question.evaluate(block);
+    DVector::from_fn(question.outputs(), |j, _| {
+        let values = &block.deviation[j];
+        let centre = if question.angular[j] {
             let mut circle = CircularSum::default();
             circle.add(values);
             circle.direction()

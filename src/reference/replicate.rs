@@ -1,85 +1,76 @@
-use nalgebra::{DMatrix, DVector};
+use nalgebra::DMatrix;
 
+use super::block::Block;
 use super::chart::Charts;
-use super::pilot::{BLOCK, Block, Pilot};
-use super::stream::Key;
-use super::tally::Tally;
-use crate::gaussian::{Gaussian, Moments};
-use crate::sensor::Sensor;
+use super::net::{BLOCK, Net};
+use super::pilot::{Pilot, Question, take_stream};
+use super::sums::Sums;
+use crate::gaussian::Moments;
 
 /// Of a near angle's blocks, one in this many feeds its circular mean: its moments hardly depend on where the
 /// cut lies, and sine and cosine cost as much as the sample.
 const THINNED: u64 = 16;
 
-/// What all replicates of a case share.
-#[derive(Debug)]
-pub(super) struct Ground<'a> {
-    pub key: Key,
-    pub sensor: &'a dyn Sensor,
-    /// Prior of the read components (a) and its square root.
-    pub prior: &'a Gaussian,
-    pub root: DMatrix<f64>,
-    pub angular: Vec<bool>,
-    pub pilot: Pilot,
+/// Where a replicate's points come from.
+#[derive(Debug, Clone)]
+enum Points {
+    /// A randomised net.
+    Net(Net),
+    /// A plain stream a block: the net's table does not reach so many dimensions.
+    Streams,
 }
 
 /// One independent estimate of the moments.
 #[derive(Debug, Clone)]
 pub(super) struct Replicate {
     index: u64,
+    points: Points,
     blocks: u64,
-    tally: Tally,
+    sums: Sums,
     charts: Charts,
 }
 
 impl Replicate {
-    pub fn new(index: u64, ground: &Ground<'_>) -> Self {
-        let (a, p) = (ground.prior.dimension(), ground.angular.len());
+    /// Nothing sampled yet; room for at most 2^`log2` points.
+    pub fn new(index: u64, log2: u32, question: &Question<'_>, pilot: &Pilot) -> Self {
+        let (a, p) = (question.inputs(), question.outputs());
         Self {
             index,
+            points: Net::new(&question.key, index, a, log2).map_or(Points::Streams, Points::Net),
             blocks: 0,
-            tally: Tally::empty(a, p),
-            charts: Charts::new(ground.pilot.centre.clone(), &ground.pilot.bands),
+            sums: Sums::empty(a, p, pilot.controls.basis.len()),
+            charts: Charts::new(pilot.centre.clone(), &pilot.bands),
         }
     }
 
     /// Samples until `blocks` blocks are in; what is in already stays.
-    pub fn deepen(&mut self, blocks: u64, ground: &Ground<'_>) {
-        let (a, p) = (ground.prior.dimension(), ground.angular.len());
-        let mut block = Block::new(a, p);
-        let mut part = Tally::empty(a, p);
+    pub fn deepen(&mut self, blocks: u64, question: &Question<'_>, pilot: &Pilot) {
+        let basis = &pilot.controls.basis;
+        let mut block = Block::new(question.level, question.inputs(), question.outputs(), basis);
         while self.blocks < blocks {
-            let mut rng = ground.key.block(self.index, self.blocks);
-            block.draw(&mut rng, ground.sensor, ground.prior.mean(), &ground.root);
-            block.centre_on(&self.charts.centre, &ground.angular);
-            if self.charts.any() {
-                self.watch_angles(&mut block, ground);
-            } else {
-                block.subtract_fit(&ground.pilot.slope);
+            match &self.points {
+                Points::Net(net) => block.take_net(net, self.blocks),
+                Points::Streams => take_stream(&mut block, &mut question.key.block(self.index, self.blocks)),
             }
-            part.of_block(BLOCK, &mut block.z, &mut block.e);
-            self.tally.merge(&part);
+            question.evaluate(&mut block);
+            block.subtract(&self.charts.centre, &question.angular, &pilot.slope);
+            if self.charts.any() {
+                self.watch_angles(&block, pilot);
+            }
+            block.add_to(&mut self.sums, basis);
             self.blocks += 1;
         }
-        self.charts.recentre(&mut self.tally);
+        self.charts.recentre(&mut self.sums);
     }
 
-    /// Feeds the circular means, notes samples near a cut, then subtracts the fit.
-    fn watch_angles(&mut self, block: &mut Block, ground: &Ground<'_>) {
-        for (j, deviations) in block.e.chunks_exact(BLOCK).enumerate() {
-            if ground.pilot.far[j] || self.blocks.is_multiple_of(THINNED) {
+    /// Feeds the circular means and notes samples near a cut.
+    fn watch_angles(&mut self, block: &Block, pilot: &Pilot) {
+        for (j, deviations) in block.deviation.iter().enumerate() {
+            if pilot.far[j] || self.blocks.is_multiple_of(THINNED) {
                 self.charts.observe(j, deviations);
             }
         }
-        let near = self.charts.points_near_cut(BLOCK, &block.e);
-        let at = |columns: &[f64], k: usize| {
-            DVector::from_iterator(columns.len() / BLOCK, columns.chunks_exact(BLOCK).map(|c| c[k]))
-        };
-        let deviations: Vec<DVector<f64>> = near.iter().map(|&k| at(&block.e, k)).collect();
-        block.subtract_fit(&ground.pilot.slope);
-        for (&k, deviation) in near.iter().zip(deviations) {
-            self.charts.remember(at(&block.z, k), at(&block.e, k), deviation);
-        }
+        self.charts.remember_near_cut(block);
     }
 
     pub fn points(&self) -> u64 {
@@ -90,17 +81,28 @@ impl Replicate {
         &self.charts
     }
 
-    /// This replicate's moments on the read components, noise added exactly:
-    /// Gamma = B0' + Cov(z, e), C = F Gamma, S = B0 B0' + B0 Cov(z, e) + Cov(e, z) B0' + Cov(e) + R.
-    pub fn moments(&self, ground: &Ground<'_>, noise: &DMatrix<f64>) -> Moments {
-        let slope = &ground.pilot.slope;
-        let scale = 1.0 / (self.tally.count - 1.0);
-        let ze = &self.tally.ze * scale;
+    /// Whether the points are a net's.
+    pub fn has_net(&self) -> bool {
+        matches!(self.points, Points::Net(_))
+    }
+
+    /// This replicate's moments on the read components, noise added exactly. With B0 the fit, E\[z\] = 0 and
+    /// E\[z z'\] = I: Gamma = B0' + E\[z e'\], C = F Gamma,
+    /// S = B0 B0' + B0 E\[z e'\] + E\[e z'\] B0' + Cov(e) + R.
+    pub fn moments(&self, question: &Question<'_>, pilot: &Pilot, noise: &DMatrix<f64>) -> Moments {
+        let (a, p) = (question.inputs(), question.outputs());
+        let means = pilot.controls.means(&self.sums);
+        let slope = &pilot.slope;
+        let ze = DMatrix::from_column_slice(a, p, &means.ze);
         let cross = slope * &ze;
+        // Independent points share their mean with their squares; a net's mean is known far better than that.
+        let bessel = if self.has_net() { 1.0 } else { self.sums.count / (self.sums.count - 1.0) };
+        let residual =
+            DMatrix::from_fn(p, p, |j, k| bessel * (means.ee[Sums::pair(j, k)] - means.e[j] * means.e[k]));
         Moments {
-            mean: &self.charts.centre + &self.tally.mean_e,
-            covariance: slope * slope.transpose() + &cross + cross.transpose() + &self.tally.ee * scale + noise,
-            cross_covariance: &ground.root * (slope.transpose() + ze),
+            mean: &self.charts.centre + nalgebra::DVector::from_column_slice(&means.e),
+            covariance: slope * slope.transpose() + &cross + cross.transpose() + residual + noise,
+            cross_covariance: &question.root * (slope.transpose() + ze),
         }
     }
 }

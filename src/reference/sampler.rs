@@ -1,16 +1,16 @@
 use nalgebra::DMatrix;
 use rayon::prelude::*;
 
+use super::chart::CircularSum;
 use super::estimate::{Reference, Soundness, combine, worst_standardised};
-use super::pilot::{BLOCK, FIRST_BLOCKS, Pilot};
-use super::replicate::{Ground, Replicate};
+use super::pilot::{Pilot, Question};
+use super::replicate::Replicate;
+use super::settings::{SamplerError, SamplerSettings};
 use super::stream::Key;
 use crate::gaussian::{Gaussian, Marginal, Moments, wrap};
 use crate::sensor::Sensor;
 use crate::suite::Case;
 
-/// Independent replicates of a reference unless told otherwise.
-pub const DEFAULT_REPLICATES: usize = 32;
 /// Below this resultant length an angle has no mean direction to centre its chart on. Ours, no source: at 0.1
 /// the directions are all but uniform, and where the cut lies decides the moments.
 const LEAST_RESULTANT: f64 = 0.1;
@@ -19,72 +19,14 @@ const LEAST_RESULTANT: f64 = 0.1;
 /// Ours, no source: the rounding of a value, a few units, is then under 1e-3 of what is measured.
 const LEAST_SPREAD: f64 = 1e4 * f64::EPSILON;
 
-/// How a reference is to be sampled.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct SamplerSettings {
-    /// Seed of all random numbers.
-    pub seed: u64,
-    /// Independent replicates, at least 2.
-    pub replicates: usize,
-    /// Largest standardised standard error asked for.
-    pub precision: f64,
-    /// Most samples of h in all replicates together.
-    pub cap: u64,
-}
-
-impl Default for SamplerSettings {
-    /// Seed 1, 32 replicates, precision 1e-3, at most 2^24 samples.
-    fn default() -> Self {
-        Self { seed: 1, replicates: DEFAULT_REPLICATES, precision: 1e-3, cap: 1 << 24 }
-    }
-}
-
-impl SamplerSettings {
-    /// Checks that there are at least two replicates and that the cap leaves one block for each.
-    ///
-    /// # Errors
-    /// [`SamplerError`] with what would do.
-    pub fn check(&self) -> Result<(), SamplerError> {
-        if self.replicates < 2 {
-            return Err(SamplerError::TooFewReplicates { replicates: self.replicates });
-        }
-        let least = BLOCK as u64 * self.replicates as u64;
-        if self.cap < least {
-            return Err(SamplerError::CapTooSmall { cap: self.cap, replicates: self.replicates, least });
-        }
-        Ok(())
-    }
-}
-
-/// Settings under which nothing can be sampled.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, thiserror::Error)]
-#[non_exhaustive]
-pub enum SamplerError {
-    /// Without two replicates there is no standard error.
-    #[error("{replicates} replicates are too few: a standard error needs at least 2")]
-    TooFewReplicates {
-        /// Replicates asked for.
-        replicates: usize,
-    },
-    /// The cap does not leave one block for each replicate.
-    #[error("a cap of {cap} samples is too small: {replicates} replicates need at least {least}")]
-    CapTooSmall {
-        /// Cap asked for.
-        cap: u64,
-        /// Replicates asked for.
-        replicates: usize,
-        /// Least cap that would do.
-        least: u64,
-    },
-}
-
 /// Samples the moments of one case, deeper at every call; nothing sampled is thrown away.
 ///
 /// The result depends on the case, the seed and the number of points only: the same bits on any number of
-/// threads.
+/// threads and with any set of vector instructions.
 #[derive(Debug)]
 pub struct Sampler<'a> {
-    ground: Ground<'a>,
+    question: Question<'a>,
+    pilot: Pilot,
     marginal: &'a Marginal,
     prior: &'a Gaussian,
     noise: DMatrix<f64>,
@@ -97,7 +39,7 @@ impl<'a> Sampler<'a> {
     /// A sampler of `case`.
     ///
     /// # Errors
-    /// [`SamplerError`] if there are fewer than two replicates or the cap does not leave each 1024 samples.
+    /// [`SamplerError`] if there are fewer than two replicates or the cap does not leave each 256 samples.
     pub fn new(case: &'a Case, settings: SamplerSettings) -> Result<Self, SamplerError> {
         let key = Key::new(settings.seed, &case.question());
         Self::of_parts(case.sensor(), case.prior(), case.marginal(), case.noise_or_zero(), key, settings)
@@ -118,17 +60,19 @@ impl<'a> Sampler<'a> {
     ) -> Result<Self, SamplerError> {
         settings.check()?;
         let law = marginal.law();
-        let root = law.root();
-        let ground = Ground {
-            key,
+        let question = Question {
             sensor,
             prior: law,
+            root: law.root(),
             angular: sensor.outputs().iter().map(|o| o.angular).collect(),
-            pilot: Pilot::run(&key, sensor, law, &root),
-            root,
+            key,
+            level: settings.level,
         };
-        let replicates = (0..settings.replicates as u64).map(|r| Replicate::new(r, &ground)).collect();
-        Ok(Self { ground, marginal, prior, noise, settings, replicates, blocks: 0 })
+        let pilot = Pilot::run(&question);
+        let replicates = (0..settings.replicates as u64)
+            .map(|r| Replicate::new(r, settings.log2(), &question, &pilot))
+            .collect();
+        Ok(Self { question, pilot, marginal, prior, noise, settings, replicates, blocks: 0 })
     }
 
     /// Samples of h so far, all replicates together.
@@ -136,18 +80,13 @@ impl<'a> Sampler<'a> {
         self.replicates.iter().map(Replicate::points).sum()
     }
 
-    /// Doubles the number of points (the first time: takes the first 4096 a replicate), within the cap.
+    /// Doubles the number of points (the first time: takes the first 1024 a replicate), within the cap.
     /// Returns whether there was room for any.
     pub fn deepen(&mut self) -> bool {
-        let room = self.settings.cap / (BLOCK * self.replicates.len()) as u64;
-        let blocks = if self.blocks == 0 { FIRST_BLOCKS } else { 2 * self.blocks }.min(room);
-        // A last partial doubling of less than a half again would cost without telling much.
-        if blocks <= self.blocks || (self.blocks > 0 && 2 * blocks < 3 * self.blocks) {
-            return false;
-        }
+        let Some(blocks) = self.settings.blocks_after(self.blocks) else { return false };
         self.blocks = blocks;
-        let ground = &self.ground;
-        self.replicates.par_iter_mut().for_each(|r| r.deepen(blocks, ground));
+        let (question, pilot) = (&self.question, &self.pilot);
+        self.replicates.par_iter_mut().for_each(|r| r.deepen(blocks, question, pilot));
         true
     }
 
@@ -168,18 +107,21 @@ impl<'a> Sampler<'a> {
     /// If nothing was sampled yet.
     pub fn reference(&self) -> Reference {
         assert!(self.blocks > 0, "a reference before the first sample");
-        let mut replicates: Vec<Moments> =
-            self.replicates.iter().map(|r| self.lifted(r.moments(&self.ground, &self.noise))).collect();
+        let mut replicates: Vec<Moments> = self
+            .replicates
+            .iter()
+            .map(|r| self.lifted(r.moments(&self.question, &self.pilot, &self.noise)))
+            .collect();
         let first = replicates[0].mean.clone();
         for moments in &mut replicates[1..] {
-            for (j, &angular) in self.ground.angular.iter().enumerate() {
+            for (j, &angular) in self.question.angular.iter().enumerate() {
                 if angular {
                     moments.mean[j] = first[j] + wrap(moments.mean[j] - first[j]);
                 }
             }
         }
         let (mut moments, standard_error) = combine(&replicates);
-        for (j, &angular) in self.ground.angular.iter().enumerate() {
+        for (j, &angular) in self.question.angular.iter().enumerate() {
             if angular {
                 let turn = wrap(moments.mean[j]) - moments.mean[j];
                 moments.mean[j] = wrap(moments.mean[j]);
@@ -204,7 +146,7 @@ impl<'a> Sampler<'a> {
     }
 
     fn refusal(&self, moments: &Moments) -> Option<String> {
-        let outputs = self.ground.sensor.outputs();
+        let outputs = self.question.sensor.outputs();
         if !moments.is_finite() {
             let which = (0..outputs.len()).find(|&j| !moments.covariance[(j, j)].is_finite()).unwrap_or(0);
             return Some(format!(
@@ -222,19 +164,27 @@ impl<'a> Sampler<'a> {
                 ));
             }
         }
-        let charts = self.replicates.iter().map(Replicate::charts);
-        let least = charts.clone().filter_map(|c| c.least_resultant()).min_by(|a, b| a.1.total_cmp(&b.1));
-        if let Some((j, resultant)) = least
-            && !(resultant >= LEAST_RESULTANT)
-        {
-            return Some(format!(
-                "output `{}` has no mean direction: its resultant length is {resultant:.3}, {LEAST_RESULTANT} is needed",
-                outputs[j].name
-            ));
+        for (j, output) in outputs.iter().enumerate() {
+            if let Some(resultant) = self.resultant(j)
+                && !(resultant >= LEAST_RESULTANT)
+            {
+                return Some(format!(
+                    "output `{}` has no mean direction: its resultant length is {resultant:.3}, {LEAST_RESULTANT} is \
+                     needed",
+                    output.name
+                ));
+            }
         }
-        charts
-            .clone()
-            .any(|c| c.lost)
+        self.replicates
+            .iter()
+            .any(|r| r.charts().lost)
             .then(|| "the mean direction of an angle moved by more than chance allows".into())
+    }
+
+    /// Resultant length of angular output `j` over all replicates together: the least of theirs would depend on
+    /// how many samples each has, and refuse at a first look what more samples would answer.
+    fn resultant(&self, j: usize) -> Option<f64> {
+        let circles = self.replicates.iter().filter_map(|r| r.charts().circle(j));
+        circles.reduce(CircularSum::merged).map(|circle| circle.resultant())
     }
 }

@@ -38,6 +38,28 @@ impl Key {
         self.derived(b"digit", replicate, dimension)
     }
 
+    /// The stream of batch `batch` of the witness.
+    pub(super) fn witness(&self, batch: u64) -> Pcg64Dxsm {
+        self.derived(b"plain", 0, batch)
+    }
+
+    /// A key for nets that are tried and thrown away, apart from every replicate's.
+    pub(super) fn trial(&self) -> Self {
+        self.apart(b"trial")
+    }
+
+    /// A key for the net that measures how much the witness may err.
+    pub(super) fn spread(&self) -> Self {
+        self.apart(b"sprea")
+    }
+
+    fn apart(&self, purpose: &[u8; 5]) -> Self {
+        let mut hash = Sha256::new();
+        hash.update(self.0);
+        hash.update(purpose);
+        Self(hash.finalize().into())
+    }
+
     fn derived(&self, purpose: &[u8; 5], replicate: u64, part: u64) -> Pcg64Dxsm {
         let mut hash = Sha256::new();
         hash.update(self.0);

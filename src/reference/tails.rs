@@ -31,8 +31,7 @@ pub fn fit_pareto(exceedances: &[f64]) -> Option<ParetoFit> {
     let k_of = |theta: f64| -exceedances.iter().map(|x| (-theta * x).ln_1p()).sum::<f64>() / count;
     let (thetas, likelihoods): (Vec<f64>, Vec<f64>) = (1..=trials)
         .map(|j| {
-            let theta =
-                1.0 / largest + (1.0 - (trials as f64 / (j as f64 - 0.5)).sqrt()) / (3.0 * quartile);
+            let theta = 1.0 / largest + (1.0 - (trials as f64 / (j as f64 - 0.5)).sqrt()) / (3.0 * quartile);
             let k = k_of(theta);
             (theta, count * ((theta / k).ln() + k - 1.0))
         })

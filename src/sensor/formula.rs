@@ -4,6 +4,7 @@ use nalgebra::DMatrix;
 use smallvec::SmallVec;
 
 use super::{Derivatives, Number, Output, derivatives};
+use crate::lanes::{Lanes, Level, Simd, Task, dispatch};
 
 /// A measurement function as its author writes it: once, generic over the number.
 ///
@@ -39,6 +40,14 @@ pub trait Sensor: Debug + Send + Sync {
     /// Writes h of `length` points into `y`: both lie one array a coordinate, coordinate i of point k at
     /// `i * length + k`.
     fn values(&self, length: usize, x: &[f64], y: &mut [f64]);
+
+    /// As [`Sensor::values`], eight points at a time with the instructions of `level` and our own elementary
+    /// functions: the same bits at every level, though not always those of [`Sensor::values`], which asks the
+    /// machine's mathematical library. `length` is a multiple of eight.
+    ///
+    /// # Panics
+    /// If `length` is no multiple of eight, or this machine does not have `level`.
+    fn sample(&self, level: Level, length: usize, x: &[f64], y: &mut [f64]);
 
     /// Writes h(x) into `y` and the exact Jacobian dh_j/dx_i into `jacobian` (p x a).
     fn jacobian(&self, x: &[f64], y: &mut [f64], jacobian: &mut DMatrix<f64>);
@@ -76,11 +85,47 @@ impl<F: Formula> Sensor for F {
         }
     }
 
+    fn sample(&self, level: Level, length: usize, x: &[f64], y: &mut [f64]) {
+        assert_eq!(length % 8, 0, "points are sampled eight at a time");
+        dispatch(level, Evaluate { formula: self, length, x, y });
+    }
+
     fn jacobian(&self, x: &[f64], y: &mut [f64], jacobian: &mut DMatrix<f64>) {
         derivatives::jacobian(self, x, y, jacobian);
     }
 
     fn hessians(&self, x: &[f64], at: &mut Derivatives) {
         derivatives::hessians(self, x, at);
+    }
+}
+
+/// A block of points through a formula.
+struct Evaluate<'a, F> {
+    formula: &'a F,
+    length: usize,
+    x: &'a [f64],
+    y: &'a mut [f64],
+}
+
+impl<F: Formula> Task for Evaluate<'_, F> {
+    type Output = ();
+
+    #[inline(always)]
+    fn run<S: Simd>(self) {
+        let Self { formula, length, x, y } = self;
+        let mut point: SmallVec<[Lanes<S>; 8]> = SmallVec::from_elem(Lanes::splat(0.0), formula.reads().len());
+        let mut output: SmallVec<[Lanes<S>; 8]> = SmallVec::from_elem(Lanes::splat(0.0), formula.outputs().len());
+        let (point, output) = (point.as_mut_slice(), output.as_mut_slice());
+        for k in (0..length).step_by(8) {
+            for (coordinate, column) in point.iter_mut().zip(x.chunks_exact(length)) {
+                if let Some(eight) = column[k..].first_chunk() {
+                    *coordinate = Lanes::from_array(eight);
+                }
+            }
+            formula.evaluate(point, output);
+            for (value, column) in output.iter().zip(y.chunks_exact_mut(length)) {
+                column[k..k + 8].copy_from_slice(&value.to_array());
+            }
+        }
     }
 }

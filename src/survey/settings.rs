@@ -61,6 +61,7 @@ impl SurveyPlan {
             precision: settings.precision.or(suite.precision).unwrap_or(default.precision),
             cap: settings.cap.or(suite.cap).unwrap_or(default.cap),
             replicates: default.replicates,
+            level: default.level,
         };
         if !(sampler.precision > 0.0 && sampler.precision < 1.0) {
             return Err(SurveyError::Precision(sampler.precision));

@@ -31,14 +31,7 @@ fn check_accuracy<F: Function>(kind: &str, (x, y): (Vec<[f64; 8]>, Vec<[f64; 8]>
             let alike = standard.is_nan() == ours[i].is_nan()
                 && standard.is_infinite() == ours[i].is_infinite()
                 && (standard.is_nan() || standard.is_sign_negative() == ours[i].is_sign_negative());
-            assert!(
-                alike,
-                "{} of {:e}, {:e}: {:e} instead of {standard:e}",
-                F::NAME,
-                x[i],
-                y[i],
-                ours[i]
-            );
+            assert!(alike, "{} of {:e}, {:e}: {:e} instead of {standard:e}", F::NAME, x[i], y[i], ours[i]);
         }
     }
     let share = differing as f64 / (8 * x.len()) as f64;

@@ -1,0 +1,145 @@
+//! Control variates: what the sums of Hermite polynomials tell of a replicate's error.
+
+use nalgebra::{Cholesky, DMatrix};
+
+use super::basis::Basis;
+use super::block::{Block, Column};
+use super::net::BLOCK;
+use super::sums::{Sums, dot, total};
+
+/// Regression of every integrand on the control variates.
+///
+/// Integrands are e_j, e_j e_k (k <= j) and z_i e_j, in the order of [`Sums`]. The coefficients come from a pilot
+/// of its own points; given the pilot, each replicate's estimate mean(q) - c' mean(controls) is as unbiased as
+/// mean(q), because the controls' expectation is zero.
+///
+/// Source: P. Glasserman, Monte Carlo Methods in Financial Engineering (Springer, 2003), sec. 4.1 (linear control
+/// variates, coefficients from a pilot; section from memory).
+#[derive(Debug, Clone, PartialEq)]
+pub(super) struct Controls {
+    pub basis: Basis,
+    /// One column an integrand, one row a polynomial (K x M).
+    coefficients: DMatrix<f64>,
+}
+
+impl Controls {
+    /// No control variates.
+    pub fn none(a: usize, p: usize) -> Self {
+        Self { basis: Basis::new(a, 0), coefficients: DMatrix::zeros(0, integrands(a, p)) }
+    }
+
+    /// Means of the integrands with the controls' error taken out: e (p), e e' (packed), z e' (p x a).
+    pub fn means(&self, sums: &Sums) -> Means {
+        let scale = 1.0 / sums.count;
+        let errors: Vec<f64> = sums.basis.iter().take(self.basis.len()).map(|s| s * scale).collect();
+        let mut place = 0;
+        let mut adjusted = |raw: &[f64]| -> Vec<f64> {
+            raw.iter()
+                .map(|sum| {
+                    let known: f64 = self.coefficients.column(place).iter().zip(&errors).map(|(c, e)| c * e).sum();
+                    place += 1;
+                    sum * scale - known
+                })
+                .collect()
+        };
+        Means { e: adjusted(&sums.e), ee: adjusted(&sums.ee), ze: adjusted(&sums.ze) }
+    }
+}
+
+/// Sample means of the integrands.
+#[derive(Debug, Clone, PartialEq)]
+pub(super) struct Means {
+    pub e: Vec<f64>,
+    pub ee: Vec<f64>,
+    pub ze: Vec<f64>,
+}
+
+/// How many integrands there are.
+fn integrands(a: usize, p: usize) -> usize {
+    p + p * (p + 1) / 2 + a * p
+}
+
+/// Least squares of the integrands on the polynomials, gathered block by block.
+#[derive(Debug)]
+pub(super) struct Regression {
+    basis: Basis,
+    /// Means over the pilot of products of controls (K + 1 with the constant first).
+    gram: DMatrix<f64>,
+    /// Products of controls with integrands (K + 1 x M).
+    cross: DMatrix<f64>,
+    columns: Vec<Column>,
+    products: Vec<Column>,
+    integrands: Vec<Column>,
+}
+
+impl Regression {
+    pub fn new(a: usize, p: usize, degree: usize) -> Self {
+        let basis = Basis::new(a, degree);
+        let (k, m) = (basis.len() + 1, integrands(a, p));
+        let room = |n: usize| vec![[0.0; BLOCK]; n];
+        Self {
+            gram: DMatrix::zeros(k, k),
+            cross: DMatrix::zeros(k, m),
+            columns: room(basis.columns()),
+            products: room(k),
+            integrands: room(m),
+            basis,
+        }
+    }
+
+    /// Adds a block of the pilot.
+    pub fn add(&mut self, block: &Block) {
+        self.basis.write_columns(&block.z, &mut self.columns);
+        self.products[0].fill(1.0);
+        self.basis.write_products(&self.columns, &mut self.products[1..]);
+        write_integrands(&block.z, &block.e, &mut self.integrands);
+        for s in 0..self.products.len() {
+            for t in 0..=s {
+                self.gram[(s, t)] += dot(&self.products[s], &self.products[t]);
+            }
+            for (m, integrand) in self.integrands.iter().enumerate() {
+                self.cross[(s, m)] += if s == 0 { total(integrand) } else { dot(&self.products[s], integrand) };
+            }
+        }
+    }
+
+    /// The coefficients on the polynomials up to `degree`, at most that of the regression; no controls where the
+    /// least squares cannot be solved or a sample was not finite.
+    pub fn solve(&self, degree: usize, a: usize, p: usize) -> Controls {
+        let basis = Basis::new(a, degree);
+        let k = basis.len() + 1;
+        // Only the lower triangle was filled, which is all that the factorisation reads.
+        let gram = self.gram.view((0, 0), (k, k)).into_owned();
+        let cross = self.cross.view((0, 0), (k, self.cross.ncols())).into_owned();
+        let solved = Cholesky::new(gram).map(|g| g.solve(&cross));
+        match solved.filter(|c| c.iter().all(|v| v.is_finite())) {
+            Some(coefficients) => Controls { basis, coefficients: coefficients.remove_row(0) },
+            None => Controls::none(a, p),
+        }
+    }
+}
+
+fn write_integrands(z: &[Column], e: &[Column], out: &mut [Column]) {
+    let mut out = out.iter_mut();
+    let mut put = |left: &Column, right: Option<&Column>| {
+        if let Some(column) = out.next() {
+            *column = *left;
+            if let Some(right) = right {
+                column.iter_mut().zip(right).for_each(|(c, r)| *c *= r);
+            }
+        }
+    };
+    for output in e {
+        put(output, None);
+    }
+    for (j, left) in e.iter().enumerate() {
+        for right in &e[..=j] {
+            put(left, Some(right));
+        }
+    }
+    for output in e {
+        for input in z {
+            put(output, Some(input));
+        }
+    }
+}
