@@ -72,7 +72,7 @@ impl Formula for BearingOnly {
         &self.outputs
     }
 
-    #[inline]
+    #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         for (station, angle) in self.stations.iter().zip(y) {
             let (east, north) = seen_from(x, *station);

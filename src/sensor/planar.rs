@@ -28,7 +28,7 @@ pub(super) fn checked_station(key: &str, station: [f64; 2]) -> Result<(), Parame
 }
 
 /// The position seen from a station, (x - sx, y - sy).
-#[inline]
+#[inline(always)]
 pub(super) fn seen_from<T: Number>(position: &[T], station: [f64; 2]) -> (T, T) {
     (position[0] - T::constant(station[0]), position[1] - T::constant(station[1]))
 }

@@ -51,7 +51,7 @@ impl Formula for RangeBearing {
         &self.outputs
     }
 
-    #[inline]
+    #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         let (east, north) = seen_from(x, self.station);
         y[0] = east.hypot(north);

@@ -19,11 +19,8 @@ pub fn edges() -> Vec<f64> {
     edges.extend((1..40).map(|k| f64::from(k) * std::f64::consts::FRAC_PI_4));
     edges.extend((17..1000).step_by(61).map(|k| f64::powi(2.0, k) * std::f64::consts::FRAC_PI_2));
     edges.extend([823_549.0, 823_550.0, 1_048_576.0 * std::f64::consts::FRAC_PI_2]);
-    let neighbours: Vec<f64> = edges
-        .iter()
-        .filter(|v| v.is_finite())
-        .flat_map(|v| [v.next_up(), v.next_down()])
-        .collect();
+    let neighbours: Vec<f64> =
+        edges.iter().filter(|v| v.is_finite()).flat_map(|v| [v.next_up(), v.next_down()]).collect();
     edges.extend(neighbours);
     edges.iter().flat_map(|v| [*v, -*v]).collect()
 }
