@@ -6,7 +6,7 @@ use rand_pcg::Pcg64;
 use crate::functions::Function;
 
 /// Blocks of eight of each kind; a build without optimisation tries fewer.
-const BLOCKS: usize = if cfg!(debug_assertions) { 1_000 } else { 100_000 };
+const BLOCKS: usize = if cfg!(debug_assertions) { 300 } else { 60_000 };
 
 /// Values at which something changes, with their neighbours, of both signs.
 pub fn edges() -> Vec<f64> {

@@ -67,9 +67,9 @@ functions! {
     Powf 1.0 1 [-20.0, 20.0] true |x, y| x.powf(y), x.powf(y);
     PowiM7 1.0 1 [-10.0, 10.0] false |x, y| x.powi(-7), x.powf(-7.0);
     PowiM2 3.0 2 [-10.0, 10.0] false |x, y| x.powi(-2), x.powf(-2.0);
-    PowiM1 0.5 0 [-10.0, 10.0] false |x, y| x.powi(-1), x.powf(-1.0);
+    PowiM1 0.5 1 [-10.0, 10.0] false |x, y| x.powi(-1), x.powf(-1.0);
     Powi0 0.5 0 [-10.0, 10.0] false |x, y| x.powi(0), x.powf(0.0);
-    Powi2 0.5 0 [-10.0, 10.0] false |x, y| x.powi(2), x.powf(2.0);
+    Powi2 0.5 1 [-10.0, 10.0] false |x, y| x.powi(2), x.powf(2.0);
     Powi3 2.0 2 [-10.0, 10.0] false |x, y| x.powi(3), x.powf(3.0);
     Powi4 3.0 3 [-10.0, 10.0] false |x, y| x.powi(4), x.powf(4.0);
     Powi100 1.0 1 [-10.0, 10.0] false |x, y| x.powi(100), x.powf(100.0);
