@@ -1,3 +1,5 @@
+use std::f64::consts::FRAC_PI_4;
+
 use super::polynomial::polynomial;
 use super::{Lanes, Simd};
 
@@ -17,14 +19,15 @@ const ATAN: [f64; 12] = [
     0.01011270132152057,
 ];
 
-/// pi/4 in two parts; the first has 50 bits, so that its multiples up to four are exact.
-const QUARTER_PI: [f64; 2] = [0.785_398_163_397_448_3, 3.061_616_997_868_383e-17];
+/// pi/4 in two parts; the last three bits of the first are zero, so that its multiples up to four are exact.
+const QUARTER_PI: [f64; 2] = [FRAC_PI_4, 3.061_616_997_868_383e-17];
 
 /// 2^1022: sums of two numbers below it do not overflow.
 const LONG: f64 = f64::from_bits(0x7fd0_0000_0000_0000);
 
 impl<S: Simd> Lanes<S> {
-    /// Angle of the point (x, self) \[rad\] in \[-pi, pi\], counter-clockwise from the x axis, within 2 ulp.
+    /// Angle of the point (x, self) \[rad\] in \[-pi, pi\], counter-clockwise from the x axis, within 2 ulp
+    /// (1.9 seen).
     ///
     /// Zeros and infinities, with their signs, as [`f64::atan2`].
     #[inline(always)]
@@ -56,19 +59,19 @@ impl<S: Simd> Lanes<S> {
         (eighths * QUARTER_PI[0] + (small + eighths * QUARTER_PI[1])).flip(self.sign())
     }
 
-    /// Arc tangent \[rad\], within 2 ulp.
+    /// Arc tangent \[rad\], within 2 ulp (1.8 seen).
     #[inline(always)]
     pub fn atan(self) -> Self {
         self.atan2(Self::splat(1.0))
     }
 
-    /// Arc sine \[rad\], within 3 ulp; NaN outside \[-1, 1\].
+    /// Arc sine \[rad\], within 3 ulp (2.4 seen); NaN outside \[-1, 1\].
     #[inline(always)]
     pub fn asin(self) -> Self {
         self.atan2(self.other_side())
     }
 
-    /// Arc cosine \[rad\], within 3 ulp; NaN outside \[-1, 1\].
+    /// Arc cosine \[rad\], within 3 ulp (2.2 seen); NaN outside \[-1, 1\].
     #[inline(always)]
     pub fn acos(self) -> Self {
         self.other_side().atan2(self)

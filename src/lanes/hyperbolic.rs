@@ -2,7 +2,7 @@ use super::exponential::{bend, reduce};
 use super::{Lanes, Simd};
 
 impl<S: Simd> Lanes<S> {
-    /// Hyperbolic tangent, within 2 ulp.
+    /// Hyperbolic tangent, within 3 ulp (2.6 seen).
     #[inline(always)]
     pub fn tanh(self) -> Self {
         // E / (E + 2) with E = exp(2 |x|) - 1; from 22 on it rounds to 1. NaN passes.

@@ -26,4 +26,32 @@ impl<S: Simd> Number for Lanes<S> {
     fn hypot(self, other: Self) -> Self {
         Self::hypot(self, other)
     }
+    #[inline(always)]
+    fn tan(self) -> Self {
+        Self::tan(self)
+    }
+    #[inline(always)]
+    fn exp(self) -> Self {
+        Self::exp(self)
+    }
+    #[inline(always)]
+    fn ln(self) -> Self {
+        Self::ln(self)
+    }
+    #[inline(always)]
+    fn tanh(self) -> Self {
+        Self::tanh(self)
+    }
+    #[inline(always)]
+    fn abs(self) -> Self {
+        Self::abs(self)
+    }
+    #[inline(always)]
+    fn powi(self, exponent: i32) -> Self {
+        Self::powi(self, exponent)
+    }
+    #[inline(always)]
+    fn powf(self, exponent: f64) -> Self {
+        Self::powf(self, Self::splat(exponent))
+    }
 }

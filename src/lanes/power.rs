@@ -7,7 +7,7 @@ use super::{LEAST_NORMAL, Lanes, Simd, Words};
 const LN_2_PARTS: [f64; 2] = [0.693_147_167_563_438_4, 1.299_650_689_388_988_9e-8];
 
 impl<S: Simd> Lanes<S> {
-    /// self^exponent, within 1 ulp.
+    /// self^exponent, within 1 ulp (0.92 seen).
     ///
     /// Negative numbers have powers with whole exponents only (NaN otherwise); 1 for exponent 0 and for self 1,
     /// whatever the other; all as [`f64::powf`].
@@ -44,7 +44,8 @@ impl<S: Simd> Lanes<S> {
         size
     }
 
-    /// self^exponent with the same whole exponent in all lanes, within 3 ulp.
+    /// self^exponent with the same whole exponent in all lanes, within 3 ulp (1.9 seen); within 1 where
+    /// |exponent| is above 4 or -3, -4.
     #[inline(always)]
     pub fn powi(self, exponent: i32) -> Self {
         match exponent {

@@ -1,4 +1,4 @@
-use super::planar::{Lookout, Parameters};
+use super::planar::{Lookout, Parameters, seen_from};
 use super::{Formula, Number, Output, ParameterError};
 
 /// Bearings of a planar position from one or several stations.
@@ -40,9 +40,10 @@ impl Formula for BearingOnly {
         &self.outputs
     }
 
-    #[inline]
+    #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
-        for ((east, north), angle) in self.lookout.seen(x).zip(y) {
+        for (station, angle) in self.lookout.stations.iter().zip(y) {
+            let (east, north) = seen_from(x, station);
             *angle = north.atan2(east);
         }
     }

@@ -19,6 +19,8 @@ pub trait Formula: Debug + Send + Sync {
 
     /// Writes h at the read components `x` into `y` (p).
     ///
+    /// Mark it `#[inline(always)]`: on [`Lanes`](crate::lanes::Lanes) only what is inlined is fast.
+    ///
     /// # Panics
     /// May panic if `x` or `y` is shorter than [`Formula::reads`] or [`Formula::outputs`].
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]);

@@ -29,6 +29,20 @@ pub trait Number:
     fn atan2(self, x: Self) -> Self;
     /// sqrt(self^2 + other^2).
     fn hypot(self, other: Self) -> Self;
+    /// tan(self), radians.
+    fn tan(self) -> Self;
+    /// e^self.
+    fn exp(self) -> Self;
+    /// Natural logarithm.
+    fn ln(self) -> Self;
+    /// Hyperbolic tangent.
+    fn tanh(self) -> Self;
+    /// |self|; its derivatives at zero are NaN.
+    fn abs(self) -> Self;
+    /// self^exponent for a whole exponent.
+    fn powi(self, exponent: i32) -> Self;
+    /// self^exponent; NaN for a negative number with an exponent that is not whole.
+    fn powf(self, exponent: f64) -> Self;
 }
 
 impl Number for f64 {
@@ -58,6 +72,52 @@ impl Number for f64 {
         // metres does not come near, and a value that does ends as infinite and is reported as such.
         (self * self + other * other).sqrt()
     }
+    #[inline]
+    fn tan(self) -> Self {
+        self.tan()
+    }
+    #[inline]
+    fn exp(self) -> Self {
+        self.exp()
+    }
+    #[inline]
+    fn ln(self) -> Self {
+        self.ln()
+    }
+    #[inline]
+    fn tanh(self) -> Self {
+        self.tanh()
+    }
+    #[inline]
+    fn abs(self) -> Self {
+        self.abs()
+    }
+    #[inline]
+    fn powi(self, exponent: i32) -> Self {
+        self.powi(exponent)
+    }
+    #[inline]
+    fn powf(self, exponent: f64) -> Self {
+        self.powf(exponent)
+    }
+}
+
+/// f(x) of a dual number from value, first and second derivative of f at its real part.
+///
+/// f0 + f1 d + f2 d^2 / 2 with d = x - re x, which has no real part: the series to second order is the chain rule.
+fn composed<T>(x: T, re: f64, [f0, f1, f2]: [f64; 3]) -> T
+where
+    T: Copy + Add<Output = T> + Sub<f64, Output = T> + Mul<Output = T> + Mul<f64, Output = T> + Number,
+{
+    let d = x - re;
+    T::constant(f0) + d * f1 + d * d * (0.5 * f2)
+}
+
+/// Value, first and second derivative of x^n.
+fn power(x: f64, n: f64, value: f64) -> [f64; 3] {
+    // A factor of zero means that there is no such term, even where its power is infinite.
+    let term = |factor: f64, n: f64| if factor == 0.0 { 0.0 } else { factor * x.powf(n) };
+    [value, term(n, n - 1.0), term(n * (n - 1.0), n - 2.0)]
 }
 
 macro_rules! dual_number {
@@ -94,6 +154,49 @@ macro_rules! dual_number {
             #[inline]
             fn hypot(self, other: Self) -> Self {
                 DualNum::sqrt(&(self * self + other * other))
+            }
+            #[inline]
+            fn tan(self) -> Self {
+                let value = self.re.tan();
+                let slope = 1.0 + value * value;
+                composed(self, self.re, [value, slope, 2.0 * value * slope])
+            }
+            #[inline]
+            fn exp(self) -> Self {
+                DualNum::exp(&self)
+            }
+            #[inline]
+            fn ln(self) -> Self {
+                DualNum::ln(&self)
+            }
+            #[inline]
+            fn tanh(self) -> Self {
+                // The crate's own is sinh / cosh, which is NaN beyond 710.
+                let value = self.re.tanh();
+                let slope = self.re.cosh().powi(-2);
+                composed(self, self.re, [value, slope, -2.0 * value * slope])
+            }
+            #[inline]
+            fn abs(self) -> Self {
+                let value = self.re.abs();
+                let [slope, bend] = if value == 0.0 { [f64::NAN; 2] } else { [self.re.signum(), 0.0] };
+                let mut size = composed(self, self.re, [value, slope, bend]);
+                size.re = value;
+                size
+            }
+            #[inline]
+            fn powi(self, exponent: i32) -> Self {
+                let value = self.re.powi(exponent);
+                let mut result = composed(self, self.re, power(self.re, f64::from(exponent), value));
+                result.re = value;
+                result
+            }
+            #[inline]
+            fn powf(self, exponent: f64) -> Self {
+                let value = self.re.powf(exponent);
+                let mut result = composed(self, self.re, power(self.re, exponent, value));
+                result.re = value;
+                result
             }
         }
     };

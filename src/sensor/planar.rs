@@ -71,12 +71,6 @@ impl Lookout {
         Ok(Self { stations, position })
     }
 
-    /// The position `x` (2) seen from each station in turn, (x - sx, y - sy).
-    #[inline]
-    pub fn seen<T: Number>(&self, x: &[T]) -> impl Iterator<Item = (T, T)> {
-        self.stations.iter().map(|s| (x[0] - T::constant(s[0]), x[1] - T::constant(s[1])))
-    }
-
     /// Outputs of every station in turn, numbered from 1 where there are several.
     pub fn outputs(&self, of_one: impl Fn(&dyn Fn(&str) -> String) -> Vec<Output>) -> Vec<Output> {
         let several = self.stations.len() > 1;
@@ -84,4 +78,10 @@ impl Lookout {
             .flat_map(|j| of_one(&|name| if several { format!("{name} {j}") } else { name.into() }))
             .collect()
     }
+}
+
+/// The position seen from a station, (x - sx, y - sy).
+#[inline(always)]
+pub(super) fn seen_from<T: Number>(position: &[T], station: &[f64; 2]) -> (T, T) {
+    (position[0] - T::constant(station[0]), position[1] - T::constant(station[1]))
 }

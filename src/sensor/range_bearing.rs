@@ -1,4 +1,4 @@
-use super::planar::{Lookout, Parameters};
+use super::planar::{Lookout, Parameters, seen_from};
 use super::{Formula, Number, Output, ParameterError};
 
 /// Range and bearing of a planar position from one or several stations.
@@ -43,9 +43,10 @@ impl Formula for RangeBearing {
         &self.outputs
     }
 
-    #[inline]
+    #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
-        for ((east, north), pair) in self.lookout.seen(x).zip(y.chunks_exact_mut(2)) {
+        for (station, pair) in self.lookout.stations.iter().zip(y.chunks_exact_mut(2)) {
+            let (east, north) = seen_from(x, station);
             pair[0] = east.hypot(north);
             pair[1] = north.atan2(east);
         }
