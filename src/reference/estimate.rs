@@ -12,8 +12,19 @@ pub enum Soundness {
     Sound,
     /// The cap came first: the standard errors are true, but wider than asked.
     Wide,
+    /// An independent plain estimate disagrees beyond what chance allows: see the reason. No verdict rests on it.
+    Disputed,
+    /// The tail is so heavy that no standard error can be believed: see the reason.
+    HeavyTailed,
     /// No moments: see the reason. No verdict rests on it.
     Refused,
+}
+
+impl Soundness {
+    /// Whether a verdict can rest on the reference.
+    pub fn bears_verdicts(self) -> bool {
+        matches!(self, Self::Sound | Self::Wide)
+    }
 }
 
 /// The moments of a case by heavy sampling.
@@ -32,7 +43,7 @@ pub struct Reference {
     pub worst_error: f64,
     /// How far it can be believed.
     pub soundness: Soundness,
-    /// Why it was refused.
+    /// Why no verdict rests on it.
     pub reason: Option<String>,
 }
 

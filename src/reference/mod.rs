@@ -18,6 +18,7 @@ mod settings;
 mod stream;
 mod sums;
 mod tails;
+mod witness;
 
 pub use estimate::{Reference, Soundness};
 pub use sampler::Sampler;

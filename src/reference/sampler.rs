@@ -7,6 +7,7 @@ use super::pilot::{Pilot, Question};
 use super::replicate::Replicate;
 use super::settings::{SamplerError, SamplerSettings};
 use super::stream::Key;
+use super::witness::{Testimony, hear};
 use crate::gaussian::{Gaussian, Marginal, Moments, wrap};
 use crate::sensor::Sensor;
 use crate::suite::Case;
@@ -90,15 +91,37 @@ impl<'a> Sampler<'a> {
         true
     }
 
-    /// Samples until the asked precision or the cap.
+    /// Samples until the asked precision or the cap, then hears the witness.
     pub fn run(mut self) -> Reference {
         while self.deepen() {
             let reference = self.reference();
             if reference.soundness != Soundness::Wide {
-                return reference;
+                return self.witnessed(reference);
             }
         }
-        self.reference()
+        self.witnessed(self.reference())
+    }
+
+    /// The reference as it stands after the witness was heard: an independent plain Monte Carlo estimate of 65,536
+    /// samples, and the tails of its largest deviations. A refused reference is left as it is.
+    pub fn witnessed(&self, reference: Reference) -> Reference {
+        if reference.soundness == Soundness::Refused {
+            return reference;
+        }
+        let read: Vec<Moments> =
+            self.replicates.iter().map(|r| r.moments(&self.question, &self.pilot, &self.noise)).collect();
+        let (mut moments, error) = combine(&read);
+        // Angular means are taken from the reference, which has unwrapped them.
+        moments.mean.copy_from(&reference.moments.mean);
+        let error = Moments { mean: reference.standard_error.mean.clone(), ..error };
+        let chart = &self.replicates[0].charts().centre;
+        let (soundness, reason) = match hear(&self.question, &self.noise, chart, &moments, &error) {
+            Testimony::Agrees => return reference,
+            Testimony::Disagrees(reason) => (Soundness::Disputed, reason),
+            Testimony::HeavyTail(reason) => (Soundness::HeavyTailed, reason),
+            Testimony::NoVariance(reason) => (Soundness::Refused, reason),
+        };
+        Reference { soundness, reason: Some(reason), ..reference }
     }
 
     /// The moments as far as they are known.

@@ -5,7 +5,7 @@ use serde::Serialize;
 use crate::gaussian::Moments;
 use crate::reference::{Reference, Soundness};
 use crate::suite::rows;
-use crate::survey::SurveyResult;
+use crate::survey::{Stop, SurveyResult};
 
 /// A moments record with its standard errors. Angles in radians; a value that is not finite becomes null.
 #[derive(Serialize)]
@@ -17,6 +17,7 @@ struct MomentsRecord<'a> {
     points: u64,
     replicates: usize,
     soundness: Soundness,
+    stopped: Stop,
 }
 
 #[derive(Serialize)]
@@ -55,6 +56,7 @@ pub(super) fn write_references(survey: &SurveyResult<'_>, to: &mut dyn Write) ->
             points: *points,
             replicates: survey.plan.sampler.replicates,
             soundness: *soundness,
+            stopped: result.stop,
         };
         line(&record, to)?;
     }

@@ -1,3 +1,5 @@
+use serde::Serialize;
+
 use crate::gaussian::Moments;
 use crate::method::{Counted, Evaluations, MethodSpec, Problem, Refusal};
 use crate::reference::{Reference, Sampler, Soundness};
@@ -14,12 +16,26 @@ pub struct CaseResult {
     pub index: usize,
     /// Its reference (the replicates are dropped once everything is scored).
     pub reference: Reference,
+    /// Why sampling ended.
+    pub stop: Stop,
     /// How far the true law is from any Gaussian.
     pub floor: Floor,
     /// The floor against its limit.
     pub floor_standing: Standing,
     /// One a method, in the plan's order.
     pub answers: Vec<Answer>,
+}
+
+/// Why the sampling of a case ended.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Stop {
+    /// Every moment is as precise as asked, and every verdict that more samples could decide is decided.
+    Decided,
+    /// The cap was reached first.
+    Cap,
+    /// The reference is refused; more samples would not mend it.
+    Refused,
 }
 
 /// A method's answer, or why it gave none.
@@ -80,11 +96,10 @@ pub(super) fn run_case(
         let scorer = Scorer::new(case.prior(), case.sensor().outputs(), &reference);
         let judged: Vec<Result<_, Refusal>> = candidates
             .iter()
-            .map(|c| c.as_ref().map(|c| judge(&scorer, &reference, &c.moments, plan)).map_err(Refusal::clone))
+            .map(|c| c.as_ref().map(|c| judge(&scorer, &c.moments, plan)).map_err(Refusal::clone))
             .collect();
         let floor = scorer.floor(case.noise());
-        // A refused reference says nothing, of the case no more than of a method.
-        let floor_standing = if refused { Standing::Open } else { plan.judge.floor(&floor) };
+        let floor_standing = plan.judge.floor(&floor);
         // More points cannot define what is undefined, nor mend a refused reference.
         let undecided = judged
             .iter()
@@ -94,33 +109,37 @@ pub(super) fn run_case(
         if undecided && more && !refused {
             continue;
         }
+        let reference = sampler.witnessed(reference);
+        // What no verdict can rest on says nothing, of the case no more than of a method.
+        let doubt = reference.reason.as_ref().map(|reason| format!("no verdict rests on this reference: {reason}"));
+        let floor_standing = if doubt.is_some() { Standing::Open } else { floor_standing };
         let answers = candidates
             .into_iter()
             .zip(judged)
             .map(|(candidate, judged)| {
                 let Candidate { moments, evaluations } = candidate?;
                 let (scores, verdict) = judged?;
+                let verdict = doubt.clone().map_or(verdict, self::undecided);
                 Ok(Answered { moments, evaluations, scores, verdict })
             })
             .collect();
+        let stop = match reference.soundness {
+            _ if refused => Stop::Refused,
+            Soundness::Wide => Stop::Cap,
+            _ if undecided => Stop::Cap,
+            _ => Stop::Decided,
+        };
         let reference = Reference { replicates: Vec::new(), ..reference };
-        return Some(CaseResult { index, reference, floor, floor_standing, answers });
+        return Some(CaseResult { index, reference, stop, floor, floor_standing, answers });
     }
 }
 
-fn judge(
-    scorer: &Scorer<'_>,
-    reference: &Reference,
-    moments: &Moments,
-    plan: &SurveyPlan,
-) -> (Result<Scores, Invalid>, Verdict) {
+fn judge(scorer: &Scorer<'_>, moments: &Moments, plan: &SurveyPlan) -> (Result<Scores, Invalid>, Verdict) {
     let scores = scorer.score(moments);
-    let verdict = match &reference.reason {
-        Some(reason) => undecided(format!("the reference is refused: {reason}")),
-        None if !scorer.is_defined() => {
-            undecided("the covariance of the measurement is singular: add noise or drop an output".into())
-        }
-        None => plan.judge.verdict(&scores),
+    let verdict = if scorer.is_defined() {
+        plan.judge.verdict(&scores)
+    } else {
+        undecided("the covariance of the measurement is singular: add noise or drop an output".into())
     };
     (scores, verdict)
 }

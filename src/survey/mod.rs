@@ -6,7 +6,7 @@ mod settings;
 mod summary;
 mod timing;
 
-pub use case_run::{Answer, Answered, CaseResult};
+pub use case_run::{Answer, Answered, CaseResult, Stop};
 pub use run::{SurveyResult, Watch, survey};
 pub use settings::{SurveyError, SurveyPlan, SurveySettings};
 pub use summary::{MethodSummary, Summary, summarise};

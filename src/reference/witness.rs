@@ -1,0 +1,278 @@
+//! The witness: the same moments by another way, so that a fault of the first is seen.
+
+use nalgebra::{DMatrix, DVector};
+use rand::RngExt;
+use rand_distr::StandardNormal;
+use statrs::distribution::{ContinuousCDF, StudentsT};
+
+use super::basis::Basis;
+use super::block::Block;
+use super::estimate::combine;
+use super::net::{BLOCK, Net};
+use super::pilot::Question;
+use super::tails::fit_pareto;
+use crate::gaussian::{Moments, SquareRoot, wrap};
+use crate::sensor::Output;
+
+/// Batches of the witness: their spread gives its standard errors.
+const BATCHES: u64 = 32;
+/// Samples of a batch.
+const BATCH: usize = 2048;
+/// Odds of disputing a true reference, over all its entries together.
+const FALSE_DISPUTE: f64 = 1e-6;
+/// Share of an entry's natural scale that counts as rounding.
+const ROUNDING: f64 = 1e-9;
+/// From this shape of the tail on the variance does not exist.
+const NO_VARIANCE: f64 = 0.5;
+/// From this shape of the tail on the fourth moment does not exist: the standard error of a variance cannot be
+/// believed.
+const NO_FOURTH_MOMENT: f64 = 0.25;
+
+/// What the witness says of a reference.
+#[derive(Debug, Clone, PartialEq)]
+pub(super) enum Testimony {
+    /// Nothing against it.
+    Agrees,
+    /// The two estimates disagree beyond what chance allows.
+    Disagrees(String),
+    /// A standard error cannot be believed.
+    HeavyTail(String),
+    /// A variance does not exist.
+    NoVariance(String),
+}
+
+/// Hears the witness: an independent plain Monte Carlo estimate, with its own streams, the machine's mathematical
+/// library, one point at a time, and the noise sampled instead of added.
+///
+/// `moments` and `error` are the reference's on the read components (C is a x p), `chart` the centres of its charts.
+/// They are disputed when an entry differs by more than Student's t law of the batches allows at odds of 1e-6 over
+/// all entries. The witness's standard error is that of its batches or, where that is larger, what the spread of
+/// each integrand over a net predicts: rare large samples that no batch happened to draw must not make it look
+/// surer than it is.
+///
+/// Tails: a generalised Pareto law is fitted to the 3 sqrt(N) largest deviations of each output. An angle is bounded
+/// and needs no fit.
+pub(super) fn hear(
+    question: &Question<'_>,
+    noise: &DMatrix<f64>,
+    chart: &DVector<f64>,
+    moments: &Moments,
+    error: &Moments,
+) -> Testimony {
+    let outputs = question.sensor.outputs();
+    let sample = Sample::draw(question, noise, chart);
+    for (j, output) in outputs.iter().enumerate().filter(|(_, o)| !o.angular) {
+        if let Some(testimony) = tail(output, &sample.deviations[j]) {
+            return testimony;
+        }
+    }
+    let spread = Spread::measure(question, noise, chart, moments);
+    disagreement(question, &sample, spread.as_ref(), moments, error).unwrap_or(Testimony::Agrees)
+}
+
+/// The witness's estimate.
+struct Sample {
+    moments: Moments,
+    error: Moments,
+    /// Deviations of each output from its chart's centre, all batches.
+    deviations: Vec<Vec<f64>>,
+}
+
+impl Sample {
+    fn draw(question: &Question<'_>, noise: &DMatrix<f64>, chart: &DVector<f64>) -> Self {
+        let (a, p) = (question.inputs(), question.outputs());
+        let noise_root = SquareRoot::of(noise).into_factor();
+        let mut deviations = vec![Vec::with_capacity(BATCHES as usize * BATCH); p];
+        let (mut z, mut w) = (DVector::zeros(a), DVector::zeros(p));
+        let (mut x, mut dx, mut y) = (DVector::zeros(a), DVector::zeros(a), DVector::zeros(p));
+        let batches: Vec<Moments> = (0..BATCHES)
+            .map(|b| {
+                let mut rng = question.key.witness(b);
+                let mut sum = Moments::zeros(a, p);
+                let mut dx_sum = DVector::zeros(a);
+                for _ in 0..BATCH {
+                    z.iter_mut().chain(w.iter_mut()).for_each(|v| *v = rng.sample(StandardNormal));
+                    dx.gemv(1.0, &question.root, &z, 0.0);
+                    x.copy_from(question.prior.mean());
+                    x += &dx;
+                    question.sensor.value(x.as_slice(), y.as_mut_slice());
+                    y -= chart;
+                    for (v, &angular) in y.iter_mut().zip(&question.angular) {
+                        if angular {
+                            *v = wrap(*v);
+                        }
+                    }
+                    y.gemv(1.0, &noise_root, &w, 1.0);
+                    sum.mean += &y;
+                    dx_sum += &dx;
+                    sum.covariance.ger(1.0, &y, &y, 1.0);
+                    sum.cross_covariance.ger(1.0, &dx, &y, 1.0);
+                    for (all, v) in deviations.iter_mut().zip(y.iter()) {
+                        all.push(*v);
+                    }
+                }
+                let (count, free) = (BATCH as f64, (BATCH - 1) as f64);
+                sum.covariance.ger(-1.0 / count, &sum.mean, &sum.mean, 1.0);
+                sum.cross_covariance.ger(-1.0 / count, &dx_sum, &sum.mean, 1.0);
+                Moments {
+                    mean: chart + sum.mean / count,
+                    covariance: sum.covariance / free,
+                    cross_covariance: sum.cross_covariance / free,
+                }
+            })
+            .collect();
+        let (moments, error) = combine(&batches);
+        Self { moments, error, deviations }
+    }
+}
+
+/// Standard errors that a sample of the witness's size has, from the variances of its integrands over a net.
+struct Spread(Moments);
+
+impl Spread {
+    const LOG2: u32 = 16;
+
+    /// `None` where nets do not reach.
+    fn measure(
+        question: &Question<'_>,
+        noise: &DMatrix<f64>,
+        chart: &DVector<f64>,
+        moments: &Moments,
+    ) -> Option<Self> {
+        let (a, p) = (question.inputs(), question.outputs());
+        let key = question.key.spread();
+        let net = Net::new(&key, 0, a, Self::LOG2).ok()?;
+        let noise_root = SquareRoot::of(noise).into_factor();
+        let mut block = Block::new(question.level, a, p, &Basis::new(a, 0));
+        let (mut first, mut second) = (Moments::zeros(a, p), Moments::zeros(a, p));
+        // Deviations are counted from the chart's centre, the reference's mean lies this far from it.
+        let offset = DVector::from_fn(p, |j, _| {
+            let d = moments.mean[j] - chart[j];
+            if question.angular[j] { wrap(d) } else { d }
+        });
+        let (mut z, mut w) = (DVector::zeros(a), DVector::zeros(p));
+        for b in 0..net.blocks() {
+            block.take_net(&net, b);
+            question.evaluate(&mut block);
+            block.subtract(chart, &question.angular, &DMatrix::zeros(p, a));
+            let mut rng = key.witness(b);
+            for k in 0..BLOCK {
+                z.iter_mut().zip(&block.z).for_each(|(to, from)| *to = from[k]);
+                w.iter_mut().for_each(|v| *v = rng.sample(StandardNormal));
+                let mut d = DVector::from_fn(p, |j, _| block.deviation[j][k]) - &offset;
+                d.gemv(1.0, &noise_root, &w, 1.0);
+                let dx = &question.root * &z;
+                add(&mut first, &d, &dx, |v| v);
+                add(&mut second, &d, &dx, |v| v * v);
+            }
+        }
+        let count = (net.blocks() * BLOCK as u64) as f64;
+        let samples = (BATCHES * BATCH as u64) as f64;
+        let error = |first: f64, second: f64| {
+            let mean = first / count;
+            ((second / count - mean * mean).max(0.0) / samples).sqrt()
+        };
+        Some(Self(Moments {
+            mean: first.mean.zip_map(&second.mean, error),
+            covariance: first.covariance.zip_map(&second.covariance, error),
+            cross_covariance: first.cross_covariance.zip_map(&second.cross_covariance, error),
+        }))
+    }
+}
+
+/// Adds f of every integrand at one sample.
+fn add(to: &mut Moments, d: &DVector<f64>, dx: &DVector<f64>, f: impl Fn(f64) -> f64) {
+    for j in 0..d.len() {
+        to.mean[j] += f(d[j]);
+        for k in 0..d.len() {
+            to.covariance[(j, k)] += f(d[j] * d[k]);
+        }
+        for i in 0..dx.len() {
+            to.cross_covariance[(i, j)] += f(dx[i] * d[j]);
+        }
+    }
+}
+
+fn disagreement(
+    question: &Question<'_>,
+    sample: &Sample,
+    spread: Option<&Spread>,
+    moments: &Moments,
+    error: &Moments,
+) -> Option<Testimony> {
+    let (a, p) = (question.inputs(), question.outputs());
+    let entries = (p + p * (p + 1) / 2 + a * p) as f64;
+    let law = StudentsT::new(0.0, 1.0, (BATCHES - 1) as f64).ok()?;
+    let bound = -law.inverse_cdf(FALSE_DISPUTE / (2.0 * entries));
+    let outputs = question.sensor.outputs();
+    let sd = |j: usize| moments.covariance[(j, j)].max(0.0).sqrt();
+    let state_sd = |i: usize| question.prior.covariance()[(i, i)].sqrt();
+    let predicted = |pick: &dyn Fn(&Moments) -> f64| spread.map_or(0.0, |s| pick(&s.0));
+    let dispute = |what: &dyn Fn() -> String, wrapped: bool, scale: f64, pick: &dyn Fn(&Moments) -> f64| {
+        let difference = pick(moments) - pick(&sample.moments);
+        let difference = if wrapped { wrap(difference) } else { difference };
+        let own = pick(&sample.error).max(predicted(pick));
+        let ratio = difference.abs() / own.hypot(pick(error));
+        // A NaN on either side disputes too.
+        let beyond = difference.abs() > ROUNDING * scale && ratio > bound || difference.is_nan();
+        beyond.then(|| {
+            Testimony::Disagrees(format!(
+                "{} is {:.6e}, an independent plain estimate says {:.6e}: {ratio:.1} standard errors apart, chance \
+                 allows {bound:.1}",
+                what(),
+                pick(moments),
+                pick(&sample.moments)
+            ))
+        })
+    };
+    for j in 0..p {
+        let name = || format!("the mean of `{}`", outputs[j].name);
+        if let Some(found) = dispute(&name, question.angular[j], sd(j), &|m| m.mean[j]) {
+            return Some(found);
+        }
+        for k in 0..=j {
+            let name = || format!("the covariance of `{}` and `{}`", outputs[j].name, outputs[k].name);
+            if let Some(found) = dispute(&name, false, sd(j) * sd(k), &|m| m.covariance[(j, k)]) {
+                return Some(found);
+            }
+        }
+        for i in 0..a {
+            let component = question.sensor.reads()[i];
+            let name = || format!("the covariance of state {component} and `{}`", outputs[j].name);
+            if let Some(found) = dispute(&name, false, state_sd(i) * sd(j), &|m| m.cross_covariance[(i, j)]) {
+                return Some(found);
+            }
+        }
+    }
+    None
+}
+
+/// What the largest of an output's deviations say of its tail.
+fn tail(output: &Output, deviations: &[f64]) -> Option<Testimony> {
+    let mean = deviations.iter().sum::<f64>() / deviations.len() as f64;
+    let mut sizes: Vec<f64> = deviations.iter().map(|d| (d - mean).abs()).collect();
+    if sizes.iter().any(|v| !v.is_finite()) {
+        return Some(Testimony::NoVariance(format!("output `{}` is not finite at every sample", output.name)));
+    }
+    let largest = (3.0 * (sizes.len() as f64).sqrt()) as usize;
+    let cut = sizes.len() - largest - 1;
+    let (_, &mut threshold, top) = sizes.select_nth_unstable_by(cut, f64::total_cmp);
+    let mut exceedances: Vec<f64> = top.iter().map(|v| v - threshold).filter(|v| *v > 0.0).collect();
+    exceedances.sort_by(f64::total_cmp);
+    let shape = fit_pareto(&exceedances)?.shape;
+    let tell = |moment: &str| {
+        format!(
+            "the tail of output `{}` has the shape {shape:.2} (generalised Pareto law of its {} largest deviations): \
+             {moment}",
+            output.name,
+            exceedances.len()
+        )
+    };
+    if shape >= NO_VARIANCE {
+        Some(Testimony::NoVariance(tell("its variance does not exist")))
+    } else if shape >= NO_FOURTH_MOMENT {
+        Some(Testimony::HeavyTail(tell("its fourth moment does not exist, so no standard error can be believed")))
+    } else {
+        None
+    }
+}
