@@ -252,3 +252,37 @@ fn a_state_known_exactly_is_sampled_on_its_support() {
     assert!(z.abs() < 4.0, "variance {z:.2} standard errors off");
     assert_eq!(reference.moments.cross_covariance.row(1).amax(), 0.0);
 }
+
+/// Soundness of a bearing from the origin at the least cap, for several seeds.
+fn bearing_at_a_first_look(
+    mean_x: f64,
+    covariance: [f64; 2],
+    seeds: std::ops::RangeInclusive<u64>,
+) -> Vec<Reference> {
+    let case = Case::from_json(json!({
+        "case": "bearing", "sensor": {"kind": "bearing-only", "station": [0, 0]},
+        "prior": {"mean": [mean_x, 0], "covariance": [[covariance[0], 0], [0, covariance[1]]]},
+        "noise": {"covariance": 1e-8},
+    }));
+    let case = case.unwrap();
+    let settings = SamplerSettings { precision: 1e-9, cap: 1 << 17, ..SamplerSettings::default() };
+    seeds.map(|seed| Sampler::new(&case, SamplerSettings { seed, ..settings }).unwrap().run()).collect()
+}
+
+/// A resultant length of 0.12 (E exp(i theta) of a unit normal whose mean lies d = 0.19238 off: sqrt(pi / 8) d
+/// [I0(d^2/4) + I1(d^2/4)] exp(-d^2/4), Mardia & Jupp 2000, sec. 3.5.6, section from memory) is above the 0.1 that
+/// is needed, for any seed and at the smallest sample: over 2^17 samples its standard error is 0.002, so that ten
+/// of them lie between. The least over 32 replicates, which was asked before, refused 34 of 60 seeds.
+#[test]
+fn a_resultant_above_what_is_needed_is_not_refused_at_a_first_look() {
+    let case = Case::from_json(json!({
+        "case": "wide", "sensor": {"kind": "bearing-only", "station": [0, 0]},
+        "prior": {"mean": [0.192_378_2, 0], "covariance": [[1, 0], [0, 1]]}, "noise": {"covariance": 1e-4},
+    }));
+    let case = case.unwrap();
+    for seed in 1..=12 {
+        let settings = SamplerSettings { seed, precision: 1e-9, cap: 1 << 17, ..SamplerSettings::default() };
+        let reference = Sampler::new(&case, settings).unwrap().run();
+        assert_eq!(reference.soundness, Soundness::Wide, "seed {seed}: {:?}", reference.reason);
+    }
+}

@@ -7,9 +7,11 @@ use super::tally::{Tally, sum};
 /// How many standard errors of its centre a chart keeps ready to move: a step beyond has odds under 1e-14.
 const READY: f64 = 8.0;
 
-/// How far rounding alone may move a centre (rad): the angles of a state known exactly do not spread, and their
-/// mean is off by some units in the last place of pi.
-const ROUNDING: f64 = 1e-12;
+/// The least that a chart keeps ready to move (rad), whatever its standard error says. An angle that is narrow but
+/// for rare samples on the far side (a bearing whose station lies 4 sd away) has an error that its first samples do
+/// not know: a single far sample moves the mean of a block by up to 1/1024. Ten in one block, none of which the
+/// pilot's sixteen blocks foretold, have odds under 1e-9.
+const LEAST_BAND: f64 = 0.01;
 
 /// Sums of cos and sin of an angle's deviations, and of sin^2, for its circular mean and how sure it is.
 #[derive(Debug, Clone, Copy, Default, PartialEq)]
@@ -47,11 +49,21 @@ impl CircularSum {
         (self.sin_squared / self.count).sqrt() / (self.count.sqrt() * self.resultant())
     }
 
+    /// The sums of these samples and of `other`'s, both seen from the same centre.
+    pub fn merged(mut self, other: Self) -> Self {
+        self.count += other.count;
+        self.cos += other.cos;
+        self.sin += other.sin;
+        self.sin_squared += other.sin_squared;
+        self
+    }
+
     /// How far a chart centred here may have to move once `more` further samples are in.
     pub fn band(&self, more: f64) -> f64 {
         let error = self.direction_error();
-        let band = ROUNDING + READY * error * (1.0 + (self.count / more).sqrt());
-        if band < PI { band } else { PI }
+        let band = READY * error * (1.0 + (self.count / more).sqrt());
+        // A band without number (no direction at all) is the whole circle.
+        if band < PI { band.max(LEAST_BAND) } else { PI }
     }
 
     /// The sums seen from a centre that moved by `step`.
@@ -75,8 +87,9 @@ struct NearCut {
 ///
 /// The moments of an angle are taken in the chart centred at its circular mean, which is itself estimated.
 /// When the estimate moves, the samples between the old cut and the new one jump by a full turn. Those that
-/// might are remembered: samples within eight standard errors of the cut, so their number grows as the square
-/// root of the sample size, and every moment is exactly that of the final chart with nothing sampled twice.
+/// might are remembered: samples within eight standard errors of the cut (0.01 rad at the least), so their number
+/// grows as the square root of the sample size or is under a third of a percent of it, and every moment is exactly
+/// that of the final chart with nothing sampled twice.
 #[derive(Debug, Clone, PartialEq)]
 pub(super) struct Charts {
     /// Centre of each output (p); a plain output keeps the pilot's.
@@ -105,13 +118,12 @@ impl Charts {
         self.circles.iter().any(Option::is_some)
     }
 
-    /// Shortest resultant length among the angular outputs with its output, `None` without angles.
-    pub fn least_resultant(&self) -> Option<(usize, f64)> {
-        self.circles
-            .iter()
-            .enumerate()
-            .filter_map(|(j, c)| c.map(|c| (j, c.resultant())))
-            .min_by(|a, b| a.1.total_cmp(&b.1))
+    /// The sums of angular output `j`, turned back from its chart to the output's own angles; `None` where plain.
+    pub fn circle(&self, j: usize) -> Option<CircularSum> {
+        self.circles[j].map(|mut circle| {
+            circle.rotate(-self.centre[j]);
+            circle
+        })
     }
 
     /// Adds the deviations of output `j` to its circular mean.
@@ -246,6 +258,22 @@ mod tests {
             charts.recentre(&mut Tally::empty(1, 1));
             assert!(!charts.lost, "{angle}");
         }
+    }
+
+    /// The pilot saw 16 384 samples of an angle with a spread of 1e-3 rad; among the 1024 of the first block one lies
+    /// a radian off. The mean moves by sin 1 / 1024 = 8e-4, near four times the band of eight standard errors.
+    #[test]
+    fn a_rare_sample_far_off_does_not_lose_a_narrow_chart() {
+        let narrow: Vec<f64> = (0..1024).map(|k| 1e-3 * (f64::from(k) * 0.7).sin()).collect();
+        let mut pilot = CircularSum::default();
+        (0..16).for_each(|_| pilot.add(&narrow));
+        let mut charts = Charts::new(DVector::from_element(1, 0.0), &[Some(pilot.band(1024.0))]);
+        let mut block = narrow;
+        block[500] = 1.0;
+        charts.observe(0, &block);
+        charts.recentre(&mut Tally::empty(1, 1));
+        assert!(!charts.lost);
+        assert!((charts.centre[0] - 1f64.sin() / 1024.0).abs() < 1e-5, "{}", charts.centre[0]);
     }
 
     #[test]

@@ -1,6 +1,7 @@
 use nalgebra::DMatrix;
 use rayon::prelude::*;
 
+use super::chart::CircularSum;
 use super::estimate::{Reference, Soundness, combine, worst_standardised};
 use super::pilot::{BLOCK, FIRST_BLOCKS, Pilot};
 use super::replicate::{Ground, Replicate};
@@ -222,19 +223,27 @@ impl<'a> Sampler<'a> {
                 ));
             }
         }
-        let charts = self.replicates.iter().map(Replicate::charts);
-        let least = charts.clone().filter_map(|c| c.least_resultant()).min_by(|a, b| a.1.total_cmp(&b.1));
-        if let Some((j, resultant)) = least
-            && !(resultant >= LEAST_RESULTANT)
-        {
-            return Some(format!(
-                "output `{}` has no mean direction: its resultant length is {resultant:.3}, {LEAST_RESULTANT} is needed",
-                outputs[j].name
-            ));
+        for (j, output) in outputs.iter().enumerate() {
+            if let Some(resultant) = self.resultant(j)
+                && !(resultant >= LEAST_RESULTANT)
+            {
+                return Some(format!(
+                    "output `{}` has no mean direction: its resultant length is {resultant:.3}, {LEAST_RESULTANT} is \
+                     needed",
+                    output.name
+                ));
+            }
         }
-        charts
-            .clone()
-            .any(|c| c.lost)
+        self.replicates
+            .iter()
+            .any(|r| r.charts().lost)
             .then(|| "the mean direction of an angle moved by more than chance allows".into())
+    }
+
+    /// Resultant length of angular output `j` over all replicates together: the least of theirs would depend on
+    /// how many samples each has, and refuse at a first look what more samples would answer.
+    fn resultant(&self, j: usize) -> Option<f64> {
+        let circles = self.replicates.iter().filter_map(|r| r.charts().circle(j));
+        circles.reduce(CircularSum::merged).map(|circle| circle.resultant())
     }
 }
