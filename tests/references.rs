@@ -253,22 +253,6 @@ fn a_state_known_exactly_is_sampled_on_its_support() {
     assert_eq!(reference.moments.cross_covariance.row(1).amax(), 0.0);
 }
 
-/// Soundness of a bearing from the origin at the least cap, for several seeds.
-fn bearing_at_a_first_look(
-    mean_x: f64,
-    covariance: [f64; 2],
-    seeds: std::ops::RangeInclusive<u64>,
-) -> Vec<Reference> {
-    let case = Case::from_json(json!({
-        "case": "bearing", "sensor": {"kind": "bearing-only", "station": [0, 0]},
-        "prior": {"mean": [mean_x, 0], "covariance": [[covariance[0], 0], [0, covariance[1]]]},
-        "noise": {"covariance": 1e-8},
-    }));
-    let case = case.unwrap();
-    let settings = SamplerSettings { precision: 1e-9, cap: 1 << 17, ..SamplerSettings::default() };
-    seeds.map(|seed| Sampler::new(&case, SamplerSettings { seed, ..settings }).unwrap().run()).collect()
-}
-
 /// A resultant length of 0.12 (E exp(i theta) of a unit normal whose mean lies d = 0.19238 off: sqrt(pi / 8) d
 /// [I0(d^2/4) + I1(d^2/4)] exp(-d^2/4), Mardia & Jupp 2000, sec. 3.5.6, section from memory) is above the 0.1 that
 /// is needed, for any seed and at the smallest sample: over 2^17 samples its standard error is 0.002, so that ten

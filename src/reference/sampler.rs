@@ -55,6 +55,19 @@ impl SamplerSettings {
         }
         Ok(())
     }
+
+    /// Blocks a replicate after the next doubling of `blocks`; `None` where the cap leaves no room.
+    fn blocks_after(&self, blocks: u64) -> Option<u64> {
+        let room = self.cap / (BLOCK * self.replicates) as u64;
+        let next = if blocks == 0 { FIRST_BLOCKS } else { 2 * blocks }.min(room);
+        // A last partial doubling of less than a half again would cost without telling much.
+        (next > blocks && 2 * next >= 3 * blocks).then_some(next)
+    }
+
+    /// How often a reference can be looked at: once after each doubling that the cap leaves room for.
+    pub fn looks(&self) -> usize {
+        std::iter::successors(self.blocks_after(0), |&blocks| self.blocks_after(blocks)).count()
+    }
 }
 
 /// Settings under which nothing can be sampled.
@@ -140,12 +153,7 @@ impl<'a> Sampler<'a> {
     /// Doubles the number of points (the first time: takes the first 4096 a replicate), within the cap.
     /// Returns whether there was room for any.
     pub fn deepen(&mut self) -> bool {
-        let room = self.settings.cap / (BLOCK * self.replicates.len()) as u64;
-        let blocks = if self.blocks == 0 { FIRST_BLOCKS } else { 2 * self.blocks }.min(room);
-        // A last partial doubling of less than a half again would cost without telling much.
-        if blocks <= self.blocks || (self.blocks > 0 && 2 * blocks < 3 * self.blocks) {
-            return false;
-        }
+        let Some(blocks) = self.settings.blocks_after(self.blocks) else { return false };
         self.blocks = blocks;
         let ground = &self.ground;
         self.replicates.par_iter_mut().for_each(|r| r.deepen(blocks, ground));
