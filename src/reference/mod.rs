@@ -7,6 +7,7 @@
 
 mod chart;
 mod estimate;
+mod foresight;
 mod pilot;
 mod replicate;
 mod sampler;

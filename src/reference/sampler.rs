@@ -3,6 +3,7 @@ use rayon::prelude::*;
 
 use super::chart::CircularSum;
 use super::estimate::{Reference, Soundness, combine, worst_standardised};
+use super::foresight::variance_of_squares;
 use super::pilot::{BLOCK, FIRST_BLOCKS, Pilot};
 use super::replicate::{Ground, Replicate};
 use super::stream::Key;
@@ -102,6 +103,8 @@ pub struct Sampler<'a> {
     marginal: &'a Marginal,
     prior: &'a Gaussian,
     noise: DMatrix<f64>,
+    /// Var(e^2) of every output (p), rare samples included.
+    squares: Vec<f64>,
     settings: SamplerSettings,
     replicates: Vec<Replicate>,
     blocks: u64,
@@ -142,7 +145,8 @@ impl<'a> Sampler<'a> {
             root,
         };
         let replicates = (0..settings.replicates as u64).map(|r| Replicate::new(r, &ground)).collect();
-        Ok(Self { ground, marginal, prior, noise, settings, replicates, blocks: 0 })
+        let squares = variance_of_squares(&key, sensor, law.mean(), &ground.root, &ground.angular, &ground.pilot);
+        Ok(Self { ground, marginal, prior, noise, squares, settings, replicates, blocks: 0 })
     }
 
     /// Samples of h so far, all replicates together.
@@ -198,6 +202,9 @@ impl<'a> Sampler<'a> {
             }
         }
         let worst_error = worst_standardised(&moments, &standard_error, self.prior);
+        let foreseen = self.foreseen_error(&moments);
+        // Not max(): a NaN must win.
+        let worst_error = if foreseen > worst_error { foreseen } else { worst_error };
         let reason = self.refusal(&moments);
         let soundness = match &reason {
             Some(_) => Soundness::Refused,
@@ -205,6 +212,17 @@ impl<'a> Sampler<'a> {
             None => Soundness::Wide,
         };
         Reference { moments, standard_error, replicates, points: self.points(), worst_error, soundness, reason }
+    }
+
+    /// Largest relative standard error of a variance that is foreseen at this number of points.
+    fn foreseen_error(&self, moments: &Moments) -> f64 {
+        let points = self.points() as f64;
+        let error = |(j, square): (usize, &f64)| match *square {
+            // Nothing is left to chance, and a constant has no variance to divide by.
+            0.0 => 0.0,
+            square => (square / points).sqrt() / moments.covariance[(j, j)],
+        };
+        self.squares.iter().enumerate().map(error).fold(0.0, f64::max)
     }
 
     fn lifted(&self, moments: Moments) -> Moments {

@@ -33,6 +33,11 @@ impl Key {
         self.derived(b"pilot", 0, block)
     }
 
+    /// The stream of block `block` of the look ahead, apart from the pilot's and every replicate's.
+    pub(super) fn ahead(&self, block: u64) -> Pcg64Dxsm {
+        self.derived(b"ahead", 0, block)
+    }
+
     fn derived(&self, purpose: &[u8; 5], replicate: u64, block: u64) -> Pcg64Dxsm {
         let mut hash = Sha256::new();
         hash.update(self.0);
