@@ -10,7 +10,8 @@ use crate::gaussian::{Gaussian, Moments};
 pub enum Soundness {
     /// Every moment is as precise as asked.
     Sound,
-    /// The cap came first: the standard errors are true, but wider than asked.
+    /// The cap came first: the standard errors are wider than asked, or will be once rare samples that carry a
+    /// variance have come often enough ([`Reference::worst_error`] has them).
     Wide,
     /// An independent plain estimate disagrees beyond what chance allows: see the reason. No verdict rests on it.
     Disputed,
@@ -39,7 +40,8 @@ pub struct Reference {
     /// Samples of h taken in all replicates together.
     pub points: u64,
     /// Largest standardised standard error: mean over the output's sd, covariance and cross-covariance in
-    /// correlation units.
+    /// correlation units; or, where that is larger, the one foreseen for a variance by samples that reach further
+    /// out than the prior and meet what is rare.
     pub worst_error: f64,
     /// How far it can be believed.
     pub soundness: Soundness,

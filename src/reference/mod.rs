@@ -10,6 +10,7 @@ mod block;
 mod chart;
 mod control;
 mod estimate;
+mod foresight;
 pub mod net;
 mod pilot;
 mod replicate;

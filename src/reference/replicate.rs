@@ -81,6 +81,11 @@ impl Replicate {
         &self.charts
     }
 
+    /// Largest deviation of output `j` from the linear fit so far.
+    pub fn farthest(&self, j: usize) -> f64 {
+        self.sums.farthest[j]
+    }
+
     /// Whether the points are a net's.
     pub fn has_net(&self) -> bool {
         matches!(self.points, Points::Net(_))

@@ -3,6 +3,7 @@ use rayon::prelude::*;
 
 use super::chart::CircularSum;
 use super::estimate::{Reference, Soundness, combine, worst_standardised};
+use super::foresight::Foresight;
 use super::pilot::{Pilot, Question};
 use super::replicate::Replicate;
 use super::settings::{SamplerError, SamplerSettings};
@@ -28,6 +29,7 @@ const LEAST_SPREAD: f64 = 1e4 * f64::EPSILON;
 pub struct Sampler<'a> {
     question: Question<'a>,
     pilot: Pilot,
+    foresight: Foresight,
     marginal: &'a Marginal,
     prior: &'a Gaussian,
     noise: DMatrix<f64>,
@@ -70,10 +72,11 @@ impl<'a> Sampler<'a> {
             level: settings.level,
         };
         let pilot = Pilot::run(&question);
+        let foresight = Foresight::look(&question, &pilot);
         let replicates = (0..settings.replicates as u64)
             .map(|r| Replicate::new(r, settings.log2(), &question, &pilot))
             .collect();
-        Ok(Self { question, pilot, marginal, prior, noise, settings, replicates, blocks: 0 })
+        Ok(Self { question, pilot, foresight, marginal, prior, noise, settings, replicates, blocks: 0 })
     }
 
     /// Samples of h so far, all replicates together.
@@ -107,6 +110,15 @@ impl<'a> Sampler<'a> {
     pub fn witnessed(&self, reference: Reference) -> Reference {
         if reference.soundness == Soundness::Refused {
             return reference;
+        }
+        let foreseen = self.foreseen(&reference.moments);
+        let sampled = worst_standardised(&reference.moments, &reference.standard_error, self.prior);
+        if foreseen > self.settings.precision && foreseen > 2.0 * sampled {
+            let reason = format!(
+                "samples too rare to have been met may carry {:.1e} of a variance, its standard error says {sampled:.1e}",
+                foreseen
+            );
+            return Reference { soundness: Soundness::HeavyTailed, reason: Some(reason), ..reference };
         }
         let read: Vec<Moments> =
             self.replicates.iter().map(|r| r.moments(&self.question, &self.pilot, &self.noise)).collect();
@@ -153,7 +165,10 @@ impl<'a> Sampler<'a> {
                 }
             }
         }
-        let worst_error = worst_standardised(&moments, &standard_error, self.prior);
+        let sampled = worst_standardised(&moments, &standard_error, self.prior);
+        let foreseen = self.foreseen(&moments);
+        // A NaN must win, which max() would drop.
+        let worst_error = if foreseen > sampled { foreseen } else { sampled };
         let reason = self.refusal(&moments);
         let soundness = match &reason {
             Some(_) => Soundness::Refused,
@@ -161,6 +176,17 @@ impl<'a> Sampler<'a> {
             None => Soundness::Wide,
         };
         Reference { moments, standard_error, replicates, points: self.points(), worst_error, soundness, reason }
+    }
+
+    /// Largest error, as a share of a variance, that rare samples beyond all that was seen may hide.
+    fn foreseen(&self, moments: &Moments) -> f64 {
+        let count = self.points() as f64;
+        (0..self.question.outputs())
+            .map(|j| {
+                let farthest = self.replicates.iter().map(|r| r.farthest(j)).fold(0.0, f64::max);
+                self.foresight.variance_error(j, farthest, count) / moments.covariance[(j, j)]
+            })
+            .fold(0.0, f64::max)
     }
 
     fn lifted(&self, moments: Moments) -> Moments {

@@ -53,6 +53,11 @@ impl Key {
         self.apart(b"sprea")
     }
 
+    /// A key for the net that looks ahead at rare samples.
+    pub(super) fn ahead(&self) -> Self {
+        self.apart(b"ahead")
+    }
+
     fn apart(&self, purpose: &[u8; 5]) -> Self {
         let mut hash = Sha256::new();
         hash.update(self.0);

@@ -19,6 +19,8 @@ pub(super) struct Sums {
     pub ze: Vec<f64>,
     /// Sums of the control variates.
     pub basis: Vec<f64>,
+    /// Largest |e_j| (p).
+    pub farthest: Vec<f64>,
 }
 
 impl Sums {
@@ -31,6 +33,7 @@ impl Sums {
             ee: vec![0.0; p * (p + 1) / 2],
             ze: vec![0.0; a * p],
             basis: vec![0.0; controls],
+            farthest: vec![0.0; p],
         }
     }
 
@@ -41,8 +44,9 @@ impl Sums {
         for (sum, column) in self.z.iter_mut().zip(z) {
             *sum += total(column);
         }
-        for (sum, column) in self.e.iter_mut().zip(e) {
+        for ((sum, farthest), column) in self.e.iter_mut().zip(&mut self.farthest).zip(e) {
             *sum += total(column);
+            *farthest = largest(column).max(*farthest);
         }
         let mut ee = self.ee.iter_mut();
         for (j, left) in e.iter().enumerate() {
@@ -104,6 +108,19 @@ pub(super) fn total(column: &[f64; BLOCK]) -> f64 {
         }
     }
     fold(lanes)
+}
+
+/// Largest size in a column.
+#[inline(always)]
+fn largest(column: &[f64; BLOCK]) -> f64 {
+    let mut lanes = [0.0; LANES];
+    for chunk in column.as_chunks::<LANES>().0 {
+        for i in 0..LANES {
+            let size = chunk[i].abs();
+            lanes[i] = if size > lanes[i] { size } else { lanes[i] };
+        }
+    }
+    lanes.iter().copied().fold(0.0, f64::max)
 }
 
 /// Sum of products of two columns in eight fixed lanes.

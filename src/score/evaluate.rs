@@ -1,7 +1,7 @@
-use nalgebra::{Cholesky, DMatrix, DVector};
+use nalgebra::{DMatrix, DVector};
 
 use super::ScoreKind;
-use super::whitened::{Whitened, WhitenedMethod};
+use super::whitened::{Whitened, WhitenedMethod, definite};
 
 /// An eigenvalue below this share of the largest, on the wrong side of zero, is rounding and not indefinite.
 const ROUNDING: f64 = 1e-9;
@@ -73,17 +73,9 @@ fn residual(method: &WhitenedMethod) -> DMatrix<f64> {
     &method.covariance - method.coupling.transpose() * &method.coupling
 }
 
-/// A Cholesky factor, unless the matrix is singular but for rounding: in whitened units, where entries are of
-/// order one, a squared pivot under 1e-13 is noise.
-fn definite(a: DMatrix<f64>) -> Option<Cholesky<f64, nalgebra::Dyn>> {
-    const LEAST_PIVOT: f64 = 1e-13;
-    let factor = Cholesky::new(a)?;
-    factor.l_dirty().diagonal().iter().all(|d| d * d > LEAST_PIVOT).then_some(factor)
-}
-
 fn excess(reference: &Whitened, method: &WhitenedMethod) -> Option<f64> {
-    let of = definite(reference.residual.clone())?;
-    let from = definite(residual(method))?;
+    let of = definite(&reference.residual)?;
+    let from = definite(&residual(method))?;
     let slope = (&reference.coupling - &method.coupling).transpose();
     let spread = &reference.residual + &slope * slope.transpose();
     let trace = from.solve(&spread).trace();
@@ -97,12 +89,12 @@ fn excess(reference: &Whitened, method: &WhitenedMethod) -> Option<f64> {
 fn update_scores(reference: &Whitened, method: &WhitenedMethod) -> Option<(f64, f64, f64)> {
     let (r, p) = method.coupling.shape();
     let identity = DMatrix::<f64>::identity(r, r);
-    let gain = definite(method.covariance.clone())?.solve(&method.coupling.transpose()).transpose();
+    let gain = definite(&method.covariance)?.solve(&method.coupling.transpose()).transpose();
     let claimed = &identity - &gain * method.coupling.transpose();
     let cross = &gain * reference.coupling.transpose();
     let second = DMatrix::identity(p, p) + &method.shift * method.shift.transpose();
     let actual = &identity - &cross - cross.transpose() + &gain * second * gain.transpose();
-    let claimed = definite((&claimed + claimed.transpose()) * 0.5)?;
+    let claimed = definite(&((&claimed + claimed.transpose()) * 0.5))?;
     // L^-1 M L'^-1 shares its eigenvalues with P+^-1/2 M P+^-1/2.
     let mut half = actual.clone();
     claimed.l_dirty().solve_lower_triangular_mut(&mut half);
@@ -110,8 +102,8 @@ fn update_scores(reference: &Whitened, method: &WhitenedMethod) -> Option<(f64, 
     claimed.l_dirty().solve_lower_triangular_mut(&mut ratio);
     let ratio = (&ratio + ratio.transpose()) * 0.5;
     let ratio = eigenvalues(&ratio)?;
-    let best = definite(&identity - &reference.coupling * reference.coupling.transpose())?;
-    let actual = definite(actual)?;
+    let best = definite(&(&identity - &reference.coupling * reference.coupling.transpose()))?;
+    let actual = definite(&actual)?;
     let lost = 0.5 * (actual.ln_determinant() - best.ln_determinant());
     Some((ratio.sum() / r as f64, ratio.max(), lost))
 }

@@ -1,8 +1,8 @@
-use nalgebra::{Cholesky, DMatrix};
+use nalgebra::DMatrix;
 
 use super::estimate::jackknife;
 use super::evaluate::{Invalid, evaluate, validity};
-use super::whitened::{Whitened, WhitenedMethod};
+use super::whitened::{Whitened, WhitenedMethod, definite, definite_within_scale};
 use super::{Estimate, Floor, ScoreKind};
 use crate::gaussian::{Gaussian, Moments, Support};
 use crate::reference::Reference;
@@ -84,7 +84,7 @@ impl<'a> Scorer<'a> {
 
     /// The floor of the case under the noise R (p x p).
     pub fn floor(&self, noise: Option<&DMatrix<f64>>) -> Floor {
-        let Some(noise) = noise.filter(|r| Cholesky::new((*r).clone()).is_some()) else {
+        let Some(noise) = noise.filter(|r| definite_within_scale(r).is_some()) else {
             return Floor::Unbounded;
         };
         let left_out: Vec<f64> = self.left_out.iter().map(|y| y.floor(noise).unwrap_or(f64::NAN)).collect();
@@ -102,8 +102,8 @@ impl<'a> Scorer<'a> {
 impl Yardstick {
     fn floor(&self, noise: &DMatrix<f64>) -> Option<f64> {
         let whitened = self.whitened.as_ref()?;
-        let noise = Cholesky::new(whitened.both_sides(noise))?;
-        let residual = Cholesky::new(whitened.residual.clone())?;
+        let noise = whitened.both_sides(noise).cholesky()?;
+        let residual = definite(&whitened.residual)?;
         Some(0.5 * (residual.ln_determinant() - noise.ln_determinant()))
     }
 }

@@ -27,9 +27,9 @@ pub(super) struct WhitenedMethod {
 }
 
 impl Whitened {
-    /// `None` when the reference covariance is not positive definite.
+    /// `None` when the reference covariance is not positive definite beyond rounding.
     pub fn new(reference: &Moments, support: &Support) -> Option<Self> {
-        let factor = Cholesky::new(reference.covariance.clone())?;
+        let factor = definite_within_scale(&reference.covariance)?;
         let coupling = whiten_right(&factor, support.whitener() * &reference.cross_covariance);
         let p = reference.mean.len();
         let residual = DMatrix::identity(p, p) - coupling.transpose() * &coupling;
@@ -53,6 +53,29 @@ impl Whitened {
         let twice = whiten_right(&self.factor, once.transpose());
         (&twice + twice.transpose()) * 0.5
     }
+}
+
+/// A squared pivot at or below this share of its scale is not resolved: it is a difference of numbers of that
+/// scale, each with some 1e-16 of rounding, and scores made of it would be off by more than a part in a thousand.
+const RESOLVED: f64 = 1e-12;
+
+/// The Cholesky factor of a matrix in whitened units, where entries are of order one; `None` if it is singular
+/// or not resolved.
+pub(super) fn definite(a: &DMatrix<f64>) -> Option<Cholesky<f64, Dyn>> {
+    definite_beyond(a, |_| RESOLVED)
+}
+
+/// The Cholesky factor of a covariance in its own units; `None` if it is singular or a pivot is not resolved
+/// beside its diagonal entry. Two outputs that repeat each other without noise leave a pivot of 1e-16 of either
+/// sign, which must not pass for variance.
+pub(super) fn definite_within_scale(a: &DMatrix<f64>) -> Option<Cholesky<f64, Dyn>> {
+    definite_beyond(a, |i| RESOLVED * a[(i, i)])
+}
+
+fn definite_beyond(a: &DMatrix<f64>, least: impl Fn(usize) -> f64) -> Option<Cholesky<f64, Dyn>> {
+    let factor = Cholesky::new(a.clone())?;
+    let pivots = factor.l_dirty().diagonal();
+    pivots.iter().enumerate().all(|(i, d)| d * d > least(i)).then_some(factor)
 }
 
 /// A L'^-1.

@@ -76,7 +76,7 @@ impl SurveyPlan {
                 return Err(SurveyError::MethodTwice(method.label().into()));
             }
         }
-        let judge = Judge::new(suite.limits, sampler.replicates);
+        let judge = Judge::new(suite.limits, sampler.replicates, sampler.looks());
         Ok(Self { sampler, methods, limits: suite.limits, judge })
     }
 }

@@ -24,7 +24,7 @@ pub struct Limits {
     pub excess: f64,
     /// Largest floor \[nats\]; said of the case, not of a method.
     pub floor: f64,
-    /// One-sided confidence of every bound, such as 0.999.
+    /// One-sided confidence of every bound, such as 0.999, over all looks at a reference together.
     pub confidence: f64,
 }
 
