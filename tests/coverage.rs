@@ -4,14 +4,16 @@
 mod common;
 
 use common::random;
-use gaussworthy::gaussian::Moments;
+use common::records::{Record, case_of, load};
+use gaussworthy::gaussian::{Gaussian, Marginal, Moments};
 use gaussworthy::method::{MethodSpec, Problem};
-use gaussworthy::reference::{DEFAULT_REPLICATES, Reference, Sampler, SamplerSettings, Soundness};
+use gaussworthy::reference::{DEFAULT_REPLICATES, Key, Reference, Sampler, SamplerSettings, Soundness};
 use gaussworthy::score::{ScoreKind, Scorer};
+use gaussworthy::sensor::{Formula, Number, Output};
 use gaussworthy::suite::{Case, Suite};
 use gaussworthy::survey::{SurveyPlan, SurveySettings, Watch, survey};
 use gaussworthy::trust::{Limits, Trust};
-use nalgebra::{DMatrix, DVector};
+use nalgebra::{Complex, DMatrix, DVector};
 use rand::RngExt;
 use rand_pcg::Pcg64;
 use rayon::prelude::*;
@@ -20,60 +22,136 @@ use statrs::distribution::{ContinuousCDF, StudentsT};
 
 const CASES: usize = 2000;
 
-/// A case with its exact moments.
+/// y_j = exp(a_j'x), sin(a_j'x) or cos(a_j'x): smooth, but no polynomial, so that control variates leave something to
+/// chance.
+#[derive(Debug)]
+struct Waves {
+    shapes: Vec<Shape>,
+    /// a_j (n x p).
+    slopes: DMatrix<f64>,
+    reads: Vec<usize>,
+    outputs: Vec<Output>,
+}
+
+#[derive(Debug, Clone, Copy)]
+enum Shape {
+    Exp,
+    Sin,
+    Cos,
+}
+
+impl Formula for Waves {
+    fn reads(&self) -> &[usize] {
+        &self.reads
+    }
+
+    fn outputs(&self) -> &[Output] {
+        &self.outputs
+    }
+
+    #[inline(always)]
+    fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
+        for (j, shape) in self.shapes.iter().enumerate() {
+            let mut phase = T::constant(0.0);
+            for (i, &component) in x.iter().enumerate() {
+                phase = phase + T::constant(self.slopes[(i, j)]) * component;
+            }
+            y[j] = match shape {
+                Shape::Exp => phase.exp(),
+                Shape::Sin => phase.sin(),
+                Shape::Cos => phase.cos(),
+            };
+        }
+    }
+}
+
+/// A question with its exact moments.
 struct Known {
-    case: Case,
+    sensor: Waves,
+    prior: Gaussian,
+    marginal: Marginal,
+    noise: DMatrix<f64>,
+    key: Key,
     moments: Moments,
 }
 
-/// A random quadratic reading of 1 to 4 components in 1 to 3 outputs, from nearly linear to bent over.
+/// A random reading of 1 to 4 components in 1 to 3 outputs, from nearly linear to bent over.
 ///
-/// E = tr(A P) + m'Am + b'm, Cov(y_i, y_j) = 2 tr(A_i P A_j P) + g_i' P g_j + R_ij, Cov(x, y_j) = P g_j with
-/// g = 2 A m + b. Source: A. M. Mathai, S. B. Provost, Quadratic Forms in Random Variables (Dekker, 1992), ch. 3
-/// (chapter from memory).
-fn quadratic(rng: &mut Pcg64) -> Known {
+/// Each output is a sum of w exp(c'x) with complex c (cos = (e^it + e^-it) / 2, sin = (e^it - e^-it) / 2i), and
+/// E exp(c'x) = exp(c'm + c'Pc / 2), E (x - m) exp(c'x) = P c E exp(c'x): the Gaussian moment generating function and
+/// its gradient (J. Aitchison, J. A. C. Brown, The Lognormal Distribution (Cambridge, 1957), ch. 2, from memory).
+fn waves(index: usize, rng: &mut Pcg64) -> Known {
     let (n, p): (usize, usize) = (rng.random_range(1..=4), rng.random_range(1..=3));
-    let forms: Vec<DMatrix<f64>> = (0..p).map(|_| random::symmetric(random::normal_matrix(n, n, rng))).collect();
-    let b = random::normal_matrix(p, n, rng);
     let g = random::normal_matrix(n, n + 2, rng);
-    let spread = 10f64.powf(rng.random_range(-2.0..1.0));
-    let prior = random::symmetric(&g * g.transpose()) * (spread / (n + 2) as f64);
-    let mean = random::normal_vector(n, rng) * 10f64.powf(rng.random_range(-1.0..1.0));
-    let noise = 10f64.powf(rng.random_range(-2.0..0.0));
+    let covariance =
+        random::symmetric(&g * g.transpose()) * (10f64.powf(rng.random_range(-0.5..0.2)) / (n + 2) as f64);
+    let mean = random::normal_vector(n, rng);
+    let mut slopes = random::normal_matrix(n, p, rng) / (n as f64).sqrt();
+    let shapes: Vec<Shape> = (0..p).map(|_| [Shape::Exp, Shape::Sin, Shape::Cos][rng.random_range(0..3)]).collect();
+    for (j, _) in shapes.iter().enumerate().filter(|(_, shape)| matches!(shape, Shape::Exp)) {
+        // A lognormal output with more spread has a fourth moment that no thousand points see.
+        slopes.column_mut(j).scale_mut(0.5);
+    }
 
-    let rows = |m: &DMatrix<f64>| -> Vec<Vec<f64>> { m.row_iter().map(|r| r.iter().copied().collect()).collect() };
-    let case = Case::from_json(json!({
-        "case": "quadratic",
-        "sensor": {"kind": "quadratic", "A": forms.iter().map(rows).collect::<Vec<_>>(), "b": rows(&b)},
-        "prior": {"mean": mean.as_slice(), "covariance": rows(&prior)}, "noise": {"covariance": noise},
-    }));
-    let slopes = DMatrix::from_fn(n, p, |i, j| 2.0 * (&forms[j] * &mean)[i] + b[(j, i)]);
-    let bent: Vec<DMatrix<f64>> = forms.iter().map(|a| a * &prior).collect();
-    let moments = Moments {
-        mean: DVector::from_fn(p, |j, _| {
-            bent[j].trace() + mean.dot(&(&forms[j] * &mean)) + (b.row(j) * &mean)[(0, 0)]
-        }),
-        covariance: DMatrix::from_fn(p, p, |i, j| 2.0 * (&bent[i] * &bent[j]).trace())
-            + slopes.transpose() * &prior * &slopes
-            + DMatrix::identity(p, p) * noise,
-        cross_covariance: &prior * &slopes,
+    let i = Complex::new(0.0, 1.0);
+    let complex = |j: usize, turn: Complex<f64>| slopes.column(j).map(|v| turn * v);
+    let terms: Vec<Vec<(Complex<f64>, DVector<Complex<f64>>)>> = (0..p)
+        .map(|j| match shapes[j] {
+            Shape::Exp => vec![(Complex::new(1.0, 0.0), complex(j, Complex::new(1.0, 0.0)))],
+            Shape::Cos => vec![(0.5.into(), complex(j, i)), (0.5.into(), complex(j, -i))],
+            Shape::Sin => vec![(-0.5 * i, complex(j, i)), (0.5 * i, complex(j, -i))],
+        })
+        .collect();
+    let (m, p_complex) = (mean.map(Complex::from), covariance.map(Complex::from));
+    let generating = |c: &DVector<Complex<f64>>| (c.dot(&m) + c.dot(&(&p_complex * c)) * 0.5).exp();
+    let first = |j: usize| terms[j].iter().map(|(w, c)| w * generating(c)).sum::<Complex<f64>>().re;
+    let second = |j: usize, k: usize| -> f64 {
+        let pairs = terms[j].iter().flat_map(|left| terms[k].iter().map(move |right| (left, right)));
+        pairs.map(|((v, b), (w, c))| v * w * generating(&(b + c))).sum::<Complex<f64>>().re
     };
-    Known { case: case.unwrap(), moments }
+    let spread = DMatrix::from_fn(p, p, |j, k| second(j, k) - first(j) * first(k));
+    let noise = DMatrix::from_diagonal(&spread.diagonal().map(|v| v * 10f64.powf(rng.random_range(-2.0..0.0))));
+    let moments = Moments {
+        mean: DVector::from_fn(p, |j, _| first(j)),
+        covariance: spread + &noise,
+        cross_covariance: DMatrix::from_columns(
+            &(0..p)
+                .map(|j| {
+                    let zero = DVector::from_element(n, Complex::from(0.0));
+                    let sum = terms[j].iter().fold(zero, |sum, (w, c)| sum + &p_complex * c * (w * generating(c)));
+                    sum.map(|v| v.re)
+                })
+                .collect::<Vec<_>>(),
+        ),
+    };
+    let reads: Vec<usize> = (0..n).collect();
+    let prior = Gaussian::new(mean, covariance).unwrap();
+    Known {
+        marginal: Marginal::new(&prior, &reads),
+        sensor: Waves {
+            shapes,
+            slopes,
+            reads,
+            outputs: (0..p).map(|j| Output::plain(format!("y{j}"), "")).collect(),
+        },
+        prior,
+        noise,
+        key: Key::new(1, &format!("waves {index}")),
+        moments,
+    }
 }
 
 fn known_cases() -> Vec<Known> {
     let mut rng = random::stream(2024);
-    (0..CASES).map(|_| quadratic(&mut rng)).collect()
+    (0..CASES).map(|index| waves(index, &mut rng)).collect()
 }
 
-fn taylor(case: &Case) -> Moments {
-    let law = case.marginal().law();
-    let (a, p) = (law.dimension(), case.sensor().outputs().len());
+fn taylor(known: &Known) -> Moments {
+    let Known { sensor, prior, noise, .. } = known;
+    let (a, p) = (prior.dimension(), noise.nrows());
     let mut moments = Moments::zeros(a, p);
-    let noise = case.noise_or_zero();
     let mut transform = MethodSpec::parse("taylor-1").unwrap().method().plan(a, p).unwrap();
-    transform.apply(Problem { sensor: case.sensor(), prior: law, noise: &noise }, &mut moments);
-    moments.cross_covariance = case.marginal().lift(moments.cross_covariance);
+    transform.apply(Problem { sensor, prior, noise }, &mut moments);
     moments
 }
 
@@ -84,6 +162,7 @@ fn exact(moments: &Moments) -> Reference {
         standard_error: Moments::zeros(moments.cross_covariance.nrows(), moments.mean.len()),
         replicates: vec![moments.clone(); 2],
         points: 1,
+        source: gaussworthy::reference::PointSource::Nets,
         worst_error: 0.0,
         soundness: Soundness::Sound,
         reason: None,
@@ -110,10 +189,13 @@ fn kolmogorov_smirnov(mut z: Vec<f64>) -> f64 {
     })
 }
 
-/// One reference a case at the least cap: 32 replicates of 1024 samples, no stopping.
-fn reference(case: &Case) -> Reference {
-    let settings = SamplerSettings { precision: 1e-9, cap: 1 << 15, ..SamplerSettings::default() };
-    Sampler::new(case, settings).unwrap().run()
+/// One reference a case: 32 nets of 1024 points, no stopping.
+fn reference(known: &Known) -> Reference {
+    let Known { sensor, prior, marginal, noise, key, .. } = known;
+    let settings = SamplerSettings { precision: 1e-12, cap: 1 << 15, ..SamplerSettings::default() };
+    let mut sampler = Sampler::of_parts(sensor, prior, marginal, noise.clone(), *key, settings).unwrap();
+    while sampler.deepen() {}
+    sampler.reference()
 }
 
 /// Over seeds the share of one entry a case inside its 95 % interval has a standard deviation of 0.5 % on 2000
@@ -124,22 +206,39 @@ fn reference(case: &Case) -> Reference {
 fn standard_errors_of_references_are_true() {
     let found: Vec<[Vec<f64>; 3]> = known_cases()
         .par_iter()
-        .map(|Known { case, moments }| {
-            let Reference { moments: estimate, standard_error: error, .. } = reference(case);
-            let deviate = |a: &DMatrix<f64>, b: &DMatrix<f64>, e: &DMatrix<f64>| (a - b).component_div(e);
-            let covariance = deviate(&estimate.covariance, &moments.covariance, &error.covariance);
-            let cross = deviate(&estimate.cross_covariance, &moments.cross_covariance, &error.cross_covariance);
+        .map(|known| {
+            let moments = &known.moments;
+            let Reference { moments: estimate, standard_error: error, .. } = reference(known);
             let p = moments.mean.len();
+            let sd = moments.covariance.diagonal().map(f64::sqrt);
+            let state_sd = known.prior.covariance().diagonal().map(f64::sqrt);
+            // An entry that is known to rounding has no chance left in it.
+            let z = |found: f64, exact: f64, error: f64, scale: f64| {
+                if error > 1e-12 * scale { (found - exact) / error } else { f64::NAN }
+            };
             [
-                (estimate.mean - &moments.mean).component_div(&error.mean).iter().copied().collect(),
-                (0..p).flat_map(|j| (0..=j).map(move |i| (i, j))).map(|at| covariance[at]).collect(),
-                cross.iter().copied().collect(),
+                (0..p).map(|j| z(estimate.mean[j], moments.mean[j], error.mean[j], sd[j])).collect::<Vec<_>>(),
+                (0..p)
+                    .flat_map(|j| (0..=j).map(move |i| (i, j)))
+                    .map(|(i, j)| {
+                        let at = (i, j);
+                        z(estimate.covariance[at], moments.covariance[at], error.covariance[at], sd[i] * sd[j])
+                    })
+                    .collect(),
+                (0..p)
+                    .flat_map(|j| (0..state_sd.len()).map(move |i| (i, j)))
+                    .map(|(i, j)| {
+                        let (found, exact) = (estimate.cross_covariance[(i, j)], moments.cross_covariance[(i, j)]);
+                        z(found, exact, error.cross_covariance[(i, j)], state_sd[i] * sd[j])
+                    })
+                    .collect(),
             ]
         })
         .collect();
     for (k, kind) in ["mean", "covariance", "cross-covariance"].into_iter().enumerate() {
-        let all: Vec<f64> = found.iter().flat_map(|z| z[k].iter().copied()).collect();
-        let one: Vec<f64> = found.iter().map(|z| z[k][0]).collect();
+        let all: Vec<f64> = found.iter().flat_map(|z| z[k].iter().copied()).filter(|z| !z.is_nan()).collect();
+        let one: Vec<f64> = found.iter().map(|z| z[k][0]).filter(|z| !z.is_nan()).collect();
+        assert!(one.len() >= CASES - 20, "{kind}: only {} cases leave something to chance", one.len());
         let (share, mean) = (covered(&all), one.iter().sum::<f64>() / CASES as f64);
         let distance = kolmogorov_smirnov(one);
         println!("{kind}: {} entries, {share:.4} covered, mean z {mean:.3}, distance {distance:.4}", all.len());
@@ -159,10 +258,10 @@ fn standard_errors_of_scores_are_true() {
         [ScoreKind::MeanError, ScoreKind::VarianceRatioLow, ScoreKind::Excess, ScoreKind::NeesRatio].as_slice();
     let found: Vec<(ScoreKind, f64)> = known_cases()
         .par_iter()
-        .flat_map_iter(|Known { case, moments }| {
-            let (answer, outputs) = (taylor(case), case.sensor().outputs());
-            let truth = Scorer::new(case.prior(), outputs, &exact(moments)).score(&answer).unwrap();
-            let found = Scorer::new(case.prior(), outputs, &reference(case)).score(&answer).unwrap();
+        .flat_map_iter(|known| {
+            let (answer, outputs) = (taylor(known), &known.sensor.outputs);
+            let truth = Scorer::new(&known.prior, outputs, &exact(&known.moments)).score(&answer).unwrap();
+            let found = Scorer::new(&known.prior, outputs, &reference(known)).score(&answer).unwrap();
             kinds.iter().filter_map(move |&kind| {
                 let (truth, found) = (truth.get(kind)?.value, found.get(kind)?);
                 (found.standard_error > 0.0 && truth > 5.0 * found.standard_error)
@@ -190,23 +289,29 @@ impl Watch for Unwatched {
 }
 
 /// A method whose score lies exactly on the limit can be judged only by mistake. At a confidence of 0.9 each side
-/// may err in 10 % of seeds however often the reference is looked at, here up to three times: 300 seeds give more
-/// than 80 mistakes with odds of 0.2 %. With 10 % spent at each look 40 % are judged by simulation of t statistics, and 80
-/// or fewer mistakes have odds of 1e-5.
+/// may err in 10 % of seeds however often the reference is looked at, here up to five times: 300 seeds give more
+/// than 80 mistakes with odds of 0.2 %. With 10 % spent at each look more than half are judged by simulation of t
+/// statistics, and 80 or fewer mistakes have odds below 1e-9.
+///
+/// The case is record F04-P06 of the outside values (bearing from a correlated prior, 16 digits by integration), whose
+/// exact variance makes the exact variance ratio of first-order Taylor.
 #[test]
 fn looking_again_and_again_does_not_inflate_the_error() {
     const SEEDS: u64 = 300;
-    // y = x^2 of N(1, 0.3^2) with R = 0.1: E = 1.09, Var = 2 * 0.09^2 + 4 * 0.09 + 0.1, and first order says 1.
-    let case = Case::from_json(json!({
-        "case": "square", "sensor": {"kind": "quadratic", "A": [[[1]]]},
-        "prior": {"mean": [1], "covariance": [[0.09]]}, "noise": {"covariance": 0.1},
-    }));
+    const NOISE: f64 = 0.01;
+    let record = load::<Record>("f04_bearing.json").into_iter().find(|r| r.id == "F04-P06").unwrap();
+    let mut described = case_of(&record).unwrap().to_json();
+    described["noise"] = json!({"covariance": NOISE});
+    let case = Case::from_json(described).unwrap();
+    let mut jacobian = DMatrix::zeros(1, 2);
+    case.sensor().jacobian(case.prior().mean().as_slice(), &mut [0.0], &mut jacobian);
+    let first_order = (&jacobian * case.prior().covariance() * jacobian.transpose())[(0, 0)];
     let mut limits = Limits::default();
-    limits.mean_error = 0.09 / (2.0 * 0.09f64.powi(2) + 4.0 * 0.09 + 0.1).sqrt();
+    limits.variance_ratio_low = (first_order + NOISE) / (record.s[0][0] + NOISE);
     // Nothing else decides.
-    (limits.variance_ratio_low, limits.variance_ratio_high) = (1e-6, 1e6);
+    limits.variance_ratio_high = 1e6;
     (limits.nees_ratio_low, limits.nees_ratio_high) = (1e-6, 1e6);
-    (limits.cross_covariance_error, limits.excess, limits.floor) = (1e6, 1e6, 1e6);
+    (limits.mean_error, limits.cross_covariance_error, limits.excess, limits.floor) = (1e6, 1e6, 1e6, 1e6);
     limits.confidence = 0.9;
     let suite = Suite {
         name: "limit".into(),
@@ -218,13 +323,13 @@ fn looking_again_and_again_does_not_inflate_the_error() {
         cap: Some(1 << 19),
         limits,
         methods: Some(vec![MethodSpec::parse("taylor-1").unwrap()]),
-        cases: vec![case.unwrap()],
+        cases: vec![case],
     };
     let mistakes = (1..=SEEDS)
         .into_par_iter()
         .filter(|&seed| {
             let plan = SurveyPlan::new(&suite, &SurveySettings { seed: Some(seed), ..Default::default() }).unwrap();
-            assert_eq!(plan.sampler.looks(), 3);
+            assert_eq!(plan.sampler.looks(), 5);
             let result = survey(&suite, &plan, false, &Unwatched);
             result.cases[0].answers[0].as_ref().unwrap().verdict.trust != Trust::Undecided
         })

@@ -62,9 +62,9 @@ fn deviations(record: &Record, case: &Case, reference: &Reference) -> Vec<(Strin
 /// range with bearing, across the cut and around the station too.
 ///
 /// False alarms over seeds: a deviation follows about the t law of 31 degrees of freedom, beyond 4 with odds of
-/// 3.7e-4; the 200 or so entries that are left to chance give a false alarm in at most 8 % of seeds, and this
+/// 3.7e-4; the 150 or so entries that are left to chance give a false alarm in at most 6 % of seeds, and this
 /// seed is fixed. Of the deviations 5 % lie beyond 2.04; more than 12 % would say that the standard errors are
-/// too small (odds below 1e-4 for 200 independent entries, a little more as entries of one case are correlated).
+/// too small (odds below 1e-3 for 150 independent entries, a little more as entries of one case are correlated).
 #[test]
 fn outside_values_lie_within_four_standard_errors() {
     let mut all = Vec::new();
@@ -77,7 +77,7 @@ fn outside_values_lie_within_four_standard_errors() {
     let far: Vec<_> = all.iter().filter(|(_, z)| z.abs() > 4.0 || z.is_nan()).collect();
     assert!(far.is_empty(), "{far:?}");
     let chance: Vec<f64> = all.iter().map(|(_, z)| z.abs()).filter(|&z| z > 0.0).collect();
-    assert!(chance.len() > 150, "only {} entries were left to chance", chance.len());
+    assert!(chance.len() > 120, "only {} entries were left to chance", chance.len());
     let beyond = chance.iter().filter(|&&z| z > 2.04).count();
     assert!(beyond as f64 <= 0.12 * chance.len() as f64, "{beyond} of {} beyond 2.04", chance.len());
 }
@@ -181,10 +181,9 @@ fn a_mean_of_a_million_with_a_spread_of_a_thousandth_keeps_nine_digits() {
     let ratio = far.moments.cross_covariance[(0, 0)] / near.moments.cross_covariance[(0, 0)];
     assert_within((ratio - 1.0).abs(), 1e-9, "cross-covariance, relative");
     let mean = (far.moments.mean[0] - 1e6 - near.moments.mean[0]) / 1e-3;
-    assert_within(mean.abs(), 2e-7, "mean, in spreads: one rounding of 1e6 is 1.2e-7 of a spread");
+    assert_within(mean.abs(), 5e-7, "mean, in spreads: roundings of 1e6 are 1.2e-7 of a spread each");
     // And the closed form: E = 1/2, Var = 1 + 1/2, Cov(x, y) = 1, times the scale (Isserlis).
-    let z = (far.moments.covariance[(0, 0)] - 1.5e-6) / far.standard_error.covariance[(0, 0)];
-    assert!(z.abs() < 4.0, "variance {z:.2} standard errors off");
+    assert_within((far.moments.covariance[(0, 0)] / 1.5e-6 - 1.0).abs(), 1e-9, "variance against the closed form");
 }
 
 /// On a linear sensor nothing is left to chance, whatever the noise: the exact Kalman moments to rounding.
@@ -225,7 +224,7 @@ fn a_cap_that_leaves_nothing_is_refused() {
     let case = case_of(&load::<Record>("f06_range_bearing_2d.json")[0]).unwrap();
     let settings = SamplerSettings { cap: 1000, ..SamplerSettings::default() };
     let error = Sampler::new(&case, settings).unwrap_err();
-    assert_eq!(error.to_string(), "a cap of 1000 samples is too small: 32 replicates need at least 32768");
+    assert_eq!(error.to_string(), "a cap of 1000 samples is too small: 32 replicates need at least 8192");
     let settings = SamplerSettings { replicates: 1, ..SamplerSettings::default() };
     let error = Sampler::new(&case, settings).unwrap_err();
     assert_eq!(error.to_string(), "1 replicates are too few: a standard error needs at least 2");
@@ -287,7 +286,7 @@ fn a_variance_that_rare_samples_carry_is_not_called_sound() {
     for seed in 1..=4 {
         let settings = SamplerSettings { seed, cap: 1 << 20, ..SamplerSettings::default() };
         let reference = Sampler::new(&case(200.0), settings).unwrap().run();
-        assert_eq!(reference.soundness, Soundness::Wide, "seed {seed}");
+        assert_eq!(reference.soundness, Soundness::HeavyTailed, "seed {seed}");
         assert!(reference.worst_error > 0.3, "seed {seed}: {}", reference.worst_error);
         // At ten sd nothing is behind the buoy that matters, and the foresight stays silent.
         let reference = Sampler::new(&case(100.0), settings).unwrap().run();

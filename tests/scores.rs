@@ -168,6 +168,7 @@ fn exact(moments: Moments) -> Reference {
         replicates: vec![moments.clone(); 4],
         moments,
         points: 0,
+        source: gaussworthy::reference::PointSource::Nets,
         worst_error: 0.0,
         soundness: gaussworthy::reference::Soundness::Sound,
         reason: None,

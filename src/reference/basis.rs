@@ -28,6 +28,11 @@ impl Basis {
         Self { axes, degree, terms }
     }
 
+    /// The highest total degree.
+    pub fn degree(&self) -> usize {
+        self.degree
+    }
+
     /// How many polynomials there are.
     pub fn len(&self) -> usize {
         self.terms.len()

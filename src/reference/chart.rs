@@ -260,8 +260,8 @@ mod tests {
             });
             (blocks.collect(), sums)
         };
-        let start = DVector::from_vec(vec![2.75, 0.1, -1.2]);
-        let mut charts = Charts::new(start.clone(), &[Some(0.5), None, Some(0.5)]);
+        let start = DVector::from_vec(vec![2.6, 0.1, -1.3]);
+        let mut charts = Charts::new(start.clone(), &[Some(0.7), None, Some(0.7)]);
         let (blocks, mut sums) = seen_from(&start);
         for block in &blocks {
             for (j, deviations) in block.deviation.iter().enumerate() {
@@ -272,7 +272,7 @@ mod tests {
         charts.recentre(&mut sums);
         assert!(!charts.lost);
         let moved = (0..3).map(|j| (charts.centre[j] - start[j]).abs()).collect::<Vec<_>>();
-        assert!(moved[0] > 0.05 && moved[1] == 0.0 && moved[2] > 0.05, "nothing to see: {moved:?}");
+        assert!(moved[0] > 0.03 && moved[1] == 0.0 && moved[2] > 0.03, "nothing to see: {moved:?}");
         let (after, fresh) = seen_from(&charts.centre);
         let step = charts.centre[0] - start[0];
         let pairs = after.iter().zip(&blocks).flat_map(|(a, b)| a.deviation[0].iter().zip(&b.deviation[0]));

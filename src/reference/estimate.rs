@@ -28,6 +28,16 @@ impl Soundness {
     }
 }
 
+/// Where the points of a reference come from.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum PointSource {
+    /// Randomised Sobol' nets.
+    Nets,
+    /// Plain streams: the sensor reads more components than the nets' table has dimensions.
+    Streams,
+}
+
 /// The moments of a case by heavy sampling.
 #[derive(Debug, Clone)]
 pub struct Reference {
@@ -39,6 +49,8 @@ pub struct Reference {
     pub replicates: Vec<Moments>,
     /// Samples of h taken in all replicates together.
     pub points: u64,
+    /// Where they come from.
+    pub source: PointSource,
     /// Largest standardised standard error: mean over the output's sd, covariance and cross-covariance in
     /// correlation units; or, where that is larger, the one foreseen for a variance by samples that reach further
     /// out than the prior and meet what is rare.

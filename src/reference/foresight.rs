@@ -65,4 +65,15 @@ impl Foresight {
         }
         second / all + (fourth / all / count).sqrt()
     }
+
+    /// The share of E\[e_j^4\] that the weightiest point alone carries, `None` if there is none. Where the fourth moment
+    /// exists and the reach is far enough no point dominates; where it does not, one always does.
+    pub fn dominance(&self, j: usize) -> Option<f64> {
+        let points = self.points.get(j).filter(|points| !points.is_empty())?;
+        let (sum, largest) = points.iter().fold((0.0, 0.0_f64), |(sum, largest), &(e, weight)| {
+            let share = weight * e.powi(4);
+            (sum + share, largest.max(share))
+        });
+        Some(largest / sum)
+    }
 }

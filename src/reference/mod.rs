@@ -21,7 +21,7 @@ mod sums;
 mod tails;
 mod witness;
 
-pub use estimate::{Reference, Soundness};
+pub use estimate::{PointSource, Reference, Soundness};
 pub use sampler::Sampler;
 pub use settings::{DEFAULT_REPLICATES, SamplerError, SamplerSettings};
 pub use stream::Key;

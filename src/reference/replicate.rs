@@ -111,3 +111,124 @@ impl Replicate {
         }
     }
 }
+
+/// The witness must see a fault of the nets' way. Each test plants one in the steps that lead from points to moments.
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::lanes::Level;
+    use crate::reference::basis::Basis;
+    use crate::reference::control::Controls;
+    use crate::reference::estimate::combine;
+    use crate::reference::foresight::Foresight;
+    use crate::reference::net::Directions;
+    use crate::reference::stream::Key;
+    use crate::reference::witness::{Testimony, hear};
+    use crate::suite::Case;
+
+    #[derive(Debug, Clone, Copy, PartialEq)]
+    enum Fault {
+        None,
+        /// Normals 10 % too large.
+        Quantile,
+        /// A block that is counted and not summed.
+        DroppedBlock,
+        /// The noise added twice.
+        Noise,
+        /// A wrong direction number in a net that nothing randomises.
+        BareDirections,
+        /// A wrong direction number in a randomised net.
+        RandomisedDirections,
+    }
+
+    /// Directions of two dimensions, the second with columns that repeat its first ones.
+    fn wrong_directions() -> Directions {
+        let mut columns: Vec<[u64; 64]> = Directions::joe_kuo().columns()[..2].to_vec();
+        for k in 1..64 {
+            columns[1][k] = columns[1][0] >> (k % 2);
+        }
+        Directions::from_columns(columns)
+    }
+
+    /// What the witness says of 32 replicates of 2048 points of a radar case, made with a fault; and the largest
+    /// standard error of a variance, as a share of it.
+    fn testimony(fault: Fault) -> (Testimony, f64) {
+        let case = Case::from_json(serde_json::json!({
+            "case": "radar", "sensor": {"kind": "range-bearing", "station": [0, 0]},
+            "prior": {"mean": [1000, 0], "covariance": [[900, 0], [0, 160000]]},
+            "noise": {"covariance": [[400, 0], [0, 4e-2]]},
+        }))
+        .unwrap();
+        let law = case.marginal().law();
+        let question = Question {
+            sensor: case.sensor(),
+            prior: law,
+            root: law.root(),
+            angular: vec![false, true],
+            key: Key::new(7, "planted faults"),
+            level: Level::best(),
+        };
+        // Without control variates, which would themselves undo a part of a fault.
+        let pilot = Pilot { controls: Controls::none(2, 2), ..Pilot::run(&question) };
+        let basis = Basis::new(2, 0);
+        let mut noise = case.noise_or_zero();
+        let true_noise = noise.clone();
+        if fault == Fault::Noise {
+            noise *= 2.0;
+        }
+        let replicates: Vec<Moments> = (0..32)
+            .map(|r| {
+                let mut replicate = Replicate::new(r, 11, &question, &pilot);
+                let net = match fault {
+                    Fault::BareDirections => Net::unscrambled(&wrong_directions(), 2, 11).unwrap(),
+                    Fault::RandomisedDirections => Net::over(&wrong_directions(), &question.key, r, 2, 11).unwrap(),
+                    _ => Net::new(&question.key, r, 2, 11).unwrap(),
+                };
+                let mut block = Block::new(question.level, 2, 2, &basis);
+                for b in 0..net.blocks() {
+                    block.take_net(&net, b);
+                    if fault == Fault::Quantile {
+                        block.z.as_flattened_mut().iter_mut().for_each(|z| *z *= 1.1);
+                    }
+                    question.evaluate(&mut block);
+                    block.subtract(&pilot.centre, &question.angular, &pilot.slope);
+                    if fault == Fault::DroppedBlock && b == 2 {
+                        replicate.sums.count += BLOCK as f64;
+                    } else {
+                        block.add_to(&mut replicate.sums, &basis);
+                    }
+                }
+                replicate.moments(&question, &pilot, &noise)
+            })
+            .collect();
+        let (moments, error) = combine(&replicates);
+        let spread = (0..2).map(|j| error.covariance[(j, j)] / moments.covariance[(j, j)]).fold(0.0, f64::max);
+        let foresight = Foresight::look(&question, &pilot);
+        (hear(&question, &true_noise, &pilot.centre, &moments, &error, &foresight), spread)
+    }
+
+    #[test]
+    fn the_witness_agrees_where_nothing_is_wrong() {
+        assert_eq!(testimony(Fault::None).0, Testimony::Agrees);
+    }
+
+    /// The witness's 65,536 samples know a variance to about 1 %. What is linear in the normals is not sampled, so that a
+    /// wrong quantile reaches only the rest.
+    #[test]
+    fn the_witness_sees_what_biases_an_estimate() {
+        for fault in [Fault::Quantile, Fault::DroppedBlock, Fault::Noise, Fault::BareDirections] {
+            let (said, _) = testimony(fault);
+            assert!(matches!(said, Testimony::Disagrees(_)), "{fault:?}: {said:?}");
+        }
+    }
+
+    /// Under a digital shift every point is uniform whatever the matrix, so a wrong direction number biases nothing: it
+    /// costs precision, and the spread of the replicates says so.
+    #[test]
+    fn a_wrong_direction_number_in_a_randomised_net_is_seen_in_its_standard_error() {
+        let (said, spread) = testimony(Fault::RandomisedDirections);
+        let (_, sound) = testimony(Fault::None);
+        assert_eq!(said, Testimony::Agrees);
+        assert!(spread > 5.0 * sound, "{spread} against {sound}");
+    }
+}

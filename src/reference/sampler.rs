@@ -2,7 +2,7 @@ use nalgebra::DMatrix;
 use rayon::prelude::*;
 
 use super::chart::CircularSum;
-use super::estimate::{Reference, Soundness, combine, worst_standardised};
+use super::estimate::{PointSource, Reference, Soundness, combine, worst_standardised};
 use super::foresight::Foresight;
 use super::pilot::{Pilot, Question};
 use super::replicate::Replicate;
@@ -16,6 +16,15 @@ use crate::suite::Case;
 /// Below this resultant length an angle has no mean direction to centre its chart on. Ours, no source: at 0.1
 /// the directions are all but uniform, and where the cut lies decides the moments.
 const LEAST_RESULTANT: f64 = 0.1;
+
+/// What rare samples may add to a variance, as a share of it, before no verdict rests on it: less moves no verdict by
+/// the limits of common practice. Ours, no source.
+const MATERIAL: f64 = 1e-3;
+
+/// By how much the spread of replicates is raised under control variates of degree four. What these leave is carried by
+/// the outermost points, so that replicates have longer tails than the t law supposes: over 2000 closed-form cases
+/// (`tests/coverage.rs`) plain 95 % intervals cover 93.2 to 94.2 % at 1024 points a replicate, raised ones 94.3 to 95.5.
+const LONG_TAILS: f64 = 1.1;
 
 /// The least standard deviation of an output as a share of its mean: 1e4 units in the last place of a double.
 /// Ours, no source: the rounding of a value, a few units, is then under 1e-3 of what is measured.
@@ -111,15 +120,6 @@ impl<'a> Sampler<'a> {
         if reference.soundness == Soundness::Refused {
             return reference;
         }
-        let foreseen = self.foreseen(&reference.moments);
-        let sampled = worst_standardised(&reference.moments, &reference.standard_error, self.prior);
-        if foreseen > self.settings.precision && foreseen > 2.0 * sampled {
-            let reason = format!(
-                "samples too rare to have been met may carry {:.1e} of a variance, its standard error says {sampled:.1e}",
-                foreseen
-            );
-            return Reference { soundness: Soundness::HeavyTailed, reason: Some(reason), ..reference };
-        }
         let read: Vec<Moments> =
             self.replicates.iter().map(|r| r.moments(&self.question, &self.pilot, &self.noise)).collect();
         let (mut moments, error) = combine(&read);
@@ -127,8 +127,9 @@ impl<'a> Sampler<'a> {
         moments.mean.copy_from(&reference.moments.mean);
         let error = Moments { mean: reference.standard_error.mean.clone(), ..error };
         let chart = &self.replicates[0].charts().centre;
-        let (soundness, reason) = match hear(&self.question, &self.noise, chart, &moments, &error) {
-            Testimony::Agrees => return reference,
+        let (soundness, reason) = match hear(&self.question, &self.noise, chart, &moments, &error, &self.foresight)
+        {
+            Testimony::Agrees => return self.with_foresight(reference),
             Testimony::Disagrees(reason) => (Soundness::Disputed, reason),
             Testimony::HeavyTail(reason) => (Soundness::HeavyTailed, reason),
             Testimony::NoVariance(reason) => (Soundness::Refused, reason),
@@ -155,6 +156,9 @@ impl<'a> Sampler<'a> {
                 }
             }
         }
+        if self.pilot.controls.basis.degree() > 2 {
+            widen(&mut replicates, LONG_TAILS);
+        }
         let (mut moments, standard_error) = combine(&replicates);
         for (j, &angular) in self.question.angular.iter().enumerate() {
             if angular {
@@ -175,7 +179,25 @@ impl<'a> Sampler<'a> {
             None if worst_error <= self.settings.precision => Soundness::Sound,
             None => Soundness::Wide,
         };
-        Reference { moments, standard_error, replicates, points: self.points(), worst_error, soundness, reason }
+        let nets = self.replicates.iter().all(Replicate::has_net);
+        let source = if nets { PointSource::Nets } else { PointSource::Streams };
+        let points = self.points();
+        Reference { moments, standard_error, replicates, points, source, worst_error, soundness, reason }
+    }
+
+    /// The reference, unless samples that are too rare to have been met may carry more of a variance than its standard
+    /// error says and than was asked for.
+    fn with_foresight(&self, reference: Reference) -> Reference {
+        let foreseen = self.foreseen(&reference.moments);
+        let sampled = worst_standardised(&reference.moments, &reference.standard_error, self.prior);
+        if foreseen > self.settings.precision.max(MATERIAL) && foreseen > 2.0 * sampled {
+            let reason = format!(
+                "samples too rare to have been met may carry {:.1e} of a variance, its standard error says {sampled:.1e}",
+                foreseen
+            );
+            return Reference { soundness: Soundness::HeavyTailed, reason: Some(reason), ..reference };
+        }
+        reference
     }
 
     /// Largest error, as a share of a variance, that rare samples beyond all that was seen may hide.
@@ -235,5 +257,15 @@ impl<'a> Sampler<'a> {
     fn resultant(&self, j: usize) -> Option<f64> {
         let circles = self.replicates.iter().filter_map(|r| r.charts().circle(j));
         circles.reduce(CircularSum::merged).map(|circle| circle.resultant())
+    }
+}
+
+/// Moves every replicate away from the mean of all by `factor`.
+fn widen(replicates: &mut [Moments], factor: f64) {
+    let (mean, _) = combine(replicates);
+    for r in replicates {
+        r.mean = &mean.mean + (&r.mean - &mean.mean) * factor;
+        r.covariance = &mean.covariance + (&r.covariance - &mean.covariance) * factor;
+        r.cross_covariance = &mean.cross_covariance + (&r.cross_covariance - &mean.cross_covariance) * factor;
     }
 }

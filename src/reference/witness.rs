@@ -8,6 +8,7 @@ use statrs::distribution::{ContinuousCDF, StudentsT};
 use super::basis::Basis;
 use super::block::Block;
 use super::estimate::combine;
+use super::foresight::Foresight;
 use super::net::{BLOCK, Net};
 use super::pilot::Question;
 use super::tails::fit_pareto;
@@ -27,6 +28,9 @@ const NO_VARIANCE: f64 = 0.5;
 /// From this shape of the tail on the fourth moment does not exist: the standard error of a variance cannot be
 /// believed.
 const NO_FOURTH_MOMENT: f64 = 0.25;
+
+/// One point of the look ahead that carries this share of a fourth moment dominates it. Ours, no source.
+const DOMINANT: f64 = 0.1;
 
 /// What the witness says of a reference.
 #[derive(Debug, Clone, PartialEq)]
@@ -50,19 +54,23 @@ pub(super) enum Testimony {
 /// each integrand over a net predicts: rare large samples that no batch happened to draw must not make it look
 /// surer than it is.
 ///
-/// Tails: a generalised Pareto law is fitted to the 3 sqrt(N) largest deviations of each output. An angle is bounded
-/// and needs no fit.
+/// Tails: a generalised Pareto law is fitted to the 3 sqrt(N) largest deviations of each output, and again to the
+/// largest eighth of these. An angle is bounded and needs no fit.
 pub(super) fn hear(
     question: &Question<'_>,
     noise: &DMatrix<f64>,
     chart: &DVector<f64>,
     moments: &Moments,
     error: &Moments,
+    foresight: &Foresight,
 ) -> Testimony {
     let outputs = question.sensor.outputs();
     let sample = Sample::draw(question, noise, chart);
     for (j, output) in outputs.iter().enumerate().filter(|(_, o)| !o.angular) {
-        if let Some(testimony) = tail(output, &sample.deviations[j]) {
+        // Where samples that reach further out know the fourth moment, it exists, whatever the fit says: a saturating
+        // sensor seen far from its bound has a tail like a lognormal's.
+        let known = foresight.dominance(j).is_some_and(|share| share < DOMINANT);
+        if !known && let Some(testimony) = tail(output, &sample.deviations[j]) {
             return testimony;
         }
     }
@@ -259,7 +267,20 @@ fn tail(output: &Output, deviations: &[f64]) -> Option<Testimony> {
     let (_, &mut threshold, top) = sizes.select_nth_unstable_by(cut, f64::total_cmp);
     let mut exceedances: Vec<f64> = top.iter().map(|v| v - threshold).filter(|v| *v > 0.0).collect();
     exceedances.sort_by(f64::total_cmp);
-    let shape = fit_pareto(&exceedances)?.shape;
+    if exceedances.len() < 64 {
+        // Nearly all of the largest are equal: there is no tail.
+        return None;
+    }
+    // An output that is bounded but rarely flips (a saturated sensor) has a few large deviations above many small ones,
+    // which looks heavy; its very largest then all lie at the bound. A true tail is as heavy there too.
+    let largest_few = &exceedances[exceedances.len() - exceedances.len() / 8..];
+    let base = exceedances[exceedances.len() - largest_few.len() - 1];
+    let few: Vec<f64> = largest_few.iter().map(|v| v - base).filter(|v| *v > 0.0).collect();
+    let upper = fit_pareto(&few).map_or(f64::NEG_INFINITY, |fit| {
+        // Two standard errors of the estimate, (1 + shape) / sqrt(n) (Zhang & Stephens 2009, from memory).
+        fit.shape + 2.0 * (1.0 + fit.shape).max(0.0) / (few.len() as f64).sqrt()
+    });
+    let shape = fit_pareto(&exceedances)?.shape.min(upper);
     let tell = |moment: &str| {
         format!(
             "the tail of output `{}` has the shape {shape:.2} (generalised Pareto law of its {} largest deviations): \

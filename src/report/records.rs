@@ -3,7 +3,7 @@ use std::io::{self, Write};
 use serde::Serialize;
 
 use crate::gaussian::Moments;
-use crate::reference::{Reference, Soundness};
+use crate::reference::{PointSource, Reference, Soundness};
 use crate::suite::rows;
 use crate::survey::{Stop, SurveyResult};
 
@@ -18,6 +18,7 @@ struct MomentsRecord<'a> {
     replicates: usize,
     soundness: Soundness,
     stopped: Stop,
+    points_of: PointSource,
 }
 
 #[derive(Serialize)]
@@ -48,7 +49,7 @@ pub(super) fn write_cases(survey: &SurveyResult<'_>, to: &mut dyn Write) -> io::
 /// One moments record a line.
 pub(super) fn write_references(survey: &SurveyResult<'_>, to: &mut dyn Write) -> io::Result<()> {
     for result in &survey.cases {
-        let Reference { moments, standard_error, points, soundness, .. } = &result.reference;
+        let Reference { moments, standard_error, points, soundness, source, .. } = &result.reference;
         let record = MomentsRecord {
             case: survey.suite.cases[result.index].id(),
             moments: moments.into(),
@@ -57,6 +58,7 @@ pub(super) fn write_references(survey: &SurveyResult<'_>, to: &mut dyn Write) ->
             replicates: survey.plan.sampler.replicates,
             soundness: *soundness,
             stopped: result.stop,
+            points_of: *source,
         };
         line(&record, to)?;
     }

@@ -125,8 +125,21 @@ fn notes(survey: &SurveyResult<'_>, summary: &Summary) -> Vec<String> {
             summary.wide, survey.plan.sampler.cap
         ));
     }
-    if summary.refused > 0 {
-        notes.push(format!("{} references are refused; no verdict rests on them.", summary.refused));
+    for (count, what) in [
+        (summary.refused, "refused (a moment does not exist or cannot be had by sampling)"),
+        (summary.disputed, "disputed by an independent plain estimate"),
+        (summary.heavy_tailed, "so heavy-tailed that no standard error can be believed"),
+    ] {
+        if count > 0 {
+            notes.push(format!("{count} references are {what}; no verdict rests on them, scores.csv says why."));
+        }
+    }
+    if summary.streamed > 0 {
+        notes.push(format!(
+            "{} references were sampled by plain streams: their sensors read more components than the nets have \
+             dimensions.",
+            summary.streamed
+        ));
     }
     for method in &summary.methods {
         if let Some(reason) = &method.skip_reason {

@@ -169,7 +169,7 @@ mod tests {
         for answer in &result.answers {
             let verdict = &answer.as_ref().unwrap().verdict;
             assert_eq!(verdict.trust, Trust::Undecided);
-            assert!(verdict.reason.starts_with("the reference is refused: "), "{}", verdict.reason);
+            assert!(verdict.reason.starts_with("no verdict rests on this reference: "), "{}", verdict.reason);
         }
     }
 }

@@ -3,7 +3,7 @@ use std::collections::BTreeMap;
 use super::run::SurveyResult;
 use super::timing::Quartiles;
 use crate::method::Evaluations;
-use crate::reference::Soundness;
+use crate::reference::{PointSource, Soundness};
 use crate::trust::{Standing, Trust};
 
 /// A survey of one suite in a few numbers.
@@ -17,8 +17,14 @@ pub struct Summary {
     pub floor_open: usize,
     /// Cases whose reference fell short of the asked precision at the cap.
     pub wide: usize,
-    /// Cases whose reference is refused.
+    /// Cases whose reference is refused: a moment does not exist, or cannot be had by sampling.
     pub refused: usize,
+    /// Cases whose reference an independent plain estimate disputes.
+    pub disputed: usize,
+    /// Cases whose reference has a tail so heavy that no standard error can be believed.
+    pub heavy_tailed: usize,
+    /// Cases sampled by plain streams, for want of nets in so many dimensions.
+    pub streamed: usize,
     /// One a method, in the plan's order.
     pub methods: Vec<MethodSummary>,
 }
@@ -62,6 +68,9 @@ pub fn summarise(survey: &SurveyResult<'_>) -> Summary {
         floor_open: count(&|c| c.floor_standing == Standing::Open),
         wide: count(&|c| c.reference.soundness == Soundness::Wide),
         refused: count(&|c| c.reference.soundness == Soundness::Refused),
+        disputed: count(&|c| c.reference.soundness == Soundness::Disputed),
+        heavy_tailed: count(&|c| c.reference.soundness == Soundness::HeavyTailed),
+        streamed: count(&|c| c.reference.source == PointSource::Streams),
         methods: (0..survey.plan.methods.len()).map(|m| summarise_method(survey, m)).collect(),
     }
 }

@@ -116,7 +116,7 @@ fn options_that_cannot_be_meant_are_refused() {
         ("--precision", "-1", "suite `smoke`: precision -1 ", "above 0 and below 1"),
         ("--precision", "nan", "suite `smoke`: precision NaN ", "above 0 and below 1"),
         ("--precision", "1", "suite `smoke`: precision 1 ", "above 0 and below 1"),
-        ("--cap", "1000", "suite `smoke`: a cap of 1000 samples ", "at least 32768"),
+        ("--cap", "1000", "suite `smoke`: a cap of 1000 samples ", "at least 8192"),
         (
             "--methods",
             "tailor-1",

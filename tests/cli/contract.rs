@@ -57,6 +57,11 @@ impl Sensor {
     pub fn is_linear(&self) -> bool {
         matches!(self, Self::Linear { .. })
     }
+
+    /// Whether control variates of degree four leave nothing of its moments to chance.
+    pub fn is_polynomial(&self) -> bool {
+        matches!(self, Self::Linear { .. } | Self::Quadratic { .. })
+    }
 }
 
 #[derive(Debug, Deserialize)]
@@ -84,6 +89,8 @@ pub struct MomentsRecord {
     pub points: u64,
     pub replicates: u64,
     pub soundness: Soundness,
+    pub stopped: Stopped,
+    pub points_of: PointsOf,
 }
 
 #[derive(Debug, Deserialize)]
@@ -102,6 +109,21 @@ pub enum Soundness {
     Disputed,
     HeavyTailed,
     Refused,
+}
+
+#[derive(Debug, Deserialize, Clone, Copy, PartialEq, Eq)]
+#[serde(rename_all = "kebab-case")]
+pub enum Stopped {
+    Decided,
+    Cap,
+    Refused,
+}
+
+#[derive(Debug, Deserialize, Clone, Copy, PartialEq, Eq)]
+#[serde(rename_all = "kebab-case")]
+pub enum PointsOf {
+    Nets,
+    Streams,
 }
 
 #[derive(Debug, Deserialize, Clone, Copy, PartialEq, Eq)]

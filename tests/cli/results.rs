@@ -52,7 +52,7 @@ fn smoke_leaves_every_file_as_the_formats_say() {
         }
         let errors = e.mean.iter().chain(e.covariance.iter().flatten()).chain(e.cross_covariance.iter().flatten());
         // A linear reading is known but for rounding; of any other, every moment is left to chance.
-        let least = if c.sensor.is_linear() { 0.0 } else { f64::MIN_POSITIVE };
+        let least = if c.sensor.is_polynomial() { 0.0 } else { f64::MIN_POSITIVE };
         assert!(errors.flatten().all(|&e| e >= least), "{r:?}");
         assert_eq!((r.soundness, r.replicates), (Soundness::Sound, 32), "{r:?}");
         assert!(r.points > 0 && r.points.is_multiple_of(32), "{r:?}");
@@ -68,7 +68,8 @@ fn smoke_leaves_every_file_as_the_formats_say() {
         assert!(!row.reason.is_empty() && row.verdict != Verdict::Skipped, "{row:?}");
         assert!(row.inputs == 2 && [row.values, row.jacobians, row.hessians].iter().flatten().sum::<u64>() > 0);
         let linear = by_name[row.case.as_str()].sensor.is_linear();
-        let least = if linear { 0.0 } else { f64::MIN_POSITIVE };
+        let exact = by_name[row.case.as_str()].sensor.is_polynomial();
+        let least = if exact { 0.0 } else { f64::MIN_POSITIVE };
         for (value, error) in row.scores() {
             // Smoke has noise everywhere and no method that fails: every score exists.
             let (value, error) = (value.unwrap(), error.unwrap());
