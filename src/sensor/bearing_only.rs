@@ -40,7 +40,7 @@ impl Formula for BearingOnly {
         &self.outputs
     }
 
-    #[inline]
+    #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         for ((east, north), angle) in self.lookout.seen(x).zip(y) {
             *angle = north.atan2(east);

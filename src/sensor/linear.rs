@@ -61,7 +61,7 @@ impl Formula for Linear {
         &self.outputs
     }
 
-    #[inline]
+    #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         for (j, row) in self.rows.iter().enumerate() {
             let mut sum = T::constant(self.offset[j]);

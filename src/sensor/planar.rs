@@ -72,7 +72,7 @@ impl Lookout {
     }
 
     /// The position `x` (2) seen from each station in turn, (x - sx, y - sy).
-    #[inline]
+    #[inline(always)]
     pub fn seen<T: Number>(&self, x: &[T]) -> impl Iterator<Item = (T, T)> {
         self.stations.iter().map(|s| (x[0] - T::constant(s[0]), x[1] - T::constant(s[1])))
     }

@@ -110,7 +110,7 @@ impl Formula for Quadratic {
         &self.outputs
     }
 
-    #[inline]
+    #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         for (form, output) in self.forms.iter().zip(y) {
             let mut sum = T::constant(form.constant);

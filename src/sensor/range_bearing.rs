@@ -43,7 +43,7 @@ impl Formula for RangeBearing {
         &self.outputs
     }
 
-    #[inline]
+    #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         for ((east, north), pair) in self.lookout.seen(x).zip(y.chunks_exact_mut(2)) {
             pair[0] = east.hypot(north);
