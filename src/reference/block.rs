@@ -3,13 +3,11 @@ use std::f64::consts::{PI, TAU};
 use nalgebra::{DMatrix, DVector};
 
 use super::basis::Basis;
+use super::columns::Column;
 use super::net::{BLOCK, Net};
 use super::sums::Sums;
 use crate::lanes::{Level, Simd, Task, dispatch};
 use crate::sensor::Sensor;
-
-/// One array of a block.
-pub(super) type Column = [f64; BLOCK];
 
 /// A block of points on its way from the net to the sums, one array a coordinate.
 #[derive(Debug, Clone)]
@@ -146,7 +144,7 @@ impl Task for Add<'_> {
     #[inline(always)]
     fn run<S: Simd>(self) {
         self.basis.write_columns(self.z, self.columns);
-        self.sums.add_block(self.z, self.e, self.basis, self.columns);
+        self.sums.add_block::<S>(self.z, self.e, self.basis, self.columns);
     }
 }
 

@@ -3,7 +3,8 @@ use std::f64::consts::{PI, TAU};
 use nalgebra::DVector;
 use smallvec::SmallVec;
 
-use super::block::{Block, Column};
+use super::block::Block;
+use super::columns::Column;
 use super::sums::Sums;
 use crate::lanes::{Lanes, Level, Simd, Task, dispatch};
 
