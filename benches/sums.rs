@@ -1,7 +1,9 @@
-//! A sample of a whole replicate where next to nothing but the sums is done: a linear sensor of `n` inputs and
-//! `n` outputs, by level of vector instructions. The normals are included; the bench `net` times them alone.
+//! A whole replicate where the sums weigh most, by level of vector instructions: a linear sensor of n inputs and n
+//! outputs, which asks for no control variates, and quadratic forms in 6 states with the sums of 209 of them. The
+//! normals are included; the bench `net` times them alone.
 
-use std::hint::black_box;
+mod common;
+
 use std::time::Duration;
 
 use criterion::{Criterion, Throughput};
@@ -12,7 +14,7 @@ use rayon::ThreadPoolBuilder;
 use serde_json::{Value, json};
 
 /// Samples of one reference, beside which its pilot is small.
-const SAMPLES: u64 = 1 << 19;
+const SAMPLES: u64 = 1 << 20;
 
 fn identity(n: usize) -> Value {
     json!((0..n).map(|i| (0..n).map(|k| f64::from(u8::from(i == k))).collect()).collect::<Vec<Vec<f64>>>())
@@ -28,25 +30,24 @@ fn linear(n: usize) -> Case {
     .expect("a case of ours is a case")
 }
 
+fn sums(criterion: &mut Criterion, name: &str, case: &Case) {
+    let pool = ThreadPoolBuilder::new().num_threads(1).build().expect("a pool of one thread");
+    let mut group = criterion.benchmark_group(format!("sums/{name}"));
+    group.throughput(Throughput::Elements(SAMPLES)).sample_size(10).measurement_time(Duration::from_secs(3));
+    for level in Level::available() {
+        // No error is below zero: every reference goes to its cap.
+        let settings = SamplerSettings { precision: -1.0, cap: SAMPLES, level, ..SamplerSettings::default() };
+        group.bench_function(level.to_string(), |bencher| {
+            bencher.iter(|| pool.install(|| Sampler::new(case, settings).expect("the cap is large enough").run()));
+        });
+    }
+    group.finish();
+}
+
 fn main() {
     let mut criterion = Criterion::default().configure_from_args();
-    let pool = ThreadPoolBuilder::new().num_threads(1).build().expect("a pool of one thread");
-    for n in [2, 6] {
-        let case = linear(n);
-        let mut group = criterion.benchmark_group(format!("sums/{n} inputs, {n} outputs"));
-        group.throughput(Throughput::Elements(SAMPLES)).sample_size(10).measurement_time(Duration::from_secs(3));
-        for level in Level::available() {
-            // Nothing is as precise as this: every reference goes to its cap.
-            let settings = SamplerSettings { precision: -1.0, cap: SAMPLES, level, ..SamplerSettings::default() };
-            group.bench_function(level.to_string(), |bencher| {
-                bencher.iter(|| {
-                    pool.install(|| {
-                        Sampler::new(black_box(&case), settings).expect("the cap is large enough").run()
-                    })
-                });
-            });
-        }
-        group.finish();
-    }
+    sums(&mut criterion, "linear, 2 to 2", &linear(2));
+    sums(&mut criterion, "linear, 6 to 6", &linear(6));
+    sums(&mut criterion, "quadratic, 6 to 2 with control variates", &common::quadratic());
     criterion.final_summary();
 }

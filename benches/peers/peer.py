@@ -10,6 +10,7 @@ def arguments(description):
     parser.add_argument("--log2", type=int, default=20, help="binary logarithm of the samples that are timed (20)")
     parser.add_argument("--target", type=float, default=1e-5, help="worst standardised standard error (1e-5)")
     parser.add_argument("--seed", type=int, default=1)
+    parser.add_argument("--repeats", type=int, default=3, help="times that each is done; the least counts (3)")
     return parser.parse_args()
 
 

@@ -18,11 +18,14 @@ MOST_LOG2 = 27
 
 
 def run(model, samples, seed):
-    """Seconds and worst error of `samples` in all replicates together."""
+    """Worst error of `samples` in all replicates together, seconds, and how many of these went into scrambling."""
     start = time.perf_counter()
+    scrambling = 0.0
     replicates = []
     for stream in np.random.SeedSequence(seed).spawn(REPLICATES):
+        before = time.perf_counter()
         points = qmc.Sobol(model.n, scramble=True, rng=np.random.default_rng(stream))
+        scrambling += time.perf_counter() - before
         model.start()
         for _ in range(samples // REPLICATES // CHUNK):
             z = points.random(CHUNK)
@@ -31,7 +34,14 @@ def run(model, samples, seed):
             ndtri(z, out=z)
             model.add(z.T)
         replicates.append(model.moments())
-    return time.perf_counter() - start, model.worst_error(replicates)
+    worst = model.worst_error(replicates)
+    return worst, time.perf_counter() - start, scrambling
+
+
+def least(model, samples, options):
+    """Least of some repeats: seconds, and seconds without the scrambling, which a longer run would not notice."""
+    runs = [run(model, samples, options.seed) for _ in range(options.repeats)]
+    return min(r[1] for r in runs), min(r[1] - r[2] for r in runs)
 
 
 def main():
@@ -40,19 +50,22 @@ def main():
         model = Model(name)
         run(model, REPLICATES * CHUNK, 0)
         samples = 1 << options.log2
-        seconds, worst = run(model, samples, options.seed)
+        _, seconds = least(model, samples, options)
+        worst, *_ = run(model, samples, options.seed)
         reached = interpolated = None
         before = None
         size = REPLICATES * CHUNK
         while size <= 1 << MOST_LOG2:
-            now = run(model, size, options.seed)
-            if now[1] <= options.target:
-                reached = interpolated = now[0]
+            error, *_ = run(model, size, options.seed)
+            if error <= options.target:
+                reached, _ = least(model, size, options)
+                interpolated = reached
                 if before:
-                    share = math.log(before[1] / options.target) / math.log(before[1] / now[1])
-                    interpolated = before[0] * (now[0] / before[0]) ** share
+                    share = math.log(before / options.target) / math.log(before / error)
+                    then, _ = least(model, size // 2, options)
+                    interpolated = then * (reached / then) ** share
                 break
-            before, size = now, 2 * size
+            before, size = error, 2 * size
         report("SciPy Sobol'", name, samples, seconds, worst, reached, interpolated, size)
 
 

@@ -10,8 +10,7 @@ use crate::lanes::{Lanes, Level, Simd, Task, dispatch};
 /// One array of a block.
 pub(super) type Column = [f64; BLOCK];
 
-/// Sums that run side by side: what SSE2, which needs four registers for eight lanes, has registers for is one, but
-/// two and more cost it nothing.
+/// Sums that run side by side. SSE2 has registers for one, and is no slower with four.
 const ABREAST: usize = 4;
 
 /// Adds the sum of each column to its entry of `sums`.

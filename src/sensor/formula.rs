@@ -19,6 +19,10 @@ pub trait Formula: Debug + Send + Sync {
 
     /// Writes h at the read components `x` into `y` (p).
     ///
+    /// Mark it `#[inline(always)]`: only what is inlined into the sampling loop is compiled for the vector
+    /// instructions of a [`Level`]; left apart, a sample of a three-dimensional sensor took thirteen times as long
+    /// with AVX2.
+    ///
     /// # Panics
     /// May panic if `x` or `y` is shorter than [`Formula::reads`] or [`Formula::outputs`].
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]);
