@@ -90,7 +90,7 @@ def seconds(value):
 
 
 def times(value):
-    return f"{value:,.0f}x" if value >= 100 else f"{value:.1f}x"
+    return f"{value:,.0f}x" if value >= 100 else f"{value:.1f}x" if value >= 0.1 else f"{value:.1e}x"
 
 
 def ratios(rounds, model, peer, program, key):

@@ -1,6 +1,6 @@
 use smallvec::SmallVec;
 
-use super::columns::{Column, Product, add_products};
+use super::columns::{Column, Last, Run, add_runs};
 use crate::lanes::Simd;
 
 /// Hermite polynomials of z up to a total degree, the constant left out: their expectation under N(0, I) is zero,
@@ -15,11 +15,11 @@ pub(super) struct Basis {
     degree: usize,
     /// Each a product of factors (axis, degree), by rising total degree.
     terms: Vec<SmallVec<[(usize, usize); 4]>>,
-    /// The same by number of factors, as columns to be multiplied and summed.
-    ones: Vec<Product<1>>,
-    twos: Vec<Product<2>>,
-    threes: Vec<Product<3>>,
-    fours: Vec<Product<4>>,
+    /// The same by number of factors, as runs of columns to be multiplied and summed.
+    ones: Vec<Run<0>>,
+    twos: Vec<Run<1>>,
+    threes: Vec<Run<2>>,
+    fours: Vec<Run<3>>,
 }
 
 impl Basis {
@@ -31,10 +31,10 @@ impl Basis {
             extend(&mut terms, axes, 0, total, SmallVec::new());
         }
         Self {
-            ones: of_factors(&terms, degree),
-            twos: of_factors(&terms, degree),
-            threes: of_factors(&terms, degree),
-            fours: of_factors(&terms, degree),
+            ones: runs(&terms, degree),
+            twos: runs(&terms, degree),
+            threes: runs(&terms, degree),
+            fours: runs(&terms, degree),
             axes,
             degree,
             terms,
@@ -81,10 +81,10 @@ impl Basis {
     /// Adds the sums of a block to `sums`, one a polynomial.
     #[inline(always)]
     pub fn add_block<S: Simd>(&self, columns: &[Column], sums: &mut [f64]) {
-        add_products::<S, 1>(columns, &self.ones, sums);
-        add_products::<S, 2>(columns, &self.twos, sums);
-        add_products::<S, 3>(columns, &self.threes, sums);
-        add_products::<S, 4>(columns, &self.fours, sums);
+        add_runs::<S, 0>(columns, &self.ones, sums);
+        add_runs::<S, 1>(columns, &self.twos, sums);
+        add_runs::<S, 2>(columns, &self.threes, sums);
+        add_runs::<S, 3>(columns, &self.fours, sums);
     }
 
     /// Writes every polynomial of a block, one column each.
@@ -100,14 +100,20 @@ impl Basis {
     }
 }
 
-/// The terms of K factors.
-fn of_factors<const K: usize>(terms: &[SmallVec<[(usize, usize); 4]>], degree: usize) -> Vec<Product<K>> {
-    let columns = |&(axis, d): &(usize, usize)| axis * degree + d - 1;
-    let product = |(place, term): (usize, &SmallVec<[(usize, usize); 4]>)| {
-        let factors: SmallVec<[usize; 4]> = term.iter().map(columns).collect();
-        Some(Product { factors: factors.as_slice().try_into().ok()?, place })
-    };
-    terms.iter().enumerate().filter_map(product).collect()
+/// The terms of K + 1 factors, those with the same first K together.
+fn runs<const K: usize>(terms: &[SmallVec<[(usize, usize); 4]>], degree: usize) -> Vec<Run<K>> {
+    let mut runs: Vec<Run<K>> = Vec::new();
+    for (place, term) in terms.iter().enumerate() {
+        let factors: SmallVec<[usize; 4]> = term.iter().map(|&(axis, d)| axis * degree + d - 1).collect();
+        let Some((&column, shared)) = factors.split_last() else { continue };
+        let Ok(shared) = <[usize; K]>::try_from(shared) else { continue };
+        let last = Last { column, place };
+        match runs.iter_mut().find(|run| run.shared == shared) {
+            Some(run) => run.lasts.push(last),
+            None => runs.push(Run { shared, lasts: vec![last] }),
+        }
+    }
+    runs
 }
 
 /// Adds every term of total degree `left` in the axes from `axis` on, after the factors `chosen`.
