@@ -167,7 +167,7 @@ mod tests {
     fn check<const K: usize>(level: Level, columns: &[Column]) {
         for length in 1..=7 {
             let lasts = (0..length).map(|n| Last { column: (n + 3) % 7, place: length - 1 - n }).collect();
-            let run = Run { shared: std::array::from_fn(|k| 2 * k), lasts };
+            let run: Run<K> = Run { shared: std::array::from_fn(|k| 2 * k), lasts };
             let mut sums = vec![1.0; length];
             dispatch(level, Runs(columns, std::slice::from_ref(&run), &mut sums));
             for last in &run.lasts {
