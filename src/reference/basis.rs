@@ -1,7 +1,7 @@
 use smallvec::SmallVec;
 
-use super::net::BLOCK;
-use super::sums::{dot, dot3, dot4, total};
+use super::columns::{Column, Last, Run, add_runs};
+use crate::lanes::Simd;
 
 /// Hermite polynomials of z up to a total degree, the constant left out: their expectation under N(0, I) is zero,
 /// so their sample means are known errors that can be taken out of other sample means.
@@ -15,6 +15,11 @@ pub(super) struct Basis {
     degree: usize,
     /// Each a product of factors (axis, degree), by rising total degree.
     terms: Vec<SmallVec<[(usize, usize); 4]>>,
+    /// The same by number of factors, as runs of columns to be multiplied and summed.
+    ones: Vec<Run<0>>,
+    twos: Vec<Run<1>>,
+    threes: Vec<Run<2>>,
+    fours: Vec<Run<3>>,
 }
 
 impl Basis {
@@ -25,7 +30,15 @@ impl Basis {
         for total in 1..=degree {
             extend(&mut terms, axes, 0, total, SmallVec::new());
         }
-        Self { axes, degree, terms }
+        Self {
+            ones: runs(&terms, degree),
+            twos: runs(&terms, degree),
+            threes: runs(&terms, degree),
+            fours: runs(&terms, degree),
+            axes,
+            degree,
+            terms,
+        }
     }
 
     /// The highest total degree.
@@ -51,7 +64,7 @@ impl Basis {
 
     /// Writes the one-dimensional polynomials of a block, axis by axis.
     #[inline(always)]
-    pub fn write_columns(&self, z: &[[f64; BLOCK]], columns: &mut [[f64; BLOCK]]) {
+    pub fn write_columns(&self, z: &[Column], columns: &mut [Column]) {
         if self.degree == 0 {
             return;
         }
@@ -72,21 +85,15 @@ impl Basis {
 
     /// Adds the sums of a block to `sums`, one a polynomial.
     #[inline(always)]
-    pub fn add_block(&self, columns: &[[f64; BLOCK]], sums: &mut [f64]) {
-        let column = |&(axis, degree): &(usize, usize)| &columns[axis * self.degree + degree - 1];
-        for (term, sum) in self.terms.iter().zip(sums) {
-            *sum += match term.as_slice() {
-                [f] => total(column(f)),
-                [f, g] => dot(column(f), column(g)),
-                [f, g, h] => dot3(column(f), column(g), column(h)),
-                [f, g, h, i] => dot4(column(f), column(g), column(h), column(i)),
-                _ => 0.0,
-            };
-        }
+    pub fn add_block<S: Simd>(&self, columns: &[Column], sums: &mut [f64]) {
+        add_runs::<S, 0>(columns, &self.ones, sums);
+        add_runs::<S, 1>(columns, &self.twos, sums);
+        add_runs::<S, 2>(columns, &self.threes, sums);
+        add_runs::<S, 3>(columns, &self.fours, sums);
     }
 
     /// Writes every polynomial of a block, one column each.
-    pub fn write_products(&self, columns: &[[f64; BLOCK]], products: &mut [[f64; BLOCK]]) {
+    pub fn write_products(&self, columns: &[Column], products: &mut [Column]) {
         for (term, product) in self.terms.iter().zip(products) {
             product.fill(1.0);
             for &(axis, degree) in term {
@@ -96,6 +103,22 @@ impl Basis {
             }
         }
     }
+}
+
+/// The terms of K + 1 factors, those with the same first K together.
+fn runs<const K: usize>(terms: &[SmallVec<[(usize, usize); 4]>], degree: usize) -> Vec<Run<K>> {
+    let mut runs: Vec<Run<K>> = Vec::new();
+    for (place, term) in terms.iter().enumerate() {
+        let factors: SmallVec<[usize; 4]> = term.iter().map(|&(axis, d)| axis * degree + d - 1).collect();
+        let Some((&column, shared)) = factors.split_last() else { continue };
+        let Ok(shared) = <[usize; K]>::try_from(shared) else { continue };
+        let last = Last { column, place };
+        match runs.iter_mut().find(|run| run.shared == shared) {
+            Some(run) => run.lasts.push(last),
+            None => runs.push(Run { shared, lasts: vec![last] }),
+        }
+    }
+    runs
 }
 
 /// Adds every term of total degree `left` in the axes from `axis` on, after the factors `chosen`.
@@ -122,6 +145,19 @@ fn extend(
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::lanes::{Level, Task, dispatch};
+    use crate::reference::net::BLOCK;
+
+    struct Add<'a>(&'a Basis, &'a [Column], &'a mut [f64]);
+
+    impl Task for Add<'_> {
+        type Output = ();
+
+        #[inline(always)]
+        fn run<S: Simd>(self) {
+            self.0.add_block::<S>(self.1, self.2);
+        }
+    }
 
     #[test]
     fn there_are_as_many_terms_as_monomials() {
@@ -163,7 +199,9 @@ mod tests {
         let mut products = vec![[0.0; BLOCK]; basis.len()];
         basis.write_columns(&z, &mut columns);
         basis.write_products(&columns, &mut products);
+        let dot = |x: &Column, y: &Column| x.iter().zip(y).map(|(x, y)| x * y).sum::<f64>();
         for (s, left) in products.iter().enumerate() {
+            let weighted = std::array::from_fn(|k| left[k] * weights[k]);
             assert!(dot(left, &weights).abs() < 1e-13, "mean of term {s}");
             for (t, right) in products.iter().enumerate() {
                 let expected: f64 = if s == t {
@@ -171,11 +209,12 @@ mod tests {
                 } else {
                     0.0
                 };
-                assert!((dot3(left, right, &weights) - expected).abs() < 1e-11, "terms {s} and {t}");
+                assert!((dot(&weighted, right) - expected).abs() < 1e-11, "terms {s} and {t}");
             }
         }
         let mut sums = vec![0.0; basis.len()];
-        basis.add_block(&columns, &mut sums);
+        dispatch(Level::best(), Add(&basis, &columns, &mut sums));
+        let total = |x: &Column| x.iter().sum::<f64>();
         for (sum, product) in sums.iter().zip(&products) {
             assert!((sum - total(product)).abs() < 1e-9 * total(&product.map(f64::abs)));
         }

@@ -1,15 +1,14 @@
 use std::f64::consts::{PI, TAU};
 
 use nalgebra::{DMatrix, DVector};
+use smallvec::SmallVec;
 
 use super::basis::Basis;
+use super::columns::Column;
 use super::net::{BLOCK, Net};
 use super::sums::Sums;
-use crate::lanes::{Level, Simd, Task, dispatch};
+use crate::lanes::{Lanes, Level, Simd, Task, dispatch};
 use crate::sensor::Sensor;
-
-/// One array of a block.
-pub(super) type Column = [f64; BLOCK];
 
 /// A block of points on its way from the net to the sums, one array a coordinate.
 #[derive(Debug, Clone)]
@@ -93,9 +92,9 @@ impl Task for Place<'_> {
     #[inline(always)]
     fn run<S: Simd>(self) {
         for (i, x) in self.x.iter_mut().enumerate() {
-            x.fill(self.mean[i]);
-            for (k, z) in self.z.iter().enumerate() {
-                add_scaled(x, self.root[(i, k)], z);
+            let terms = terms(self.root.row(i).iter().copied(), self.z);
+            for (eight, x) in x.as_chunks_mut().0.iter_mut().enumerate() {
+                *x = add_terms(Lanes::<S>::splat(self.mean[i]), &terms, eight).to_array();
             }
         }
     }
@@ -116,17 +115,15 @@ impl Task for Subtract<'_> {
     #[inline(always)]
     fn run<S: Simd>(self) {
         for (j, (deviation, e)) in self.deviation.iter_mut().zip(self.e).enumerate() {
-            for v in deviation.iter_mut() {
-                *v -= self.centre[j];
-            }
-            if self.angular[j] {
-                for v in deviation.iter_mut() {
-                    *v = wrapped(*v);
+            let terms = terms(self.slope.row(j).iter().map(|slope| -slope), self.z);
+            let eights = deviation.as_chunks_mut().0.iter_mut().zip(e.as_chunks_mut().0);
+            for (eight, (deviation, e)) in eights.enumerate() {
+                let mut d = Lanes::<S>::from_array(deviation) - self.centre[j];
+                if self.angular[j] {
+                    d = wrapped(d);
                 }
-            }
-            *e = *deviation;
-            for (k, z) in self.z.iter().enumerate() {
-                add_scaled(e, -self.slope[(j, k)], z);
+                *deviation = d.to_array();
+                *e = add_terms(d, &terms, eight).to_array();
             }
         }
     }
@@ -146,34 +143,60 @@ impl Task for Add<'_> {
     #[inline(always)]
     fn run<S: Simd>(self) {
         self.basis.write_columns(self.z, self.columns);
-        self.sums.add_block(self.z, self.e, self.basis, self.columns);
+        self.sums.add_block::<S>(self.z, self.e, self.basis, self.columns);
     }
 }
+
+/// What a linear map's row makes of z: its factors that are not zero, each with its column.
+type Terms<'a> = SmallVec<[(f64, &'a Column); 8]>;
 
 #[inline(always)]
-fn add_scaled(to: &mut Column, factor: f64, from: &Column) {
-    if factor != 0.0 {
-        for (t, f) in to.iter_mut().zip(from) {
-            *t += factor * f;
-        }
-    }
+fn terms(factors: impl Iterator<Item = f64>, z: &[Column]) -> Terms<'_> {
+    factors.zip(z).filter(|(factor, _)| *factor != 0.0).collect()
 }
 
-/// An angle wrapped to (-pi, pi] without a branch, as [`wrap`](crate::gaussian::wrap) does for all within many
+/// `start` and the terms' values of eight points, one after the other.
+#[inline(always)]
+fn add_terms<S: Simd>(start: Lanes<S>, terms: &Terms<'_>, eight: usize) -> Lanes<S> {
+    let mut sum = start;
+    for (factor, column) in terms {
+        sum = sum + *factor * Lanes::from_array(&column.as_chunks().0[eight]);
+    }
+    sum
+}
+
+/// Angles wrapped to (-pi, pi] without a branch, as [`wrap`](crate::gaussian::wrap) does for all within many
 /// turns: whole turns are counted by adding and subtracting 1.5 2^52, which rounds to a whole number.
 #[inline(always)]
-fn wrapped(angle: f64) -> f64 {
+fn wrapped<S: Simd>(angle: Lanes<S>) -> Lanes<S> {
     const MAGIC: f64 = 6_755_399_441_055_744.0;
     let turns = (angle * (1.0 / TAU) + MAGIC) - MAGIC;
     let d = angle - turns * TAU;
-    let d = if d > PI { d - TAU } else { d };
-    if d <= -PI { d + TAU } else { d }
+    let d = d.greater(Lanes::splat(PI)).select(d - TAU, d);
+    d.at_most(Lanes::splat(-PI)).select(d + TAU, d)
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
     use crate::gaussian::wrap;
+
+    struct Wrap<'a>(&'a mut [f64; 8]);
+
+    impl Task for Wrap<'_> {
+        type Output = ();
+
+        #[inline(always)]
+        fn run<S: Simd>(self) {
+            *self.0 = super::wrapped(Lanes::<S>::from_array(self.0)).to_array();
+        }
+    }
+
+    fn wrapped(angle: f64) -> f64 {
+        let mut angles = [angle; 8];
+        dispatch(Level::best(), Wrap(&mut angles));
+        angles[0]
+    }
 
     #[test]
     fn wrapping_without_a_branch_is_wrapping() {

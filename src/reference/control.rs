@@ -3,9 +3,11 @@
 use nalgebra::{Cholesky, DMatrix};
 
 use super::basis::Basis;
-use super::block::{Block, Column};
+use super::block::Block;
+use super::columns::{Column, add_dots};
 use super::net::BLOCK;
-use super::sums::{Sums, dot, total};
+use super::sums::Sums;
+use crate::lanes::{Level, Simd, Task, dispatch};
 
 /// Regression of every integrand on the control variates.
 ///
@@ -88,19 +90,8 @@ impl Regression {
     }
 
     /// Adds a block of the pilot.
-    pub fn add(&mut self, block: &Block) {
-        self.basis.write_columns(&block.z, &mut self.columns);
-        self.products[0].fill(1.0);
-        self.basis.write_products(&self.columns, &mut self.products[1..]);
-        write_integrands(&block.z, &block.e, &mut self.integrands);
-        for s in 0..self.products.len() {
-            for t in 0..=s {
-                self.gram[(s, t)] += dot(&self.products[s], &self.products[t]);
-            }
-            for (m, integrand) in self.integrands.iter().enumerate() {
-                self.cross[(s, m)] += if s == 0 { total(integrand) } else { dot(&self.products[s], integrand) };
-            }
-        }
+    pub fn add(&mut self, block: &Block, level: Level) {
+        dispatch(level, AddPilot { block, regression: self });
     }
 
     /// The coefficients on the polynomials up to `degree`, at most that of the regression; no controls where the
@@ -115,6 +106,32 @@ impl Regression {
         match solved.filter(|c| c.iter().all(|v| v.is_finite())) {
             Some(coefficients) => Controls { basis, coefficients: coefficients.remove_row(0) },
             None => Controls::none(a, p),
+        }
+    }
+}
+
+struct AddPilot<'a> {
+    block: &'a Block,
+    regression: &'a mut Regression,
+}
+
+impl Task for AddPilot<'_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn run<S: Simd>(self) {
+        let Regression { basis, gram, cross, columns, products, integrands } = self.regression;
+        basis.write_columns(&self.block.z, columns);
+        products[0].fill(1.0);
+        basis.write_products(columns, &mut products[1..]);
+        write_integrands(&self.block.z, &self.block.e, integrands);
+        // Column by column, of the Gram matrix what stands on and below the diagonal.
+        let k = products.len();
+        for (t, (left, column)) in products.iter().zip(gram.as_mut_slice().chunks_exact_mut(k)).enumerate() {
+            add_dots::<S>(left, &products[t..], &mut column[t..]);
+        }
+        for (integrand, column) in integrands.iter().zip(cross.as_mut_slice().chunks_exact_mut(k)) {
+            add_dots::<S>(integrand, products, column);
         }
     }
 }

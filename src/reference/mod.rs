@@ -8,6 +8,7 @@
 mod basis;
 mod block;
 mod chart;
+mod columns;
 mod control;
 mod estimate;
 mod foresight;

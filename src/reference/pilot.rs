@@ -6,10 +6,11 @@ use rand_pcg::Pcg64Dxsm;
 use super::basis::Basis;
 use super::block::Block;
 use super::chart::CircularSum;
+use super::columns::{add_dots_at, add_totals_at};
 use super::control::{Controls, Means, Regression};
 use super::net::{BLOCK, Net};
 use super::stream::Key;
-use super::sums::{Sums, dot, total};
+use super::sums::Sums;
 use crate::gaussian::Gaussian;
 use crate::lanes::Level;
 use crate::sensor::Sensor;
@@ -106,17 +107,13 @@ impl Pilot {
                     circles[j].add(d);
                     far[j] |= d.iter().any(|d| d.abs() > FAR);
                 }
-                d_sum[j] += total(d);
-                for (i, z) in block.z.iter().enumerate() {
-                    zd[(i, j)] += dot(z, d);
-                }
+                add_dots_at(question.level, d, &block.z, &mut zd.as_mut_slice()[j * a..(j + 1) * a]);
             }
             for (i, z) in block.z.iter().enumerate() {
-                z_sum[i] += total(z);
-                for (k, other) in block.z.iter().enumerate() {
-                    zz[(i, k)] += dot(z, other);
-                }
+                add_dots_at(question.level, z, &block.z, &mut zz.as_mut_slice()[i * a..(i + 1) * a]);
             }
+            add_totals_at(question.level, &block.deviation, d_sum.as_mut_slice());
+            add_totals_at(question.level, &block.z, z_sum.as_mut_slice());
         }
         // Least squares, not the covariance with z: on a linear sensor the fit is then exact and nothing is left to
         // chance, however small the noise is beside the spread.
@@ -158,7 +155,7 @@ impl Pilot {
             take_stream(&mut block, &mut question.key.pilot(b));
             question.evaluate(&mut block);
             block.subtract(&self.centre, &question.angular, &self.slope);
-            regression.add(&block);
+            regression.add(&block, question.level);
         }
         let candidates: Vec<Controls> = std::iter::once(Controls::none(a, p))
             .chain(degrees.iter().map(|&d| regression.solve(d, a, p)))

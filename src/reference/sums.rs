@@ -1,5 +1,7 @@
 use super::basis::Basis;
+use super::columns::{Column, add_dots, add_totals, raise_to_largest};
 use super::net::BLOCK;
+use crate::lanes::Simd;
 
 /// Sums over the points of one replicate, on which every moment rests.
 ///
@@ -39,28 +41,19 @@ impl Sums {
 
     /// Adds a block: z and e one array a coordinate.
     #[inline(always)]
-    pub fn add_block(&mut self, z: &[[f64; BLOCK]], e: &[[f64; BLOCK]], basis: &Basis, columns: &[[f64; BLOCK]]) {
+    pub fn add_block<S: Simd>(&mut self, z: &[Column], e: &[Column], basis: &Basis, columns: &[Column]) {
         self.count += BLOCK as f64;
-        for (sum, column) in self.z.iter_mut().zip(z) {
-            *sum += total(column);
-        }
-        for ((sum, farthest), column) in self.e.iter_mut().zip(&mut self.farthest).zip(e) {
-            *sum += total(column);
-            *farthest = largest(column).max(*farthest);
-        }
-        let mut ee = self.ee.iter_mut();
+        add_totals::<S>(z, &mut self.z);
+        add_totals::<S>(e, &mut self.e);
+        raise_to_largest::<S>(e, &mut self.farthest);
         for (j, left) in e.iter().enumerate() {
-            for (right, sum) in e[..=j].iter().zip(&mut ee) {
-                *sum += dot(left, right);
-            }
+            let row = Self::pair(j, 0);
+            add_dots::<S>(left, &e[..=j], &mut self.ee[row..=row + j]);
         }
-        let a = z.len();
-        for (j, output) in e.iter().enumerate() {
-            for (input, sum) in z.iter().zip(&mut self.ze[j * a..(j + 1) * a]) {
-                *sum += dot(input, output);
-            }
+        for (output, sums) in e.iter().zip(self.ze.chunks_exact_mut(z.len())) {
+            add_dots::<S>(output, z, sums);
         }
-        basis.add_block(columns, &mut self.basis);
+        basis.add_block::<S>(columns, &mut self.basis);
     }
 
     /// Place of e_j e_k among the packed products.
@@ -96,89 +89,33 @@ impl Sums {
     }
 }
 
-const LANES: usize = 8;
-
-/// Sum of a column in eight fixed lanes.
-#[inline(always)]
-pub(super) fn total(column: &[f64; BLOCK]) -> f64 {
-    let mut lanes = [0.0; LANES];
-    for chunk in column.as_chunks::<LANES>().0 {
-        for i in 0..LANES {
-            lanes[i] += chunk[i];
-        }
-    }
-    fold(lanes)
-}
-
-/// Largest size in a column.
-#[inline(always)]
-fn largest(column: &[f64; BLOCK]) -> f64 {
-    let mut lanes = [0.0; LANES];
-    for chunk in column.as_chunks::<LANES>().0 {
-        for i in 0..LANES {
-            let size = chunk[i].abs();
-            lanes[i] = if size > lanes[i] { size } else { lanes[i] };
-        }
-    }
-    lanes.iter().copied().fold(0.0, f64::max)
-}
-
-/// Sum of products of two columns in eight fixed lanes.
-#[inline(always)]
-pub(super) fn dot(x: &[f64; BLOCK], y: &[f64; BLOCK]) -> f64 {
-    let mut lanes = [0.0; LANES];
-    for (x, y) in x.as_chunks::<LANES>().0.iter().zip(y.as_chunks::<LANES>().0) {
-        for i in 0..LANES {
-            lanes[i] += x[i] * y[i];
-        }
-    }
-    fold(lanes)
-}
-
-/// Sum of products of three columns in eight fixed lanes.
-#[inline(always)]
-pub(super) fn dot3(x: &[f64; BLOCK], y: &[f64; BLOCK], w: &[f64; BLOCK]) -> f64 {
-    let mut lanes = [0.0; LANES];
-    let (x, y, w) = (x.as_chunks::<LANES>().0, y.as_chunks::<LANES>().0, w.as_chunks::<LANES>().0);
-    for ((x, y), w) in x.iter().zip(y).zip(w) {
-        for i in 0..LANES {
-            lanes[i] += x[i] * y[i] * w[i];
-        }
-    }
-    fold(lanes)
-}
-
-/// Sum of products of four columns in eight fixed lanes.
-#[inline(always)]
-pub(super) fn dot4(x: &[f64; BLOCK], y: &[f64; BLOCK], w: &[f64; BLOCK], v: &[f64; BLOCK]) -> f64 {
-    let mut lanes = [0.0; LANES];
-    let (x, y) = (x.as_chunks::<LANES>().0, y.as_chunks::<LANES>().0);
-    let (w, v) = (w.as_chunks::<LANES>().0, v.as_chunks::<LANES>().0);
-    for (((x, y), w), v) in x.iter().zip(y).zip(w).zip(v) {
-        for i in 0..LANES {
-            lanes[i] += (x[i] * y[i]) * (w[i] * v[i]);
-        }
-    }
-    fold(lanes)
-}
-
-#[inline(always)]
-fn fold(lanes: [f64; LANES]) -> f64 {
-    ((lanes[0] + lanes[1]) + (lanes[2] + lanes[3])) + ((lanes[4] + lanes[5]) + (lanes[6] + lanes[7]))
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::lanes::{Level, Task, dispatch};
 
-    fn column(phase: f64) -> [f64; BLOCK] {
+    struct Add<'a> {
+        z: &'a [Column],
+        e: &'a [Column],
+        sums: &'a mut Sums,
+    }
+
+    impl Task for Add<'_> {
+        type Output = ();
+
+        #[inline(always)]
+        fn run<S: Simd>(self) {
+            self.sums.add_block::<S>(self.z, self.e, &Basis::new(self.z.len(), 0), &[]);
+        }
+    }
+
+    fn column(phase: f64) -> Column {
         std::array::from_fn(|k| (phase + 0.7 * k as f64).sin() + 0.1 * phase)
     }
 
-    fn sums(z: &[[f64; BLOCK]], e: &[[f64; BLOCK]]) -> Sums {
-        let basis = Basis::new(z.len(), 0);
+    fn sums(z: &[Column], e: &[Column]) -> Sums {
         let mut sums = Sums::empty(z.len(), e.len(), 0);
-        sums.add_block(z, e, &basis, &[]);
+        dispatch(Level::best(), Add { z, e, sums: &mut sums });
         sums
     }
 
@@ -207,15 +144,5 @@ mod tests {
         moved.move_point(&[z[0][17], z[1][17]], &[e[0][17], e[1][17]], 0, -6.25);
         e[0][17] -= 6.25;
         close(&moved, &sums(&z, &e));
-    }
-
-    #[test]
-    fn products_of_columns_are_summed() {
-        let (x, y, w, v) = (column(0.1), column(0.2), column(0.3), column(0.4));
-        let plain = |f: &dyn Fn(usize) -> f64| (0..BLOCK).map(f).sum::<f64>();
-        assert!((total(&x) - plain(&|k| x[k])).abs() < 1e-12);
-        assert!((dot(&x, &y) - plain(&|k| x[k] * y[k])).abs() < 1e-12);
-        assert!((dot3(&x, &y, &w) - plain(&|k| x[k] * y[k] * w[k])).abs() < 1e-12);
-        assert!((dot4(&x, &y, &w, &v) - plain(&|k| x[k] * y[k] * w[k] * v[k])).abs() < 1e-12);
     }
 }

@@ -19,7 +19,9 @@ pub trait Formula: Debug + Send + Sync {
 
     /// Writes h at the read components `x` into `y` (p).
     ///
-    /// Mark it `#[inline(always)]`: on [`Lanes`](crate::lanes::Lanes) only what is inlined is fast.
+    /// Mark it `#[inline(always)]`: only what is inlined into the sampling loop is compiled for the vector
+    /// instructions of a [`Level`]; left apart, a sample of a three-dimensional sensor took thirteen times as long
+    /// with AVX2.
     ///
     /// # Panics
     /// May panic if `x` or `y` is shorter than [`Formula::reads`] or [`Formula::outputs`].
