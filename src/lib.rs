@@ -20,4 +20,5 @@ pub mod sensor;
 pub mod suite;
 pub mod survey;
 pub mod trust;
+mod whole_file;
 mod wording;

@@ -4,9 +4,10 @@ use std::path::PathBuf;
 use anyhow::{Context, anyhow};
 use clap::Args;
 use gaussworthy::method::MethodSpec;
+use gaussworthy::reference::Store;
 use gaussworthy::report::{CAUTION, ResultsFolder, write_summary};
 use gaussworthy::suite::Suite;
-use gaussworthy::survey::{SurveyPlan, SurveySettings, summarise, survey};
+use gaussworthy::survey::{Shard, SurveyPlan, SurveySettings, summarise, survey};
 
 use super::Failure;
 use super::progress::{Progress, heed_interrupts};
@@ -37,6 +38,15 @@ pub struct Arguments {
     /// Methods, such as taylor-1,gauss-hermite:order=5 (see `catalogue methods`)
     #[arg(long, value_name = "M,...", value_delimiter = ',')]
     methods: Option<Vec<String>>,
+    /// Do part K of N of every suite's cases, to be joined by `merge`; parts are not timed
+    #[arg(long, value_name = "K/N")]
+    shard: Option<Shard>,
+    /// Where sampled references are kept and found again; `.references` in the --out folder unless told
+    #[arg(long, value_name = "DIR")]
+    store: Option<PathBuf>,
+    /// Sample everything anew and write over what is stored
+    #[arg(long)]
+    fresh: bool,
     /// Leave the timing phase out
     #[arg(long)]
     no_timing: bool,
@@ -48,8 +58,10 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
         precision: arguments.precision,
         cap: arguments.cap,
         methods: arguments.methods.as_deref().map(methods).transpose()?,
+        shard: arguments.shard,
+        store: None,
     };
-    let jobs = suites(&arguments)?
+    let mut jobs = suites(&arguments)?
         .into_iter()
         .map(|suite| {
             let plan = SurveyPlan::new(&suite, &settings)
@@ -61,6 +73,10 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
             Ok((suite, plan, folder))
         })
         .collect::<Result<Vec<_>, Failure>>()?;
+    let store = store(&arguments)?;
+    for (_, plan, _) in &mut jobs {
+        plan.store = Some(store.clone());
+    }
     if let Some(threads) = arguments.threads {
         rayon::ThreadPoolBuilder::new().num_threads(threads.into()).build_global().map_err(Failure::unfinished)?;
     }
@@ -68,7 +84,8 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
 
     let mut out = Stdout::new();
     for (suite, plan, folder) in &jobs {
-        let progress = Progress::new(&suite.name, suite.cases.len());
+        let asked = plan.shard.map_or(suite.cases.len(), |shard| shard.share(suite.cases.len()));
+        let progress = Progress::new(&suite.name, asked);
         let result = survey(suite, plan, !arguments.no_timing, &progress);
         progress.finish();
         folder.write(&result).map_err(Failure::unfinished)?;
@@ -79,12 +96,18 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
                 "interrupted in suite `{}`: {} of {} cases are finished and written",
                 suite.name,
                 result.cases.len(),
-                suite.cases.len()
+                asked
             )));
         }
     }
     writeln!(out, "{CAUTION}")?;
     Ok(())
+}
+
+fn store(arguments: &Arguments) -> Result<Store, Failure> {
+    let folder = arguments.store.clone().unwrap_or_else(|| arguments.out.join(".references"));
+    let store = Store::open(&folder).context("store of references").map_err(Failure::Input)?;
+    Ok(if arguments.fresh { store.fresh() } else { store })
 }
 
 fn suites(arguments: &Arguments) -> Result<Vec<Suite>, Failure> {

@@ -2,8 +2,9 @@ use nalgebra::DMatrix;
 
 use super::block::Block;
 use super::chart::Charts;
-use super::net::{BLOCK, Net};
+use super::net::Net;
 use super::pilot::{Pilot, Question, take_stream};
+use super::state::Place;
 use super::sums::Sums;
 use crate::gaussian::Moments;
 
@@ -73,8 +74,14 @@ impl Replicate {
         self.charts.remember_near_cut(block);
     }
 
-    pub fn points(&self) -> u64 {
-        self.blocks * BLOCK as u64
+    /// Takes up the place of another that has `blocks` blocks in already.
+    pub fn take_up(&mut self, blocks: u64, place: Place) {
+        (self.blocks, self.sums, self.charts) = (blocks, place.sums, place.charts);
+    }
+
+    /// Where it stands.
+    pub fn place(&self) -> Place {
+        Place { sums: self.sums.clone(), charts: self.charts.clone() }
     }
 
     pub fn charts(&self) -> &Charts {

@@ -1,11 +1,12 @@
 use nalgebra::DMatrix;
 use rayon::prelude::*;
 
-use super::chart::CircularSum;
 use super::estimate::{Reference, Soundness, combine, worst_standardised};
+use super::net::BLOCK;
 use super::pilot::{Pilot, Question};
 use super::replicate::Replicate;
 use super::settings::{SamplerError, SamplerSettings};
+use super::state::{Look, ResumeError, SamplerState};
 use super::stream::Key;
 use crate::gaussian::{Gaussian, Marginal, Moments, wrap};
 use crate::sensor::Sensor;
@@ -32,7 +33,10 @@ pub struct Sampler<'a> {
     noise: DMatrix<f64>,
     settings: SamplerSettings,
     replicates: Vec<Replicate>,
-    blocks: u64,
+    /// What was found at every doubling, also at those that are still to be walked through again.
+    looks: Vec<Look>,
+    /// How many of the looks were taken.
+    taken: usize,
 }
 
 impl<'a> Sampler<'a> {
@@ -72,21 +76,57 @@ impl<'a> Sampler<'a> {
         let replicates = (0..settings.replicates as u64)
             .map(|r| Replicate::new(r, settings.log2(), &question, &pilot))
             .collect();
-        Ok(Self { question, pilot, marginal, prior, noise, settings, replicates, blocks: 0 })
+        let (looks, taken) = (Vec::new(), 0);
+        Ok(Self { question, pilot, marginal, prior, noise, settings, replicates, looks, taken })
+    }
+
+    /// A sampler of `case` that has `state` behind it.
+    ///
+    /// It starts before the first sample, as a new one does, and gives the same bits at every doubling; as far as the
+    /// state reaches, doubling costs nothing.
+    ///
+    /// # Errors
+    /// [`ResumeError`] if the settings cannot be meant, or the state is not one of this case under these settings.
+    pub fn resume(case: &'a Case, settings: SamplerSettings, state: SamplerState) -> Result<Self, ResumeError> {
+        let mut sampler = Self::new(case, settings)?;
+        state.check(&sampler.question, sampler.pilot.controls.basis.len(), &settings)?;
+        let blocks = state.blocks();
+        for (replicate, place) in sampler.replicates.iter_mut().zip(state.places) {
+            replicate.take_up(blocks, place);
+        }
+        sampler.looks = state.looks;
+        Ok(sampler)
+    }
+
+    /// Everything sampled so far, and in the state that this sampler began with.
+    pub fn state(&self) -> SamplerState {
+        SamplerState { looks: self.looks.clone(), places: self.replicates.iter().map(Replicate::place).collect() }
     }
 
     /// Samples of h so far, all replicates together.
     pub fn points(&self) -> u64 {
-        self.replicates.iter().map(Replicate::points).sum()
+        self.blocks() * BLOCK as u64 * self.replicates.len() as u64
+    }
+
+    fn blocks(&self) -> u64 {
+        self.look().map_or(0, |look| look.blocks)
+    }
+
+    /// The latest look.
+    fn look(&self) -> Option<&Look> {
+        self.looks[..self.taken].last()
     }
 
     /// Doubles the number of points (the first time: takes the first 1024 a replicate), within the cap.
     /// Returns whether there was room for any.
     pub fn deepen(&mut self) -> bool {
-        let Some(blocks) = self.settings.blocks_after(self.blocks) else { return false };
-        self.blocks = blocks;
-        let (question, pilot) = (&self.question, &self.pilot);
-        self.replicates.par_iter_mut().for_each(|r| r.deepen(blocks, question, pilot));
+        let Some(blocks) = self.settings.blocks_after(self.blocks()) else { return false };
+        if self.taken == self.looks.len() {
+            let (question, pilot) = (&self.question, &self.pilot);
+            self.replicates.par_iter_mut().for_each(|r| r.deepen(blocks, question, pilot));
+            self.looks.push(Look::at(blocks, &self.replicates, question, pilot, &self.noise));
+        }
+        self.taken += 1;
         true
     }
 
@@ -106,12 +146,8 @@ impl<'a> Sampler<'a> {
     /// # Panics
     /// If nothing was sampled yet.
     pub fn reference(&self) -> Reference {
-        assert!(self.blocks > 0, "a reference before the first sample");
-        let mut replicates: Vec<Moments> = self
-            .replicates
-            .iter()
-            .map(|r| self.lifted(r.moments(&self.question, &self.pilot, &self.noise)))
-            .collect();
+        let Some(look) = self.look() else { panic!("a reference before the first sample") };
+        let mut replicates: Vec<Moments> = look.moments.iter().map(|m| self.lifted(m.into())).collect();
         let first = replicates[0].mean.clone();
         for moments in &mut replicates[1..] {
             for (j, &angular) in self.question.angular.iter().enumerate() {
@@ -131,7 +167,7 @@ impl<'a> Sampler<'a> {
             }
         }
         let worst_error = worst_standardised(&moments, &standard_error, self.prior);
-        let reason = self.refusal(&moments);
+        let reason = self.refusal(&moments, look);
         let soundness = match &reason {
             Some(_) => Soundness::Refused,
             None if worst_error <= self.settings.precision => Soundness::Sound,
@@ -145,7 +181,7 @@ impl<'a> Sampler<'a> {
         Moments { cross_covariance, ..moments }
     }
 
-    fn refusal(&self, moments: &Moments) -> Option<String> {
+    fn refusal(&self, moments: &Moments, look: &Look) -> Option<String> {
         let outputs = self.question.sensor.outputs();
         if !moments.is_finite() {
             let which = (0..outputs.len()).find(|&j| !moments.covariance[(j, j)].is_finite()).unwrap_or(0);
@@ -165,7 +201,7 @@ impl<'a> Sampler<'a> {
             }
         }
         for (j, output) in outputs.iter().enumerate() {
-            if let Some(resultant) = self.resultant(j)
+            if let Some(resultant) = look.resultants[j]
                 && !(resultant >= LEAST_RESULTANT)
             {
                 return Some(format!(
@@ -175,16 +211,6 @@ impl<'a> Sampler<'a> {
                 ));
             }
         }
-        self.replicates
-            .iter()
-            .any(|r| r.charts().lost)
-            .then(|| "the mean direction of an angle moved by more than chance allows".into())
-    }
-
-    /// Resultant length of angular output `j` over all replicates together: the least of theirs would depend on
-    /// how many samples each has, and refuse at a first look what more samples would answer.
-    fn resultant(&self, j: usize) -> Option<f64> {
-        let circles = self.replicates.iter().filter_map(|r| r.charts().circle(j));
-        circles.reduce(CircularSum::merged).map(|circle| circle.resultant())
+        look.lost.then(|| "the mean direction of an angle moved by more than chance allows".into())
     }
 }

@@ -1,3 +1,5 @@
+use serde::{Deserialize, Serialize};
+
 use super::basis::Basis;
 use super::net::BLOCK;
 
@@ -6,7 +8,8 @@ use super::net::BLOCK;
 /// z (a) are the standard normals, e (p) the outputs' deviations from the pilot's linear fit: small beside the
 /// outputs themselves, so plain sums keep their digits. Folded block by block in a fixed order and within a block
 /// in eight fixed lanes: the same bits at every level of vector instructions.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub(super) struct Sums {
     pub count: f64,
     /// sum z_i (a).
@@ -32,6 +35,18 @@ impl Sums {
             ze: vec![0.0; a * p],
             basis: vec![0.0; controls],
         }
+    }
+
+    /// Whether these are sums of `a` inputs, `p` outputs and `controls` control variates.
+    pub fn fit(&self, a: usize, p: usize, controls: usize) -> bool {
+        let shape = |s: &Self| [s.z.len(), s.e.len(), s.ee.len(), s.ze.len(), s.basis.len()];
+        shape(self) == shape(&Self::empty(a, p, controls))
+    }
+
+    /// Whether every sum is a number.
+    pub fn is_finite(&self) -> bool {
+        let all = [&self.z, &self.e, &self.ee, &self.ze, &self.basis];
+        self.count.is_finite() && all.into_iter().flatten().all(|v| v.is_finite())
     }
 
     /// Adds a block: z and e one array a coordinate.

@@ -1,13 +1,16 @@
 //! Surveys: every case of a suite sampled, every method scored and judged, cases over threads.
 
 mod case_run;
+mod kept;
 mod run;
 mod settings;
+mod shard;
 mod summary;
 mod timing;
 
 pub use case_run::{Answer, Answered, CaseResult};
 pub use run::{SurveyResult, Watch, survey};
 pub use settings::{SurveyError, SurveyPlan, SurveySettings};
+pub use shard::{Shard, ShardError};
 pub use summary::{MethodSummary, Summary, summarise};
 pub use timing::{Cost, Quartiles, Timing, time_methods};
