@@ -17,6 +17,7 @@ pub mod reference;
 pub mod report;
 pub mod score;
 pub mod sensor;
+mod shard;
 pub mod suite;
 pub mod survey;
 pub mod trust;

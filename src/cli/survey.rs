@@ -7,7 +7,7 @@ use gaussworthy::method::MethodSpec;
 use gaussworthy::reference::Store;
 use gaussworthy::report::{CAUTION, ResultsFolder, write_summary};
 use gaussworthy::suite::Suite;
-use gaussworthy::survey::{Shard, SurveyPlan, SurveySettings, summarise, survey};
+use gaussworthy::survey::{Shard, SurveyPlan, SurveySettings, sample_share, summarise, survey};
 
 use super::Failure;
 use super::progress::{Progress, heed_interrupts};
@@ -41,6 +41,10 @@ pub struct Arguments {
     /// Do part K of N of every suite's cases, to be joined by `merge`; parts are not timed
     #[arg(long, value_name = "K/N")]
     shard: Option<Shard>,
+    /// Only sample part K of N of the replicates of every case, up to the cap, into the store; when all parts are there,
+    /// a survey with this store and cap takes them from it
+    #[arg(long, value_name = "K/N", conflicts_with = "shard")]
+    replicates: Option<Shard>,
     /// Where sampled references are kept and found again; `.references` in the --out folder unless told
     #[arg(long, value_name = "DIR")]
     store: Option<PathBuf>,
@@ -61,12 +65,21 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
         shard: arguments.shard,
         store: None,
     };
-    let mut jobs = suites(&arguments)?
+    let plans = suites(&arguments)?
         .into_iter()
         .map(|suite| {
             let plan = SurveyPlan::new(&suite, &settings)
                 .with_context(|| format!("suite `{}`", suite.name))
                 .map_err(Failure::Input)?;
+            Ok((suite, plan))
+        })
+        .collect::<Result<Vec<_>, Failure>>()?;
+    if let Some(share) = arguments.replicates {
+        return replicates(&arguments, &plans, share);
+    }
+    let mut jobs = plans
+        .into_iter()
+        .map(|(suite, plan)| {
             let folder = ResultsFolder::open(&arguments.out, &suite.name)
                 .context("results folder")
                 .map_err(Failure::Input)?;
@@ -77,10 +90,7 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
     for (_, plan, _) in &mut jobs {
         plan.store = Some(store.clone());
     }
-    if let Some(threads) = arguments.threads {
-        rayon::ThreadPoolBuilder::new().num_threads(threads.into()).build_global().map_err(Failure::unfinished)?;
-    }
-    heed_interrupts().map_err(Failure::unfinished)?;
+    make_ready(&arguments)?;
 
     let mut out = Stdout::new();
     for (suite, plan, folder) in &jobs {
@@ -101,6 +111,38 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
         }
     }
     writeln!(out, "{CAUTION}")?;
+    Ok(())
+}
+
+/// Sets the threads and heeds interrupts.
+fn make_ready(arguments: &Arguments) -> Result<(), Failure> {
+    if let Some(threads) = arguments.threads {
+        rayon::ThreadPoolBuilder::new().num_threads(threads.into()).build_global().map_err(Failure::unfinished)?;
+    }
+    heed_interrupts().map_err(Failure::unfinished)
+}
+
+/// Samples a part of the replicates into the store.
+fn replicates(arguments: &Arguments, plans: &[(Suite, SurveyPlan)], share: Shard) -> Result<(), Failure> {
+    for (_, plan) in plans {
+        plan.sampler.check_share(share).context("--replicates").map_err(Failure::Input)?;
+    }
+    let store = store(arguments)?;
+    make_ready(arguments)?;
+    let mut out = Stdout::new();
+    for (suite, plan) in plans {
+        let progress = Progress::new(&suite.name, suite.cases.len());
+        let result = sample_share(suite, plan, share, &store, &progress);
+        progress.finish();
+        let (finished, asked) = (result.finished, result.asked);
+        writeln!(out, "{}: part {share} of the replicates is sampled in {finished} of {asked} cases", suite.name)?;
+        if finished < asked {
+            return Err(Failure::Unfinished(anyhow!(
+                "suite `{}`: {finished} of {asked} cases are finished; run again, it goes on where it stopped",
+                suite.name
+            )));
+        }
+    }
     Ok(())
 }
 

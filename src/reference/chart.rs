@@ -38,6 +38,11 @@ impl CircularSum {
         self.sin.atan2(self.cos)
     }
 
+    /// Whether every sum is a number.
+    pub fn is_finite(&self) -> bool {
+        [self.count, self.cos, self.sin, self.sin_squared].into_iter().all(f64::is_finite)
+    }
+
     /// Length of E[exp(i angle)], 0 to 1.
     pub fn resultant(&self) -> f64 {
         self.cos.hypot(self.sin) / self.count
@@ -159,10 +164,9 @@ impl Charts {
 
     /// Whether every value is a number.
     pub fn is_finite(&self) -> bool {
-        let circles = self.circles.iter().flatten().flat_map(|c| [c.count, c.cos, c.sin, c.sin_squared]);
         let points = self.near_cut.iter().flat_map(|n| [&n.z, &n.e, &n.deviation]).flatten().copied();
         let places = self.centre.iter().chain(&self.bands).copied();
-        places.chain(circles).chain(points).all(f64::is_finite)
+        places.chain(points).all(f64::is_finite) && self.circles.iter().flatten().all(CircularSum::is_finite)
     }
 
     /// Whether any output is an angle.

@@ -4,7 +4,7 @@ use super::block::Block;
 use super::chart::Charts;
 use super::net::Net;
 use super::pilot::{Pilot, Question, take_stream};
-use super::state::Place;
+use super::state::{Look, ReplicateState};
 use super::sums::Sums;
 use crate::gaussian::Moments;
 
@@ -29,6 +29,8 @@ pub(super) struct Replicate {
     blocks: u64,
     sums: Sums,
     charts: Charts,
+    /// What it said after every doubling.
+    looks: Vec<Look>,
 }
 
 impl Replicate {
@@ -41,11 +43,12 @@ impl Replicate {
             blocks: 0,
             sums: Sums::empty(a, p, pilot.controls.basis.len()),
             charts: Charts::new(pilot.centre.clone(), &pilot.bands),
+            looks: Vec::new(),
         }
     }
 
-    /// Samples until `blocks` blocks are in; what is in already stays.
-    pub fn deepen(&mut self, blocks: u64, question: &Question<'_>, pilot: &Pilot) {
+    /// Samples until `blocks` blocks are in, and looks at what they say; what is in already stays.
+    pub fn deepen(&mut self, blocks: u64, question: &Question<'_>, pilot: &Pilot, noise: &DMatrix<f64>) {
         let basis = &pilot.controls.basis;
         let mut block = Block::new(question.level, question.inputs(), question.outputs(), basis);
         while self.blocks < blocks {
@@ -62,6 +65,12 @@ impl Replicate {
             self.blocks += 1;
         }
         self.charts.recentre(&mut self.sums);
+        self.looks.push(Look {
+            blocks,
+            lost: self.charts.lost,
+            circles: (0..question.outputs()).map(|j| self.charts.circle(j)).collect(),
+            moments: (&self.moments(question, pilot, noise)).into(),
+        });
     }
 
     /// Feeds the circular means and notes samples near a cut.
@@ -74,29 +83,32 @@ impl Replicate {
         self.charts.remember_near_cut(block);
     }
 
-    /// Takes up the place of another that has `blocks` blocks in already.
-    pub fn take_up(&mut self, blocks: u64, place: Place) {
-        (self.blocks, self.sums, self.charts) = (blocks, place.sums, place.charts);
+    /// Takes up what another found.
+    pub fn take_up(&mut self, state: ReplicateState) {
+        let ReplicateState { looks, sums, charts } = state;
+        self.blocks = looks.last().map_or(0, |look| look.blocks);
+        (self.sums, self.charts, self.looks) = (sums, charts, looks);
     }
 
-    /// Where it stands.
-    pub fn place(&self) -> Place {
-        Place { sums: self.sums.clone(), charts: self.charts.clone() }
+    /// What it found.
+    pub fn state(&self) -> ReplicateState {
+        ReplicateState { looks: self.looks.clone(), sums: self.sums.clone(), charts: self.charts.clone() }
     }
 
-    pub fn charts(&self) -> &Charts {
-        &self.charts
+    /// What it said after every doubling.
+    pub fn looks(&self) -> &[Look] {
+        &self.looks
     }
 
     /// Whether the points are a net's.
-    pub fn has_net(&self) -> bool {
+    fn has_net(&self) -> bool {
         matches!(self.points, Points::Net(_))
     }
 
     /// This replicate's moments on the read components, noise added exactly. With B0 the fit, E\[z\] = 0 and
     /// E\[z z'\] = I: Gamma = B0' + E\[z e'\], C = F Gamma,
     /// S = B0 B0' + B0 E\[z e'\] + E\[e z'\] B0' + Cov(e) + R.
-    pub fn moments(&self, question: &Question<'_>, pilot: &Pilot, noise: &DMatrix<f64>) -> Moments {
+    fn moments(&self, question: &Question<'_>, pilot: &Pilot, noise: &DMatrix<f64>) -> Moments {
         let (a, p) = (question.inputs(), question.outputs());
         let means = pilot.controls.means(&self.sums);
         let slope = &pilot.slope;

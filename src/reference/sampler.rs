@@ -1,6 +1,7 @@
 use nalgebra::DMatrix;
 use rayon::prelude::*;
 
+use super::chart::CircularSum;
 use super::estimate::{Reference, Soundness, combine, worst_standardised};
 use super::net::BLOCK;
 use super::pilot::{Pilot, Question};
@@ -10,6 +11,7 @@ use super::state::{Look, ResumeError, SamplerState};
 use super::stream::Key;
 use crate::gaussian::{Gaussian, Marginal, Moments, wrap};
 use crate::sensor::Sensor;
+use crate::shard::Shard;
 use crate::suite::Case;
 
 /// Below this resultant length an angle has no mean direction to centre its chart on. Ours, no source: at 0.1
@@ -33,9 +35,7 @@ pub struct Sampler<'a> {
     noise: DMatrix<f64>,
     settings: SamplerSettings,
     replicates: Vec<Replicate>,
-    /// What was found at every doubling, also at those that are still to be walked through again.
-    looks: Vec<Look>,
-    /// How many of the looks were taken.
+    /// How many doublings were taken; the replicates may know more of them, from a state.
     taken: usize,
 }
 
@@ -45,8 +45,16 @@ impl<'a> Sampler<'a> {
     /// # Errors
     /// [`SamplerError`] if there are fewer than two replicates or the cap does not leave each 256 samples.
     pub fn new(case: &'a Case, settings: SamplerSettings) -> Result<Self, SamplerError> {
+        Self::of_share(case, settings, Shard::WHOLE)
+    }
+
+    /// As [`Sampler::new`], with the replicates of `share` only: its references are no one's.
+    pub(super) fn of_share(case: &'a Case, settings: SamplerSettings, share: Shard) -> Result<Self, SamplerError> {
+        settings.check()?;
+        settings.check_share(share)?;
         let key = Key::new(settings.seed, &case.question());
-        Self::of_parts(case.sensor(), case.prior(), case.marginal(), case.noise_or_zero(), key, settings)
+        let parts = (case.sensor(), case.prior(), case.marginal());
+        Self::assemble(parts, case.noise_or_zero(), key, settings, share)
     }
 
     /// A sampler of a sensor of the caller's own; `marginal` is the prior's on the components that the sensor
@@ -62,6 +70,16 @@ impl<'a> Sampler<'a> {
         key: Key,
         settings: SamplerSettings,
     ) -> Result<Self, SamplerError> {
+        Self::assemble((sensor, prior, marginal), noise, key, settings, Shard::WHOLE)
+    }
+
+    fn assemble(
+        (sensor, prior, marginal): (&'a dyn Sensor, &'a Gaussian, &'a Marginal),
+        noise: DMatrix<f64>,
+        key: Key,
+        settings: SamplerSettings,
+        share: Shard,
+    ) -> Result<Self, SamplerError> {
         settings.check()?;
         let law = marginal.law();
         let question = Question {
@@ -73,11 +91,11 @@ impl<'a> Sampler<'a> {
             level: settings.level,
         };
         let pilot = Pilot::run(&question);
-        let replicates = (0..settings.replicates as u64)
-            .map(|r| Replicate::new(r, settings.log2(), &question, &pilot))
+        let replicates = (0..settings.replicates)
+            .filter(|&r| share.holds(r))
+            .map(|r| Replicate::new(r as u64, settings.log2(), &question, &pilot))
             .collect();
-        let (looks, taken) = (Vec::new(), 0);
-        Ok(Self { question, pilot, marginal, prior, noise, settings, replicates, looks, taken })
+        Ok(Self { question, pilot, marginal, prior, noise, settings, replicates, taken: 0 })
     }
 
     /// A sampler of `case` that has `state` behind it.
@@ -89,18 +107,23 @@ impl<'a> Sampler<'a> {
     /// [`ResumeError`] if the settings cannot be meant, or the state is not one of this case under these settings.
     pub fn resume(case: &'a Case, settings: SamplerSettings, state: SamplerState) -> Result<Self, ResumeError> {
         let mut sampler = Self::new(case, settings)?;
-        state.check(&sampler.question, sampler.pilot.controls.basis.len(), &settings)?;
-        let blocks = state.blocks();
-        for (replicate, place) in sampler.replicates.iter_mut().zip(state.places) {
-            replicate.take_up(blocks, place);
-        }
-        sampler.looks = state.looks;
+        sampler.take_up(state)?;
         Ok(sampler)
+    }
+
+    /// Takes up what others found of the same replicates.
+    pub(super) fn take_up(&mut self, state: SamplerState) -> Result<(), ResumeError> {
+        let controls = self.pilot.controls.basis.len();
+        state.check(&self.question, controls, &self.settings, self.replicates.len())?;
+        for (replicate, state) in self.replicates.iter_mut().zip(state.replicates) {
+            replicate.take_up(state);
+        }
+        Ok(())
     }
 
     /// Everything sampled so far, and in the state that this sampler began with.
     pub fn state(&self) -> SamplerState {
-        SamplerState { looks: self.looks.clone(), places: self.replicates.iter().map(Replicate::place).collect() }
+        SamplerState { replicates: self.replicates.iter().map(Replicate::state).collect() }
     }
 
     /// Samples of h so far, all replicates together.
@@ -109,22 +132,21 @@ impl<'a> Sampler<'a> {
     }
 
     fn blocks(&self) -> u64 {
-        self.look().map_or(0, |look| look.blocks)
+        self.looks().next().map_or(0, |look| look.blocks)
     }
 
-    /// The latest look.
-    fn look(&self) -> Option<&Look> {
-        self.looks[..self.taken].last()
+    /// What each replicate said after the latest doubling.
+    fn looks(&self) -> impl Iterator<Item = &Look> {
+        self.replicates.iter().filter_map(|r| r.looks()[..self.taken].last())
     }
 
     /// Doubles the number of points (the first time: takes the first 1024 a replicate), within the cap.
     /// Returns whether there was room for any.
     pub fn deepen(&mut self) -> bool {
         let Some(blocks) = self.settings.blocks_after(self.blocks()) else { return false };
-        if self.taken == self.looks.len() {
-            let (question, pilot) = (&self.question, &self.pilot);
-            self.replicates.par_iter_mut().for_each(|r| r.deepen(blocks, question, pilot));
-            self.looks.push(Look::at(blocks, &self.replicates, question, pilot, &self.noise));
+        let (question, pilot, noise) = (&self.question, &self.pilot, &self.noise);
+        if self.replicates.iter().any(|r| r.looks().len() == self.taken) {
+            self.replicates.par_iter_mut().for_each(|r| r.deepen(blocks, question, pilot, noise));
         }
         self.taken += 1;
         true
@@ -146,8 +168,8 @@ impl<'a> Sampler<'a> {
     /// # Panics
     /// If nothing was sampled yet.
     pub fn reference(&self) -> Reference {
-        let Some(look) = self.look() else { panic!("a reference before the first sample") };
-        let mut replicates: Vec<Moments> = look.moments.iter().map(|m| self.lifted(m.into())).collect();
+        assert!(self.taken > 0, "a reference before the first sample");
+        let mut replicates: Vec<Moments> = self.looks().map(|look| self.lifted((&look.moments).into())).collect();
         let first = replicates[0].mean.clone();
         for moments in &mut replicates[1..] {
             for (j, &angular) in self.question.angular.iter().enumerate() {
@@ -167,7 +189,7 @@ impl<'a> Sampler<'a> {
             }
         }
         let worst_error = worst_standardised(&moments, &standard_error, self.prior);
-        let reason = self.refusal(&moments, look);
+        let reason = self.refusal(&moments);
         let soundness = match &reason {
             Some(_) => Soundness::Refused,
             None if worst_error <= self.settings.precision => Soundness::Sound,
@@ -181,7 +203,7 @@ impl<'a> Sampler<'a> {
         Moments { cross_covariance, ..moments }
     }
 
-    fn refusal(&self, moments: &Moments, look: &Look) -> Option<String> {
+    fn refusal(&self, moments: &Moments) -> Option<String> {
         let outputs = self.question.sensor.outputs();
         if !moments.is_finite() {
             let which = (0..outputs.len()).find(|&j| !moments.covariance[(j, j)].is_finite()).unwrap_or(0);
@@ -201,7 +223,7 @@ impl<'a> Sampler<'a> {
             }
         }
         for (j, output) in outputs.iter().enumerate() {
-            if let Some(resultant) = look.resultants[j]
+            if let Some(resultant) = self.resultant(j)
                 && !(resultant >= LEAST_RESULTANT)
             {
                 return Some(format!(
@@ -211,6 +233,14 @@ impl<'a> Sampler<'a> {
                 ));
             }
         }
-        look.lost.then(|| "the mean direction of an angle moved by more than chance allows".into())
+        let lost = self.looks().any(|look| look.lost);
+        lost.then(|| "the mean direction of an angle moved by more than chance allows".into())
+    }
+
+    /// Resultant length of angular output `j` over all replicates together: the least of theirs would depend on
+    /// how many samples each has, and refuse at a first look what more samples would answer.
+    fn resultant(&self, j: usize) -> Option<f64> {
+        let circles = self.looks().filter_map(|look| look.circles[j]);
+        circles.reduce(CircularSum::merged).map(|circle| circle.resultant())
     }
 }

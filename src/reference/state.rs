@@ -3,8 +3,7 @@ use serde::{Deserialize, Serialize};
 
 use super::chart::{Charts, CircularSum};
 use super::net::BLOCK;
-use super::pilot::{Pilot, Question};
-use super::replicate::Replicate;
+use super::pilot::Question;
 use super::settings::{SamplerError, SamplerSettings};
 use super::sums::Sums;
 use crate::gaussian::Moments;
@@ -16,30 +15,30 @@ use crate::suite::rows;
 /// In JSON every number comes back to the bit. Pilot and nets are not in it: they follow from the question.
 #[derive(Debug, Clone, PartialEq)]
 pub struct SamplerState {
-    pub(super) looks: Vec<Look>,
-    pub(super) places: Vec<Place>,
+    pub(super) replicates: Vec<ReplicateState>,
 }
 
-/// Where one replicate stands.
+/// What one replicate has found.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
-pub(super) struct Place {
+pub(super) struct ReplicateState {
+    pub looks: Vec<Look>,
     pub sums: Sums,
     pub charts: Charts,
 }
 
-/// What all replicates say after a doubling.
+/// What one replicate says after a doubling.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub(super) struct Look {
-    /// Blocks of points a replicate.
+    /// Blocks of points so far.
     pub blocks: u64,
     /// Whether a chart moved further than was kept ready.
     pub lost: bool,
-    /// Resultant length of each output (p); `None` where it is no angle.
-    pub resultants: Vec<Option<f64>>,
-    /// Moments on the read components, one a replicate.
-    pub moments: Vec<Entries>,
+    /// Circular sums of each output (p), seen from angle zero; `None` where it is no angle.
+    pub circles: Vec<Option<CircularSum>>,
+    /// Moments on the read components.
+    pub moments: Entries,
 }
 
 /// Moments as lists of rows.
@@ -63,35 +62,20 @@ pub enum ResumeError {
     Misfit(&'static str),
 }
 
-impl Look {
-    pub fn at(
-        blocks: u64,
-        replicates: &[Replicate],
-        question: &Question<'_>,
-        pilot: &Pilot,
-        noise: &DMatrix<f64>,
-    ) -> Self {
-        // Over all replicates together: the least of theirs would depend on how many samples each has, and refuse at
-        // a first look what more samples would answer.
-        let resultant = |j| {
-            let circles = replicates.iter().filter_map(|r| r.charts().circle(j));
-            circles.reduce(CircularSum::merged).map(|circle| circle.resultant())
-        };
-        Self {
-            blocks,
-            lost: replicates.iter().any(|r| r.charts().lost),
-            resultants: (0..question.outputs()).map(resultant).collect(),
-            moments: replicates.iter().map(|r| Entries::from(&r.moments(question, pilot, noise))).collect(),
-        }
-    }
-
-    fn fits(&self, a: usize, angular: &[bool]) -> bool {
-        self.resultants.iter().map(Option::is_some).eq(angular.iter().copied())
-            && self.moments.iter().all(|m| m.fit(a, angular.len()))
+impl ReplicateState {
+    fn blocks(&self) -> u64 {
+        self.looks.last().map_or(0, |look| look.blocks)
     }
 
     fn is_finite(&self) -> bool {
-        self.resultants.iter().flatten().all(|r| r.is_finite()) && self.moments.iter().all(Entries::are_finite)
+        let look = |l: &Look| l.moments.are_finite() && l.circles.iter().flatten().all(CircularSum::is_finite);
+        self.sums.is_finite() && self.charts.is_finite() && self.looks.iter().all(look)
+    }
+}
+
+impl Look {
+    fn fits(&self, a: usize, angular: &[bool]) -> bool {
+        self.circles.iter().map(Option::is_some).eq(angular.iter().copied()) && self.moments.fit(a, angular.len())
     }
 }
 
@@ -130,20 +114,32 @@ impl From<&Entries> for Moments {
 }
 
 impl SamplerState {
-    /// Samples of h behind it, all replicates together.
+    /// Samples of h behind it, all its replicates together.
     pub fn points(&self) -> u64 {
-        self.blocks().saturating_mul(BLOCK as u64).saturating_mul(self.places.len() as u64)
+        self.blocks().saturating_mul(BLOCK as u64).saturating_mul(self.replicates.len() as u64)
     }
 
     /// Blocks a replicate.
-    pub(super) fn blocks(&self) -> u64 {
-        self.looks.last().map_or(0, |look| look.blocks)
+    fn blocks(&self) -> u64 {
+        self.replicates.first().map_or(0, ReplicateState::blocks)
     }
 
     /// Whether every value in it is a number: JSON has no others.
     pub fn is_finite(&self) -> bool {
-        let places = self.places.iter().all(|place| place.sums.is_finite() && place.charts.is_finite());
-        places && self.looks.iter().all(Look::is_finite)
+        self.replicates.iter().all(ReplicateState::is_finite)
+    }
+
+    /// The whole from the shares 1/N, 2/N, .. N/N of the replicates; `None` unless all are equally deep.
+    pub(super) fn join(shares: Vec<Self>) -> Option<Self> {
+        let depth = shares.first()?.blocks();
+        if shares.iter().any(|share| share.blocks() != depth) {
+            return None;
+        }
+        let count = shares.iter().map(|share| share.replicates.len()).sum();
+        let mut shares: Vec<_> = shares.into_iter().map(|share| share.replicates.into_iter()).collect();
+        let of = shares.len();
+        let replicates = (0..count).map(|r: usize| shares[r % of].next()).collect::<Option<_>>()?;
+        Some(Self { replicates })
     }
 
     /// Checks every shape against the question, and the doublings against the settings.
@@ -152,28 +148,27 @@ impl SamplerState {
         question: &Question<'_>,
         controls: usize,
         settings: &SamplerSettings,
+        replicates: usize,
     ) -> Result<(), ResumeError> {
         let (a, p, angular) = (question.inputs(), question.outputs(), &question.angular[..]);
         let fail = |what| Err(ResumeError::Misfit(what));
-        if self.places.len() != settings.replicates
-            || self.looks.iter().any(|look| look.moments.len() != settings.replicates)
-        {
+        if self.replicates.len() != replicates {
             return fail("another number of replicates");
         }
+        let looks = self.replicates.first().map_or(0, |r| r.looks.len());
         let first = settings.blocks_after(0).unwrap_or(0);
-        let doublings = std::iter::successors(Some(first), |blocks| blocks.checked_mul(2));
-        if !doublings.take(self.looks.len()).eq(self.looks.iter().map(|look| look.blocks)) {
-            return fail("points were doubled from another beginning");
-        }
-        if !self.looks.iter().all(|look| look.fits(a, angular)) {
-            return fail("moments of another shape");
-        }
-        let count = (self.blocks() * BLOCK as u64) as f64;
-        for Place { sums, charts } in &self.places {
+        let doublings = || std::iter::successors(Some(first), |blocks: &u64| blocks.checked_mul(2)).take(looks);
+        for ReplicateState { looks, sums, charts } in &self.replicates {
+            if !doublings().eq(looks.iter().map(|look| look.blocks)) {
+                return fail("points were doubled from another beginning, or not as often in every replicate");
+            }
+            if !looks.iter().all(|look| look.fits(a, angular)) {
+                return fail("moments of another shape");
+            }
             if !(sums.fit(a, p, controls) && charts.fit(a, angular)) {
                 return fail("sums of another shape");
             }
-            if sums.count != count {
+            if sums.count != self.blocks() as f64 * BLOCK as f64 {
                 return fail("another number of points in the sums than at the last doubling");
             }
         }

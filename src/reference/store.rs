@@ -8,7 +8,8 @@ use sha2::{Digest, Sha256};
 use tempfile::NamedTempFile;
 
 use super::settings::SamplerSettings;
-use super::state::{Look, Place, SamplerState};
+use super::state::{ReplicateState, SamplerState};
+use crate::shard::Shard;
 use crate::suite::{Case, hex};
 use crate::whole_file::WholeFile;
 
@@ -19,7 +20,8 @@ use crate::whole_file::WholeFile;
 pub const FORMAT: u32 = 1;
 
 /// What a file of the store says that it is.
-const WHAT: &str = "the state of a sampled reference: moments at every doubling, sums of every replicate";
+const WHAT: &str =
+    "the state of a sampled reference: of every replicate the moments at every doubling, and the sums";
 /// Stands between what the checksum is of and the checksum.
 const SEAL: &str = ",\n\"sha256\": \"";
 /// Ends a file.
@@ -78,11 +80,11 @@ struct Entry {
     format: u32,
     seed: u64,
     replicates: usize,
+    share: String,
     #[serde(rename = "points")]
     _points: u64,
     question: Value,
-    looks: Vec<Look>,
-    places: Vec<Place>,
+    states: Vec<ReplicateState>,
     #[serde(rename = "sha256")]
     _sha256: String,
 }
@@ -116,18 +118,63 @@ impl Store {
         self.folder.join(format!("{}.json", hex(&hash.finalize()[..16])))
     }
 
-    /// What there is of `case` under `settings`.
-    pub fn load(&self, case: &Case, settings: &SamplerSettings) -> Loaded {
-        if self.fresh { Loaded::Missing } else { self.read(case, settings) }
+    /// The folder of the shares of `case`, beside the file of the whole.
+    fn shares(&self, case: &Case, settings: &SamplerSettings) -> PathBuf {
+        self.path(case, settings).with_extension("shares")
     }
 
-    fn read(&self, case: &Case, settings: &SamplerSettings) -> Loaded {
-        let path = self.path(case, settings);
+    fn share_path(&self, case: &Case, settings: &SamplerSettings, share: Shard) -> PathBuf {
+        if share == Shard::WHOLE {
+            return self.path(case, settings);
+        }
+        self.shares(case, settings).join(format!("{}-of-{}.json", share.part(), share.of()))
+    }
+
+    /// What there is of `case` under `settings`: the whole, or the shares of its replicates, whichever is deeper.
+    pub fn load(&self, case: &Case, settings: &SamplerSettings) -> Loaded {
+        let whole = self.load_share(case, settings, Shard::WHOLE);
+        if self.fresh || !self.shares(case, settings).is_dir() {
+            return whole;
+        }
+        let counts = 2..=settings.replicates;
+        let joined = counts.map(|of| self.join(case, settings, of)).fold(Loaded::Missing, deeper);
+        deeper(joined, whole)
+    }
+
+    /// The whole from `of` shares.
+    fn join(&self, case: &Case, settings: &SamplerSettings, of: usize) -> Loaded {
+        let shares: Vec<Shard> = (1..=of).filter_map(|part| Shard::new(part, of)).collect();
+        let path = |&share: &Shard| self.share_path(case, settings, share);
+        if !shares.iter().all(|share| path(share).is_file()) {
+            return Loaded::Missing;
+        }
+        let mut states = Vec::new();
+        for &share in &shares {
+            match self.load_share(case, settings, share) {
+                Loaded::Found(state) => states.push(*state),
+                other => return other,
+            }
+        }
+        match SamplerState::join(states) {
+            Some(state) => Loaded::Found(Box::new(state)),
+            None => {
+                let shares = self.shares(case, settings);
+                Loaded::Damaged(format!("{}: the {of} shares in it are not equally deep", shares.display()))
+            }
+        }
+    }
+
+    /// What there is of the replicates of `case` that `share` holds.
+    pub fn load_share(&self, case: &Case, settings: &SamplerSettings, share: Shard) -> Loaded {
+        if self.fresh {
+            return Loaded::Missing;
+        }
+        let path = self.share_path(case, settings, share);
         let damaged = |why: String| Loaded::Damaged(format!("{}: {why}", path.display()));
         match std::fs::read(&path) {
             Err(e) if e.kind() == io::ErrorKind::NotFound => Loaded::Missing,
             Err(e) => damaged(format!("cannot be read: {e}")),
-            Ok(bytes) => match unsealed(bytes, case, settings) {
+            Ok(bytes) => match unsealed(bytes, case, settings, share) {
                 Ok(state) => Loaded::Found(Box::new(state)),
                 Err(why) => damaged(why),
             },
@@ -139,18 +186,35 @@ impl Store {
     /// # Errors
     /// [`StoreError`] if it cannot be written; what was there stays.
     pub fn save(&self, case: &Case, settings: &SamplerSettings, state: &SamplerState) -> Result<Saved, StoreError> {
+        self.save_share(case, settings, Shard::WHOLE, state)
+    }
+
+    /// Saves the `state` of the replicates that `share` holds, as [`Store::save`] does the whole.
+    ///
+    /// # Errors
+    /// As [`Store::save`].
+    pub fn save_share(
+        &self,
+        case: &Case,
+        settings: &SamplerSettings,
+        share: Shard,
+        state: &SamplerState,
+    ) -> Result<Saved, StoreError> {
         if !state.is_finite() {
             return Ok(Saved::NotFinite);
         }
-        if let Loaded::Found(stored) = self.load(case, settings)
+        if let Loaded::Found(stored) = self.load_share(case, settings, share)
             && stored.points() >= state.points()
         {
             return Ok(Saved::AsDeep);
         }
-        let path = self.path(case, settings);
+        let path = self.share_path(case, settings, share);
         let attempt = || {
+            if share != Shard::WHOLE {
+                std::fs::create_dir_all(self.shares(case, settings))?;
+            }
             let mut file = WholeFile::create(&path)?;
-            file.write_all(sealed(case, settings, state)?.as_bytes())?;
+            file.write_all(sealed(case, settings, share, state)?.as_bytes())?;
             // Not forced to the disk, which would take longer than most cases: what a power cut leaves of it does not
             // have its checksum and is sampled again.
             file.finish()
@@ -159,17 +223,28 @@ impl Store {
     }
 }
 
-/// The text of a file: a line for each fact, look and replicate, and the checksum of the lines before it.
-fn sealed(case: &Case, settings: &SamplerSettings, state: &SamplerState) -> io::Result<String> {
+/// Of two answers the deeper state; else the word on what is damaged.
+fn deeper(one: Loaded, other: Loaded) -> Loaded {
+    match (one, other) {
+        (Loaded::Found(one), Loaded::Found(other)) => {
+            Loaded::Found(if one.points() > other.points() { one } else { other })
+        }
+        (found @ Loaded::Found(_), _) | (_, found @ Loaded::Found(_)) => found,
+        (Loaded::Missing, other) => other,
+        (damaged, _) => damaged,
+    }
+}
+
+/// The text of a file: a line for each fact and replicate, and the checksum of the lines before it.
+fn sealed(case: &Case, settings: &SamplerSettings, share: Shard, state: &SamplerState) -> io::Result<String> {
     let mut text = format!(
-        "{{\n\"what\": \"{WHAT}\",\n\"format\": {FORMAT},\n\"seed\": {},\n\"replicates\": {},\n\"points\": {},\n\"question\": {}",
+        "{{\n\"what\": \"{WHAT}\",\n\"format\": {FORMAT},\n\"seed\": {},\n\"replicates\": {},\n\"share\": \"{share}\",\n\"points\": {},\n\"question\": {}",
         settings.seed,
         settings.replicates,
         state.points(),
         case.question()
     );
-    list("looks", &state.looks, &mut text)?;
-    list("places", &state.places, &mut text)?;
+    list("states", &state.replicates, &mut text)?;
     let checksum = hex(&Sha256::digest(&text));
     text.push_str(SEAL);
     text.push_str(&checksum);
@@ -189,7 +264,7 @@ fn list(name: &str, items: &[impl Serialize], text: &mut String) -> io::Result<(
 }
 
 /// The state in a file, or why it cannot be used.
-fn unsealed(bytes: Vec<u8>, case: &Case, settings: &SamplerSettings) -> Result<SamplerState, String> {
+fn unsealed(bytes: Vec<u8>, case: &Case, settings: &SamplerSettings, share: Shard) -> Result<SamplerState, String> {
     let text = String::from_utf8(bytes).map_err(|_| "is not text")?;
     let seal = text.strip_suffix(END).and_then(|rest| rest.rsplit_once(SEAL));
     let (body, checksum) = seal.ok_or("does not end with a checksum: it was cut short, or is no reference")?;
@@ -197,9 +272,9 @@ fn unsealed(bytes: Vec<u8>, case: &Case, settings: &SamplerSettings) -> Result<S
         return Err("does not have its checksum: something in it was changed".into());
     }
     let entry: Entry = serde_json::from_str(&text).map_err(|e| format!("is not as references are: {e}"))?;
-    let wanted = (FORMAT, settings.seed, settings.replicates, case.question());
-    if (entry.format, entry.seed, entry.replicates, entry.question.to_string()) != wanted {
+    let wanted = (FORMAT, settings.seed, settings.replicates, share.to_string(), case.question());
+    if (entry.format, entry.seed, entry.replicates, entry.share, entry.question.to_string()) != wanted {
         return Err("holds another reference than its name says".into());
     }
-    Ok(SamplerState { looks: entry.looks, places: entry.places })
+    Ok(SamplerState { replicates: entry.states })
 }

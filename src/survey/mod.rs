@@ -4,13 +4,14 @@ mod case_run;
 mod kept;
 mod run;
 mod settings;
-mod shard;
+mod share;
 mod summary;
 mod timing;
 
+pub use crate::shard::{Shard, ShardError};
 pub use case_run::{Answer, Answered, CaseResult};
 pub use run::{SurveyResult, Watch, survey};
 pub use settings::{SurveyError, SurveyPlan, SurveySettings};
-pub use shard::{Shard, ShardError};
+pub use share::{ShareResult, sample_share};
 pub use summary::{MethodSummary, Summary, summarise};
 pub use timing::{Cost, Quartiles, Timing, time_methods};

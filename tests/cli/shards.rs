@@ -177,6 +177,25 @@ fn an_unfinished_part_is_refused_and_told_how_to_go_on() {
 }
 
 #[test]
+fn shared_replicates_give_the_files_of_a_single_run() {
+    let desk = Desk::new();
+    let deep = ["smoke", "--no-timing", "--precision", "1e-9", "--cap", "500000"];
+    desk.succeed(&[&["survey", "--out", "single"], &deep[..]].concat());
+    for k in 1..=3 {
+        let share = format!("{k}/3");
+        let said = desk.succeed(&[&["survey", "--replicates", &share, "--store", "kept"], &deep[..]].concat());
+        assert_eq!(said, format!("smoke: part {k}/3 of the replicates is sampled in 12 of 12 cases\n"));
+        assert_eq!(names(&desk.path("")), ["kept", "single"], "nothing is judged, no results are written");
+    }
+    assert!(names(&desk.path("kept")).iter().all(|name| name.ends_with(".shares")));
+    desk.succeed(&[&["survey", "--store", "kept", "--out", "joined"], &deep[..]].concat());
+    assert_same(&desk, "single/smoke", "joined/smoke");
+    assert!(names(&desk.path("kept")).iter().all(|name| name.ends_with(".shares")), "nothing was sampled anew");
+    let message = desk.refuse(&["survey", "smoke", "--replicates", "1/33"]);
+    assert_eq!(message, "--replicates: 33 shares are too many: there are 32 replicates to share");
+}
+
+#[test]
 fn no_part_is_refused_with_what_would_be_one() {
     let desk = Desk::new();
     for text in ["0/3", "4/3", "3", "a/b"] {

@@ -1,8 +1,10 @@
+//! Which part of a whole that is shared among several runs.
+
 use std::fmt;
 use std::str::FromStr;
 
-/// One part of a survey that is shared among several runs: part K of N does the cases K, K + N, K + 2N, .. of the
-/// suite, counted from 1, so that dear regions of a sweep are spread over all parts.
+/// One part of a survey that is shared among several runs: part K of N does the cases (or replicates) K, K + N, K + 2N,
+/// .., counted from 1, so that dear regions of a sweep are spread over all parts.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub struct Shard {
     part: usize,
@@ -15,6 +17,9 @@ pub struct Shard {
 pub struct ShardError(String);
 
 impl Shard {
+    /// The whole in one part.
+    pub const WHOLE: Self = Self { part: 1, of: 1 };
+
     /// Part `part`, from 1, of `of`; `None` where there is no such part.
     pub fn new(part: usize, of: usize) -> Option<Self> {
         (1..=of).contains(&part).then_some(Self { part, of })
@@ -30,14 +35,14 @@ impl Shard {
         self.of
     }
 
-    /// Whether the case at `index`, from 0, belongs to it.
+    /// Whether the item at `index`, from 0, belongs to it.
     pub fn holds(self, index: usize) -> bool {
         index % self.of == self.part - 1
     }
 
-    /// How many of `cases` cases belong to it.
-    pub fn share(self, cases: usize) -> usize {
-        (cases + self.of - self.part) / self.of
+    /// How many of `items` items belong to it.
+    pub fn share(self, items: usize) -> usize {
+        (items + self.of - self.part) / self.of
     }
 }
 
