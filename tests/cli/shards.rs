@@ -118,18 +118,21 @@ fn a_part_whose_files_were_changed_is_refused() {
     let desk = Desk::new();
     part(&desk, "1/2", "a", &[]);
     part(&desk, "2/2", "b", &[]);
+    let pop = |lines: &mut Vec<&str>| {
+        lines.pop();
+    };
     for (file, change, expected) in [
-        ("cases.jsonl", &(|lines: &mut Vec<&str>| drop(lines.pop())) as &dyn Fn(&mut Vec<&str>), "ends before"),
+        ("cases.jsonl", &pop as &dyn Fn(&mut Vec<&str>), "ends before"),
         ("cases.jsonl", &|lines| lines.push("{\"case\":\"more\"}"), "holds more cases"),
         ("cases.jsonl", &|lines| lines[1] = "no record", "holds a line that is no record"),
         ("references.jsonl", &|lines| lines.swap(0, 1), "belongs; run its part again"),
         ("references.jsonl", &|lines| lines.push("{\"case\":\"more\"}"), "holds more cases"),
-        ("scores.csv", &|lines| drop(lines.pop()), "lacks a row of case"),
+        ("scores.csv", &pop, "lacks a row of case"),
         ("scores.csv", &|lines| lines.swap(7, 8), "lacks a row of case"),
         ("scores.csv", &|lines| lines.push(lines[1]), "holds more cases"),
         ("scores.csv", &|lines| lines[0] = "case,method", "columns"),
         ("scores.csv", &|lines| lines.clear(), "is empty"),
-        ("manifest.json", &|lines| drop(lines.pop()), "is no manifest"),
+        ("manifest.json", &pop, "is no manifest"),
     ] {
         let path = format!("b/smoke/{file}");
         let whole = desk.read(&path);
