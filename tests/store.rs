@@ -314,7 +314,7 @@ fn a_case_that_is_stopped_between_doublings_keeps_what_it_has() {
         assert!(!stopped.is_complete() && stopped.cases.is_empty());
         let stored = store.load(&suite.cases[0], &kept.sampler);
         let points = if let Loaded::Found(state) = stored { state.points() } else { 0 };
-        assert_eq!(points, if looks == 0 { 0 } else { 32 * 1024 << (looks - 1) }, "{looks} looks");
+        assert_eq!(points, if looks == 0 { 0 } else { (32 * 1024) << (looks - 1) }, "{looks} looks");
     }
     assert_eq!(answer(&kept), alone);
     assert_eq!(answer(&kept), alone);
