@@ -2,6 +2,7 @@
 
 mod catalogue;
 
+mod merge;
 mod progress;
 mod stdout;
 mod survey;
@@ -22,6 +23,8 @@ struct Arguments {
 enum Command {
     /// Measure suites: sample references, score and judge methods, write the results folder
     Survey(survey::Arguments),
+    /// Join the parts of a survey that were made with --shard
+    Merge(merge::Arguments),
     /// List sensors, methods and scores with formulas and sources
     Catalogue(catalogue::Arguments),
 }
@@ -56,6 +59,7 @@ impl From<std::io::Error> for Failure {
 pub fn main() -> ExitCode {
     let done = match Arguments::parse().command {
         Command::Survey(arguments) => survey::run(arguments),
+        Command::Merge(arguments) => merge::run(&arguments),
         Command::Catalogue(arguments) => catalogue::run(&arguments),
     };
     match done {

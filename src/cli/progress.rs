@@ -9,6 +9,9 @@ use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
 /// Where nothing can be redrawn, a line is written this often.
 const LINE_EVERY: Duration = Duration::from_secs(10);
 
+/// Notes that are shown: a store on a full disk has one for every case.
+const MOST_NOTES: u64 = 20;
+
 /// Set by Ctrl-C.
 static STOP: AtomicBool = AtomicBool::new(false);
 
@@ -30,6 +33,7 @@ pub struct Progress {
     total: u64,
     done: AtomicU64,
     points: AtomicU64,
+    notes: AtomicU64,
     began: Instant,
     bar: Option<ProgressBar>,
     last_line: Mutex<Instant>,
@@ -55,6 +59,7 @@ impl Progress {
             total,
             done: AtomicU64::new(0),
             points: AtomicU64::new(0),
+            notes: AtomicU64::new(0),
             began: now,
             bar,
             last_line: Mutex::new(now),
@@ -108,5 +113,21 @@ impl Watch for Progress {
 
     fn stop(&self) -> bool {
         Self::interrupted()
+    }
+
+    fn note(&self, text: &str) {
+        let before = self.notes.fetch_add(1, Ordering::Relaxed);
+        let text = match before.cmp(&MOST_NOTES) {
+            std::cmp::Ordering::Less => text,
+            std::cmp::Ordering::Equal => "more of the same is not shown",
+            std::cmp::Ordering::Greater => return,
+        };
+        let say = || {
+            let _ = writeln!(std::io::stderr(), "{}: {text}", self.suite);
+        };
+        match &self.bar {
+            Some(bar) => bar.suspend(say),
+            None => say(),
+        }
     }
 }

@@ -4,9 +4,10 @@ use std::path::PathBuf;
 use anyhow::{Context, anyhow};
 use clap::Args;
 use gaussworthy::method::MethodSpec;
+use gaussworthy::reference::Store;
 use gaussworthy::report::{CAUTION, ResultsFolder, write_summary};
 use gaussworthy::suite::Suite;
-use gaussworthy::survey::{SurveyPlan, SurveySettings, summarise, survey};
+use gaussworthy::survey::{Shard, SurveyPlan, SurveySettings, sample_share, summarise, survey};
 
 use super::Failure;
 use super::progress::{Progress, heed_interrupts};
@@ -37,6 +38,19 @@ pub struct Arguments {
     /// Methods, such as taylor-1,gauss-hermite:order=5 (see `catalogue methods`)
     #[arg(long, value_name = "M,...", value_delimiter = ',')]
     methods: Option<Vec<String>>,
+    /// Do part K of N of every suite's cases, to be joined by `merge`; parts are not timed
+    #[arg(long, value_name = "K/N")]
+    shard: Option<Shard>,
+    /// Only sample part K of N of the replicates of every case, up to the cap, into the store; when all parts are there,
+    /// a survey with this store and cap takes them from it
+    #[arg(long, value_name = "K/N", conflicts_with = "shard")]
+    replicates: Option<Shard>,
+    /// Where sampled references are kept and found again; `.references` in the --out folder unless told
+    #[arg(long, value_name = "DIR")]
+    store: Option<PathBuf>,
+    /// Sample everything anew and write over what is stored
+    #[arg(long)]
+    fresh: bool,
     /// Leave the timing phase out
     #[arg(long)]
     no_timing: bool,
@@ -48,27 +62,40 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
         precision: arguments.precision,
         cap: arguments.cap,
         methods: arguments.methods.as_deref().map(methods).transpose()?,
+        shard: arguments.shard,
+        store: None,
     };
-    let jobs = suites(&arguments)?
+    let plans = suites(&arguments)?
         .into_iter()
         .map(|suite| {
             let plan = SurveyPlan::new(&suite, &settings)
                 .with_context(|| format!("suite `{}`", suite.name))
                 .map_err(Failure::Input)?;
+            Ok((suite, plan))
+        })
+        .collect::<Result<Vec<_>, Failure>>()?;
+    if let Some(share) = arguments.replicates {
+        return replicates(&arguments, &plans, share);
+    }
+    let mut jobs = plans
+        .into_iter()
+        .map(|(suite, plan)| {
             let folder = ResultsFolder::open(&arguments.out, &suite.name)
                 .context("results folder")
                 .map_err(Failure::Input)?;
             Ok((suite, plan, folder))
         })
         .collect::<Result<Vec<_>, Failure>>()?;
-    if let Some(threads) = arguments.threads {
-        rayon::ThreadPoolBuilder::new().num_threads(threads.into()).build_global().map_err(Failure::unfinished)?;
+    let store = store(&arguments)?;
+    for (_, plan, _) in &mut jobs {
+        plan.store = Some(store.clone());
     }
-    heed_interrupts().map_err(Failure::unfinished)?;
+    make_ready(&arguments)?;
 
     let mut out = Stdout::new();
     for (suite, plan, folder) in &jobs {
-        let progress = Progress::new(&suite.name, suite.cases.len());
+        let asked = plan.shard.map_or(suite.cases.len(), |shard| shard.share(suite.cases.len()));
+        let progress = Progress::new(&suite.name, asked);
         let result = survey(suite, plan, !arguments.no_timing, &progress);
         progress.finish();
         folder.write(&result).map_err(Failure::unfinished)?;
@@ -79,12 +106,50 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
                 "interrupted in suite `{}`: {} of {} cases are finished and written",
                 suite.name,
                 result.cases.len(),
-                suite.cases.len()
+                asked
             )));
         }
     }
     writeln!(out, "{CAUTION}")?;
     Ok(())
+}
+
+/// Sets the threads and heeds interrupts.
+fn make_ready(arguments: &Arguments) -> Result<(), Failure> {
+    if let Some(threads) = arguments.threads {
+        rayon::ThreadPoolBuilder::new().num_threads(threads.into()).build_global().map_err(Failure::unfinished)?;
+    }
+    heed_interrupts().map_err(Failure::unfinished)
+}
+
+/// Samples a part of the replicates into the store.
+fn replicates(arguments: &Arguments, plans: &[(Suite, SurveyPlan)], share: Shard) -> Result<(), Failure> {
+    for (_, plan) in plans {
+        plan.sampler.check_share(share).context("--replicates").map_err(Failure::Input)?;
+    }
+    let store = store(arguments)?;
+    make_ready(arguments)?;
+    let mut out = Stdout::new();
+    for (suite, plan) in plans {
+        let progress = Progress::new(&suite.name, suite.cases.len());
+        let result = sample_share(suite, plan, share, &store, &progress);
+        progress.finish();
+        let (finished, asked) = (result.finished, result.asked);
+        writeln!(out, "{}: part {share} of the replicates is sampled in {finished} of {asked} cases", suite.name)?;
+        if finished < asked {
+            return Err(Failure::Unfinished(anyhow!(
+                "suite `{}`: {finished} of {asked} cases are finished; run again, it goes on where it stopped",
+                suite.name
+            )));
+        }
+    }
+    Ok(())
+}
+
+fn store(arguments: &Arguments) -> Result<Store, Failure> {
+    let folder = arguments.store.clone().unwrap_or_else(|| arguments.out.join(".references"));
+    let store = Store::open(&folder).context("store of references").map_err(Failure::Input)?;
+    Ok(if arguments.fresh { store.fresh() } else { store })
 }
 
 fn suites(arguments: &Arguments) -> Result<Vec<Suite>, Failure> {

@@ -1,6 +1,7 @@
 use std::f64::consts::{PI, TAU};
 
 use nalgebra::DVector;
+use serde::{Deserialize, Serialize};
 use smallvec::SmallVec;
 
 use super::block::Block;
@@ -18,7 +19,8 @@ const READY: f64 = 8.0;
 const FAR_SAMPLES: f64 = 10.0;
 
 /// Sums of cos and sin of an angle's deviations, and of sin^2, for its circular mean and how sure it is.
-#[derive(Debug, Clone, Copy, Default, PartialEq)]
+#[derive(Debug, Clone, Copy, Default, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub(super) struct CircularSum {
     count: f64,
     cos: f64,
@@ -35,6 +37,11 @@ impl CircularSum {
     /// arg E[exp(i angle)] (rad).
     pub fn direction(&self) -> f64 {
         self.sin.atan2(self.cos)
+    }
+
+    /// Whether every sum is a number.
+    pub fn is_finite(&self) -> bool {
+        [self.count, self.cos, self.sin, self.sin_squared].into_iter().all(f64::is_finite)
     }
 
     /// Length of E[exp(i angle)], 0 to 1.
@@ -105,7 +112,8 @@ impl Task for Circle<'_> {
 type Few = SmallVec<[f64; 4]>;
 
 /// A sample near the cut of some angle: it may change sides when the centre of that chart moves.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 struct NearCut {
     z: Few,
     /// Deviation less the linear fit (p), as summed.
@@ -120,9 +128,11 @@ struct NearCut {
 /// When the estimate moves, the samples between the old cut and the new one jump by a full turn. Those that
 /// might are remembered: samples within eight standard errors of the cut, so their number grows as the square root
 /// of the sample size, and every moment is exactly that of the final chart with nothing sampled twice.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub(super) struct Charts {
     /// Centre of each output (p); a plain output keeps the pilot's.
+    #[serde(with = "plain_list")]
     pub centre: DVector<f64>,
     circles: Vec<Option<CircularSum>>,
     bands: Vec<f64>,
@@ -141,6 +151,23 @@ impl Charts {
             lost: false,
             centre,
         }
+    }
+
+    /// Whether these are charts of outputs that are `angular` (p) or not, over `a` inputs.
+    pub fn fit(&self, a: usize, angular: &[bool]) -> bool {
+        let p = angular.len();
+        let point = |n: &NearCut| n.z.len() == a && n.e.len() == p && n.deviation.len() == p;
+        self.centre.len() == p
+            && self.bands.len() == p
+            && self.circles.iter().map(Option::is_some).eq(angular.iter().copied())
+            && self.near_cut.iter().all(point)
+    }
+
+    /// Whether every value is a number.
+    pub fn is_finite(&self) -> bool {
+        let points = self.near_cut.iter().flat_map(|n| [&n.z, &n.e, &n.deviation]).flatten().copied();
+        let places = self.centre.iter().chain(&self.bands).copied();
+        places.chain(points).all(f64::is_finite) && self.circles.iter().flatten().all(CircularSum::is_finite)
     }
 
     /// Whether any output is an angle.
@@ -219,6 +246,20 @@ impl Charts {
         self.near_cut.retain(|point| {
             (0..bands.len()).any(|j| circles[j].is_some() && point.deviation[j].abs() > PI - bands[j])
         });
+    }
+}
+
+/// A vector as a list of numbers.
+mod plain_list {
+    use nalgebra::DVector;
+    use serde::{Deserialize, Deserializer, Serialize, Serializer};
+
+    pub fn serialize<S: Serializer>(vector: &DVector<f64>, to: S) -> Result<S::Ok, S::Error> {
+        vector.as_slice().serialize(to)
+    }
+
+    pub fn deserialize<'de, D: Deserializer<'de>>(from: D) -> Result<DVector<f64>, D::Error> {
+        Vec::deserialize(from).map(DVector::from_vec)
     }
 }
 

@@ -135,6 +135,7 @@ fn add<const N: usize>(sums: &mut [f64], totals: [f64; N]) {
 
 /// Sums of N products, each of the K shared columns and one of its own.
 #[inline(always)]
+#[allow(clippy::needless_range_loop, reason = "plain loops are sure to be inlined")]
 fn totals<S: Simd, const K: usize, const N: usize>(shared: [&Column; K], own: [&Column; N]) -> [f64; N] {
     let mut sums = [Lanes::<S>::splat(0.0); N];
     for eight in 0..BLOCK / 8 {

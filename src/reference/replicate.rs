@@ -2,8 +2,9 @@ use nalgebra::DMatrix;
 
 use super::block::Block;
 use super::chart::Charts;
-use super::net::{BLOCK, Net};
+use super::net::Net;
 use super::pilot::{Pilot, Question, take_stream};
+use super::state::{Look, ReplicateState};
 use super::sums::Sums;
 use crate::gaussian::Moments;
 
@@ -28,6 +29,8 @@ pub(super) struct Replicate {
     blocks: u64,
     sums: Sums,
     charts: Charts,
+    /// What it said after every doubling.
+    looks: Vec<Look>,
 }
 
 impl Replicate {
@@ -40,11 +43,12 @@ impl Replicate {
             blocks: 0,
             sums: Sums::empty(a, p, pilot.controls.basis.len()),
             charts: Charts::new(pilot.centre.clone(), &pilot.bands),
+            looks: Vec::new(),
         }
     }
 
-    /// Samples until `blocks` blocks are in; what is in already stays.
-    pub fn deepen(&mut self, blocks: u64, question: &Question<'_>, pilot: &Pilot) {
+    /// Samples until `blocks` blocks are in, and looks at what they say; what is in already stays.
+    pub fn deepen(&mut self, blocks: u64, question: &Question<'_>, pilot: &Pilot, noise: &DMatrix<f64>) {
         let basis = &pilot.controls.basis;
         let mut block = Block::new(question.level, question.inputs(), question.outputs(), basis);
         while self.blocks < blocks {
@@ -61,6 +65,14 @@ impl Replicate {
             self.blocks += 1;
         }
         self.charts.recentre(&mut self.sums);
+        self.looks.push(Look {
+            blocks,
+            lost: self.charts.lost,
+            circles: (0..question.outputs()).map(|j| self.charts.circle(j)).collect(),
+            centre: self.charts.centre.iter().copied().collect(),
+            farthest: self.sums.farthest.clone(),
+            moments: (&self.moments(question, pilot, noise)).into(),
+        });
     }
 
     /// Feeds the circular means and notes samples near a cut.
@@ -73,17 +85,21 @@ impl Replicate {
         self.charts.remember_near_cut(block);
     }
 
-    pub fn points(&self) -> u64 {
-        self.blocks * BLOCK as u64
+    /// Takes up what another found.
+    pub fn take_up(&mut self, state: ReplicateState) {
+        let ReplicateState { looks, sums, charts } = state;
+        self.blocks = looks.last().map_or(0, |look| look.blocks);
+        (self.sums, self.charts, self.looks) = (sums, charts, looks);
     }
 
-    pub fn charts(&self) -> &Charts {
-        &self.charts
+    /// What it found.
+    pub fn state(&self) -> ReplicateState {
+        ReplicateState { looks: self.looks.clone(), sums: self.sums.clone(), charts: self.charts.clone() }
     }
 
-    /// Largest deviation of output `j` from the linear fit so far.
-    pub fn farthest(&self, j: usize) -> f64 {
-        self.sums.farthest[j]
+    /// What it said after every doubling.
+    pub fn looks(&self) -> &[Look] {
+        &self.looks
     }
 
     /// Whether the points are a net's.
@@ -94,7 +110,7 @@ impl Replicate {
     /// This replicate's moments on the read components, noise added exactly. With B0 the fit, E\[z\] = 0 and
     /// E\[z z'\] = I: Gamma = B0' + E\[z e'\], C = F Gamma,
     /// S = B0 B0' + B0 E\[z e'\] + E\[e z'\] B0' + Cov(e) + R.
-    pub fn moments(&self, question: &Question<'_>, pilot: &Pilot, noise: &DMatrix<f64>) -> Moments {
+    fn moments(&self, question: &Question<'_>, pilot: &Pilot, noise: &DMatrix<f64>) -> Moments {
         let (a, p) = (question.inputs(), question.outputs());
         let means = pilot.controls.means(&self.sums);
         let slope = &pilot.slope;
@@ -121,7 +137,7 @@ mod tests {
     use crate::reference::control::Controls;
     use crate::reference::estimate::combine;
     use crate::reference::foresight::Foresight;
-    use crate::reference::net::Directions;
+    use crate::reference::net::{BLOCK, Directions};
     use crate::reference::stream::Key;
     use crate::reference::witness::{Testimony, hear};
     use crate::suite::Case;

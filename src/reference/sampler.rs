@@ -1,16 +1,19 @@
-use nalgebra::DMatrix;
+use nalgebra::{DMatrix, DVector};
 use rayon::prelude::*;
 
 use super::chart::CircularSum;
 use super::estimate::{PointSource, Reference, Soundness, combine, worst_standardised};
 use super::foresight::Foresight;
+use super::net::BLOCK;
 use super::pilot::{Pilot, Question};
 use super::replicate::Replicate;
 use super::settings::{SamplerError, SamplerSettings};
+use super::state::{Look, ResumeError, SamplerState};
 use super::stream::Key;
 use super::witness::{Testimony, hear};
 use crate::gaussian::{Gaussian, Marginal, Moments, wrap};
 use crate::sensor::Sensor;
+use crate::shard::Shard;
 use crate::suite::Case;
 
 /// Below this resultant length an angle has no mean direction to centre its chart on. Ours, no source: at 0.1
@@ -44,7 +47,8 @@ pub struct Sampler<'a> {
     noise: DMatrix<f64>,
     settings: SamplerSettings,
     replicates: Vec<Replicate>,
-    blocks: u64,
+    /// How many doublings were taken; the replicates may know more of them, from a state.
+    taken: usize,
 }
 
 impl<'a> Sampler<'a> {
@@ -53,8 +57,16 @@ impl<'a> Sampler<'a> {
     /// # Errors
     /// [`SamplerError`] if there are fewer than two replicates or the cap does not leave each 256 samples.
     pub fn new(case: &'a Case, settings: SamplerSettings) -> Result<Self, SamplerError> {
+        Self::of_share(case, settings, Shard::WHOLE)
+    }
+
+    /// As [`Sampler::new`], with the replicates of `share` only: its references are no one's.
+    pub(super) fn of_share(case: &'a Case, settings: SamplerSettings, share: Shard) -> Result<Self, SamplerError> {
+        settings.check()?;
+        settings.check_share(share)?;
         let key = Key::new(settings.seed, &case.question());
-        Self::of_parts(case.sensor(), case.prior(), case.marginal(), case.noise_or_zero(), key, settings)
+        let parts = (case.sensor(), case.prior(), case.marginal());
+        Self::assemble(parts, case.noise_or_zero(), key, settings, share)
     }
 
     /// A sampler of a sensor of the caller's own; `marginal` is the prior's on the components that the sensor
@@ -70,6 +82,16 @@ impl<'a> Sampler<'a> {
         key: Key,
         settings: SamplerSettings,
     ) -> Result<Self, SamplerError> {
+        Self::assemble((sensor, prior, marginal), noise, key, settings, Shard::WHOLE)
+    }
+
+    fn assemble(
+        (sensor, prior, marginal): (&'a dyn Sensor, &'a Gaussian, &'a Marginal),
+        noise: DMatrix<f64>,
+        key: Key,
+        settings: SamplerSettings,
+        share: Shard,
+    ) -> Result<Self, SamplerError> {
         settings.check()?;
         let law = marginal.law();
         let question = Question {
@@ -82,24 +104,64 @@ impl<'a> Sampler<'a> {
         };
         let pilot = Pilot::run(&question);
         let foresight = Foresight::look(&question, &pilot);
-        let replicates = (0..settings.replicates as u64)
-            .map(|r| Replicate::new(r, settings.log2(), &question, &pilot))
+        let replicates = (0..settings.replicates)
+            .filter(|&r| share.holds(r))
+            .map(|r| Replicate::new(r as u64, settings.log2(), &question, &pilot))
             .collect();
-        Ok(Self { question, pilot, foresight, marginal, prior, noise, settings, replicates, blocks: 0 })
+        Ok(Self { question, pilot, foresight, marginal, prior, noise, settings, replicates, taken: 0 })
+    }
+
+    /// A sampler of `case` that has `state` behind it.
+    ///
+    /// It starts before the first sample, as a new one does, and gives the same bits at every doubling; as far as the
+    /// state reaches, doubling costs nothing.
+    ///
+    /// # Errors
+    /// [`ResumeError`] if the settings cannot be meant, or the state is not one of this case under these settings.
+    pub fn resume(case: &'a Case, settings: SamplerSettings, state: SamplerState) -> Result<Self, ResumeError> {
+        let mut sampler = Self::new(case, settings)?;
+        sampler.take_up(state)?;
+        Ok(sampler)
+    }
+
+    /// Takes up what others found of the same replicates.
+    pub(super) fn take_up(&mut self, state: SamplerState) -> Result<(), ResumeError> {
+        let controls = self.pilot.controls.basis.len();
+        state.check(&self.question, controls, &self.settings, self.replicates.len())?;
+        for (replicate, state) in self.replicates.iter_mut().zip(state.replicates) {
+            replicate.take_up(state);
+        }
+        Ok(())
+    }
+
+    /// Everything sampled so far, and in the state that this sampler began with.
+    pub fn state(&self) -> SamplerState {
+        SamplerState { replicates: self.replicates.iter().map(Replicate::state).collect() }
     }
 
     /// Samples of h so far, all replicates together.
     pub fn points(&self) -> u64 {
-        self.replicates.iter().map(Replicate::points).sum()
+        self.blocks() * BLOCK as u64 * self.replicates.len() as u64
+    }
+
+    fn blocks(&self) -> u64 {
+        self.looks().next().map_or(0, |look| look.blocks)
+    }
+
+    /// What each replicate said after the latest doubling.
+    fn looks(&self) -> impl Iterator<Item = &Look> {
+        self.replicates.iter().filter_map(|r| r.looks()[..self.taken].last())
     }
 
     /// Doubles the number of points (the first time: takes the first 1024 a replicate), within the cap.
     /// Returns whether there was room for any.
     pub fn deepen(&mut self) -> bool {
-        let Some(blocks) = self.settings.blocks_after(self.blocks) else { return false };
-        self.blocks = blocks;
-        let (question, pilot) = (&self.question, &self.pilot);
-        self.replicates.par_iter_mut().for_each(|r| r.deepen(blocks, question, pilot));
+        let Some(blocks) = self.settings.blocks_after(self.blocks()) else { return false };
+        let (question, pilot, noise) = (&self.question, &self.pilot, &self.noise);
+        if self.replicates.iter().any(|r| r.looks().len() == self.taken) {
+            self.replicates.par_iter_mut().for_each(|r| r.deepen(blocks, question, pilot, noise));
+        }
+        self.taken += 1;
         true
     }
 
@@ -120,14 +182,15 @@ impl<'a> Sampler<'a> {
         if reference.soundness == Soundness::Refused {
             return reference;
         }
-        let read: Vec<Moments> =
-            self.replicates.iter().map(|r| r.moments(&self.question, &self.pilot, &self.noise)).collect();
+        let read: Vec<Moments> = self.looks().map(|look| (&look.moments).into()).collect();
         let (mut moments, error) = combine(&read);
         // Angular means are taken from the reference, which has unwrapped them.
         moments.mean.copy_from(&reference.moments.mean);
         let error = Moments { mean: reference.standard_error.mean.clone(), ..error };
-        let chart = &self.replicates[0].charts().centre;
-        let (soundness, reason) = match hear(&self.question, &self.noise, chart, &moments, &error, &self.foresight)
+        let Some(chart) = self.looks().next().map(|look| DVector::from_column_slice(&look.centre)) else {
+            return reference;
+        };
+        let (soundness, reason) = match hear(&self.question, &self.noise, &chart, &moments, &error, &self.foresight)
         {
             Testimony::Agrees => return self.with_foresight(reference),
             Testimony::Disagrees(reason) => (Soundness::Disputed, reason),
@@ -142,12 +205,8 @@ impl<'a> Sampler<'a> {
     /// # Panics
     /// If nothing was sampled yet.
     pub fn reference(&self) -> Reference {
-        assert!(self.blocks > 0, "a reference before the first sample");
-        let mut replicates: Vec<Moments> = self
-            .replicates
-            .iter()
-            .map(|r| self.lifted(r.moments(&self.question, &self.pilot, &self.noise)))
-            .collect();
+        assert!(self.taken > 0, "a reference before the first sample");
+        let mut replicates: Vec<Moments> = self.looks().map(|look| self.lifted((&look.moments).into())).collect();
         let first = replicates[0].mean.clone();
         for moments in &mut replicates[1..] {
             for (j, &angular) in self.question.angular.iter().enumerate() {
@@ -205,7 +264,7 @@ impl<'a> Sampler<'a> {
         let count = self.points() as f64;
         (0..self.question.outputs())
             .map(|j| {
-                let farthest = self.replicates.iter().map(|r| r.farthest(j)).fold(0.0, f64::max);
+                let farthest = self.looks().map(|look| look.farthest[j]).fold(0.0, f64::max);
                 self.foresight.variance_error(j, farthest, count) / moments.covariance[(j, j)]
             })
             .fold(0.0, f64::max)
@@ -246,16 +305,14 @@ impl<'a> Sampler<'a> {
                 ));
             }
         }
-        self.replicates
-            .iter()
-            .any(|r| r.charts().lost)
-            .then(|| "the mean direction of an angle moved by more than chance allows".into())
+        let lost = self.looks().any(|look| look.lost);
+        lost.then(|| "the mean direction of an angle moved by more than chance allows".into())
     }
 
     /// Resultant length of angular output `j` over all replicates together: the least of theirs would depend on
     /// how many samples each has, and refuse at a first look what more samples would answer.
     fn resultant(&self, j: usize) -> Option<f64> {
-        let circles = self.replicates.iter().filter_map(|r| r.charts().circle(j));
+        let circles = self.looks().filter_map(|look| look.circles[j]);
         circles.reduce(CircularSum::merged).map(|circle| circle.resultant())
     }
 }

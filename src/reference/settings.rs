@@ -1,6 +1,7 @@
 use super::net::BLOCK;
 use super::pilot::FIRST_BLOCKS;
 use crate::lanes::Level;
+use crate::shard::Shard;
 
 /// Independent replicates of a reference unless told otherwise.
 pub const DEFAULT_REPLICATES: usize = 32;
@@ -43,6 +44,15 @@ impl SamplerSettings {
         Ok(())
     }
 
+    /// Checks that a reference has as many replicates as there are shares of them.
+    ///
+    /// # Errors
+    /// [`SamplerError::TooManyShares`] if not.
+    pub fn check_share(&self, share: Shard) -> Result<(), SamplerError> {
+        let (shares, replicates) = (share.of(), self.replicates);
+        if shares > replicates { Err(SamplerError::TooManyShares { shares, replicates }) } else { Ok(()) }
+    }
+
     /// Binary logarithm of the most points of a replicate: nets are filled by doubling.
     pub(super) fn log2(&self) -> u32 {
         (self.cap / self.replicates as u64).max(1).ilog2()
@@ -69,6 +79,14 @@ pub enum SamplerError {
     #[error("{replicates} replicates are too few: a standard error needs at least 2")]
     TooFewReplicates {
         /// Replicates asked for.
+        replicates: usize,
+    },
+    /// There are more shares of the replicates than replicates.
+    #[error("{shares} shares are too many: there are {replicates} replicates to share")]
+    TooManyShares {
+        /// Shares asked for.
+        shares: usize,
+        /// Replicates of a reference.
         replicates: usize,
     },
     /// The cap does not leave one block for each replicate.

@@ -1,3 +1,5 @@
+use serde::{Deserialize, Serialize};
+
 use super::basis::Basis;
 use super::columns::{Column, add_dots, add_totals, raise_to_largest};
 use super::net::BLOCK;
@@ -8,7 +10,8 @@ use crate::lanes::Simd;
 /// z (a) are the standard normals, e (p) the outputs' deviations from the pilot's linear fit: small beside the
 /// outputs themselves, so plain sums keep their digits. Folded block by block in a fixed order and within a block
 /// in eight fixed lanes: the same bits at every level of vector instructions.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
 pub(super) struct Sums {
     pub count: f64,
     /// sum z_i (a).
@@ -37,6 +40,18 @@ impl Sums {
             basis: vec![0.0; controls],
             farthest: vec![0.0; p],
         }
+    }
+
+    /// Whether these are sums of `a` inputs, `p` outputs and `controls` control variates.
+    pub fn fit(&self, a: usize, p: usize, controls: usize) -> bool {
+        let shape = |s: &Self| [s.z.len(), s.e.len(), s.ee.len(), s.ze.len(), s.basis.len(), s.farthest.len()];
+        shape(self) == shape(&Self::empty(a, p, controls))
+    }
+
+    /// Whether every sum is a number.
+    pub fn is_finite(&self) -> bool {
+        let all = [&self.z, &self.e, &self.ee, &self.ze, &self.basis, &self.farthest];
+        self.count.is_finite() && all.into_iter().flatten().all(|v| v.is_finite())
     }
 
     /// Adds a block: z and e one array a coordinate.

@@ -1,10 +1,11 @@
-use std::io::{self, BufWriter, Write};
+use std::io::{self, Write};
 use std::path::{Path, PathBuf};
 
 use tempfile::NamedTempFile;
 
 use super::{manifest, records, scores_csv};
 use crate::survey::SurveyResult;
+use crate::whole_file::WholeFile;
 
 /// The results folder of one suite, `<out>/<suite>/`.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -55,28 +56,10 @@ impl ResultsFolder {
     fn file(&self, name: &str, fill: impl FnOnce(&mut dyn Write) -> io::Result<()>) -> Result<(), FolderError> {
         let path = self.0.join(name);
         let attempt = || {
-            let mut file = NamedTempFile::new_in(&self.0)?;
-            let mut buffered = BufWriter::new(&mut file);
-            fill(&mut buffered)?;
-            buffered.flush()?;
-            drop(buffered);
-            readable_by_all(&file)?;
-            file.as_file().sync_all()?;
-            file.persist(&path).map_err(|e| e.error)?;
-            Ok(())
+            let mut file = WholeFile::create(&path)?;
+            fill(&mut file)?;
+            file.finish_on_disk()
         };
         attempt().map_err(|source| FolderError { path: path.clone(), source })
     }
-}
-
-/// A temporary file is private to its owner; a result is as open as any file.
-#[cfg(unix)]
-fn readable_by_all(file: &NamedTempFile) -> io::Result<()> {
-    use std::os::unix::fs::PermissionsExt;
-    file.as_file().set_permissions(std::fs::Permissions::from_mode(0o644))
-}
-
-#[cfg(not(unix))]
-fn readable_by_all(_: &NamedTempFile) -> io::Result<()> {
-    Ok(())
 }

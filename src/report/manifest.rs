@@ -14,6 +14,8 @@ struct Manifest<'a> {
     seed: u64,
     settings: Settings<'a>,
     machine: Machine,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    shard: Option<ShardEntry>,
     cases: Cases,
     samples: u64,
     times: Times,
@@ -51,6 +53,15 @@ struct Machine {
     cores: usize,
     architecture: &'static str,
     system: &'static str,
+}
+
+/// Which part of a shared survey this is.
+#[derive(Serialize)]
+struct ShardEntry {
+    part: usize,
+    of: usize,
+    /// Cases of all parts together.
+    suite_cases: usize,
 }
 
 #[derive(Serialize)]
@@ -101,7 +112,12 @@ pub(super) fn write(survey: &SurveyResult<'_>, to: &mut dyn Write) -> io::Result
             architecture: std::env::consts::ARCH,
             system: std::env::consts::OS,
         },
-        cases: Cases { asked: suite.cases.len(), finished: survey.cases.len(), complete: survey.is_complete() },
+        shard: plan.shard.map(|shard| ShardEntry {
+            part: shard.part(),
+            of: shard.of(),
+            suite_cases: suite.cases.len(),
+        }),
+        cases: Cases { asked: survey.asked(), finished: survey.cases.len(), complete: survey.is_complete() },
         samples: survey.points(),
         times: Times {
             started: humantime::format_rfc3339_seconds(survey.started).to_string(),

@@ -3,10 +3,13 @@
 mod catalogue;
 mod folder;
 mod manifest;
+mod merge;
+mod part;
 mod records;
 mod scores_csv;
 mod table;
 
 pub use catalogue::{method_table, score_table, sensor_table};
 pub use folder::{FolderError, ResultsFolder};
+pub use merge::{MergeError, Merged, merge};
 pub use table::{CAUTION, write_summary};

@@ -45,9 +45,10 @@ pub fn write_summary(survey: &SurveyResult<'_>, summary: &Summary, to: &mut dyn 
     let suite = survey.suite;
     writeln!(to, "{}", wrapped(&format!("{} - {}", suite.name, suite.title), 0))?;
     let facts = format!(
-        "{} of {} cases, {:.3e} samples in {:.1} s; references to {:e} (worst standardised standard error)",
+        "{}{} of {} cases, {:.3e} samples in {:.1} s; references to {:e} (worst standardised standard error)",
+        survey.plan.shard.map_or(String::new(), |shard| format!("part {shard}: ")),
         summary.cases,
-        suite.cases.len(),
+        survey.asked(),
         survey.points() as f64,
         survey.sampling_time.as_secs_f64(),
         survey.plan.sampler.precision,

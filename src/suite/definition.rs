@@ -215,7 +215,7 @@ fn families(root: &Node, name: &str) -> Result<Vec<Family>, SuiteError> {
 }
 
 /// Lower-case hexadecimals.
-pub(super) fn hex(bytes: &[u8]) -> String {
+pub(crate) fn hex(bytes: &[u8]) -> String {
     bytes.iter().fold(String::with_capacity(2 * bytes.len()), |mut text, byte| {
         // Writing to a string cannot fail.
         let _ = write!(text, "{byte:02x}");

@@ -83,4 +83,5 @@ pub use bundled::{Bundled, DEMONSTRATION};
 pub(crate) use case::rows;
 pub use case::{Case, CaseError};
 pub use definition::Suite;
+pub(crate) use definition::hex;
 pub use error::SuiteError;

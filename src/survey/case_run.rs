@@ -73,16 +73,15 @@ fn candidate(case: &Case, method: &MethodSpec) -> Result<Candidate, Refusal> {
 }
 
 /// Samples, scores and judges one case: deepens the reference until it is as precise as asked and every
-/// verdict is decided, or the cap is reached. `None` when `stop` came first.
+/// verdict is decided, or the cap is reached. `None` when `stop` came first; `sampler` keeps what was sampled.
 pub(super) fn run_case(
     case: &Case,
     index: usize,
     plan: &SurveyPlan,
+    sampler: &mut Sampler<'_>,
     stop: &dyn Fn() -> bool,
 ) -> Option<CaseResult> {
     let candidates: Vec<Result<Candidate, Refusal>> = plan.methods.iter().map(|m| candidate(case, m)).collect();
-    // The plan has checked the cap already.
-    let mut sampler = Sampler::new(case, plan.sampler).ok()?;
     loop {
         if stop() {
             return None;
@@ -162,7 +161,8 @@ mod tests {
             [noise]\nsd = \"0.5 deg\"\n";
         let suite = Suite::from_text("around", "around.toml", text, None).unwrap();
         let plan = SurveyPlan::new(&suite, &SurveySettings { cap: Some(1 << 17), ..Default::default() }).unwrap();
-        let result = run_case(&suite.cases[0], 0, &plan, &|| false).unwrap();
+        let mut sampler = Sampler::new(&suite.cases[0], plan.sampler).unwrap();
+        let result = run_case(&suite.cases[0], 0, &plan, &mut sampler, &|| false).unwrap();
         assert_eq!(result.reference.soundness, Soundness::Refused);
         assert!(matches!(result.floor, Floor::Known(e) if e.value > 1.0), "{:?}", result.floor);
         assert_eq!(result.floor_standing, Standing::Open);

@@ -1,13 +1,17 @@
 //! Surveys: every case of a suite sampled, every method scored and judged, cases over threads.
 
 mod case_run;
+mod kept;
 mod run;
 mod settings;
+mod share;
 mod summary;
 mod timing;
 
+pub use crate::shard::{Shard, ShardError};
 pub use case_run::{Answer, Answered, CaseResult, Stop};
 pub use run::{SurveyResult, Watch, survey};
 pub use settings::{SurveyError, SurveyPlan, SurveySettings};
+pub use share::{ShareResult, sample_share};
 pub use summary::{MethodSummary, Summary, summarise};
 pub use timing::{Cost, Quartiles, Timing, time_methods};

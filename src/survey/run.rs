@@ -2,7 +2,8 @@ use std::time::{Duration, Instant, SystemTime};
 
 use rayon::prelude::*;
 
-use super::case_run::{CaseResult, run_case};
+use super::case_run::CaseResult;
+use super::kept::run_kept_case;
 use super::settings::SurveyPlan;
 use super::timing::{Timing, time_methods};
 use crate::suite::Suite;
@@ -14,6 +15,10 @@ pub trait Watch: Sync {
 
     /// Whether the survey should stop; what is finished stays.
     fn stop(&self) -> bool;
+
+    /// Something went otherwise than the user might think, and the survey goes on; nothing is done with it unless this
+    /// is written.
+    fn note(&self, _text: &str) {}
 }
 
 /// What a survey of one suite found.
@@ -36,9 +41,15 @@ pub struct SurveyResult<'a> {
 }
 
 impl SurveyResult<'_> {
-    /// Whether every case was finished.
+    /// How many cases there were to do: the suite's, or this part's share of them.
+    pub fn asked(&self) -> usize {
+        let cases = self.suite.cases.len();
+        self.plan.shard.map_or(cases, |shard| shard.share(cases))
+    }
+
+    /// Whether every one of them was finished.
     pub fn is_complete(&self) -> bool {
-        self.cases.len() == self.suite.cases.len()
+        self.cases.len() == self.asked()
     }
 
     /// Samples taken in all cases.
@@ -50,7 +61,8 @@ impl SurveyResult<'_> {
 /// Surveys a suite on rayon's current threads: samples, scores and judges its cases in parallel, then (when
 /// `timed` and not stopped) times the methods with nothing else running.
 ///
-/// Everything but the times is the same to the bit on any number of threads.
+/// Everything but the times is the same to the bit on any number of threads, and whatever the plan's store holds. A part
+/// of a survey is not timed: parts may run on different machines, whose times do not compare.
 pub fn survey<'a>(suite: &'a Suite, plan: &'a SurveyPlan, timed: bool, watch: &dyn Watch) -> SurveyResult<'a> {
     let started = SystemTime::now();
     let clock = Instant::now();
@@ -61,13 +73,16 @@ pub fn survey<'a>(suite: &'a Suite, plan: &'a SurveyPlan, timed: bool, watch: &d
         // One case at a time: some take a thousand times longer than others.
         .with_max_len(1)
         .filter_map(|(index, case)| {
-            let result = run_case(case, index, plan, &|| watch.stop())?;
+            if plan.shard.is_some_and(|shard| !shard.holds(index)) {
+                return None;
+            }
+            let result = run_kept_case(case, index, plan, watch)?;
             watch.case_done(result.reference.points);
             Some(result)
         })
         .collect();
     let sampling_time = clock.elapsed();
     let clock = Instant::now();
-    let timing = (timed && !watch.stop()).then(|| time_methods(suite, &plan.methods));
+    let timing = (timed && plan.shard.is_none() && !watch.stop()).then(|| time_methods(suite, &plan.methods));
     SurveyResult { suite, plan, cases, timing, started, sampling_time, timing_time: clock.elapsed() }
 }

@@ -1,5 +1,6 @@
+use super::Shard;
 use crate::method::{MethodSpec, default_methods};
-use crate::reference::{SamplerError, SamplerSettings};
+use crate::reference::{SamplerError, SamplerSettings, Store};
 use crate::suite::Suite;
 use crate::trust::{Judge, Limits};
 
@@ -14,6 +15,10 @@ pub struct SurveySettings {
     pub cap: Option<u64>,
     /// Methods to score.
     pub methods: Option<Vec<MethodSpec>>,
+    /// The part of the cases to do; all of them unless given.
+    pub shard: Option<Shard>,
+    /// Where references are kept for later surveys; nowhere unless given.
+    pub store: Option<Store>,
 }
 
 /// What a survey of one suite will do: the user's word, else the suite's, else the default.
@@ -27,6 +32,10 @@ pub struct SurveyPlan {
     pub limits: Limits,
     /// Who judges.
     pub judge: Judge,
+    /// The part of the cases to do.
+    pub shard: Option<Shard>,
+    /// Where references are kept.
+    pub store: Option<Store>,
 }
 
 /// Why a survey cannot begin.
@@ -77,6 +86,7 @@ impl SurveyPlan {
             }
         }
         let judge = Judge::new(suite.limits, sampler.replicates, sampler.looks());
-        Ok(Self { sampler, methods, limits: suite.limits, judge })
+        let (shard, store) = (settings.shard, settings.store.clone());
+        Ok(Self { sampler, methods, limits: suite.limits, judge, shard, store })
     }
 }

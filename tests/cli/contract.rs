@@ -213,6 +213,8 @@ pub struct Manifest {
     pub seed: u64,
     pub settings: Settings,
     pub machine: Machine,
+    /// Only of a part.
+    pub shard: Option<Shard>,
     pub cases: Cases,
     pub samples: u64,
     pub times: Times,
@@ -253,6 +255,14 @@ pub struct Machine {
     pub cores: u64,
     pub architecture: String,
     pub system: String,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Shard {
+    pub part: usize,
+    pub of: usize,
+    pub suite_cases: usize,
 }
 
 #[derive(Debug, Deserialize)]

@@ -95,6 +95,16 @@ pub fn names(folder: &Path) -> Vec<String> {
     names
 }
 
+/// Asserts that files which hold no time are the same to the byte in two results folders.
+pub fn assert_same(desk: &Desk, one: &str, other: &str) {
+    for name in ["cases.jsonl", "references.jsonl", "scores.csv"] {
+        // Not assert_eq: megabytes help nobody.
+        let (left, right) = (desk.read(&format!("{one}/{name}")), desk.read(&format!("{other}/{name}")));
+        let line = left.lines().zip(right.lines()).position(|(a, b)| a != b);
+        assert!(left == right, "{one} and {other} differ in {name}, first in line {line:?}");
+    }
+}
+
 /// Asserts that no line is wider than a report may be; the path of the results is as long as it is.
 pub fn assert_narrow(report: &str) {
     for line in report.lines().filter(|line| !line.trim_start().starts_with("Written to ")) {

@@ -9,3 +9,5 @@ mod endings;
 mod odd_input;
 mod options;
 mod results;
+mod shards;
+mod store;

@@ -5,7 +5,7 @@ use std::collections::{HashMap, HashSet};
 use gaussworthy::method::default_methods;
 
 use crate::contract::{CaseRecord, Manifest, MomentsRecord, Row, Soundness, Verdict};
-use crate::desk::{CAUTION, Desk, FILES, assert_narrow, names};
+use crate::desk::{CAUTION, Desk, FILES, assert_narrow, assert_same, names};
 
 /// The shape of a matrix of optional numbers, all of which must be there.
 fn full_shape(rows: &[Vec<Option<f64>>]) -> (usize, usize) {
@@ -22,7 +22,7 @@ fn smoke_leaves_every_file_as_the_formats_say() {
     assert_narrow(&out);
     assert!(out.contains(CAUTION) && out.contains("12 of 12 cases"), "{out}");
     assert!(out.contains("Written to found/smoke") || cfg!(windows), "{out}");
-    assert_eq!(names(&desk.path("found")), ["smoke"]);
+    assert_eq!(names(&desk.path("found")), [".references", "smoke"]);
     assert_eq!(names(&desk.path("found/smoke")), FILES);
 
     let cases: Vec<CaseRecord> = desk.lines("found/smoke/cases.jsonl");
@@ -119,13 +119,6 @@ fn no_file_tells_of_folders_users_or_hosts() {
     }
 }
 
-/// Files that hold no time must be the same to the byte.
-fn assert_same(desk: &Desk, one: &str, other: &str) {
-    for name in ["cases.jsonl", "references.jsonl", "scores.csv"] {
-        assert_eq!(desk.read(&format!("{one}/{name}")), desk.read(&format!("{other}/{name}")), "{name}");
-    }
-}
-
 #[test]
 fn threads_do_not_matter_and_seeds_do() {
     let desk = Desk::new();
@@ -164,6 +157,6 @@ fn the_cases_of_a_survey_fed_back_give_the_same_answers() {
         "--out",
         "again",
     ]);
-    assert_eq!(names(&desk.path("again")), ["cases"]);
+    assert_eq!(names(&desk.path("again")), [".references", "cases"]);
     assert_same(&desk, "first/smoke", "again/cases");
 }
