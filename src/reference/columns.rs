@@ -140,8 +140,8 @@ fn totals<S: Simd, const K: usize, const N: usize>(shared: [&Column; K], own: [&
     let mut sums = [Lanes::<S>::splat(0.0); N];
     for eight in 0..BLOCK / 8 {
         let mut common = Lanes::<S>::splat(1.0);
-        for k in 0..K {
-            let factor = Lanes::from_array(&shared[k].as_chunks().0[eight]);
+        for (k, column) in shared.iter().enumerate() {
+            let factor = Lanes::from_array(&column.as_chunks().0[eight]);
             common = if k == 0 { factor } else { common * factor };
         }
         for n in 0..N {
