@@ -75,6 +75,9 @@ struct Known {
     moments: Moments,
 }
 
+/// A weight w and an exponent c.
+type Term = (Complex<f64>, DVector<Complex<f64>>);
+
 /// A random reading of 1 to 4 components in 1 to 3 outputs, from nearly linear to bent over.
 ///
 /// Each output is a sum of w exp(c'x) with complex c (cos = (e^it + e^-it) / 2, sin = (e^it - e^-it) / 2i), and
@@ -95,7 +98,7 @@ fn waves(index: usize, rng: &mut Pcg64) -> Known {
 
     let i = Complex::new(0.0, 1.0);
     let complex = |j: usize, turn: Complex<f64>| slopes.column(j).map(|v| turn * v);
-    let terms: Vec<Vec<(Complex<f64>, DVector<Complex<f64>>)>> = (0..p)
+    let terms: Vec<Vec<Term>> = (0..p)
         .map(|j| match shapes[j] {
             Shape::Exp => vec![(Complex::new(1.0, 0.0), complex(j, Complex::new(1.0, 0.0)))],
             Shape::Cos => vec![(0.5.into(), complex(j, i)), (0.5.into(), complex(j, -i))],

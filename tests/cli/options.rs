@@ -36,7 +36,7 @@ fn precision_is_reached_and_the_cap_is_kept() {
     };
     let (fine, _) = survey("fine", &["--precision", "1e-5"]);
     let (coarse, _) = survey("coarse", &["--precision", "5e-2"]);
-    let (capped, said) = survey("capped", &["--precision", "1e-9", "--cap", "40000"]);
+    let (capped, said) = survey("capped", &["--precision", "1e-7", "--cap", "40000"]);
     let cases: Vec<CaseRecord> = desk.lines("fine/smoke/cases.jsonl");
     assert_eq!(manifest(&desk, "fine/smoke").settings.precision, 1e-5);
     assert_eq!(manifest(&desk, "capped/smoke").settings.cap, 40_000);
