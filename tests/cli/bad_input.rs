@@ -117,7 +117,12 @@ fn options_that_cannot_be_meant_are_refused() {
         ("--precision", "nan", "suite `smoke`: precision NaN ", "above 0 and below 1"),
         ("--precision", "1", "suite `smoke`: precision 1 ", "above 0 and below 1"),
         ("--cap", "1000", "suite `smoke`: a cap of 1000 samples ", "at least 32768"),
-        ("--methods", "tailor-1", "--methods tailor-1: ", "there is no method `tailor-1`; did you mean `taylor-1`? give one of taylor-1"),
+        (
+            "--methods",
+            "tailor-1",
+            "--methods tailor-1: ",
+            "there is no method `tailor-1`; did you mean `taylor-1`? give one of taylor-1",
+        ),
         ("--methods", "unscented:kapa=1", "--methods unscented:kapa=1: kapa: ", "`kappa`"),
         ("--methods", "gauss-hermite:order=21", "--methods gauss-hermite:order=21: order: ", "2 to 20"),
         ("--methods", "taylor-1,taylor-1", "suite `smoke`: method `taylor-1` stands twice", ""),
