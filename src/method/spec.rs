@@ -205,7 +205,7 @@ mod tests {
             (json!({"id": 3}), "id", format!("is 3; {known}")),
             // A NaN of a TOML file arrives as null: it must not pass for the default.
             (json!({"id": "unscented", "kappa": null}), "kappa", "is null; give a number".into()),
-            (json!({"id": "unscented", "kappa": "1"}), "kappa", "invalid type: string \"1\", expected f64".into()),
+            (json!({"id": "unscented", "kappa": "1"}), "kappa", "is the text \"1\"; give a number".into()),
         ];
         for (object, key, message) in objects {
             assert_eq!(from(object.clone()).unwrap_err(), BuildError::new(key, message), "{object}");
