@@ -1,5 +1,6 @@
 use super::basis::Basis;
 use super::block::Block;
+use super::columns::Column;
 use super::net::{BLOCK, Net};
 use super::pilot::{Pilot, Question};
 
@@ -29,18 +30,15 @@ impl Foresight {
     pub fn look(question: &Question<'_>, pilot: &Pilot) -> Self {
         let (a, p) = (question.inputs(), question.outputs());
         let Ok(net) = Net::new(&question.key.ahead(), 0, a, LOG2) else { return Self::default() };
-        let inflation = 1.0 + 3.0 / (a.max(1) as f64).sqrt();
-        let scale = inflation.sqrt();
         let mut block = Block::new(question.level, a, p, &Basis::new(a, 0));
         let mut points = vec![Vec::with_capacity(1 << LOG2); p];
         for b in 0..net.blocks() {
             block.take_net(&net, b);
-            block.z.as_flattened_mut().iter_mut().for_each(|z| *z *= scale);
+            let weights = reach_out(&mut block.z);
             question.evaluate(&mut block);
             block.subtract(&pilot.centre, &question.angular, &pilot.slope);
             for k in 0..BLOCK {
-                let squared: f64 = block.z.iter().map(|z| z[k] * z[k]).sum();
-                let weight = (0.5 * (a as f64 * inflation.ln() - (1.0 - 1.0 / inflation) * squared)).exp();
+                let weight = weights[k];
                 for (points, e) in points.iter_mut().zip(&block.e) {
                     // Where h is undefined far out the samples themselves will say so, if they ever come there.
                     if (weight * e[k].powi(4)).is_finite() {
@@ -76,4 +74,19 @@ impl Foresight {
         });
         Some(largest / sum)
     }
+}
+
+/// Turns z ~ N(0, I) into z ~ N(0, s^2 I) and returns the weights that make up for it.
+pub(super) fn reach_out(z: &mut [Column]) -> Column {
+    let a = z.len() as f64;
+    let inflation = 1.0 + 3.0 / a.max(1.0).sqrt();
+    let scale = inflation.sqrt();
+    let mut squared = [0.0; BLOCK];
+    for column in z {
+        for (z, squared) in column.iter_mut().zip(&mut squared) {
+            *z *= scale;
+            *squared += *z * *z;
+        }
+    }
+    squared.map(|s| (0.5 * (a * inflation.ln() - (1.0 - 1.0 / inflation) * s)).exp())
 }

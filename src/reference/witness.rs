@@ -8,7 +8,7 @@ use statrs::distribution::{ContinuousCDF, StudentsT};
 use super::basis::Basis;
 use super::block::Block;
 use super::estimate::combine;
-use super::foresight::Foresight;
+use super::foresight::{Foresight, reach_out};
 use super::net::{BLOCK, Net};
 use super::pilot::Question;
 use super::tails::fit_pareto;
@@ -91,41 +91,38 @@ impl Sample {
         let (a, p) = (question.inputs(), question.outputs());
         let noise_root = SquareRoot::of(noise).into_factor();
         let mut deviations = vec![Vec::with_capacity(BATCHES as usize * BATCH); p];
-        let (mut z, mut w) = (DVector::zeros(a), DVector::zeros(p));
-        let (mut x, mut dx, mut y) = (DVector::zeros(a), DVector::zeros(a), DVector::zeros(p));
+        let [mut z, mut dx, mut x] = [(); 3].map(|()| vec![0.0; a * BATCH]);
+        let [mut w, mut y] = [(); 2].map(|()| vec![0.0; p * BATCH]);
         let batches: Vec<Moments> = (0..BATCHES)
             .map(|b| {
                 let mut rng = question.key.witness(b);
-                let mut sum = Moments::zeros(a, p);
-                let mut dx_sum = DVector::zeros(a);
-                for _ in 0..BATCH {
-                    z.iter_mut().chain(w.iter_mut()).for_each(|v| *v = rng.sample(StandardNormal));
-                    dx.gemv(1.0, &question.root, &z, 0.0);
-                    x.copy_from(question.prior.mean());
-                    x += &dx;
-                    question.sensor.value(x.as_slice(), y.as_mut_slice());
-                    y -= chart;
-                    for (v, &angular) in y.iter_mut().zip(&question.angular) {
-                        if angular {
-                            *v = wrap(*v);
-                        }
-                    }
-                    y.gemv(1.0, &noise_root, &w, 1.0);
-                    sum.mean += &y;
-                    dx_sum += &dx;
-                    sum.covariance.ger(1.0, &y, &y, 1.0);
-                    sum.cross_covariance.ger(1.0, &dx, &y, 1.0);
-                    for (all, v) in deviations.iter_mut().zip(y.iter()) {
-                        all.push(*v);
-                    }
+                z.iter_mut().chain(w.iter_mut()).for_each(|v| *v = rng.sample(StandardNormal));
+                for i in 0..a {
+                    let row = &mut dx[i * BATCH..(i + 1) * BATCH];
+                    row.fill(0.0);
+                    (0..a).for_each(|k| add_scaled(row, question.root[(i, k)], &z[k * BATCH..(k + 1) * BATCH]));
+                    let mean = question.prior.mean()[i];
+                    x[i * BATCH..(i + 1) * BATCH].iter_mut().zip(row.iter()).for_each(|(x, d)| *x = mean + d);
                 }
-                let (count, free) = (BATCH as f64, (BATCH - 1) as f64);
-                sum.covariance.ger(-1.0 / count, &sum.mean, &sum.mean, 1.0);
-                sum.cross_covariance.ger(-1.0 / count, &dx_sum, &sum.mean, 1.0);
+                question.sensor.values(BATCH, &x, &mut y);
+                for j in 0..p {
+                    let row = &mut y[j * BATCH..(j + 1) * BATCH];
+                    row.iter_mut().for_each(|v| *v -= chart[j]);
+                    if question.angular[j] {
+                        row.iter_mut().for_each(|v| *v = wrap(*v));
+                    }
+                    (0..p).for_each(|k| add_scaled(row, noise_root[(j, k)], &w[k * BATCH..(k + 1) * BATCH]));
+                    deviations[j].extend_from_slice(row);
+                }
+                dx.chunks_exact_mut(BATCH).for_each(|row| {
+                    centre(row);
+                });
+                let mean = DVector::from_iterator(p, y.chunks_exact_mut(BATCH).map(centre));
+                let product = |left: &[f64], right: &[f64]| dot(left, right) / (BATCH - 1) as f64;
                 Moments {
-                    mean: chart + sum.mean / count,
-                    covariance: sum.covariance / free,
-                    cross_covariance: sum.cross_covariance / free,
+                    mean: chart + mean,
+                    covariance: DMatrix::from_fn(p, p, |j, k| product(column(&y, j), column(&y, k))),
+                    cross_covariance: DMatrix::from_fn(a, p, |i, j| product(column(&dx, i), column(&y, j))),
                 }
             })
             .collect();
@@ -134,11 +131,42 @@ impl Sample {
     }
 }
 
-/// Standard errors that a sample of the witness's size has, from the variances of its integrands over a net.
+fn column(columns: &[f64], i: usize) -> &[f64] {
+    &columns[i * BATCH..(i + 1) * BATCH]
+}
+
+/// Takes the mean out of a column and returns it.
+fn centre(column: &mut [f64]) -> f64 {
+    let mean = in_lanes(column, |k| column[k]) / column.len() as f64;
+    column.iter_mut().for_each(|v| *v -= mean);
+    mean
+}
+
+fn dot(left: &[f64], right: &[f64]) -> f64 {
+    in_lanes(left, |k| left[k] * right[k])
+}
+
+/// Sum of `term` over the places of `column` in eight fixed lanes: one sum would wait for every addition.
+fn in_lanes(column: &[f64], term: impl Fn(usize) -> f64) -> f64 {
+    let mut lanes = [0.0; 8];
+    for k in 0..column.len() {
+        lanes[k % 8] += term(k);
+    }
+    lanes.iter().sum()
+}
+
+fn add_scaled(to: &mut [f64], factor: f64, from: &[f64]) {
+    if factor != 0.0 {
+        to.iter_mut().zip(from).for_each(|(t, f)| *t += factor * f);
+    }
+}
+
+/// Standard errors that a sample of the witness's size has, from the variances of its integrands over a net that
+/// reaches further out than the prior ([`Foresight`]): rare samples are weighed though none may have been met.
 struct Spread(Moments);
 
 impl Spread {
-    const LOG2: u32 = 16;
+    const LOG2: u32 = 13;
 
     /// `None` where nets do not reach.
     fn measure(
@@ -161,6 +189,7 @@ impl Spread {
         let (mut z, mut w) = (DVector::zeros(a), DVector::zeros(p));
         for b in 0..net.blocks() {
             block.take_net(&net, b);
+            let weights = reach_out(&mut block.z);
             question.evaluate(&mut block);
             block.subtract(chart, &question.angular, &DMatrix::zeros(p, a));
             let mut rng = key.witness(b);
@@ -170,8 +199,8 @@ impl Spread {
                 let mut d = DVector::from_fn(p, |j, _| block.deviation[j][k]) - &offset;
                 d.gemv(1.0, &noise_root, &w, 1.0);
                 let dx = &question.root * &z;
-                add(&mut first, &d, &dx, |v| v);
-                add(&mut second, &d, &dx, |v| v * v);
+                add(&mut first, &d, &dx, |v| weights[k] * v);
+                add(&mut second, &d, &dx, |v| weights[k] * v * v);
             }
         }
         let count = (net.blocks() * BLOCK as u64) as f64;
