@@ -12,7 +12,7 @@ use crate::contract::Manifest;
 use crate::desk::{Desk, assert_same, names};
 
 /// Thirty-two cases of up to a million samples: a second or two of work.
-const WORK: &str = r#"
+const FLEET: &str = r#"
 precision = 1e-9
 cap = 1_048_576
 [sensor]
@@ -129,11 +129,11 @@ fn wait_for_some(desk: &Desk, folder: &str) {
 #[test]
 fn a_survey_that_was_stopped_goes_on_to_the_files_of_an_undisturbed_one() {
     let desk = Desk::new();
-    desk.write("work.toml", WORK);
-    desk.succeed(&["survey", "work.toml", "--no-timing", "--out", "undisturbed"]);
+    desk.write("fleet.toml", FLEET);
+    desk.succeed(&["survey", "fleet.toml", "--no-timing", "--out", "undisturbed"]);
     for signal in ["-INT", "-TERM", "-KILL"] {
         let out = format!("out{signal}");
-        let arguments = ["survey", "work.toml", "--no-timing", "--threads", "1", "--out", &out];
+        let arguments = ["survey", "fleet.toml", "--no-timing", "--threads", "1", "--out", &out];
         let child = begin(&desk, &arguments);
         wait_for_some(&desk, &format!("{out}/.references"));
         let kill = std::process::Command::new("kill").args([signal, &child.id().to_string()]).status().unwrap();
@@ -142,17 +142,17 @@ fn a_survey_that_was_stopped_goes_on_to_the_files_of_an_undisturbed_one() {
         let said = String::from_utf8(output.stderr).unwrap();
         if signal == "-KILL" {
             assert_eq!(output.status.code(), None, "{said}");
-            assert!(!desk.path(&format!("{out}/work/manifest.json")).exists());
+            assert!(!desk.path(&format!("{out}/fleet/manifest.json")).exists());
         } else {
             assert_eq!(output.status.code(), Some(3), "{said}");
             let manifest: Manifest =
-                serde_json::from_str(&desk.read(&format!("{out}/work/manifest.json"))).unwrap();
+                serde_json::from_str(&desk.read(&format!("{out}/fleet/manifest.json"))).unwrap();
             assert!(!manifest.cases.complete && manifest.cases.finished > 0, "{:?}", manifest.cases);
             let stored = names(&desk.path(&format!("{out}/.references"))).len();
             assert!(stored >= manifest.cases.finished, "{stored} stored, {:?}", manifest.cases);
         }
         desk.succeed(&arguments);
-        assert_same(&desk, "undisturbed/work", &format!("{out}/work"));
+        assert_same(&desk, "undisturbed/fleet", &format!("{out}/fleet"));
     }
 }
 
@@ -160,15 +160,15 @@ fn a_survey_that_was_stopped_goes_on_to_the_files_of_an_undisturbed_one() {
 #[test]
 fn two_surveys_may_share_a_store_at_once() {
     let desk = Desk::new();
-    desk.write("work.toml", WORK);
-    let arguments = |out| ["survey", "work.toml", "--no-timing", "--store", "kept", "--out", out];
+    desk.write("fleet.toml", FLEET);
+    let arguments = |out| ["survey", "fleet.toml", "--no-timing", "--store", "kept", "--out", out];
     let both = ["one", "two"].map(|out| begin(&desk, &arguments(out)));
     for child in both {
         let output = child.wait_with_output().unwrap();
         assert_eq!((output.status.code(), output.stderr.len()), (Some(0), 0));
     }
-    assert_same(&desk, "one/work", "two/work");
-    desk.succeed(&["survey", "work.toml", "--no-timing", "--out", "alone"]);
-    assert_same(&desk, "alone/work", "one/work");
+    assert_same(&desk, "one/fleet", "two/fleet");
+    desk.succeed(&["survey", "fleet.toml", "--no-timing", "--out", "alone"]);
+    assert_same(&desk, "alone/fleet", "one/fleet");
     assert_eq!(names(&desk.path("kept")), names(&desk.path("alone/.references")));
 }
