@@ -344,7 +344,7 @@ fn files_that_are_no_suite_are_refused() {
     assert_eq!(
         Suite::load("harbor-radar", None).unwrap_err().to_string(),
         "harbor-radar: there is no bundled suite of this name; did you mean `harbour-radar`? give one of \
-         harbour-radar, listening-buoys, power-meter, smoke, or the path of a file that ends in .toml"
+         harbour-radar, listening-buoys, power-meter, smoke, or the path of a file that ends in .toml (case records go to --cases)"
     );
 }
 

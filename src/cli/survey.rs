@@ -33,7 +33,7 @@ pub struct Arguments {
     #[arg(long, value_name = "X")]
     precision: Option<f64>,
     /// Most samples a case may take
-    #[arg(long, value_name = "N")]
+    #[arg(long, value_name = "N", value_parser = whole)]
     cap: Option<u64>,
     /// Methods, such as taylor-1,gauss-hermite:order=5 (see `catalogue methods`)
     #[arg(long, value_name = "M,...", value_delimiter = ',')]
@@ -181,4 +181,15 @@ fn methods(labels: &[String]) -> Result<Vec<MethodSpec>, Failure> {
         .iter()
         .map(|label| MethodSpec::parse(label).with_context(|| format!("--methods {label}")).map_err(Failure::Input))
         .collect()
+}
+
+/// A whole number, also written as 1e6.
+fn whole(text: &str) -> Result<u64, String> {
+    // Beyond 2^53 a double does not count any more.
+    const MOST: f64 = 9_007_199_254_740_992.0;
+    match (text.parse::<u64>(), text.parse::<f64>()) {
+        (Ok(number), _) => Ok(number),
+        (_, Ok(number)) if number.fract() == 0.0 && (0.0..MOST).contains(&number) => Ok(number as u64),
+        _ => Err("give a whole number, such as 1000000 or 1e6".into()),
+    }
 }

@@ -135,6 +135,12 @@ fn notes(survey: &SurveyResult<'_>, summary: &Summary) -> Vec<String> {
             notes.push(format!("{count} references are {what}; no verdict rests on them, scores.csv says why."));
         }
     }
+    if summary.noiseless > 0 {
+        notes.push(format!(
+            "{} of {} cases have no noise: R = 0, and some scores are undefined.",
+            summary.noiseless, summary.cases
+        ));
+    }
     if summary.streamed > 0 {
         notes.push(format!(
             "{} references were sampled by plain streams: their sensors read more components than the nets have \

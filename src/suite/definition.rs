@@ -77,7 +77,8 @@ impl Suite {
         let names: Vec<_> = bundled::ALL.iter().map(|suite| suite.name).collect();
         let near = proposal(name_or_path, names.iter().copied());
         let message = format!(
-            "there is no bundled suite of this name; {near}give one of {}, or the path of a file that ends in .toml",
+            "there is no bundled suite of this name; {near}give one of {}, or the path of a file that ends in .toml \
+             (case records go to --cases)",
             names.join(", ")
         );
         Err(SuiteError::of_file(name_or_path, message))

@@ -23,6 +23,8 @@ pub struct Summary {
     pub disputed: usize,
     /// Cases whose reference has a tail so heavy that no standard error can be believed.
     pub heavy_tailed: usize,
+    /// Cases without noise: R = 0.
+    pub noiseless: usize,
     /// Cases sampled by plain streams, for want of nets in so many dimensions.
     pub streamed: usize,
     /// One a method, in the plan's order.
@@ -70,6 +72,7 @@ pub fn summarise(survey: &SurveyResult<'_>) -> Summary {
         refused: count(&|c| c.reference.soundness == Soundness::Refused),
         disputed: count(&|c| c.reference.soundness == Soundness::Disputed),
         heavy_tailed: count(&|c| c.reference.soundness == Soundness::HeavyTailed),
+        noiseless: count(&|c| survey.suite.cases[c.index].noise().is_none()),
         streamed: count(&|c| c.reference.source == PointSource::Streams),
         methods: (0..survey.plan.methods.len()).map(|m| summarise_method(survey, m)).collect(),
     }
