@@ -75,26 +75,3 @@ fn all_levels_give_the_same_bits() {
     }
     for_every_function!(check);
 }
-
-/// An instruction that has not been inlined is a call, and a level made of calls is some ten times slower than the
-/// baseline. Least times of many, so that other work on the machine does not count.
-#[test]
-#[cfg(not(debug_assertions))]
-fn better_levels_are_not_slower() {
-    fn check<F: Function>() {
-        let x = vec![[0.7; 8]; 64];
-        let mut least: Vec<(Level, f64)> = Vec::new();
-        for level in Level::available() {
-            let time = |_| {
-                let start = std::time::Instant::now();
-                std::hint::black_box(map::<F>(level, &x, &x));
-                start.elapsed().as_secs_f64()
-            };
-            least.push((level, (0..200).map(time).fold(f64::INFINITY, f64::min)));
-        }
-        for (level, time) in &least {
-            assert!(*time < 1.5 * least[0].1, "{} takes {level} {} times the baseline", F::NAME, time / least[0].1);
-        }
-    }
-    for_every_function!(check);
-}
