@@ -96,6 +96,14 @@ fn waves(index: usize, rng: &mut Pcg64) -> Known {
         slopes.column_mut(j).scale_mut(0.5);
     }
 
+    for mut slope in slopes.column_iter_mut() {
+        // Below, an output is so nearly a polynomial of its phase that the closed forms lose the digits that count.
+        let sd = slope.dot(&(&covariance * &slope)).sqrt();
+        if sd < 0.05 {
+            slope.scale_mut(0.05 / sd);
+        }
+    }
+
     let i = Complex::new(0.0, 1.0);
     let complex = |j: usize, turn: Complex<f64>| slopes.column(j).map(|v| turn * v);
     let terms: Vec<Vec<Term>> = (0..p)
@@ -144,8 +152,8 @@ fn waves(index: usize, rng: &mut Pcg64) -> Known {
     }
 }
 
-fn known_cases() -> Vec<Known> {
-    let mut rng = random::stream(2024);
+fn known_cases(seed: u64) -> Vec<Known> {
+    let mut rng = random::stream(seed);
     (0..CASES).map(|index| waves(index, &mut rng)).collect()
 }
 
@@ -201,53 +209,61 @@ fn reference(known: &Known) -> Reference {
     sampler.reference()
 }
 
-/// Over seeds the share of one entry a case inside its 95 % interval has a standard deviation of 0.5 % on 2000
-/// cases, entries of one case help a little: a share off by 1.5 % has odds of about 0.3 % a kind. The
-/// Kolmogorov-Smirnov distance of one entry a case is above 1.95 / sqrt(2000) with odds of 0.1 %, the mean of z above
-/// 4 / sqrt(2000) with odds of 1e-4.
+/// How far each entry of `known`'s reference is from the truth, in its standard errors: means, covariances and
+/// cross-covariances. NaN where an entry is known to rounding: it has no chance left in it.
+fn z_scores(known: &Known, reference: &Reference) -> [Vec<f64>; 3] {
+    let Reference { moments: estimate, standard_error: error, .. } = reference;
+    let moments = &known.moments;
+    let p = moments.mean.len();
+    let sd = moments.covariance.diagonal().map(f64::sqrt);
+    let state_sd = known.prior.covariance().diagonal().map(f64::sqrt);
+    let z = |found: f64, exact: f64, error: f64, scale: f64| {
+        if error > 1e-12 * scale { (found - exact) / error } else { f64::NAN }
+    };
+    [
+        (0..p).map(|j| z(estimate.mean[j], moments.mean[j], error.mean[j], sd[j])).collect::<Vec<_>>(),
+        (0..p)
+            .flat_map(|j| (0..=j).map(move |i| (i, j)))
+            .map(|at| z(estimate.covariance[at], moments.covariance[at], error.covariance[at], sd[at.0] * sd[at.1]))
+            .collect(),
+        (0..p)
+            .flat_map(|j| (0..state_sd.len()).map(move |i| (i, j)))
+            .map(|at| {
+                let (found, exact) = (estimate.cross_covariance[at], moments.cross_covariance[at]);
+                z(found, exact, error.cross_covariance[at], state_sd[at.0] * sd[at.1])
+            })
+            .collect(),
+    ]
+}
+
+/// Over seeds the share of one entry a case inside its 95 % interval has a standard deviation of 0.5 % on 2000 cases,
+/// entries of one case help a little: a share off by 1.5 % has odds of about 0.3 % a kind. The Kolmogorov-Smirnov distance
+/// of one entry a case is above 1.95 / sqrt(2000) with odds of 0.1 %.
+///
+/// The far tail, all entries together: beyond the 99.9 % bound of the t law lie 24 of some 24,000; twice that has odds of
+/// 1e-5, and of 1e-3 where a third of the entries of a case go together. Beyond seven standard errors lie 8e-8: none.
 #[test]
 fn standard_errors_of_references_are_true() {
-    let found: Vec<[Vec<f64>; 3]> = known_cases()
-        .par_iter()
-        .map(|known| {
-            let moments = &known.moments;
-            let Reference { moments: estimate, standard_error: error, .. } = reference(known);
-            let p = moments.mean.len();
-            let sd = moments.covariance.diagonal().map(f64::sqrt);
-            let state_sd = known.prior.covariance().diagonal().map(f64::sqrt);
-            // An entry that is known to rounding has no chance left in it.
-            let z = |found: f64, exact: f64, error: f64, scale: f64| {
-                if error > 1e-12 * scale { (found - exact) / error } else { f64::NAN }
-            };
-            [
-                (0..p).map(|j| z(estimate.mean[j], moments.mean[j], error.mean[j], sd[j])).collect::<Vec<_>>(),
-                (0..p)
-                    .flat_map(|j| (0..=j).map(move |i| (i, j)))
-                    .map(|(i, j)| {
-                        let at = (i, j);
-                        z(estimate.covariance[at], moments.covariance[at], error.covariance[at], sd[i] * sd[j])
-                    })
-                    .collect(),
-                (0..p)
-                    .flat_map(|j| (0..state_sd.len()).map(move |i| (i, j)))
-                    .map(|(i, j)| {
-                        let (found, exact) = (estimate.cross_covariance[(i, j)], moments.cross_covariance[(i, j)]);
-                        z(found, exact, error.cross_covariance[(i, j)], state_sd[i] * sd[j])
-                    })
-                    .collect(),
-            ]
-        })
-        .collect();
-    for (k, kind) in ["mean", "covariance", "cross-covariance"].into_iter().enumerate() {
-        let all: Vec<f64> = found.iter().flat_map(|z| z[k].iter().copied()).filter(|z| !z.is_nan()).collect();
-        let one: Vec<f64> = found.iter().map(|z| z[k][0]).filter(|z| !z.is_nan()).collect();
-        assert!(one.len() >= CASES - 20, "{kind}: only {} cases leave something to chance", one.len());
-        let (share, mean) = (covered(&all), one.iter().sum::<f64>() / CASES as f64);
-        let distance = kolmogorov_smirnov(one);
-        println!("{kind}: {} entries, {share:.4} covered, mean z {mean:.3}, distance {distance:.4}", all.len());
-        assert!((0.935..=0.965).contains(&share), "{kind}: {share:.4} of the intervals cover");
-        assert!(mean.abs() < 4.0 / (CASES as f64).sqrt(), "{kind}: mean of z is {mean:.3}");
-        assert!(distance < 1.95 / (CASES as f64).sqrt(), "{kind}: distance {distance:.4} from the t law");
+    for seed in [2024, 977_331] {
+        let found: Vec<[Vec<f64>; 3]> =
+            known_cases(seed).par_iter().map(|known| z_scores(known, &reference(known))).collect();
+        for (k, kind) in ["mean", "covariance", "cross-covariance"].into_iter().enumerate() {
+            let all: Vec<f64> = found.iter().flat_map(|z| z[k].iter().copied()).filter(|z| !z.is_nan()).collect();
+            let one: Vec<f64> = found.iter().map(|z| z[k][0]).filter(|z| !z.is_nan()).collect();
+            assert!(one.len() >= CASES - 20, "{kind}: only {} cases leave something to chance", one.len());
+            let share = covered(&all);
+            let distance = kolmogorov_smirnov(one);
+            println!("{seed}, {kind}: {} entries, {share:.4} covered, distance {distance:.4}", all.len());
+            assert!((0.935..=0.965).contains(&share), "{seed}, {kind}: {share:.4} of the intervals cover");
+            let most = 1.95 / (CASES as f64).sqrt();
+            assert!(distance < most, "{seed}, {kind}: distance {distance:.4} from the t law");
+        }
+        let all: Vec<f64> = found.iter().flatten().flatten().map(|z| z.abs()).filter(|z| !z.is_nan()).collect();
+        let beyond = |bound: f64| all.iter().filter(|z| **z > bound).count();
+        let bound = student().inverse_cdf(0.9995);
+        println!("{seed}: {} of {} beyond {bound:.2}, {} beyond 5", beyond(bound), all.len(), beyond(5.0));
+        assert!(beyond(bound) as f64 <= 2e-3 * all.len() as f64, "{seed}: {} beyond {bound}", beyond(bound));
+        assert_eq!(beyond(7.0), 0, "{seed}: beyond seven standard errors");
     }
 }
 
@@ -259,7 +275,7 @@ fn standard_errors_of_references_are_true() {
 fn standard_errors_of_scores_are_true() {
     let kinds =
         [ScoreKind::MeanError, ScoreKind::VarianceRatioLow, ScoreKind::Excess, ScoreKind::NeesRatio].as_slice();
-    let found: Vec<(ScoreKind, f64)> = known_cases()
+    let found: Vec<(ScoreKind, f64)> = known_cases(2024)
         .par_iter()
         .flat_map_iter(|known| {
             let (answer, outputs) = (taylor(known), &known.sensor.outputs);

@@ -394,5 +394,5 @@ fn the_format_is_raised_when_samples_change() {
     store.save(&case, &settings, &deepened(&case, settings, 2)).unwrap();
     let text = fs::read_to_string(store.path(&case, &settings)).unwrap();
     let checksum = text.rsplit_once("\"sha256\": \"").unwrap().1;
-    assert_eq!((FORMAT, &checksum[..16]), (1, "49c2f5bebf966cc2"));
+    assert_eq!((FORMAT, &checksum[..16]), (2, "9cd07a6d823d64c6"));
 }

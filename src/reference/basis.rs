@@ -41,11 +41,6 @@ impl Basis {
         }
     }
 
-    /// The highest total degree.
-    pub fn degree(&self) -> usize {
-        self.degree
-    }
-
     /// How many polynomials there are.
     pub fn len(&self) -> usize {
         self.terms.len()

@@ -26,20 +26,6 @@ pub(super) fn add_dots<S: Simd>(left: &Column, right: &[Column], sums: &mut [f64
     add_each::<S, 1>([left], right, sums);
 }
 
-/// Raises each entry of `largest` to the largest size in its column.
-#[inline(always)]
-pub(super) fn raise_to_largest<S: Simd>(columns: &[Column], largest: &mut [f64]) {
-    for (column, largest) in columns.iter().zip(largest) {
-        let mut sizes = Lanes::<S>::splat(0.0);
-        for eight in column.as_chunks().0 {
-            sizes = sizes.max(Lanes::from_array(eight).abs());
-        }
-        for size in sizes.to_array() {
-            *largest = largest.max(size);
-        }
-    }
-}
-
 #[inline(always)]
 fn add_each<S: Simd, const K: usize>(shared: [&Column; K], columns: &[Column], sums: &mut [f64]) {
     let (fours, rest) = columns.as_chunks::<ABREAST>();

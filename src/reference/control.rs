@@ -22,12 +22,18 @@ pub(super) struct Controls {
     pub basis: Basis,
     /// One column an integrand, one row a polynomial (K x M).
     coefficients: DMatrix<f64>,
+    /// About the integrands' expectations (M).
+    intercepts: Vec<f64>,
 }
 
 impl Controls {
     /// No control variates.
     pub fn none(a: usize, p: usize) -> Self {
-        Self { basis: Basis::new(a, 0), coefficients: DMatrix::zeros(0, integrands(a, p)) }
+        Self {
+            basis: Basis::new(a, 0),
+            coefficients: DMatrix::zeros(0, integrands(a, p)),
+            intercepts: vec![0.0; integrands(a, p)],
+        }
     }
 
     /// Means of the integrands with the controls' error taken out: e (p), e e' (packed), z e' (p x a).
@@ -45,6 +51,54 @@ impl Controls {
                 .collect()
         };
         Means { e: adjusted(&sums.e), ee: adjusted(&sums.ee), ze: adjusted(&sums.ze) }
+    }
+
+    /// Room to compute point by point what the controls leave of the integrands.
+    pub fn residuals(&self) -> Residuals<'_> {
+        let room = |n: usize| vec![[0.0; BLOCK]; n];
+        let (columns, products) = (room(self.basis.columns()), room(self.basis.len()));
+        Residuals { controls: self, columns, products, left: room(self.intercepts.len()) }
+    }
+}
+
+/// What control variates leave of each integrand, in the order of [`Sums`].
+#[derive(Debug)]
+pub(super) struct Residuals<'a> {
+    controls: &'a Controls,
+    columns: Vec<Column>,
+    products: Vec<Column>,
+    left: Vec<Column>,
+}
+
+impl Residuals<'_> {
+    /// Of the points of a block, one column an integrand.
+    pub fn of(&mut self, block: &Block, level: Level) -> &[Column] {
+        dispatch(level, TakeOut { block, residuals: self });
+        &self.left
+    }
+}
+
+struct TakeOut<'a, 'b> {
+    block: &'a Block,
+    residuals: &'a mut Residuals<'b>,
+}
+
+impl Task for TakeOut<'_, '_> {
+    type Output = ();
+
+    #[inline(always)]
+    fn run<S: Simd>(self) {
+        let Residuals { controls, columns, products, left } = self.residuals;
+        controls.basis.write_columns(&self.block.z, columns);
+        controls.basis.write_products(columns, products);
+        write_integrands(&self.block.z, &self.block.e, left);
+        let coefficients = controls.coefficients.column_iter().zip(&controls.intercepts);
+        for (left, (coefficients, intercept)) in left.iter_mut().zip(coefficients) {
+            left.iter_mut().for_each(|v| *v -= intercept);
+            for (c, product) in coefficients.iter().zip(products.iter()) {
+                left.iter_mut().zip(product).for_each(|(v, product)| *v -= c * product);
+            }
+        }
     }
 }
 
@@ -104,7 +158,10 @@ impl Regression {
         let cross = self.cross.view((0, 0), (k, self.cross.ncols())).into_owned();
         let solved = Cholesky::new(gram).map(|g| g.solve(&cross));
         match solved.filter(|c| c.iter().all(|v| v.is_finite())) {
-            Some(coefficients) => Controls { basis, coefficients: coefficients.remove_row(0) },
+            Some(coefficients) => {
+                let intercepts = coefficients.row(0).iter().copied().collect();
+                Controls { basis, coefficients: coefficients.remove_row(0), intercepts }
+            }
             None => Controls::none(a, p),
         }
     }

@@ -43,17 +43,18 @@ pub enum PointSource {
 pub struct Reference {
     /// The estimate: mean (p), covariance (p x p, noise included), cross-covariance (n x p).
     pub moments: Moments,
-    /// Standard error of every entry: the spread of the replicates over the root of their number.
+    /// Standard error of every entry: the spread of the replicates over the root of their number, samples too rare to have
+    /// been met included.
     pub standard_error: Moments,
-    /// The replicates' own moments, independent of each other; angular means unwrapped beside the estimate's.
+    /// The replicates' own moments, spread about the estimate by as much as the standard errors say; angular means unwrapped
+    /// beside the estimate's.
     pub replicates: Vec<Moments>,
     /// Samples of h taken in all replicates together.
     pub points: u64,
     /// Where they come from.
     pub source: PointSource,
     /// Largest standardised standard error: mean over the output's sd, covariance and cross-covariance in
-    /// correlation units; or, where that is larger, the one foreseen for a variance by samples that reach further
-    /// out than the prior and meet what is rare.
+    /// correlation units.
     pub worst_error: f64,
     /// How far it can be believed.
     pub soundness: Soundness,

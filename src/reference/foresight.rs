@@ -2,13 +2,11 @@ use super::basis::Basis;
 use super::block::Block;
 use super::columns::Column;
 use super::net::{BLOCK, Net};
+use super::outskirts::{Gathering, Outskirts};
 use super::pilot::{Pilot, Question};
 
 /// Binary logarithm of the points of the look ahead.
 const LOG2: u32 = 14;
-/// A sample counts as out of sight when it lies this many times as far out as any that was seen.
-const BEYOND: f64 = 2.0;
-
 /// What rare samples would add to the variance of each output, known before one of them is met.
 ///
 /// Rare samples can carry a variance: a bearing whose station lies 5 sd away is half a turn off once in 3.5 million
@@ -21,8 +19,10 @@ const BEYOND: f64 = 2.0;
 /// (2013), ch. 9 (chapter from memory); the inflation is ours.
 #[derive(Debug, Clone, Default)]
 pub(super) struct Foresight {
-    /// By output: (|e|, weight) of every point, e the deviation less the linear fit.
-    points: Vec<Vec<(f64, f64)>>,
+    /// By output: E\[e^4\] and the largest part of it that one point carries, e the deviation less the linear fit.
+    fourths: Vec<(f64, f64)>,
+    /// What samples that are too rare to have been met add to the variances of the estimates.
+    pub outskirts: Outskirts,
 }
 
 impl Foresight {
@@ -31,48 +31,30 @@ impl Foresight {
         let (a, p) = (question.inputs(), question.outputs());
         let Ok(net) = Net::new(&question.key.ahead(), 0, a, LOG2) else { return Self::default() };
         let mut block = Block::new(question.level, a, p, &Basis::new(a, 0));
-        let mut points = vec![Vec::with_capacity(1 << LOG2); p];
+        let mut fourths = vec![(0.0, 0.0_f64); p];
+        let mut gathering = Gathering::new(question, pilot, net.blocks() as usize);
         for b in 0..net.blocks() {
             block.take_net(&net, b);
             let weights = reach_out(&mut block.z);
             question.evaluate(&mut block);
             block.subtract(&pilot.centre, &question.angular, &pilot.slope);
-            for k in 0..BLOCK {
-                let weight = weights[k];
-                for (points, e) in points.iter_mut().zip(&block.e) {
-                    // Where h is undefined far out the samples themselves will say so, if they ever come there.
-                    if (weight * e[k].powi(4)).is_finite() {
-                        points.push((e[k].abs(), weight));
-                    }
+            for (e, (sum, largest)) in block.e.iter().zip(&mut fourths) {
+                // Where h is undefined far out the samples themselves will say so, if they ever come there.
+                for share in e.iter().zip(&weights).map(|(e, w)| w * e.powi(4)).filter(|share| share.is_finite()) {
+                    *sum += share;
+                    *largest = largest.max(share);
                 }
             }
+            gathering.add(&block, &weights);
         }
-        Self { points }
-    }
-
-    /// How wrong the variance of output `j` may be, in its own unit, when of `count` samples none had |e| above
-    /// `farthest`: what lies out of sight, more than twice as far, adds E\[e^2\] on average with the spread
-    /// sqrt( E\[e^4\] / count ).
-    pub fn variance_error(&self, j: usize, farthest: f64, count: f64) -> f64 {
-        let Some(points) = self.points.get(j) else { return 0.0 };
-        let all = (1_u64 << LOG2) as f64;
-        let (mut second, mut fourth) = (0.0, 0.0);
-        for &(e, weight) in points.iter().filter(|(e, _)| *e > BEYOND * farthest) {
-            second += weight * e * e;
-            fourth += weight * e.powi(4);
-        }
-        second / all + (fourth / all / count).sqrt()
+        Self { fourths, outskirts: gathering.finish() }
     }
 
     /// The share of E\[e_j^4\] that the weightiest point alone carries, `None` if there is none. Where the fourth moment
     /// exists and the reach is far enough no point dominates; where it does not, one always does.
     pub fn dominance(&self, j: usize) -> Option<f64> {
-        let points = self.points.get(j).filter(|points| !points.is_empty())?;
-        let (sum, largest) = points.iter().fold((0.0, 0.0_f64), |(sum, largest), &(e, weight)| {
-            let share = weight * e.powi(4);
-            (sum + share, largest.max(share))
-        });
-        Some(largest / sum)
+        let &(sum, largest) = self.fourths.get(j)?;
+        (sum > 0.0).then(|| largest / sum)
     }
 }
 

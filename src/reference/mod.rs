@@ -13,6 +13,7 @@ mod control;
 mod estimate;
 mod foresight;
 pub mod net;
+mod outskirts;
 mod pilot;
 mod replicate;
 mod sampler;

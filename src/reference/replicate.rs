@@ -70,7 +70,6 @@ impl Replicate {
             lost: self.charts.lost,
             circles: (0..question.outputs()).map(|j| self.charts.circle(j)).collect(),
             centre: self.charts.centre.iter().copied().collect(),
-            farthest: self.sums.farthest.clone(),
             moments: (&self.moments(question, pilot, noise)).into(),
         });
     }

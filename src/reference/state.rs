@@ -39,8 +39,6 @@ pub(super) struct Look {
     pub circles: Vec<Option<CircularSum>>,
     /// Centre of the chart of each output (p).
     pub centre: Vec<f64>,
-    /// Largest deviation of each output from the linear fit (p).
-    pub farthest: Vec<f64>,
     /// Moments on the read components.
     pub moments: Entries,
 }
@@ -74,7 +72,7 @@ impl ReplicateState {
     fn is_finite(&self) -> bool {
         let look = |l: &Look| {
             l.moments.are_finite()
-                && l.centre.iter().chain(&l.farthest).all(|v| v.is_finite())
+                && l.centre.iter().all(|v| v.is_finite())
                 && l.circles.iter().flatten().all(CircularSum::is_finite)
         };
         self.sums.is_finite() && self.charts.is_finite() && self.looks.iter().all(look)
@@ -86,7 +84,6 @@ impl Look {
         let p = angular.len();
         self.circles.iter().map(Option::is_some).eq(angular.iter().copied())
             && self.centre.len() == p
-            && self.farthest.len() == p
             && self.moments.fit(a, p)
     }
 }

@@ -17,7 +17,7 @@ use crate::whole_file::WholeFile;
 ///
 /// To be raised by every change that moves a bit of a sampled moment (points, quantile, sensors, pilot, control
 /// variates, order of sums) or the layout of a state: states of before are then not found, and sampled anew.
-pub const FORMAT: u32 = 1;
+pub const FORMAT: u32 = 2;
 
 /// What a file of the store says that it is.
 const WHAT: &str =

@@ -1,7 +1,7 @@
 use serde::{Deserialize, Serialize};
 
 use super::basis::Basis;
-use super::columns::{Column, add_dots, add_totals, raise_to_largest};
+use super::columns::{Column, add_dots, add_totals};
 use super::net::BLOCK;
 use crate::lanes::Simd;
 
@@ -24,8 +24,6 @@ pub(super) struct Sums {
     pub ze: Vec<f64>,
     /// Sums of the control variates.
     pub basis: Vec<f64>,
-    /// Largest |e_j| (p).
-    pub farthest: Vec<f64>,
 }
 
 impl Sums {
@@ -38,19 +36,18 @@ impl Sums {
             ee: vec![0.0; p * (p + 1) / 2],
             ze: vec![0.0; a * p],
             basis: vec![0.0; controls],
-            farthest: vec![0.0; p],
         }
     }
 
     /// Whether these are sums of `a` inputs, `p` outputs and `controls` control variates.
     pub fn fit(&self, a: usize, p: usize, controls: usize) -> bool {
-        let shape = |s: &Self| [s.z.len(), s.e.len(), s.ee.len(), s.ze.len(), s.basis.len(), s.farthest.len()];
+        let shape = |s: &Self| [s.z.len(), s.e.len(), s.ee.len(), s.ze.len(), s.basis.len()];
         shape(self) == shape(&Self::empty(a, p, controls))
     }
 
     /// Whether every sum is a number.
     pub fn is_finite(&self) -> bool {
-        let all = [&self.z, &self.e, &self.ee, &self.ze, &self.basis, &self.farthest];
+        let all = [&self.z, &self.e, &self.ee, &self.ze, &self.basis];
         self.count.is_finite() && all.into_iter().flatten().all(|v| v.is_finite())
     }
 
@@ -60,7 +57,6 @@ impl Sums {
         self.count += BLOCK as f64;
         add_totals::<S>(z, &mut self.z);
         add_totals::<S>(e, &mut self.e);
-        raise_to_largest::<S>(e, &mut self.farthest);
         for (j, left) in e.iter().enumerate() {
             let row = Self::pair(j, 0);
             add_dots::<S>(left, &e[..=j], &mut self.ee[row..=row + j]);
