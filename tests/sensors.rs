@@ -10,6 +10,7 @@ use common::records::matrix;
 use common::trials::{Trial, trials};
 use gaussworthy::gaussian::wrap;
 use gaussworthy::sensor::{Derivatives, KINDS, Sensor};
+use gaussworthy::suite::Case;
 use nalgebra::{DMatrix, dmatrix, dvector};
 
 /// Random points for each trial.
@@ -244,4 +245,14 @@ fn polynomials_have_their_closed_form_derivatives() {
             _ => {}
         }
     });
+}
+
+/// What the catalogue offers to start from is a case of its kind.
+#[test]
+fn every_example_is_a_case() {
+    for kind in KINDS {
+        let record = serde_json::from_str(kind.example).unwrap_or_else(|e| panic!("{}: {e}", kind.name));
+        let case = Case::from_json(record).unwrap_or_else(|e| panic!("{}: {e}", kind.name));
+        assert_eq!(case.spec().kind(), kind.name);
+    }
 }

@@ -1,5 +1,17 @@
+use super::kinds::{Kind, built};
 use super::planar::{Lookout, Parameters, seen_from};
 use super::{Formula, Number, Output, ParameterError};
+
+pub(super) const KIND: Kind = Kind {
+    name: "bearing-only",
+    summary: "bearings of a planar position from one or several stations",
+    formula: "theta_j = atan2(y - sy_j, x - sx_j) [rad, angular]",
+    parameters: "station [x, y] m or stations [[x, y], ...] m; position [i, j] = [0, 1]",
+    quantities: &[("station", "m"), ("stations", "m")],
+    source: "Bar-Shalom, Li, Kirubarajan 2001",
+    example: r#"{"case":"trawler","sensor":{"kind":"bearing-only","stations":[[0,0],[1200,0]]},"prior":{"mean":[800,1500],"covariance":[[40000,0],[0,40000]]},"noise":{"covariance":3e-4}}"#,
+    build: |map, n| built(map, n, BearingOnly::from_parameters),
+};
 
 /// Bearings of a planar position from one or several stations.
 ///

@@ -19,48 +19,20 @@ pub struct Kind {
     pub formula: &'static str,
     /// Its parameters with shapes and units.
     pub parameters: &'static str,
+    /// Parameters that are quantities, each with its base unit: a suite may give them in any unit of the same dimension.
+    pub quantities: &'static [(&'static str, &'static str)],
     /// Where the formula is published.
     pub source: &'static str,
-    build: fn(Map<String, Value>, usize) -> Result<Built, BuildError>,
+    /// A case record to start from, one line of JSON.
+    pub example: &'static str,
+    pub(super) build: fn(Map<String, Value>, usize) -> Result<Built, BuildError>,
 }
 
-type Built = (Map<String, Value>, Arc<dyn Sensor>);
+/// Parameters with their defaults filled in, and the sensor that they make.
+pub(super) type Built = (Map<String, Value>, Arc<dyn Sensor>);
 
 /// Every built-in sensor. A new one is one line here.
-pub const KINDS: &[Kind] = &[
-    Kind {
-        name: "range-bearing",
-        summary: "range and bearing of a planar position from one or several stations",
-        formula: "r_j = hypot(x - sx_j, y - sy_j) [m], theta_j = atan2(y - sy_j, x - sx_j) [rad, angular]",
-        parameters: "station [x, y] m or stations [[x, y], ...] m; position [i, j] = [0, 1]",
-        source: "Bar-Shalom, Li, Kirubarajan 2001",
-        build: |map, n| built(map, n, range_bearing::RangeBearing::from_parameters),
-    },
-    Kind {
-        name: "bearing-only",
-        summary: "bearings of a planar position from one or several stations",
-        formula: "theta_j = atan2(y - sy_j, x - sx_j) [rad, angular]",
-        parameters: "station [x, y] m or stations [[x, y], ...] m; position [i, j] = [0, 1]",
-        source: "Bar-Shalom, Li, Kirubarajan 2001",
-        build: |map, n| built(map, n, bearing_only::BearingOnly::from_parameters),
-    },
-    Kind {
-        name: "quadratic",
-        summary: "quadratic forms of the state",
-        formula: "y_j = x' A_j x + b_j' x + c_j",
-        parameters: "A: p matrices n x n; b: p x n = 0; c: p = 0",
-        source: "Mathai, Provost 1992",
-        build: |map, n| built(map, n, quadratic::Quadratic::from_parameters),
-    },
-    Kind {
-        name: "linear",
-        summary: "linear reading, the sanity sensor: every method is exact on it",
-        formula: "y = H x + offset",
-        parameters: "H: p x n; offset: p = 0",
-        source: "Kalman 1960",
-        build: |map, n| built(map, n, linear::Linear::from_parameters),
-    },
-];
+pub const KINDS: &[Kind] = &[range_bearing::KIND, bearing_only::KIND, quadratic::KIND, linear::KIND];
 
 /// Why a sensor could not be made from what a suite or a case record says.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
@@ -131,7 +103,8 @@ impl SensorSpec {
     }
 }
 
-fn built<P, S>(
+/// Reads the parameters of a kind and makes its sensor.
+pub(super) fn built<P, S>(
     map: Map<String, Value>,
     n: usize,
     make: impl Fn(P, usize) -> Result<S, ParameterError>,

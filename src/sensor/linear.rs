@@ -1,7 +1,19 @@
 use serde::{Deserialize, Serialize};
 
+use super::kinds::{Kind, built};
 use super::parameter::{checked_row, read_components};
 use super::{Formula, Number, Output, ParameterError};
+
+pub(super) const KIND: Kind = Kind {
+    name: "linear",
+    summary: "linear reading, the sanity sensor: every method is exact on it",
+    formula: "y = H x + offset",
+    parameters: "H: p x n; offset: p = 0",
+    quantities: &[],
+    source: "Kalman 1960",
+    example: r#"{"case":"gauge","sensor":{"kind":"linear","H":[[1,-1]]},"prior":{"mean":[2,3],"covariance":[[1,0.2],[0.2,1]]},"noise":{"covariance":0.1}}"#,
+    build: |map, n| built(map, n, Linear::from_parameters),
+};
 
 /// The sanity sensor: y = H x + offset. Every method must be exact on it.
 ///

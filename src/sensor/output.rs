@@ -1,3 +1,5 @@
+use std::borrow::Cow;
+
 use nalgebra::DVector;
 
 use crate::gaussian::wrap;
@@ -8,20 +10,20 @@ pub struct Output {
     /// What it is called in tables and messages.
     pub name: String,
     /// Its unit, `rad` for every angle.
-    pub unit: &'static str,
+    pub unit: Cow<'static, str>,
     /// Whether it lives on the circle: deviations are wrapped to (-pi, pi].
     pub angular: bool,
 }
 
 impl Output {
     /// An ordinary number.
-    pub fn plain(name: impl Into<String>, unit: &'static str) -> Self {
-        Self { name: name.into(), unit, angular: false }
+    pub fn plain(name: impl Into<String>, unit: impl Into<Cow<'static, str>>) -> Self {
+        Self { name: name.into(), unit: unit.into(), angular: false }
     }
 
     /// An angle on the circle, in radians.
     pub fn angle(name: impl Into<String>) -> Self {
-        Self { name: name.into(), unit: "rad", angular: true }
+        Self { name: name.into(), unit: "rad".into(), angular: true }
     }
 }
 

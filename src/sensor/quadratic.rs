@@ -1,7 +1,19 @@
 use serde::{Deserialize, Serialize};
 
+use super::kinds::{Kind, built};
 use super::parameter::{checked_row, read_components};
 use super::{Formula, Number, Output, ParameterError};
+
+pub(super) const KIND: Kind = Kind {
+    name: "quadratic",
+    summary: "quadratic forms of the state",
+    formula: "y_j = x' A_j x + b_j' x + c_j",
+    parameters: "A: p matrices n x n; b: p x n = 0; c: p = 0",
+    quantities: &[],
+    source: "Mathai, Provost 1992",
+    example: r#"{"case":"meter","sensor":{"kind":"quadratic","A":[[[1,0],[0,1]]]},"prior":{"mean":[1,0.5],"covariance":[[0.04,0],[0,0.09]]},"noise":{"covariance":0.01}}"#,
+    build: |map, n| built(map, n, Quadratic::from_parameters),
+};
 
 /// Quadratic forms: y_j = x' A_j x + b_j' x + c_j.
 ///

@@ -1,5 +1,17 @@
+use super::kinds::{Kind, built};
 use super::planar::{Lookout, Parameters, seen_from};
 use super::{Formula, Number, Output, ParameterError};
+
+pub(super) const KIND: Kind = Kind {
+    name: "range-bearing",
+    summary: "range and bearing of a planar position from one or several stations",
+    formula: "r_j = hypot(x - sx_j, y - sy_j) [m], theta_j = atan2(y - sy_j, x - sx_j) [rad, angular]",
+    parameters: "station [x, y] m or stations [[x, y], ...] m; position [i, j] = [0, 1]",
+    quantities: &[("station", "m"), ("stations", "m")],
+    source: "Bar-Shalom, Li, Kirubarajan 2001",
+    example: r#"{"case":"ferry","sensor":{"kind":"range-bearing","station":[0,0]},"prior":{"mean":[3000,1000],"covariance":[[2500,0],[0,40000]]},"noise":{"covariance":[[100,0],[0,2.7e-5]]}}"#,
+    build: |map, n| built(map, n, RangeBearing::from_parameters),
+};
 
 /// Range and bearing of a planar position from one or several stations.
 ///

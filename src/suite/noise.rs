@@ -43,7 +43,7 @@ fn from_sd(sd: &Node, outputs: &[Output]) -> Result<DMatrix<f64>, SuiteError> {
 }
 
 fn wanted(output: &Output) -> Wanted {
-    match (output.angular, output.unit) {
+    match (output.angular, output.unit.as_ref()) {
         (true, _) | (_, "rad") => Wanted::Angle,
         (_, "m") => Wanted::Length,
         _ => Wanted::Any,

@@ -3,18 +3,18 @@
 use super::SuiteError;
 use super::node::{Item, Node};
 use super::quantity::{Quantity, Wanted};
-use crate::sensor::SensorSpec;
-
-/// Parameters that are lengths, at whatever depth their numbers stand.
-const LENGTHS: [&str; 2] = ["station", "stations"];
+use crate::sensor::{KINDS, SensorSpec};
 
 /// Makes the sensor of the section for a state of `n` components.
 pub(super) fn read(section: &Node, n: usize) -> Result<SensorSpec, SuiteError> {
+    let kind = section.get("kind").and_then(|kind| kind.text().ok());
+    let quantities = KINDS.iter().find(|k| Some(k.name) == kind).map_or(&[][..], |k| k.quantities);
     let entries = section
         .entries()?
         .iter()
         .map(|(name, node)| {
-            let node = if LENGTHS.contains(&name.as_str()) { in_metres(node)? } else { node.clone() };
+            let is_quantity = quantities.iter().any(|(key, _)| key == name);
+            let node = if is_quantity { in_metres(node)? } else { node.clone() };
             Ok((name.clone(), node))
         })
         .collect::<Result<_, SuiteError>>()?;
