@@ -332,7 +332,7 @@ fn a_floor_that_drowns_in_rounding_is_not_given() {
                     assert!(floor.value.abs() < 1e-3, "R = {noise:e}, h = {h}: {floor:?}");
                 }
                 Floor::Undefined => assert!(noise < 1e-10, "undefined at R = {noise:e}"),
-                Floor::Unbounded => panic!("this noise is definite"),
+                Floor::Unbounded | Floor::NoiseInside => panic!("this noise is definite and outside"),
             }
         }
     }

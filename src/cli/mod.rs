@@ -71,11 +71,8 @@ pub fn main() -> ExitCode {
 
 fn complain(error: &anyhow::Error, code: u8) -> ExitCode {
     use std::io::Write;
-    // What was typed may hold anything; the message stays one line.
-    let mut line = String::from("gaussworthy: ");
-    for c in format!("{error:#}").chars() {
-        if c.is_control() { line.extend(c.escape_default()) } else { line.push(c) }
-    }
+    // What was typed may hold anything.
+    let line = gaussworthy::report::printable(&format!("gaussworthy: {error:#}"));
     // With standard error gone there is nobody left to tell.
     let _ = writeln!(std::io::stderr(), "{line}");
     ExitCode::from(code)

@@ -39,6 +39,22 @@ impl Marginal {
         Self { law: Gaussian::from_checked(mean, block), lift: Some(lift) }
     }
 
+    /// The marginal on the components `kept` of a state (n) and of noise with this covariance (q x q), mean zero and
+    /// independent of the state, which follows it as components n to n + q. The way back leads to the state alone.
+    ///
+    /// # Panics
+    /// As [`Marginal::new`], with n + q for n.
+    #[track_caller]
+    pub fn with_noise(law: &Gaussian, noise: &DMatrix<f64>, kept: &[usize]) -> Self {
+        let (n, q) = (law.dimension(), noise.nrows());
+        let mean = law.mean().clone().resize_vertically(n + q, 0.0);
+        let mut covariance = law.covariance().clone().resize(n + q, n + q, 0.0);
+        covariance.view_mut((n, n), (q, q)).copy_from(noise);
+        let Self { law, lift } = Self::new(&Gaussian::from_checked(mean, covariance), kept);
+        let lift = lift.unwrap_or_else(|| DMatrix::identity(n + q, n + q));
+        Self { law, lift: Some(lift.rows(0, n).into_owned()) }
+    }
+
     /// The marginal law (a components).
     pub fn law(&self) -> &Gaussian {
         &self.law

@@ -54,4 +54,12 @@ impl<S: Simd> Number for Lanes<S> {
     fn powf(self, exponent: f64) -> Self {
         Self::powf(self, Self::splat(exponent))
     }
+    #[inline(always)]
+    fn if_less(self, other: Self, yes: Self, no: Self) -> Self {
+        self.less(other).select(yes, no)
+    }
+    #[inline(always)]
+    fn if_at_most(self, other: Self, yes: Self, no: Self) -> Self {
+        self.at_most(other).select(yes, no)
+    }
 }

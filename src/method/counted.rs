@@ -56,6 +56,10 @@ impl Sensor for Counted<'_> {
         self.sensor.reads()
     }
 
+    fn noise(&self) -> &[String] {
+        self.sensor.noise()
+    }
+
     fn outputs(&self) -> &[Output] {
         self.sensor.outputs()
     }

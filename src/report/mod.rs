@@ -9,6 +9,7 @@ mod records;
 mod scores_csv;
 mod table;
 
+pub use crate::wording::printable;
 pub use catalogue::{method_table, score_table, sensor_table};
 pub use folder::{FolderError, ResultsFolder};
 pub use merge::{MergeError, Merged, merge};

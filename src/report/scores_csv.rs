@@ -68,6 +68,7 @@ fn row(survey: &SurveyResult<'_>, result: &CaseResult, m: usize, answer: &Answer
         Floor::Known(estimate) => pair(Some(*estimate)),
         Floor::Unbounded => ["unbounded".into(), String::new()],
         Floor::Undefined => pair(None),
+        Floor::NoiseInside => ["not defined for noise inside h".into(), String::new()],
     });
     fields.extend(cost(timed(survey, result.index, m)));
     fields

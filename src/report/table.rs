@@ -119,6 +119,13 @@ fn notes(survey: &SurveyResult<'_>, summary: &Summary) -> Vec<String> {
             summary.floor_open, summary.cases
         ));
     }
+    if summary.noise_inside > 0 {
+        notes.push(format!(
+            "The floor is not defined for noise inside h, as in {} of {} cases: whether any Gaussian can be trusted there \
+             is not told.",
+            summary.noise_inside, summary.cases
+        ));
+    }
     if summary.wide > 0 {
         notes.push(format!(
             "{} references fell short of the asked precision at the cap of {} samples; their standard errors say by \

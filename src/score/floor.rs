@@ -16,4 +16,6 @@ pub enum Floor {
     Unbounded,
     /// The reference's joint is singular or not resolved.
     Undefined,
+    /// Noise acts inside h: y given x is no Gaussian, and its entropy is not that of a known noise.
+    NoiseInside,
 }

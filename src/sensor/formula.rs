@@ -11,8 +11,15 @@ use crate::lanes::{Lanes, Level, Simd, Task, dispatch};
 /// The formula sees only the state components that it reads, in the order of [`Formula::reads`], so the same
 /// code serves a position anywhere in a state of any size.
 pub trait Formula: Debug + Send + Sync {
-    /// Which state components are read (indices from 0, each once): the inputs of [`Formula::evaluate`].
+    /// Which components of state and noise inside are read (indices from 0, each once): the inputs of
+    /// [`Formula::evaluate`].
     fn reads(&self) -> &[usize];
+
+    /// Names of the noise variables v inside y = h(x, v), none unless told. Variable k is component n + k of
+    /// [`Formula::reads`], after the n of the state.
+    fn noise(&self) -> &[String] {
+        &[]
+    }
 
     /// The p outputs, in order.
     fn outputs(&self) -> &[Output];
@@ -34,6 +41,9 @@ pub trait Formula: Debug + Send + Sync {
 pub trait Sensor: Debug + Send + Sync {
     /// Which state components are read: indices from 0, each once.
     fn reads(&self) -> &[usize];
+
+    /// Names of the noise variables inside, as [`Formula::noise`].
+    fn noise(&self) -> &[String];
 
     /// The p outputs, in order.
     fn outputs(&self) -> &[Output];
@@ -63,6 +73,10 @@ pub trait Sensor: Debug + Send + Sync {
 impl<F: Formula> Sensor for F {
     fn reads(&self) -> &[usize] {
         Formula::reads(self)
+    }
+
+    fn noise(&self) -> &[String] {
+        Formula::noise(self)
     }
 
     fn outputs(&self) -> &[Output] {

@@ -6,7 +6,7 @@ use serde_json::{Map, Value};
 
 use crate::wording::{plain, proposal};
 
-use super::{ParameterError, Sensor, bearing_only, linear, quadratic, range_bearing};
+use super::{ParameterError, Sensor, bearing_only, linear, quadratic, range_bearing, written};
 
 /// A sensor that a suite or a case record can name.
 #[derive(Debug, Clone, Copy)]
@@ -32,7 +32,7 @@ pub struct Kind {
 pub(super) type Built = (Map<String, Value>, Arc<dyn Sensor>);
 
 /// Every built-in sensor. A new one is one line here.
-pub const KINDS: &[Kind] = &[range_bearing::KIND, bearing_only::KIND, quadratic::KIND, linear::KIND];
+pub const KINDS: &[Kind] = &[range_bearing::KIND, bearing_only::KIND, quadratic::KIND, linear::KIND, written::KIND];
 
 /// Why a sensor could not be made from what a suite or a case record says.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
@@ -72,6 +72,8 @@ impl SensorSpec {
         let kind = match described.shift_remove("kind") {
             Some(Value::String(kind)) => kind,
             Some(other) => return Err(error("kind", format!("is {other}; give one of {}", names()))),
+            // A sensor that is written out says so by what it holds.
+            None if described.contains_key("outputs") => written::KIND.name.to_owned(),
             None => return Err(error("", format!("`kind` is missing; give one of {}", names()))),
         };
         let kind = KINDS.iter().find(|k| k.name == kind).ok_or_else(|| {

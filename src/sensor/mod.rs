@@ -15,6 +15,7 @@ mod parameter;
 mod planar;
 mod quadratic;
 mod range_bearing;
+mod written;
 
 pub use bearing_only::BearingOnly;
 pub use derivatives::Derivatives;
@@ -26,3 +27,4 @@ pub use output::{Output, chart_deviation};
 pub use parameter::ParameterError;
 pub use quadratic::Quadratic;
 pub use range_bearing::RangeBearing;
+pub use written::Written;

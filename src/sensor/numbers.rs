@@ -43,6 +43,11 @@ pub trait Number:
     fn powi(self, exponent: i32) -> Self;
     /// self^exponent; NaN for a negative number with an exponent that is not whole.
     fn powf(self, exponent: f64) -> Self;
+    /// `yes` where self < other, else `no`: also where either is NaN. Only the values are compared, and the derivatives are
+    /// those of what is chosen.
+    fn if_less(self, other: Self, yes: Self, no: Self) -> Self;
+    /// `yes` where self <= other, else `no`, as [`Number::if_less`].
+    fn if_at_most(self, other: Self, yes: Self, no: Self) -> Self;
 }
 
 impl Number for f64 {
@@ -99,6 +104,14 @@ impl Number for f64 {
     #[inline]
     fn powf(self, exponent: f64) -> Self {
         self.powf(exponent)
+    }
+    #[inline]
+    fn if_less(self, other: Self, yes: Self, no: Self) -> Self {
+        if self < other { yes } else { no }
+    }
+    #[inline]
+    fn if_at_most(self, other: Self, yes: Self, no: Self) -> Self {
+        if self <= other { yes } else { no }
     }
 }
 
@@ -197,6 +210,14 @@ macro_rules! dual_number {
                 let mut result = composed(self, self.re, power(self.re, exponent, value));
                 result.re = value;
                 result
+            }
+            #[inline]
+            fn if_less(self, other: Self, yes: Self, no: Self) -> Self {
+                if self.re < other.re { yes } else { no }
+            }
+            #[inline]
+            fn if_at_most(self, other: Self, yes: Self, no: Self) -> Self {
+                if self.re <= other.re { yes } else { no }
             }
         }
     };

@@ -3,7 +3,7 @@ use serde::{Deserialize, Serialize};
 use serde_json::{Map, Value};
 
 use crate::gaussian::{Gaussian, GaussianError, Marginal, checked_covariance};
-use crate::sensor::{self, Sensor, SensorSpec};
+use crate::sensor::{self, Sensor, SensorSpec, Written};
 
 use super::name::flaw;
 use crate::wording::plain;
@@ -15,7 +15,23 @@ pub struct Case {
     sensor: SensorSpec,
     prior: Gaussian,
     marginal: Marginal,
-    noise: Option<DMatrix<f64>>,
+    noise: Noise,
+}
+
+/// The noise of a case: what is added to the outputs, and what acts inside the sensor.
+#[derive(Debug, Clone, PartialEq, Default)]
+pub struct Noise {
+    /// R (p x p) of y = h(x, v) + w; `None` for none.
+    pub additive: Option<DMatrix<f64>>,
+    /// Covariance (q x q) of the noise v inside, mean zero; `None` where the sensor has none.
+    pub inside: Option<DMatrix<f64>>,
+}
+
+impl From<Option<DMatrix<f64>>> for Noise {
+    /// Additive noise alone.
+    fn from(additive: Option<DMatrix<f64>>) -> Self {
+        Self { additive, inside: None }
+    }
 }
 
 /// What is wrong with a case record, and where in it.
@@ -59,21 +75,30 @@ struct PriorRecord {
 #[derive(Debug, Clone, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 struct NoiseRecord {
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    covariance: Option<Value>,
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    inside: Option<InsideRecord>,
+}
+
+#[derive(Debug, Clone, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct InsideRecord {
     covariance: Value,
 }
 
 impl Case {
-    /// A case from its parts; `noise` is R (p x p), `None` for none.
+    /// A case from its parts.
     ///
     /// # Errors
-    /// [`CaseError`] if R does not fit the sensor's outputs or is not a covariance, or the sensor was made for
+    /// [`CaseError`] if the noise does not fit the sensor or is not a covariance, or the sensor was made for
     /// a state of another size than the prior's, or `id` is no name: 1 to 120 printable characters, no comma, no
     /// quotes, no blank at either end.
     pub fn new(
         id: impl Into<String>,
         sensor: SensorSpec,
         prior: Gaussian,
-        noise: Option<DMatrix<f64>>,
+        noise: impl Into<Noise>,
     ) -> Result<Self, CaseError> {
         let id = id.into();
         if let Some(flaw) = flaw(&id) {
@@ -84,11 +109,31 @@ impl Case {
             let made_for = sensor.state_dimension();
             return Err(CaseError::new("sensor", format!("is made for {made_for} components; the prior has {n}")));
         }
-        let p = sensor.sensor().outputs().len();
-        let noise = noise
-            .map(|r| checked_covariance(r, p).map_err(|e| CaseError::new("noise.covariance", e.to_string())))
-            .transpose()?;
-        let marginal = Marginal::new(&prior, sensor.sensor().reads());
+        let Noise { additive, inside } = noise.into();
+        let (p, variables) = (sensor.sensor().outputs().len(), sensor.sensor().noise());
+        let checked = |key: &str, covariance: DMatrix<f64>, size| {
+            checked_covariance(covariance, size).map_err(|e| CaseError::new(key, e.to_string()))
+        };
+        let additive = additive.map(|r| checked("noise.covariance", r, p)).transpose()?;
+        let (inside, marginal) = match (inside, variables) {
+            (None, []) => (None, Marginal::new(&prior, sensor.sensor().reads())),
+            (Some(inside), [_, ..]) => {
+                let inside = checked("noise.inside.covariance", inside, variables.len())?;
+                let marginal = Marginal::with_noise(&prior, &inside, sensor.sensor().reads());
+                (Some(inside), marginal)
+            }
+            (None, _) => {
+                let names = variables.join(", ");
+                return Err(CaseError::new(
+                    "noise",
+                    format!("`inside` is missing; the sensor has noise inside: {names}"),
+                ));
+            }
+            (Some(_), []) => {
+                return Err(CaseError::new("noise.inside", "stands here, but the sensor names no noise"));
+            }
+        };
+        let noise = Noise { additive, inside };
         Ok(Self { id, sensor, prior, marginal, noise })
     }
 
@@ -105,7 +150,7 @@ impl Case {
             return Err(CaseError::new("prior", "give an object with `mean` and `covariance`"));
         }
         if record.get("noise").is_some_and(|noise| !noise.is_object() && !noise.is_null()) {
-            return Err(CaseError::new("noise", "give an object with `covariance`"));
+            return Err(CaseError::new("noise", "give an object with `covariance`, `inside` or both"));
         }
         let record: Record = serde_path_to_error::deserialize(record)
             .map_err(|e| CaseError::new(path(&e), plain(&e.inner().to_string())))?;
@@ -120,15 +165,26 @@ impl Case {
             CaseError::new(key, e.to_string())
         })?;
         let sensor = SensorSpec::from_json(record.sensor, n).map_err(sensor_error)?;
-        let p = sensor.sensor().outputs().len();
-        let noise = record.noise.map(|noise| noise_covariance(noise.covariance, p)).transpose()?;
+        let (p, q) = (sensor.sensor().outputs().len(), sensor.sensor().noise().len());
+        if let Some(NoiseRecord { covariance: None, inside: None }) = record.noise {
+            return Err(CaseError::new("noise", "`covariance` is missing"));
+        }
+        let NoiseRecord { covariance, inside } =
+            record.noise.unwrap_or(NoiseRecord { covariance: None, inside: None });
+        let noise = Noise {
+            additive: covariance.map(|r| covariance_of(r, p, "noise.covariance")).transpose()?,
+            inside: inside.map(|v| covariance_of(v.covariance, q, "noise.inside.covariance")).transpose()?,
+        };
         Self::new(record.case, sensor, prior, noise)
     }
 
     /// The case record: everything needed to ask the same question again.
     pub fn to_json(&self) -> Value {
         let mut sensor = Map::new();
-        sensor.insert("kind".into(), self.sensor.kind().into());
+        // A sensor that is written out needs no name.
+        if self.sensor.kind() != Written::KIND {
+            sensor.insert("kind".into(), self.sensor.kind().into());
+        }
         sensor.extend(self.sensor.parameters().clone());
         let record = Record {
             case: self.id.clone(),
@@ -137,9 +193,18 @@ impl Case {
                 mean: self.prior.mean().iter().copied().collect(),
                 covariance: rows(self.prior.covariance()),
             },
-            noise: self.noise.as_ref().map(|r| NoiseRecord { covariance: serde_json::json!(rows(r)) }),
+            noise: self.noise_record(),
         };
         serde_json::to_value(record).unwrap_or(Value::Null)
+    }
+
+    fn noise_record(&self) -> Option<NoiseRecord> {
+        let Noise { additive, inside } = &self.noise;
+        let written = |m: &DMatrix<f64>| serde_json::json!(rows(m));
+        (additive.is_some() || inside.is_some()).then(|| NoiseRecord {
+            covariance: additive.as_ref().map(written),
+            inside: inside.as_ref().map(|v| InsideRecord { covariance: written(v) }),
+        })
     }
 
     /// The case record without its name: what the answer depends on, as one line of text.
@@ -171,20 +236,25 @@ impl Case {
         &self.prior
     }
 
-    /// Prior of the read components (a) and the way back to the whole state.
+    /// Law of the read components (a) of state and noise inside, and the way back to the whole state.
     pub fn marginal(&self) -> &Marginal {
         &self.marginal
     }
 
     /// R (p x p); `None` when there is no additive noise.
     pub fn noise(&self) -> Option<&DMatrix<f64>> {
-        self.noise.as_ref()
+        self.noise.additive.as_ref()
+    }
+
+    /// Covariance (q x q) of the noise inside the sensor; `None` where it has none.
+    pub fn noise_inside(&self) -> Option<&DMatrix<f64>> {
+        self.noise.inside.as_ref()
     }
 
     /// R (p x p), zero when there is none.
     pub fn noise_or_zero(&self) -> DMatrix<f64> {
         let p = self.sensor().outputs().len();
-        self.noise.clone().unwrap_or_else(|| DMatrix::zeros(p, p))
+        self.noise.additive.clone().unwrap_or_else(|| DMatrix::zeros(p, p))
     }
 }
 
@@ -216,16 +286,15 @@ pub(crate) fn matrix(rows: &[Vec<f64>], key: &str) -> Result<DMatrix<f64>, CaseE
     Ok(DMatrix::from_row_iterator(rows.len(), columns, rows.iter().flatten().copied()))
 }
 
-/// R from a matrix, or from a single number that stands for itself times the identity.
-fn noise_covariance(value: Value, p: usize) -> Result<DMatrix<f64>, CaseError> {
-    const KEY: &str = "noise.covariance";
+/// A covariance from a matrix, or from a single number that stands for itself times the identity.
+fn covariance_of(value: Value, size: usize, key: &str) -> Result<DMatrix<f64>, CaseError> {
     if let Some(variance) = value.as_f64() {
-        return Ok(DMatrix::from_diagonal_element(p, p, variance));
+        return Ok(DMatrix::from_diagonal_element(size, size, variance));
     }
     if !value.is_array() {
-        return Err(CaseError::new(KEY, format!("is {value}; give a {p} x {p} matrix or one number")));
+        return Err(CaseError::new(key, format!("is {value}; give a {size} x {size} matrix or one number")));
     }
     let rows: Vec<Vec<f64>> = serde_path_to_error::deserialize(value)
-        .map_err(|e| CaseError::new(format!("{KEY}{}", path(&e)), plain(&e.inner().to_string())))?;
-    matrix(&rows, KEY)
+        .map_err(|e| CaseError::new(format!("{key}{}", path(&e)), plain(&e.inner().to_string())))?;
+    matrix(&rows, key)
 }

@@ -1,6 +1,9 @@
 use std::fmt;
 
-/// What is wrong with a suite or a case-record file, where, and what would be right: always one line.
+use crate::wording::printable;
+
+/// What is wrong with a suite or a case-record file, where, and what would be right: one line, and
+/// below it perhaps an excerpt of a formula.
 ///
 /// ```text
 /// harbour.toml:12: prior.range: "3 deg" is an angle; a length is needed: m, km, cm, mm
@@ -51,20 +54,12 @@ impl fmt::Display for SuiteError {
                 line.push_str(part);
             }
         }
-        // Keys and values come from the file and may hold anything; the message stays one line.
-        for c in line.chars() {
-            if is_line_breaking(c) { write!(f, "{}", c.escape_default())? } else { write!(f, "{c}")? }
-        }
-        Ok(())
+        // Keys and values come from the file and may hold anything.
+        f.write_str(&printable(&line))
     }
 }
 
 impl std::error::Error for SuiteError {}
-
-/// Whether a character can end a line or move the cursor.
-pub(super) fn is_line_breaking(c: char) -> bool {
-    c.is_control() || matches!(c, '\u{2028}' | '\u{2029}')
-}
 
 #[cfg(test)]
 mod tests {

@@ -81,7 +81,7 @@ mod sweep;
 
 pub use bundled::{Bundled, DEMONSTRATION};
 pub(crate) use case::rows;
-pub use case::{Case, CaseError};
+pub use case::{Case, CaseError, Noise};
 pub use definition::Suite;
 pub(crate) use definition::hex;
 pub use error::SuiteError;

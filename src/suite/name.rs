@@ -1,6 +1,6 @@
 //! Names of suites, families and cases.
 
-use super::error::is_line_breaking;
+use crate::wording::is_line_breaking;
 
 /// The longest name, in characters.
 const LONGEST: usize = 120;

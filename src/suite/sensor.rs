@@ -3,18 +3,23 @@
 use super::SuiteError;
 use super::node::{Item, Node};
 use super::quantity::{Quantity, Wanted};
-use crate::sensor::{KINDS, SensorSpec};
+use crate::sensor::{KINDS, SensorSpec, Written};
 
 /// Makes the sensor of the section for a state of `n` components.
 pub(super) fn read(section: &Node, n: usize) -> Result<SensorSpec, SuiteError> {
     let kind = section.get("kind").and_then(|kind| kind.text().ok());
     let quantities = KINDS.iter().find(|k| Some(k.name) == kind).map_or(&[][..], |k| k.quantities);
+    let written = kind == Some(Written::KIND) || section.get("outputs").is_some();
     let entries = section
         .entries()?
         .iter()
         .map(|(name, node)| {
             let is_quantity = quantities.iter().any(|(key, _)| key == name);
-            let node = if is_quantity { in_metres(node)? } else { node.clone() };
+            let node = match name.as_str() {
+                "parameters" if written => in_base_units(node)?,
+                _ if is_quantity => in_metres(node)?,
+                _ => node.clone(),
+            };
             Ok((name.clone(), node))
         })
         .collect::<Result<_, SuiteError>>()?;
@@ -25,6 +30,19 @@ pub(super) fn read(section: &Node, n: usize) -> Result<SensorSpec, SuiteError> {
         // A parameter that is only there by default, or not at all, is named in the message.
         at.error(if missing_below { format!("`{}` {}", e.key, e.message) } else { e.message })
     })
+}
+
+/// The parameters of formulas, each in the base unit of whatever it is.
+fn in_base_units(node: &Node) -> Result<Node, SuiteError> {
+    let item = match &node.item {
+        Item::Table(entries) => {
+            let entries = entries.iter().map(|(name, node)| Ok((name.clone(), in_base_units(node)?)));
+            Item::Table(entries.collect::<Result<_, SuiteError>>()?)
+        }
+        Item::Text(_) | Item::Quantity(_) => Quantity { value: Quantity::of(node)?.value, dimension: None }.item(),
+        other => other.clone(),
+    };
+    Ok(Node { place: node.place.clone(), item })
 }
 
 fn in_metres(node: &Node) -> Result<Node, SuiteError> {

@@ -97,7 +97,7 @@ pub(super) fn run_case(
             .iter()
             .map(|c| c.as_ref().map(|c| judge(&scorer, &c.moments, plan)).map_err(Refusal::clone))
             .collect();
-        let floor = scorer.floor(case.noise());
+        let floor = if case.noise_inside().is_some() { Floor::NoiseInside } else { scorer.floor(case.noise()) };
         let floor_standing = plan.judge.floor(&floor);
         // More points cannot define what is undefined, nor mend a refused reference.
         let undecided = judged

@@ -4,6 +4,7 @@ use super::run::SurveyResult;
 use super::timing::Quartiles;
 use crate::method::Evaluations;
 use crate::reference::{PointSource, Soundness};
+use crate::score::Floor;
 use crate::trust::{Standing, Trust};
 
 /// A survey of one suite in a few numbers.
@@ -23,8 +24,10 @@ pub struct Summary {
     pub disputed: usize,
     /// Cases whose reference has a tail so heavy that no standard error can be believed.
     pub heavy_tailed: usize,
-    /// Cases without noise: R = 0.
+    /// Cases without noise: R = 0, and none inside.
     pub noiseless: usize,
+    /// Cases with noise inside h, where the floor is not defined.
+    pub noise_inside: usize,
     /// Cases sampled by plain streams, for want of nets in so many dimensions.
     pub streamed: usize,
     /// One a method, in the plan's order.
@@ -67,12 +70,13 @@ pub fn summarise(survey: &SurveyResult<'_>) -> Summary {
     Summary {
         cases: survey.cases.len(),
         beyond_gaussian: count(&|c| c.floor_standing == Standing::Broken),
-        floor_open: count(&|c| c.floor_standing == Standing::Open),
+        floor_open: count(&|c| c.floor_standing == Standing::Open && c.floor != Floor::NoiseInside),
         wide: count(&|c| c.reference.soundness == Soundness::Wide),
         refused: count(&|c| c.reference.soundness == Soundness::Refused),
         disputed: count(&|c| c.reference.soundness == Soundness::Disputed),
         heavy_tailed: count(&|c| c.reference.soundness == Soundness::HeavyTailed),
-        noiseless: count(&|c| survey.suite.cases[c.index].noise().is_none()),
+        noiseless: count(&|c| survey.suite.cases[c.index].noise().is_none() && c.floor != Floor::NoiseInside),
+        noise_inside: count(&|c| c.floor == Floor::NoiseInside),
         streamed: count(&|c| c.reference.source == PointSource::Streams),
         methods: (0..survey.plan.methods.len()).map(|m| summarise_method(survey, m)).collect(),
     }

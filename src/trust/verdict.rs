@@ -212,8 +212,8 @@ impl Judge {
         match floor {
             Floor::Known(estimate) => self.standing(*estimate, Side::AtMost, self.limits.floor),
             // Without noise the true joint is no density and the divergence is infinite whatever the sensor, so
-            // it tells nothing of this one.
-            Floor::Unbounded | Floor::Undefined => Standing::Open,
+            // it tells nothing of this one; with noise inside h it is not known.
+            Floor::Unbounded | Floor::Undefined | Floor::NoiseInside => Standing::Open,
         }
     }
 

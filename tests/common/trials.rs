@@ -107,6 +107,8 @@ pub fn trials() -> Vec<Trial> {
         bearing_only(&stations[..1], [0, 1], 2),
         bearing_only(&stations, [0, 2], 4),
         bearing_only(&stations, [5, 0], 6),
+        written_range_bearing([3.0, -2.0]),
+        written_polynomial(),
     ];
     for n in 1..=9 {
         for p in 1..=3 {
@@ -132,6 +134,31 @@ fn planar(kind: &str, stations: &[[f64; 2]], position: [usize; 2]) -> serde_json
         [one] => json!({"kind": kind, "station": one, "position": position}),
         several => json!({"kind": kind, "stations": several, "position": position}),
     }
+}
+
+/// Range and bearing as formulas, the second component first.
+fn written_range_bearing(station: [f64; 2]) -> Trial {
+    let described = json!({
+        "state": ["speed", "y", "x"], "parameters": {"sx": station[1], "sy": station[0]},
+        "definitions": {"north": "y - sy", "range": "hypot(x - sx, north)"},
+        "outputs": [
+            {"name": "range", "formula": "range"},
+            {"name": "bearing", "formula": "atan2(x - sx, north)", "angular": true}
+        ]
+    });
+    Trial::new(described, 3, Shape::Planar(vec![station; 2]))
+}
+
+/// Polynomials of second degree whose noise inside is read as a component.
+fn written_polynomial() -> Trial {
+    let described = json!({
+        "state": ["a", "b"], "noise": ["v"],
+        "outputs": [
+            {"name": "square", "formula": "a^2 - 2 * a * v + b"},
+            {"name": "branch", "formula": "if(a < 1e9, (a + b)^2, 0) + min(v, 1e9) - max(b, -1e9)"}
+        ]
+    });
+    Trial::new(described, 2, Shape::Polynomial)
 }
 
 /// A of order one and not symmetric.

@@ -62,6 +62,12 @@ pub fn sensors() -> Vec<(SensorSpec, Gaussian)> {
             planar(),
         ),
         (json!({"kind": "linear", "H": [[1, 2], [3, -1], [0.5, 0]], "offset": [1, 2, 3]}), planar()),
+        (
+            json!({"kind": "formula", "state": ["x", "y"], "outputs": [
+                {"name": "range", "formula": "hypot(x - 2, y + 1)"},
+                {"name": "bearing", "formula": "atan2(y + 1, x - 2)", "angular": true}]}),
+            planar(),
+        ),
     ];
     for kind in KINDS {
         assert!(described.iter().any(|(d, _)| d["kind"] == kind.name), "no law is tried on sensor {}", kind.name);
