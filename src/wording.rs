@@ -63,6 +63,29 @@ fn plain_type(words: &str) -> String {
     }
 }
 
+/// Begins a line of an excerpt below a message, such as a formula with a caret under the place at fault.
+pub(crate) const EXCERPT: &str = "\n    ";
+
+/// `text` on one line, but for excerpts: it may hold what a stranger wrote, and nothing of that may break the line or move
+/// the cursor.
+pub fn printable(text: &str) -> String {
+    let mut printed = String::with_capacity(text.len());
+    for (k, part) in text.split(EXCERPT).enumerate() {
+        if k > 0 {
+            printed.push_str(EXCERPT);
+        }
+        for c in part.chars() {
+            if is_line_breaking(c) { printed.extend(c.escape_default()) } else { printed.push(c) }
+        }
+    }
+    printed
+}
+
+/// Whether a character can end a line or move the cursor.
+pub(crate) fn is_line_breaking(c: char) -> bool {
+    c.is_control() || matches!(c, '\u{2028}' | '\u{2029}')
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -93,27 +116,4 @@ mod tests {
             assert_eq!(plain(from), to);
         }
     }
-}
-
-/// Begins a line of an excerpt below a message, such as a formula with a caret under the place at fault.
-pub(crate) const EXCERPT: &str = "\n    ";
-
-/// `text` on one line, but for excerpts: it may hold what a stranger wrote, and nothing of that may break the line or move
-/// the cursor.
-pub fn printable(text: &str) -> String {
-    let mut printed = String::with_capacity(text.len());
-    for (k, part) in text.split(EXCERPT).enumerate() {
-        if k > 0 {
-            printed.push_str(EXCERPT);
-        }
-        for c in part.chars() {
-            if is_line_breaking(c) { printed.extend(c.escape_default()) } else { printed.push(c) }
-        }
-    }
-    printed
-}
-
-/// Whether a character can end a line or move the cursor.
-pub(crate) fn is_line_breaking(c: char) -> bool {
-    c.is_control() || matches!(c, '\u{2028}' | '\u{2029}')
 }

@@ -108,10 +108,10 @@ fn derivatives_are_exact() {
     let gradient = [2.0 * x * y + e / z, x * x, -e / (z * z)];
     let hessian =
         [[2.0 * y + e / z, 2.0 * x, -e / (z * z)], [2.0 * x, 0.0, 0.0], [-e / (z * z), 0.0, 2.0 * e / z.powi(3)]];
-    for i in 0..3 {
-        assert!((found.jacobian[(0, i)] - gradient[i]).abs() < 1e-14, "slope {i}");
-        for k in 0..3 {
-            assert!((found.hessians[0][(i, k)] - hessian[i][k]).abs() < 1e-14, "bend {i}, {k}");
+    for (i, (slope, bends)) in gradient.iter().zip(&hessian).enumerate() {
+        assert!((found.jacobian[(0, i)] - slope).abs() < 1e-14, "slope {i}");
+        for (k, bend) in bends.iter().enumerate() {
+            assert!((found.hessians[0][(i, k)] - bend).abs() < 1e-14, "bend {i}, {k}");
         }
     }
     let found = at([-x, y, z]);
@@ -191,7 +191,7 @@ fn a_flaw_is_shown_where_it_is() {
         ("min(x)", "`min` takes 2 arguments or more, 1 is given", 0),
         ("if(x, 1, 2)", "is a number where a condition is needed; compare it, as in x > 0", 3),
         ("if(x < y, 1)", "`if` takes a condition and two numbers, 2 are given", 0),
-        ("1 + (x < y)", "is a condition where a number is needed; write if(condition, a, b)", 5),
+        ("1 + (x < y)", "is a condition where a number is needed; write if(condition, a, b)", 4),
         ("x < y < z", "`<` cannot stand here; an operator or the end is needed", 6),
         ("1e999", "is too large for a number", 0),
         ("2 * \u{fc}", "`\u{fc}` cannot stand here; a number, a name, a function or `(` is needed", 4),

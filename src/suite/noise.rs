@@ -60,7 +60,7 @@ fn inside_sd(node: &Node) -> Result<f64, SuiteError> {
 }
 
 /// One node for each of `count`, or one for all.
-fn entries<'a>(node: &'a Node, count: usize, what: impl Fn() -> String) -> Result<Vec<&'a Node>, SuiteError> {
+fn entries(node: &Node, count: usize, what: impl Fn() -> String) -> Result<Vec<&Node>, SuiteError> {
     match &node.item {
         Item::List(list) if list.len() == count => Ok(list.iter().collect()),
         Item::List(list) => Err(node.error(format!("has {} entries; {}", list.len(), what()))),

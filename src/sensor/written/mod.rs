@@ -14,6 +14,7 @@ use self::program::{Program, Step};
 use super::kinds::{Kind, built};
 use super::parameter::read_components;
 use super::{Formula, Number, Output, ParameterError};
+use crate::lanes::Simd;
 
 pub(super) const KIND: Kind = Kind {
     name: "formula",
@@ -213,5 +214,10 @@ impl Formula for Written {
     #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         self.program.run(x, y);
+    }
+
+    #[inline(always)]
+    fn evaluate_block<S: Simd>(&self, length: usize, x: &[f64], y: &mut [f64]) {
+        self.program.run_block::<S>(length, x, y);
     }
 }

@@ -1,5 +1,6 @@
 use smallvec::SmallVec;
 
+use crate::lanes::{Lanes, Simd};
 use crate::sensor::Number;
 
 /// One step of a program; places are those of earlier steps.
@@ -111,6 +112,25 @@ impl Program {
         inputs
     }
 
+    /// [`Program::run`] at `length` points, a multiple of eight, one array a coordinate: each step for all points before the
+    /// next, so that telling the steps apart costs next to nothing.
+    #[inline(always)]
+    pub fn run_block<S: Simd>(&self, length: usize, x: &[f64], y: &mut [f64]) {
+        if length == 0 {
+            return;
+        }
+        let mut values = vec![0.0; self.steps.len() * length];
+        for (place, &step) in self.steps.iter().enumerate() {
+            let (known, rest) = values.split_at_mut(place * length);
+            let known = Known { steps: &self.steps, x, values: known, length };
+            step.run_block::<S>(&known, &mut rest[..length]);
+        }
+        let known = Known { steps: &self.steps, x, values: &values, length };
+        for (y, &place) in y.chunks_exact_mut(length).zip(&self.results) {
+            y.copy_from_slice(known.column(place));
+        }
+    }
+
     /// Writes the outputs' values at the inputs `x` into `y`.
     #[inline(always)]
     pub fn run<T: Number>(&self, x: &[T], y: &mut [T]) {
@@ -138,7 +158,91 @@ fn mark(steps: &[Step], place: usize, needed: &mut [bool]) {
     }
 }
 
+/// The values of earlier steps at every point of a block; an input's stand in the block itself.
+struct Known<'a> {
+    steps: &'a [Step],
+    x: &'a [f64],
+    values: &'a [f64],
+    length: usize,
+}
+
+impl Known<'_> {
+    #[inline(always)]
+    fn column(&self, place: usize) -> &[f64] {
+        let (all, at) = match self.steps[place] {
+            Step::Input(i) => (self.x, i),
+            _ => (self.values, place),
+        };
+        &all[at * self.length..(at + 1) * self.length]
+    }
+
+    #[inline(always)]
+    fn eights(&self, place: usize) -> &[[f64; 8]] {
+        self.column(place).as_chunks().0
+    }
+}
+
 impl Step {
+    /// Writes its value at every point of a block.
+    ///
+    /// Loops in a macro: a closure is not compiled for the vector instructions of its caller.
+    #[inline(always)]
+    fn run_block<S: Simd>(self, known: &Known<'_>, out: &mut [f64]) {
+        let out = out.as_chunks_mut().0;
+        macro_rules! each {
+            ($a:expr, |$x:ident| $value:expr) => {
+                for (out, a) in out.iter_mut().zip(known.eights($a)) {
+                    let $x = Lanes::<S>::from_array(a);
+                    *out = ($value).to_array();
+                }
+            };
+            ($a:expr, $b:expr, |$x:ident, $y:ident| $value:expr) => {
+                for ((out, a), b) in out.iter_mut().zip(known.eights($a)).zip(known.eights($b)) {
+                    let ($x, $y) = (Lanes::<S>::from_array(a), Lanes::<S>::from_array(b));
+                    *out = ($value).to_array();
+                }
+            };
+        }
+        macro_rules! choose {
+            ([$a:expr, $b:expr, $yes:expr, $no:expr], $choose:ident) => {
+                let compared = known.eights($a).iter().zip(known.eights($b));
+                let chosen = known.eights($yes).iter().zip(known.eights($no));
+                for (out, ((a, b), (yes, no))) in out.iter_mut().zip(compared.zip(chosen)) {
+                    let [a, b, yes, no] = [a, b, yes, no].map(Lanes::<S>::from_array);
+                    *out = Number::$choose(a, b, yes, no).to_array();
+                }
+            };
+        }
+        match self {
+            // Its column is the block's own.
+            Self::Input(_) => {}
+            Self::Constant(value) => out.fill([value; 8]),
+            Self::Add(a, b) => each!(a, b, |x, y| x + y),
+            Self::Subtract(a, b) => each!(a, b, |x, y| x - y),
+            Self::Multiply(a, b) => each!(a, b, |x, y| x * y),
+            Self::Divide(a, b) => each!(a, b, |x, y| x / y),
+            Self::Negate(a) => each!(a, |x| -x),
+            Self::Sqrt(a) => each!(a, |x| x.sqrt()),
+            Self::Sin(a) => each!(a, |x| x.sin()),
+            Self::Cos(a) => each!(a, |x| x.cos()),
+            Self::Tan(a) => each!(a, |x| x.tan()),
+            Self::Exp(a) => each!(a, |x| x.exp()),
+            Self::Ln(a) => each!(a, |x| x.ln()),
+            Self::Tanh(a) => each!(a, |x| x.tanh()),
+            Self::Abs(a) => each!(a, |x| x.abs()),
+            Self::Atan2(a, b) => each!(a, b, |y, x| y.atan2(x)),
+            Self::Hypot(a, b) => each!(a, b, |x, y| x.hypot(y)),
+            Self::Powi(a, n) => each!(a, |x| x.powi(n)),
+            Self::Powf(a, n) => each!(a, |x| Number::powf(x, n)),
+            Self::IfLess([a, b, yes, no]) => {
+                choose!([a, b, yes, no], if_less);
+            }
+            Self::IfAtMost([a, b, yes, no]) => {
+                choose!([a, b, yes, no], if_at_most);
+            }
+        }
+    }
+
     fn needs(self) -> impl Iterator<Item = usize> {
         let places: SmallVec<[usize; 4]> = match self {
             Self::Input(_) | Self::Constant(_) => SmallVec::new(),
