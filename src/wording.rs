@@ -86,6 +86,29 @@ pub(crate) fn is_line_breaking(c: char) -> bool {
     c.is_control() || matches!(c, '\u{2028}' | '\u{2029}')
 }
 
+/// The longest name, in characters.
+const LONGEST: usize = 120;
+
+/// What is wrong with a name, if anything. It must survive as a field of a table, a label and a word on a
+/// command line.
+pub(crate) fn flaw(name: &str) -> Option<String> {
+    let length = name.chars().count();
+    if name.trim().is_empty() {
+        return Some("the name is empty".into());
+    }
+    if length > LONGEST {
+        return Some(format!("the name has {length} characters; at most {LONGEST} are allowed"));
+    }
+    if name.trim() != name {
+        return Some(format!("the name \"{name}\" begins or ends with a blank"));
+    }
+    let bad = name.chars().find(|&c| is_line_breaking(c) || matches!(c, ',' | '"' | '\''));
+    bad.map(|c| {
+        let c = c.escape_default();
+        format!("the name holds `{c}`; use printable characters, no comma and no quotes")
+    })
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;

@@ -11,7 +11,7 @@ use gaussworthy::reference::{DEFAULT_REPLICATES, Key, Reference, Sampler, Sample
 use gaussworthy::score::{ScoreKind, Scorer};
 use gaussworthy::sensor::{Formula, Number, Output};
 use gaussworthy::suite::{Case, Suite};
-use gaussworthy::survey::{SurveyPlan, SurveySettings, Watch, survey};
+use gaussworthy::survey::{SurveyPlan, SurveySettings, Unwatched, survey};
 use gaussworthy::trust::{Limits, Trust};
 use nalgebra::{Complex, DMatrix, DVector};
 use rand::RngExt;
@@ -294,16 +294,6 @@ fn standard_errors_of_scores_are_true() {
         println!("{}: {} scores, {share:.4} covered", kind.name(), z.len());
         assert!(z.len() >= 400, "only {} of {}", z.len(), kind.name());
         assert!((0.93..=0.97).contains(&share), "{}: {share:.4} of the intervals cover", kind.name());
-    }
-}
-
-struct Unwatched;
-
-impl Watch for Unwatched {
-    fn case_done(&self, _: u64) {}
-
-    fn stop(&self) -> bool {
-        false
     }
 }
 

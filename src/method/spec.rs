@@ -2,14 +2,14 @@ use std::sync::Arc;
 
 use serde_json::{Map, Number, Value};
 
-use crate::wording::proposal;
+use crate::wording::{flaw, proposal};
 
 use super::{BuildError, KINDS, Kind, Method};
 
 /// A method and how it was written.
 #[derive(Debug, Clone)]
 pub struct MethodSpec {
-    kind: &'static Kind,
+    kind: Option<&'static Kind>,
     label: String,
     method: Arc<dyn Method>,
 }
@@ -69,7 +69,22 @@ impl MethodSpec {
         for (key, value) in &written {
             label.push_str(&format!(":{key}={}", shortest(value)));
         }
-        Ok(Self { kind, label, method })
+        Ok(Self { kind: Some(kind), label, method })
+    }
+
+    /// A method of the caller's own, under a label that names it in tables and files.
+    ///
+    /// # Errors
+    /// [`BuildError`] if the label is that of a built-in method, or would break a table.
+    pub fn own(label: &str, method: Arc<dyn Method>) -> Result<Self, BuildError> {
+        let id = label.split(':').next().unwrap_or_default();
+        if KINDS.iter().any(|kind| kind.id == id) {
+            return Err(BuildError::new("id", format!("`{id}` is a built-in method; give another label")));
+        }
+        match flaw(label) {
+            Some(flaw) => Err(BuildError::new("id", flaw)),
+            None => Ok(Self { kind: None, label: label.into(), method }),
+        }
     }
 
     /// The command-line form of what was written, in a fixed order and without what was left to its default;
@@ -78,8 +93,8 @@ impl MethodSpec {
         &self.label
     }
 
-    /// Its entry in [`KINDS`].
-    pub fn kind(&self) -> &'static Kind {
+    /// Its entry in [`KINDS`]; `None` for a method of the caller's own.
+    pub fn kind(&self) -> Option<&'static Kind> {
         self.kind
     }
 
@@ -160,7 +175,7 @@ mod tests {
             assert_eq!(spec.label(), label);
             let again = MethodSpec::parse(label).unwrap();
             assert_eq!(again.label(), label);
-            assert_eq!(again.kind().id, spec.kind().id);
+            assert_eq!(again.kind().unwrap().id, spec.kind().unwrap().id);
             assert_eq!(format!("{:?}", again.method()), format!("{:?}", spec.method()));
         }
     }
@@ -169,7 +184,7 @@ mod tests {
     fn the_defaults_cover_every_kind() {
         let methods = default_methods();
         for kind in KINDS {
-            assert!(methods.iter().any(|m| m.kind().id == kind.id), "{} is missing", kind.id);
+            assert!(methods.iter().any(|m| m.kind().is_some_and(|k| k.id == kind.id)), "{} is missing", kind.id);
         }
     }
 

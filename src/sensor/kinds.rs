@@ -84,7 +84,33 @@ impl SensorSpec {
         Ok(Self { kind: kind.name, parameters, state_dimension: n, sensor })
     }
 
-    /// The sensor's name among [`KINDS`].
+    /// A sensor of the caller's own, for a state of `n` components. What it answers is kept under `kind` and `parameters`:
+    /// they must tell it from every other sensor. A case record of it can be written, not read back.
+    ///
+    /// # Errors
+    /// [`BuildError`] if `kind` is that of a built-in sensor, or a component that the sensor reads is outside state and
+    /// noise, or stands twice.
+    pub fn own(
+        kind: &'static str,
+        parameters: Map<String, Value>,
+        n: usize,
+        sensor: Arc<dyn Sensor>,
+    ) -> Result<Self, BuildError> {
+        let error = |key: &str, message: String| Err(BuildError { key: key.into(), message });
+        if KINDS.iter().any(|known| known.name == kind) {
+            return error("kind", format!("`{kind}` is a built-in sensor; give another name"));
+        }
+        let (reads, all) = (sensor.reads(), n + sensor.noise().len());
+        if let Some(outside) = reads.iter().find(|&&i| i >= all) {
+            return error("reads", format!("{outside} is outside state and noise, which have {all} components"));
+        }
+        if let Some(k) = (1..reads.len()).find(|&k| reads[..k].contains(&reads[k])) {
+            return error("reads", format!("names component {} twice", reads[k]));
+        }
+        Ok(Self { kind, parameters, state_dimension: n, sensor })
+    }
+
+    /// The sensor's name, among [`KINDS`] unless it is the caller's own.
     pub fn kind(&self) -> &'static str {
         self.kind
     }

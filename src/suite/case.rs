@@ -5,8 +5,7 @@ use serde_json::{Map, Value};
 use crate::gaussian::{Gaussian, GaussianError, Marginal, checked_covariance};
 use crate::sensor::{self, Sensor, SensorSpec, Written};
 
-use super::name::flaw;
-use crate::wording::plain;
+use crate::wording::{flaw, plain};
 
 /// One question: one sensor with its parameters, one prior, one noise.
 #[derive(Debug, Clone)]

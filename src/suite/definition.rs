@@ -1,3 +1,4 @@
+use std::collections::HashSet;
 use std::fmt::Write as _;
 use std::path::Path;
 
@@ -9,7 +10,7 @@ use super::node::{Item, Node};
 use super::{Bundled, Case, SuiteError, bundled, name, records, settings, source};
 use crate::method::MethodSpec;
 use crate::trust::Limits;
-use crate::wording::proposal;
+use crate::wording::{flaw, proposal};
 
 /// Everything at the top of a suite.
 const KEYS: [&str; 12] = [
@@ -125,6 +126,36 @@ impl Suite {
         })
     }
 
+    /// A suite of cases that a program has made.
+    ///
+    /// # Errors
+    /// [`SuiteError`] if the name cannot be that of a folder, there is no case, or two have one name.
+    pub fn of_cases(name: &str, cases: Vec<Case>) -> Result<Self, SuiteError> {
+        let error = |message: String| Err(SuiteError::of_file(name, message));
+        if let Some(flaw) = name::suite_flaw(name) {
+            return error(flaw);
+        }
+        if cases.is_empty() {
+            return error("has no case".into());
+        }
+        let mut ids = HashSet::new();
+        if let Some(twice) = cases.iter().find(|case| !ids.insert(case.id())) {
+            return error(format!("two cases are called `{}`; rename one", twice.id()));
+        }
+        Ok(Self {
+            name: name.into(),
+            title: name.into(),
+            note: String::new(),
+            hash: records::hash_of(&cases),
+            seed: None,
+            precision: None,
+            cap: None,
+            limits: Limits::default(),
+            methods: None,
+            cases,
+        })
+    }
+
     /// Reads a file of case records (JSON Lines), in place of a suite; it is called as the file is, without
     /// the ending.
     ///
@@ -190,7 +221,7 @@ fn families(root: &Node, name: &str) -> Result<Vec<Family>, SuiteError> {
         let name_node = table.need("name", "give each family a name of its own")?;
         let name = name_node.text()?;
         // Room for a dash and the number of a case.
-        if let Some(flaw) = name::flaw(&format!("{name}-000000")) {
+        if let Some(flaw) = flaw(&format!("{name}-000000")) {
             return Err(name_node.error(flaw));
         }
         if let Some((_, line)) = names.iter().find(|(other, _)| *other == name) {

@@ -21,6 +21,15 @@ pub(super) struct Records {
     pub hash: String,
 }
 
+/// The hash of the file that holds the records of these cases.
+pub(super) fn hash_of(cases: &[Case]) -> String {
+    let mut hash = Sha256::new();
+    for case in cases {
+        hash.update(format!("{}\n", case.to_json()));
+    }
+    hex(&hash.finalize())
+}
+
 /// Reads a file of case records.
 pub(super) fn read(path: &Path) -> Result<Records, SuiteError> {
     let file = path.display().to_string();

@@ -10,7 +10,7 @@ mod timing;
 
 pub use crate::shard::{Shard, ShardError};
 pub use case_run::{Answer, Answered, CaseResult, Stop};
-pub use run::{SurveyResult, Watch, survey};
+pub use run::{SurveyResult, Unwatched, Watch, survey};
 pub use settings::{SurveyError, SurveyPlan, SurveySettings};
 pub use share::{ShareResult, sample_share};
 pub use summary::{MethodSummary, Summary, summarise};

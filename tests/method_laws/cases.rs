@@ -24,7 +24,7 @@ pub fn tolerance(method: &MethodSpec) -> f64 {
 
 /// Whether this is the scaled unscented transform with its default alpha of 1e-3.
 pub fn has_tiny_alpha(method: &MethodSpec) -> bool {
-    method.kind().id == "unscented-scaled" && !method.label().contains("alpha")
+    method.kind().unwrap().id == "unscented-scaled" && !method.label().contains("alpha")
 }
 
 /// The default methods and others with parameters of their own.

@@ -23,7 +23,7 @@ fn claimed(method: &MethodSpec, a: usize, angular: bool) -> Evaluations {
         None => 3,
     };
     let values = |count: usize| Evaluations { values: count as u64, ..Evaluations::default() };
-    match method.kind().evaluations {
+    match method.kind().unwrap().evaluations {
         "1 Jacobian" => Evaluations { jacobians: 1, ..Evaluations::default() },
         "1 Hessian set" => Evaluations { hessians: 1, ..Evaluations::default() },
         "2a + 1" => values(2 * a + 1),

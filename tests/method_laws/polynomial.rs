@@ -93,7 +93,7 @@ struct Claim {
 
 /// The claims of the methods' documentation, each from its source there.
 fn claim(method: &MethodSpec) -> Claim {
-    match method.kind().id {
+    match method.kind().unwrap().id {
         "taylor-1" => Claim { mean: 1, cross: 2, covariance: 1 },
         "taylor-2" => Claim { mean: 3, cross: 2, covariance: 2 },
         "unscented" | "unscented-scaled" | "cubature-3" => Claim { mean: 3, cross: 2, covariance: 1 },
