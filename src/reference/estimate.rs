@@ -65,15 +65,17 @@ pub struct Reference {
 /// Mean of the replicates and standard error of every entry.
 pub(super) fn combine(replicates: &[Moments]) -> (Moments, Moments) {
     let count = replicates.len() as f64;
-    let mut mean = replicates[0].clone();
-    for other in &replicates[1..] {
-        mean.mean += &other.mean;
-        mean.covariance += &other.covariance;
-        mean.cross_covariance += &other.cross_covariance;
+    // About the first one, so that equal replicates have an error of zero and not the rounding of a sum.
+    let first = &replicates[0];
+    let mut mean = Moments::zeros(first.cross_covariance.nrows(), first.mean.len());
+    for r in replicates {
+        mean.mean += &r.mean - &first.mean;
+        mean.covariance += &r.covariance - &first.covariance;
+        mean.cross_covariance += &r.cross_covariance - &first.cross_covariance;
     }
-    mean.mean /= count;
-    mean.covariance /= count;
-    mean.cross_covariance /= count;
+    mean.mean = &first.mean + mean.mean / count;
+    mean.covariance = &first.covariance + mean.covariance / count;
+    mean.cross_covariance = &first.cross_covariance + mean.cross_covariance / count;
     let mut error = Moments::zeros(mean.cross_covariance.nrows(), mean.mean.len());
     for r in replicates {
         error.mean += (&r.mean - &mean.mean).map(|d| d * d);

@@ -23,6 +23,8 @@ pub(super) struct Foresight {
     fourths: Vec<(f64, f64)>,
     /// What samples that are too rare to have been met add to the variances of the estimates.
     pub outskirts: Outskirts,
+    /// Probability of the states at which an output is not a finite number.
+    pub undefined: f64,
 }
 
 impl Foresight {
@@ -32,14 +34,19 @@ impl Foresight {
         let Ok(net) = Net::new(&question.key.ahead(), 0, a, LOG2) else { return Self::default() };
         let mut block = Block::new(question.level, a, p, &Basis::new(a, 0));
         let mut fourths = vec![(0.0, 0.0_f64); p];
+        let mut undefined = 0.0;
         let mut gathering = Gathering::new(question, pilot, net.blocks() as usize);
         for b in 0..net.blocks() {
             block.take_net(&net, b);
             let weights = reach_out(&mut block.z);
             question.evaluate(&mut block);
             block.subtract(&pilot.centre, &question.angular, &pilot.slope);
+            for (k, weight) in weights.iter().enumerate() {
+                if block.e.iter().any(|e| !e[k].is_finite()) {
+                    undefined += weight;
+                }
+            }
             for (e, (sum, largest)) in block.e.iter().zip(&mut fourths) {
-                // Where h is undefined far out the samples themselves will say so, if they ever come there.
                 for share in e.iter().zip(&weights).map(|(e, w)| w * e.powi(4)).filter(|share| share.is_finite()) {
                     *sum += share;
                     *largest = largest.max(share);
@@ -47,7 +54,8 @@ impl Foresight {
             }
             gathering.add(&block, &weights);
         }
-        Self { fourths, outskirts: gathering.finish() }
+        undefined /= (net.blocks() * BLOCK as u64) as f64;
+        Self { fourths, outskirts: gathering.finish(), undefined }
     }
 
     /// The share of E\[e_j^4\] that the weightiest point alone carries, `None` if there is none. Where the fourth moment

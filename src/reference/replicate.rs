@@ -113,10 +113,15 @@ impl Replicate {
         let (a, p) = (question.inputs(), question.outputs());
         let means = pilot.controls.means(&self.sums);
         let slope = &pilot.slope;
-        let ze = DMatrix::from_column_slice(a, p, &means.ze);
-        let cross = slope * &ze;
+        let mut ze = DMatrix::from_column_slice(a, p, &means.ze);
         // Independent points share their mean with their squares; a net's mean is known far better than that.
         let bessel = if self.has_net() { 1.0 } else { self.sums.count / (self.sums.count - 1.0) };
+        if !self.has_net() {
+            // An angle's chart follows its samples: their mean is not independent of z.
+            let count = self.sums.count;
+            ze = DMatrix::from_fn(a, p, |i, j| bessel * (ze[(i, j)] - self.sums.z[i] / count * means.e[j]));
+        }
+        let cross = slope * &ze;
         let residual =
             DMatrix::from_fn(p, p, |j, k| bessel * (means.ee[Sums::pair(j, k)] - means.e[j] * means.e[k]));
         Moments {
@@ -219,7 +224,7 @@ mod tests {
         let (moments, error) = combine(&replicates);
         let spread = (0..2).map(|j| error.covariance[(j, j)] / moments.covariance[(j, j)]).fold(0.0, f64::max);
         let foresight = Foresight::look(&question, &pilot);
-        (hear(&question, &true_noise, &pilot.centre, &moments, &error, &foresight), spread)
+        (hear(&question, &true_noise, &pilot.centre, &moments, (&error, 32), &foresight), spread)
     }
 
     #[test]

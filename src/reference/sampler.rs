@@ -20,7 +20,11 @@ use crate::suite::Case;
 /// the directions are all but uniform, and where the cut lies decides the moments.
 const LEAST_RESULTANT: f64 = 0.1;
 
-/// The least standard deviation of an output as a share of its mean: 1e4 units in the last place of a double.
+/// Most probability of the states at which a sensor has no value: beyond it there are no moments to speak of. Ours, no
+/// source.
+const MAY_BE_UNDEFINED: f64 = 1e-9;
+
+/// The least standard deviation of an output or of a state that is read, as a share of its mean: 1e4 units in the last place of a double.
 /// Ours, no source: the rounding of a value, a few units, is then under 1e-3 of what is measured.
 const LEAST_SPREAD: f64 = 1e4 * f64::EPSILON;
 
@@ -180,8 +184,14 @@ impl<'a> Sampler<'a> {
         let Some(chart) = self.looks().next().map(|look| DVector::from_column_slice(&look.centre)) else {
             return reference;
         };
-        let (soundness, reason) = match hear(&self.question, &self.noise, &chart, &moments, &error, &self.foresight)
-        {
+        let (soundness, reason) = match hear(
+            &self.question,
+            &self.noise,
+            &chart,
+            &moments,
+            (&error, self.replicates.len()),
+            &self.foresight,
+        ) {
             Testimony::Agrees => return reference,
             Testimony::Disagrees(reason) => (Soundness::Disputed, reason),
             Testimony::HeavyTail(reason) => (Soundness::HeavyTailed, reason),
@@ -243,12 +253,27 @@ impl<'a> Sampler<'a> {
 
     fn refusal(&self, moments: &Moments) -> Option<String> {
         let outputs = self.question.sensor.outputs();
+        let undefined = self.foresight.undefined;
+        if undefined > MAY_BE_UNDEFINED {
+            return Some(format!("the sensor is undefined with probability {undefined:.1e} under this prior"));
+        }
         if !moments.is_finite() {
             let which = (0..outputs.len()).find(|&j| !moments.covariance[(j, j)].is_finite()).unwrap_or(0);
             return Some(format!(
                 "output `{}` or its square is not a finite number at every sample",
                 outputs[which].name
             ));
+        }
+        for (i, &component) in self.question.sensor.reads().iter().enumerate() {
+            let prior = self.question.prior;
+            let (sd, size) = (prior.covariance()[(i, i)].sqrt(), prior.mean()[i].abs());
+            if sd > 0.0 && sd < LEAST_SPREAD * size {
+                return Some(format!(
+                    "state {component} spreads by {sd:.1e} around {:.1e}: the digits of a number do not show it; measure it \
+                     from an origin nearer by",
+                    prior.mean()[i]
+                ));
+            }
         }
         for (j, output) in outputs.iter().enumerate() {
             let (sd, size) = (moments.covariance[(j, j)].sqrt(), moments.mean[j].abs());

@@ -1,4 +1,4 @@
-use super::net::BLOCK;
+use super::net::{BLOCK, MOST_LOG2};
 use super::pilot::FIRST_BLOCKS;
 use crate::lanes::Level;
 use crate::shard::Shard;
@@ -53,9 +53,9 @@ impl SamplerSettings {
         if shares > replicates { Err(SamplerError::TooManyShares { shares, replicates }) } else { Ok(()) }
     }
 
-    /// Binary logarithm of the most points of a replicate: nets are filled by doubling.
+    /// Binary logarithm of the most points of a replicate: nets are filled by doubling, and have so many points at most.
     pub(super) fn log2(&self) -> u32 {
-        (self.cap / self.replicates as u64).max(1).ilog2()
+        (self.cap / self.replicates as u64).max(1).ilog2().min(MOST_LOG2)
     }
 
     /// Blocks a replicate after the next doubling of `blocks`; `None` where the cap leaves no room.

@@ -48,7 +48,8 @@ pub(super) enum Testimony {
 /// Hears the witness: an independent plain Monte Carlo estimate, with its own streams, the machine's mathematical
 /// library, one point at a time, and the noise sampled instead of added.
 ///
-/// `moments` and `error` are the reference's on the read components (C is a x p), `chart` the centres of its charts.
+/// `moments` and `error` are the reference's on the read components (C is a x p), from so many replicates, `chart` the
+/// centres of its charts.
 /// They are disputed when an entry differs by more than Student's t law of the batches allows at odds of 1e-6 over
 /// all entries. The witness's standard error is that of its batches or, where that is larger, what the spread of
 /// each integrand over a net predicts: rare large samples that no batch happened to draw must not make it look
@@ -61,7 +62,7 @@ pub(super) fn hear(
     noise: &DMatrix<f64>,
     chart: &DVector<f64>,
     moments: &Moments,
-    error: &Moments,
+    (error, replicates): (&Moments, usize),
     foresight: &Foresight,
 ) -> Testimony {
     let outputs = question.sensor.outputs();
@@ -75,7 +76,7 @@ pub(super) fn hear(
         }
     }
     let spread = Spread::measure(question, noise, chart, moments);
-    disagreement(question, &sample, spread.as_ref(), moments, error).unwrap_or(Testimony::Agrees)
+    disagreement(question, &sample, spread.as_ref(), moments, (error, replicates)).unwrap_or(Testimony::Agrees)
 }
 
 /// The witness's estimate.
@@ -235,11 +236,13 @@ fn disagreement(
     sample: &Sample,
     spread: Option<&Spread>,
     moments: &Moments,
-    error: &Moments,
+    (error, replicates): (&Moments, usize),
 ) -> Option<Testimony> {
     let (a, p) = (question.inputs(), question.outputs());
     let entries = (p + p * (p + 1) / 2 + a * p) as f64;
-    let law = StudentsT::new(0.0, 1.0, (BATCHES - 1) as f64).ok()?;
+    // The fewer of the two sides' replicates decide how far chance goes.
+    let freedom = (BATCHES - 1).min(replicates as u64 - 1);
+    let law = StudentsT::new(0.0, 1.0, freedom as f64).ok()?;
     let bound = -law.inverse_cdf(FALSE_DISPUTE / (2.0 * entries));
     let outputs = question.sensor.outputs();
     let sd = |j: usize| moments.covariance[(j, j)].max(0.0).sqrt();
