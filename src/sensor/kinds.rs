@@ -6,7 +6,11 @@ use serde_json::{Map, Value};
 
 use crate::wording::{plain, proposal};
 
-use super::{ParameterError, Sensor, bearing_only, linear, quadratic, range_bearing};
+use super::{
+    ParameterError, Sensor, attitude_vector, bearing_only, dipole_field, exponential_decay, line_feature,
+    line_offset, linear, phase_sine, pinhole, polar_to_cartesian, quadratic, range_bearing, saturating,
+    stereo_disparity,
+};
 
 /// A sensor that a suite or a case record can name.
 #[derive(Debug, Clone, Copy)]
@@ -32,7 +36,22 @@ pub struct Kind {
 pub(super) type Built = (Map<String, Value>, Arc<dyn Sensor>);
 
 /// Every built-in sensor. A new one is one line here.
-pub const KINDS: &[Kind] = &[range_bearing::KIND, bearing_only::KIND, quadratic::KIND, linear::KIND];
+pub const KINDS: &[Kind] = &[
+    range_bearing::KIND,
+    bearing_only::KIND,
+    polar_to_cartesian::KIND,
+    line_offset::KIND,
+    line_feature::KIND,
+    pinhole::KIND,
+    stereo_disparity::KIND,
+    attitude_vector::KIND,
+    dipole_field::KIND,
+    exponential_decay::KIND,
+    saturating::KIND,
+    phase_sine::KIND,
+    quadratic::KIND,
+    linear::KIND,
+];
 
 /// Why a sensor could not be made from what a suite or a case record says.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
