@@ -4,7 +4,7 @@ use serde::Serialize;
 use serde::de::DeserializeOwned;
 use serde_json::{Map, Value};
 
-use crate::wording::{plain, proposal};
+use crate::wording::{plain, unknown_name};
 
 use super::{
     ParameterError, Sensor, attitude_vector, bearing_only, dipole_field, exponential_decay, line_feature,
@@ -94,8 +94,8 @@ impl SensorSpec {
             None => return Err(error("", format!("`kind` is missing; give one of {}", names()))),
         };
         let kind = KINDS.iter().find(|k| k.name == kind).ok_or_else(|| {
-            let near = proposal(&kind, KINDS.iter().map(|k| k.name));
-            error("kind", format!("there is no sensor `{kind}`; {near}give one of {}", names()))
+            let names: Vec<_> = KINDS.iter().map(|k| k.name).collect();
+            error("kind", unknown_name("sensor", &kind, &names))
         })?;
         let (parameters, sensor) = (kind.build)(described, n)?;
         Ok(Self { kind: kind.name, parameters, state_dimension: n, sensor })
