@@ -88,20 +88,20 @@ impl Formula for DipoleField {
 
     #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
-        let mut r = [T::constant(0.0); 3];
+        let [east, north, up] = self.place;
+        let r = [x[0] - T::constant(east), x[1] - T::constant(north), x[2] - T::constant(up)];
         let (mut distance2, mut along) = (T::constant(0.0), T::constant(0.0));
-        for i in 0..3 {
-            r[i] = x[i] - T::constant(self.place[i]);
-            distance2 = distance2 + r[i] * r[i];
-            along = along + T::constant(self.moment[i]) * r[i];
+        for (&r, &moment) in r.iter().zip(&self.moment) {
+            distance2 = distance2 + r * r;
+            along = along + T::constant(moment) * r;
         }
+        // One reciprocal and products: dual numbers divide that way, and so their values are those of plain numbers.
         let inverse2 = T::constant(1.0) / distance2;
         let scale = T::constant(FIELD_OF_MOMENT) * inverse2 * inverse2.sqrt();
         let radial = T::constant(3.0) * along * inverse2;
         let mut square = T::constant(0.0);
-        for i in 0..3 {
-            let dipole = scale * (radial * r[i] - T::constant(self.moment[i]));
-            let field = dipole + T::constant(self.background[i]);
+        for ((&r, &moment), &background) in r.iter().zip(&self.moment).zip(&self.background) {
+            let field = scale * (radial * r - T::constant(moment)) + T::constant(background);
             square = square + field * field;
         }
         y[0] = square.sqrt();

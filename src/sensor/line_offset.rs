@@ -78,8 +78,8 @@ impl Formula for LineOffset {
     #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         let mut sum = T::constant(0.0);
-        for i in 0..2 {
-            sum = sum + T::constant(self.normal[i]) * (x[i] - T::constant(self.first[i]));
+        for ((&x, &normal), &first) in x.iter().zip(&self.normal).zip(&self.first) {
+            sum = sum + T::constant(normal) * (x - T::constant(first));
         }
         y[0] = sum;
     }

@@ -85,6 +85,7 @@ impl Formula for StereoDisparity {
 
     #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
+        // One reciprocal and products: dual numbers divide that way, and so their values are those of plain numbers.
         let scale = T::constant(1.0) / x[2] * T::constant(self.focal_length);
         for i in 0..2 {
             y[i] = scale * x[i] + T::constant(self.centre[i]);
