@@ -18,6 +18,12 @@ pub(crate) fn proposal<'a>(word: &str, candidates: impl IntoIterator<Item = &'a 
     nearest(word, candidates).map_or_else(String::new, |near| format!("did you mean `{near}`? "))
 }
 
+/// What to say of a name that stands for nothing among `names`; `what` is what it was taken for.
+pub(crate) fn unknown_name(what: &str, word: &str, names: &[&str]) -> String {
+    let near = proposal(word, names.iter().copied());
+    format!("there is no {what} `{word}`; {near}give one of {}", names.join(", "))
+}
+
 /// What to say of a key that has no meaning where it stands.
 pub(crate) fn unknown_key(word: &str, allowed: &[&str]) -> String {
     if allowed.is_empty() {

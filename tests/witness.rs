@@ -113,7 +113,8 @@ fn bounded_outputs_are_never_refused() {
     assert_eq!(found, 0, "of {CASES} bounded readings");
 }
 
-/// The bundled suites: the witness disputes nothing that is right. 264 references at odds of 1e-6 each.
+/// The bundled suites: the witness disputes nothing that is right, some 500 references at odds of 1e-6 each, and refuses
+/// what has no moments: a boat alongside the lens of a camera, where 1/z comes near its pole.
 #[test]
 fn no_bundled_reference_is_disputed() {
     let bad: Vec<String> = Suite::bundled()
@@ -124,8 +125,12 @@ fn no_bundled_reference_is_disputed() {
         .filter_map(|case| {
             let settings = SamplerSettings { cap: 1 << 18, ..SamplerSettings::default() };
             let reference = Sampler::new(case, settings).unwrap().run();
-            matches!(reference.soundness, Soundness::Disputed | Soundness::Refused)
-                .then(|| format!("{}: {:?}", case.id(), reference.reason))
+            let right = if case.id().starts_with("alongside-") {
+                matches!(reference.soundness, Soundness::Refused | Soundness::HeavyTailed)
+            } else {
+                !matches!(reference.soundness, Soundness::Disputed | Soundness::Refused)
+            };
+            (!right).then(|| format!("{}: {:?}, {:?}", case.id(), reference.soundness, reference.reason))
         })
         .collect();
     assert!(bad.is_empty(), "{bad:#?}");

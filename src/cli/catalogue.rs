@@ -1,7 +1,8 @@
 use std::io::Write;
 
+use anyhow::anyhow;
 use clap::{Args, ValueEnum};
-use gaussworthy::report::{method_table, score_table, sensor_table};
+use gaussworthy::report::{method_page, method_table, score_table, sensor_page, sensor_table};
 
 use super::Failure;
 use super::stdout::Stdout;
@@ -11,6 +12,9 @@ pub struct Arguments {
     /// What to list; everything unless told
     #[arg(value_enum)]
     shelf: Option<Shelf>,
+
+    /// One sensor or method, to be shown whole
+    name: Option<String>,
 }
 
 #[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
@@ -22,6 +26,11 @@ enum Shelf {
 
 pub fn run(arguments: &Arguments) -> Result<(), Failure> {
     let mut out = Stdout::new();
+    if let (Some(shelf), Some(name)) = (arguments.shelf, &arguments.name) {
+        let page = page(shelf, name).map_err(|message| Failure::Input(anyhow!(message)))?;
+        writeln!(out, "{page}")?;
+        return Ok(());
+    }
     let shelves = [
         (Shelf::Sensors, sensor_table as fn() -> String),
         (Shelf::Methods, method_table),
@@ -35,4 +44,12 @@ pub fn run(arguments: &Arguments) -> Result<(), Failure> {
         }
     }
     Ok(())
+}
+
+fn page(shelf: Shelf, name: &str) -> Result<String, String> {
+    match shelf {
+        Shelf::Sensors => sensor_page(name),
+        Shelf::Methods => method_page(name),
+        Shelf::Scores => Err(format!("`catalogue scores` shows every score whole; leave out `{name}`")),
+    }
 }

@@ -1,24 +1,85 @@
 use comfy_table::Table;
 
-use super::table::{lines, plain_table, wrapped};
+use super::table::{labelled, lines, plain_table, wrapped};
 use crate::score::ScoreKind;
+use crate::sensor::Output;
+use crate::suite::Case;
+use crate::wording::unknown_name;
 use crate::{method, sensor};
 
-/// The built-in sensors: name, measurement function, parameters, source.
+/// The built-in sensors: name, what each measures, the outputs of its example.
 pub fn sensor_table() -> String {
-    let mut table = plain_table(&["sensor", "measures", "formula", "parameters", "source"], 0..0);
+    let mut table = plain_table(&["sensor", "measures", "outputs"], 0..0);
     for kind in sensor::KINDS {
-        table.add_row([kind.name, kind.summary, kind.formula, kind.parameters, kind.source]);
+        table.add_row([kind.name, kind.summary, &outputs(&example(kind))]);
     }
     with_legend(
         &table,
         &[
-            "x: the state, n components, counted from 0; (x, y) its planar position; (sx, sy) a station; p: number \
-             of outputs; y_j, theta_j: output j; ': transposed.",
-            "n x n and the like: rows x columns, a list of rows. A value after = is the default.",
-            "[rad, angular]: counter-clockwise from the x axis, on the circle, so that -pi and +pi are the same.",
+            "outputs: of the example. [rad, angular]: counter-clockwise from the x axis, on the circle, so that -pi and \
+             +pi are the same. No brackets: no unit of its own.",
+            "`catalogue sensors NAME` shows all of one: formula, parameters, source, and a case to start from.",
         ],
     )
+}
+
+/// All about one sensor: formula, parameters, outputs, components read, source, and an example case record alone on its
+/// line.
+///
+/// # Errors
+/// What to say where no sensor has this name.
+pub fn sensor_page(name: &str) -> Result<String, String> {
+    let Some(kind) = sensor::KINDS.iter().find(|kind| kind.name == name) else {
+        let names: Vec<_> = sensor::KINDS.iter().map(|kind| kind.name).collect();
+        return Err(unknown_name("sensor", name, &names));
+    };
+    let case = example(kind);
+    let components: Vec<_> = case.sensor().reads().iter().map(usize::to_string).collect();
+    let mut facts = vec![
+        ("measures", kind.summary.into()),
+        ("formula", kind.formula.into()),
+        ("parameters", kind.parameters.into()),
+    ];
+    if !kind.quantities.is_empty() {
+        let quantities: Vec<_> = kind.quantities.iter().map(|(key, unit)| format!("{key} in {unit}")).collect();
+        facts.push(("units", format!("{}; in a suite also as text with another unit", quantities.join(", "))));
+    }
+    facts.extend([
+        ("outputs", outputs(&case)),
+        ("reads", format!("components {} of {} in the example", components.join(", "), case.prior().dimension())),
+        ("source", kind.source.into()),
+    ]);
+    let mut page = format!("{}\n{}", kind.name, labelled(&facts));
+    for paragraph in SENSOR_LEGEND {
+        page.push_str(&format!("\n\n{}", wrapped(paragraph, 2)));
+    }
+    let how = "A case to start from, one line of a file for `survey --cases FILE`:";
+    page.push_str(&format!("\n\n{}\n{}", wrapped(how, 2), kind.example));
+    Ok(page)
+}
+
+/// What the symbols of the sensors' formulas mean.
+const SENSOR_LEGEND: [&str; 1] = [
+    "x: the state, n components, counted from 0; (x, y), (x, y, z) its position; (sx, sy) a station; p: number of outputs; \
+     y_j, theta_j: output j; ': transposed. n x n and the like: rows x columns, a list of rows. A value after = is the \
+     default. [rad, angular]: counter-clockwise from the x axis, on the circle.",
+];
+
+/// The case that a sensor offers to start from.
+fn example(kind: &sensor::Kind) -> Case {
+    let record = serde_json::from_str(kind.example).map_err(|e| e.to_string());
+    let case = record.and_then(|record| Case::from_json(record).map_err(|e| e.to_string()));
+    case.unwrap_or_else(|e| unreachable!("a test holds that every example is a case: {}: {e}", kind.name))
+}
+
+/// `range [m], bearing [rad, angular]`.
+fn outputs(case: &Case) -> String {
+    let one = |output: &Output| match (output.unit.as_ref(), output.angular) {
+        ("", _) => output.name.clone(),
+        (unit, false) => format!("{} [{unit}]", output.name),
+        (unit, true) => format!("{} [{unit}, angular]", output.name),
+    };
+    case.sensor().outputs().iter().map(one).collect::<Vec<_>>().join(", ")
 }
 
 /// The methods: id, published name, parameters, evaluations in the number a of read components, source.
@@ -35,6 +96,24 @@ pub fn method_table() -> String {
              gauss-hermite:order=5.",
         ],
     )
+}
+
+/// All about one method, by its id without parameters.
+///
+/// # Errors
+/// What to say where no method has this id.
+pub fn method_page(id: &str) -> Result<String, String> {
+    let Some(kind) = method::KINDS.iter().find(|kind| kind.id == id) else {
+        let ids: Vec<_> = method::KINDS.iter().map(|kind| kind.id).collect();
+        return Err(unknown_name("method", id, &ids));
+    };
+    let facts = [
+        ("published as", kind.name.into()),
+        ("parameters", kind.parameters.into()),
+        ("evaluations", format!("{}, a the number of state components that the sensor reads", kind.evaluations)),
+        ("source", kind.source.into()),
+    ];
+    Ok(format!("{}\n{}", kind.id, labelled(&facts)))
 }
 
 /// The scores: name, formula, unit, how it reads.

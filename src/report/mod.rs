@@ -10,7 +10,7 @@ mod scores_csv;
 mod table;
 
 pub use crate::wording::printable;
-pub use catalogue::{method_table, score_table, sensor_table};
+pub use catalogue::{method_page, method_table, score_table, sensor_page, sensor_table};
 pub use folder::{FolderError, ResultsFolder};
 pub use merge::{MergeError, Merged, merge};
 pub use table::{CAUTION, write_summary};

@@ -174,6 +174,20 @@ pub(super) fn wrapped(text: &str, indent: u16) -> String {
     lines(&table)
 }
 
+/// Facts, each behind its label, that keep to [`WIDTH`] columns, indented.
+pub(super) fn labelled(facts: &[(&str, String)]) -> String {
+    let mut table = Table::new();
+    table.load_style(presets::NOTHING).set_width(WIDTH).set_content_arrangement(ContentArrangement::Dynamic);
+    for (label, fact) in facts {
+        table.add_row([label, fact.as_str()]);
+    }
+    for column in table.column_iter_mut() {
+        column.set_padding((2, 0));
+    }
+    keep_whole(&mut table, 0..1);
+    lines(&table)
+}
+
 /// The table without the blanks that end its lines.
 pub(super) fn lines(table: &Table) -> String {
     table.trim_fmt()

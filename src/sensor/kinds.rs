@@ -4,9 +4,13 @@ use serde::Serialize;
 use serde::de::DeserializeOwned;
 use serde_json::{Map, Value};
 
-use crate::wording::{plain, proposal};
+use crate::wording::{plain, unknown_name};
 
-use super::{ParameterError, Sensor, bearing_only, linear, quadratic, range_bearing, written};
+use super::{
+    ParameterError, Sensor, attitude_vector, bearing_only, dipole_field, exponential_decay, line_feature,
+    line_offset, linear, phase_sine, pinhole, polar_to_cartesian, quadratic, range_bearing, saturating,
+    stereo_disparity, written,
+};
 
 /// A sensor that a suite or a case record can name.
 #[derive(Debug, Clone, Copy)]
@@ -32,7 +36,23 @@ pub struct Kind {
 pub(super) type Built = (Map<String, Value>, Arc<dyn Sensor>);
 
 /// Every built-in sensor. A new one is one line here.
-pub const KINDS: &[Kind] = &[range_bearing::KIND, bearing_only::KIND, quadratic::KIND, linear::KIND, written::KIND];
+pub const KINDS: &[Kind] = &[
+    range_bearing::KIND,
+    bearing_only::KIND,
+    polar_to_cartesian::KIND,
+    line_offset::KIND,
+    line_feature::KIND,
+    pinhole::KIND,
+    stereo_disparity::KIND,
+    attitude_vector::KIND,
+    dipole_field::KIND,
+    exponential_decay::KIND,
+    saturating::KIND,
+    phase_sine::KIND,
+    quadratic::KIND,
+    linear::KIND,
+    written::KIND,
+];
 
 /// Why a sensor could not be made from what a suite or a case record says.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
@@ -77,8 +97,8 @@ impl SensorSpec {
             None => return Err(error("", format!("`kind` is missing; give one of {}", names()))),
         };
         let kind = KINDS.iter().find(|k| k.name == kind).ok_or_else(|| {
-            let near = proposal(&kind, KINDS.iter().map(|k| k.name));
-            error("kind", format!("there is no sensor `{kind}`; {near}give one of {}", names()))
+            let names: Vec<_> = KINDS.iter().map(|k| k.name).collect();
+            error("kind", unknown_name("sensor", &kind, &names))
         })?;
         let (parameters, sensor) = (kind.build)(described, n)?;
         Ok(Self { kind: kind.name, parameters, state_dimension: n, sensor })

@@ -34,3 +34,41 @@ pub(super) fn checked_row(key: &str, row: &[f64], length: usize) -> Result<(), P
         None => Ok(()),
     }
 }
+
+/// Checks that a parameter is a finite number.
+pub(super) fn finite(key: &str, value: f64) -> Result<(), ParameterError> {
+    if value.is_finite() {
+        Ok(())
+    } else {
+        Err(ParameterError::new(key, format!("{value} is not a finite number")))
+    }
+}
+
+/// Checks that a parameter is a finite number above 0.
+pub(super) fn above_zero(key: &str, value: f64) -> Result<(), ParameterError> {
+    if value.is_finite() && value > 0.0 {
+        Ok(())
+    } else {
+        Err(ParameterError::new(key, format!("{value} is not a finite number above 0")))
+    }
+}
+
+/// Checks that a component lies in a state of `n`.
+pub(super) fn checked_component(key: &str, component: usize, n: usize) -> Result<(), ParameterError> {
+    if component < n {
+        return Ok(());
+    }
+    let message = format!("{component} is outside the state, which has {n} components counted from 0");
+    Err(ParameterError::new(key, message))
+}
+
+/// Checks that components lie in a state of `n` and that none stands twice.
+pub(super) fn checked_components(key: &str, components: &[usize], n: usize) -> Result<(), ParameterError> {
+    for (k, &component) in components.iter().enumerate() {
+        checked_component(&format!("{key}[{k}]"), component, n)?;
+        if components[..k].contains(&component) {
+            return Err(ParameterError::new(key, format!("names component {component} twice")));
+        }
+    }
+    Ok(())
+}

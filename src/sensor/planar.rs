@@ -1,5 +1,6 @@
 use serde::{Deserialize, Serialize};
 
+use super::parameter::checked_components;
 use super::{Number, Output, ParameterError};
 
 /// Stations in the plane and where the position that they see stands in the state: what all sensors of a planar
@@ -39,7 +40,7 @@ impl Parameters {
 }
 
 /// Where a planar position stands in a state when nothing is said: its first two components.
-fn default_position() -> [usize; 2] {
+pub(super) fn default_position() -> [usize; 2] {
     [0, 1]
 }
 
@@ -59,15 +60,7 @@ impl Lookout {
                 return Err(ParameterError::new(key, format!("{} is not a coordinate", station[k])));
             }
         }
-        if let Some(k) = (0..2).find(|&k| position[k] >= n) {
-            return Err(ParameterError::new(
-                format!("position[{k}]"),
-                format!("{} is outside the state, which has {n} components counted from 0", position[k]),
-            ));
-        }
-        if position[0] == position[1] {
-            return Err(ParameterError::new("position", format!("names component {} twice", position[0])));
-        }
+        checked_components("position", &position, n)?;
         Ok(Self { stations, position })
     }
 

@@ -30,6 +30,26 @@ pub(super) const ALL: &[Bundled] = &[
         text: include_str!("../../suites/power-meter.toml"),
     },
     Bundled {
+        name: "leading-lights",
+        summary: "Leading lights of Brackmoor Sound: offsets from lines known and mapped, directions through attitude errors",
+        text: include_str!("../../suites/leading-lights.toml"),
+    },
+    Bundled {
+        name: "tide-gauges",
+        summary: "Tide gauges of Brackmoor Sound: light by depth, tide by the hour, meters at their limits, plots by range and bearing",
+        text: include_str!("../../suites/tide-gauges.toml"),
+    },
+    Bundled {
+        name: "quay-cameras",
+        summary: "Quay cameras of Brackmoor Sound: image points and disparities, from far off to the lens itself",
+        text: include_str!("../../suites/quay-cameras.toml"),
+    },
+    Bundled {
+        name: "hull-watch",
+        summary: "Hull watch of Brackmoor Sound: field strength of steel hulls, from far off to alongside",
+        text: include_str!("../../suites/hull-watch.toml"),
+    },
+    Bundled {
         name: "smoke",
         summary: "A few cases of every sensor, measured in seconds",
         text: include_str!("../../suites/smoke.toml"),

@@ -1,4 +1,4 @@
-//! The `[sensor]` section: `kind` and parameters; lengths may carry units.
+//! The `[sensor]` section: `kind` and parameters; lengths and angles may carry units.
 
 use super::SuiteError;
 use super::node::{Item, Node};
@@ -14,11 +14,10 @@ pub(super) fn read(section: &Node, n: usize) -> Result<SensorSpec, SuiteError> {
         .entries()?
         .iter()
         .map(|(name, node)| {
-            let is_quantity = quantities.iter().any(|(key, _)| key == name);
-            let node = match name.as_str() {
-                "parameters" if written => in_base_units(node)?,
-                _ if is_quantity => in_metres(node)?,
-                _ => node.clone(),
+            let node = match quantities.iter().find(|(key, _)| key == name) {
+                Some(&(_, unit)) => in_base_unit(node, if unit == "rad" { Wanted::Angle } else { Wanted::Length })?,
+                None if written && name == "parameters" => in_base_units(node)?,
+                None => node.clone(),
             };
             Ok((name.clone(), node))
         })
@@ -45,10 +44,12 @@ fn in_base_units(node: &Node) -> Result<Node, SuiteError> {
     Ok(Node { place: node.place.clone(), item })
 }
 
-fn in_metres(node: &Node) -> Result<Node, SuiteError> {
+fn in_base_unit(node: &Node, wanted: Wanted) -> Result<Node, SuiteError> {
     let item = match &node.item {
-        Item::List(list) => Item::List(list.iter().map(in_metres).collect::<Result<_, _>>()?),
-        Item::Text(_) | Item::Quantity(_) => Quantity { value: Wanted::Length.read(node)?, dimension: None }.item(),
+        Item::List(list) => {
+            Item::List(list.iter().map(|entry| in_base_unit(entry, wanted)).collect::<Result<_, _>>()?)
+        }
+        Item::Text(_) | Item::Quantity(_) => Quantity { value: wanted.read(node)?, dimension: None }.item(),
         other => other.clone(),
     };
     Ok(Node { place: node.place.clone(), item })

@@ -3,6 +3,7 @@
 use gaussworthy::score::ScoreKind;
 use gaussworthy::{method, sensor};
 
+use crate::contract::{CaseRecord, MomentsRecord};
 use crate::desk::{Desk, assert_narrow};
 
 #[test]
@@ -35,7 +36,7 @@ fn everything_that_can_be_named_is_listed() {
 fn symbols_are_explained_below_the_tables() {
     let desk = Desk::new();
     for (shelf, symbols) in [
-        ("sensors", &["x:", "p:", "':", "rows x columns"][..]),
+        ("sensors", &["outputs:", "[rad, angular]:", "`catalogue sensors NAME` shows all"][..]),
         ("methods", &["a:", "evaluations:", "default"]),
         ("scores", &["n:", "p:", "mu, S, C:", "P:", "R:", "A hat", "b =", "O:", "B:", "K:", "M:", "nats:", "tr:"]),
     ] {
@@ -44,5 +45,103 @@ fn symbols_are_explained_below_the_tables() {
         for symbol in symbols {
             assert!(legend.contains(symbol), "{shelf} does not say what {symbol} is: {legend}");
         }
+    }
+}
+
+/// One sensor whole: everything that its entry in the list holds, its symbols, and a line that is its example.
+#[test]
+fn a_sensor_is_shown_whole() {
+    let desk = Desk::new();
+    for kind in sensor::KINDS {
+        let page = desk.succeed(&["catalogue", "sensors", kind.name]);
+        let (text, example) = page.trim_end().rsplit_once('\n').unwrap();
+        assert_eq!(example, kind.example);
+        assert_narrow(text);
+        assert_eq!(text.lines().next(), Some(kind.name));
+        let flat = text.split_whitespace().collect::<Vec<_>>().join(" ");
+        for fact in [kind.summary, kind.formula, kind.parameters, kind.source] {
+            assert!(flat.contains(fact), "{fact} is missing in {page}");
+        }
+        for (key, unit) in kind.quantities {
+            assert!(flat.contains(&format!("{key} in {unit}")), "{key} is missing in {page}");
+        }
+        for symbol in ["x:", "p:", "':", "rows x columns", "[rad, angular]:"] {
+            assert!(flat.contains(symbol), "{} does not say what {symbol} is: {page}", kind.name);
+        }
+    }
+    for (name, outputs, reads) in [
+        ("range-bearing", "outputs range [m], bearing [rad, angular] reads", "reads components 0, 1 of 2"),
+        (
+            "stereo-disparity",
+            "outputs u [pixel], v [pixel], disparity [pixel] reads",
+            "reads components 0, 1, 2 of 3",
+        ),
+        ("attitude-vector", "outputs direction x, direction y, direction z reads", "reads components 0, 1, 2 of 3"),
+        ("line-feature", "outputs offset [m] reads", "reads components 0, 1, 2, 3 of 4"),
+    ] {
+        let page = desk.succeed(&["catalogue", "sensors", name]);
+        let flat = page.split_whitespace().collect::<Vec<_>>().join(" ");
+        assert!(flat.contains(outputs) && flat.contains(reads), "{page}");
+    }
+}
+
+#[test]
+fn a_method_is_shown_whole() {
+    let desk = Desk::new();
+    for kind in method::KINDS {
+        let page = desk.succeed(&["catalogue", "methods", kind.id]);
+        assert_narrow(&page);
+        assert_eq!(page.lines().next(), Some(kind.id));
+        let flat = page.split_whitespace().collect::<Vec<_>>().join(" ");
+        for fact in [kind.name, kind.parameters, kind.evaluations, kind.source] {
+            assert!(flat.contains(fact), "{fact} is missing in {page}");
+        }
+    }
+}
+
+#[test]
+fn a_name_that_is_not_there_is_answered_with_the_nearest() {
+    let desk = Desk::new();
+    for (shelf, name, start, end) in [
+        (
+            "sensors",
+            "pinhoel",
+            "there is no sensor `pinhoel`; did you mean `pinhole`? give one of range-bearing, ",
+            "linear",
+        ),
+        ("sensors", "", "there is no sensor ``; give one of range-bearing, ", "linear"),
+        ("sensors", "taylor-1", "there is no sensor `taylor-1`; give one of range-bearing, ", "linear"),
+        (
+            "methods",
+            "tailor-1",
+            "there is no method `tailor-1`; did you mean `taylor-1`? give one of taylor-1, ",
+            "gauss-hermite",
+        ),
+        ("scores", "floor", "`catalogue scores` shows every score whole; ", "leave out `floor`"),
+    ] {
+        let said = desk.refuse(&["catalogue", shelf, name]);
+        assert!(said.starts_with(start) && said.ends_with(end), "{said}");
+    }
+}
+
+/// What is printed to start from does start: every example, pasted into one file, is surveyed.
+#[test]
+fn every_example_can_be_pasted_and_surveyed() {
+    let desk = Desk::new();
+    let examples: Vec<String> = sensor::KINDS
+        .iter()
+        .map(|kind| {
+            let page = desk.succeed(&["catalogue", "sensors", kind.name]);
+            page.lines().find(|line| line.starts_with('{')).unwrap().to_string()
+        })
+        .collect();
+    desk.write("pasted.jsonl", &(examples.join("\n") + "\n"));
+    let survey = ["survey", "--cases", "pasted.jsonl", "--cap", "8192", "--no-timing", "--out", "found"];
+    desk.succeed(&survey);
+    let cases: Vec<CaseRecord> = desk.lines("found/pasted/cases.jsonl");
+    let references: Vec<MomentsRecord> = desk.lines("found/pasted/references.jsonl");
+    assert_eq!((cases.len(), references.len()), (sensor::KINDS.len(), sensor::KINDS.len()));
+    for reference in &references {
+        assert!(reference.mean.iter().all(Option::is_some), "{reference:?}");
     }
 }

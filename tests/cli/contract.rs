@@ -41,6 +41,61 @@ pub enum Sensor {
         h: Matrix,
         offset: Option<Vec<f64>>,
     },
+    PolarToCartesian {
+        range: usize,
+        bearing: usize,
+    },
+    LineOffset {
+        through: [[f64; 2]; 2],
+        position: [usize; 2],
+    },
+    LineFeature {
+        position: [usize; 2],
+        line: [usize; 2],
+    },
+    Pinhole {
+        focal_length: f64,
+        centre: [f64; 2],
+        position: [usize; 3],
+    },
+    StereoDisparity {
+        focal_length: f64,
+        baseline: f64,
+        centre: [f64; 2],
+        position: [usize; 3],
+    },
+    AttitudeVector {
+        direction: [f64; 3],
+        attitude: [usize; 3],
+    },
+    DipoleField {
+        moment: [f64; 3],
+        place: [f64; 3],
+        background: [f64; 3],
+        position: [usize; 3],
+    },
+    ExponentialDecay {
+        amplitude: f64,
+        scale: f64,
+        offset: f64,
+        component: usize,
+        unit: String,
+    },
+    Saturating {
+        limit: f64,
+        gain: f64,
+        offset: f64,
+        component: usize,
+        unit: String,
+    },
+    PhaseSine {
+        amplitude: f64,
+        frequency: f64,
+        phase: f64,
+        offset: f64,
+        component: usize,
+        unit: String,
+    },
 }
 
 impl Sensor {
@@ -51,16 +106,20 @@ impl Sensor {
             Self::BearingOnly { stations, .. } => stations.as_ref().map_or(1, Vec::len),
             Self::Quadratic { a, .. } => a.len(),
             Self::Linear { h, .. } => h.len(),
+            Self::PolarToCartesian { .. } | Self::Pinhole { .. } => 2,
+            Self::StereoDisparity { .. } | Self::AttitudeVector { .. } => 3,
+            Self::LineOffset { .. } | Self::LineFeature { .. } | Self::DipoleField { .. } => 1,
+            Self::ExponentialDecay { .. } | Self::Saturating { .. } | Self::PhaseSine { .. } => 1,
         }
     }
 
     pub fn is_linear(&self) -> bool {
-        matches!(self, Self::Linear { .. })
+        matches!(self, Self::Linear { .. } | Self::LineOffset { .. })
     }
 
     /// Whether control variates of degree four leave nothing of its moments to chance.
     pub fn is_polynomial(&self) -> bool {
-        matches!(self, Self::Linear { .. } | Self::Quadratic { .. })
+        self.is_linear() || matches!(self, Self::Quadratic { .. })
     }
 }
 

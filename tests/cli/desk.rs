@@ -25,6 +25,11 @@ pub struct Outcome {
     pub err: String,
 }
 
+/// How many cases the bundled suite `smoke` has.
+pub fn smoke_cases() -> usize {
+    gaussworthy::suite::Suite::load("smoke", None).unwrap().cases.len()
+}
+
 impl Desk {
     pub fn new() -> Self {
         Self(tempfile::tempdir().unwrap())

@@ -7,7 +7,7 @@ use std::process::Stdio;
 use serde_json::Value;
 
 use crate::contract::Manifest;
-use crate::desk::{Desk, FILES, assert_same, names};
+use crate::desk::{Desk, FILES, assert_same, names, smoke_cases};
 
 fn part(desk: &Desk, shard: &str, out: &str, more: &[&str]) {
     desk.succeed(&[&["survey", "smoke", "--shard", shard, "--out", out], more].concat());
@@ -32,15 +32,18 @@ fn joined_parts_are_the_files_of_a_single_run() {
             part(&desk, &format!("{}/{of}", k + 1), out, &["--store", "kept"]);
             let found: Manifest = serde_json::from_value(manifest(&desk, &format!("{out}/smoke"))).unwrap();
             let shard = found.shard.unwrap();
-            assert_eq!((shard.part, shard.of, shard.suite_cases), (k + 1, of, 12));
-            let share = (k..12).step_by(of).count();
+            assert_eq!((shard.part, shard.of, shard.suite_cases), (k + 1, of, smoke_cases()));
+            let share = (k..smoke_cases()).step_by(of).count();
             assert_eq!((found.cases.asked, found.cases.finished, found.cases.complete), (share, share, true));
             assert_eq!(desk.read(&format!("{out}/smoke/cases.jsonl")).lines().count(), share);
         }
         // In any order.
         let parts: Vec<&str> = outs.iter().rev().map(String::as_str).collect();
         let said = desk.succeed(&merge(&parts));
-        assert!(said.starts_with(&format!("smoke: 12 cases of {of} parts, written to merged")), "{said}");
+        assert!(
+            said.starts_with(&format!("smoke: {} cases of {of} parts, written to merged", smoke_cases())),
+            "{said}"
+        );
         assert_same(&desk, "single/smoke", "merged/smoke");
         assert_eq!(names(&desk.path("merged")), ["smoke"]);
         assert_eq!(names(&desk.path("merged/smoke")), FILES);
@@ -187,7 +190,8 @@ fn shared_replicates_give_the_files_of_a_single_run() {
     for k in 1..=3 {
         let share = format!("{k}/3");
         let said = desk.succeed(&[&["survey", "--replicates", &share, "--store", "kept"], &deep[..]].concat());
-        assert_eq!(said, format!("smoke: part {k}/3 of the replicates is sampled in 12 of 12 cases\n"));
+        let all = smoke_cases();
+        assert_eq!(said, format!("smoke: part {k}/3 of the replicates is sampled in {all} of {all} cases\n"));
         assert_eq!(names(&desk.path("")), ["kept", "single"], "nothing is judged, no results are written");
     }
     assert!(names(&desk.path("kept")).iter().all(|name| name.ends_with(".shares")));

@@ -8,6 +8,7 @@ use rand::RngExt;
 use rand_pcg::Pcg64;
 use serde_json::{Value, json};
 
+use super::analytic::{Analytic, analytic};
 use super::random;
 
 /// A sensor to try.
@@ -25,6 +26,8 @@ enum Shape {
     Planar(Vec<[f64; 2]>),
     /// Second degree, coefficients of order one.
     Polynomial,
+    /// Anything else, by its size in the complex plane.
+    Analytic(Analytic),
 }
 
 /// Bounds on one output near a point, in a ball of radius `step`.
@@ -60,6 +63,7 @@ impl Trial {
                 vec![sx + range * direction.cos(), sy + range * direction.sin()]
             }
             Shape::Polynomial => random::normal_vector(a, rng).iter().map(|z| 10.0 * z).collect(),
+            Shape::Analytic(analytic) => (analytic.point)(rng),
         }
     }
 
@@ -67,7 +71,7 @@ impl Trial {
     ///
     /// A bearing is the imaginary part of ln z: its k-th derivatives are at most (k-1)! / r^k. A range is
     /// homogeneous of degree one: its third and fourth derivatives are at most 3 / r^2 and 15 / r^3. A
-    /// polynomial of second degree has none, and rounds once a term.
+    /// polynomial of second degree has none, and rounds once a term. Of an analytic function see [`Analytic::bend`].
     pub fn bend(&self, x: &[f64], j: usize) -> Bend {
         match &self.shape {
             Shape::Planar(stations) => {
@@ -91,6 +95,7 @@ impl Trial {
                 let value = largest * (a * a * reach * reach + a * reach + 1.0) * a;
                 Bend { step, value, slope: largest * (2.0 * a * reach + 1.0) * a, third: 0.0, fourth: 0.0 }
             }
+            Shape::Analytic(analytic) => analytic.bend(x),
         }
     }
 }
@@ -116,6 +121,10 @@ pub fn trials() -> Vec<Trial> {
             trials.push(linear(n, p, &mut rng));
         }
     }
+    let line = json!({"kind": "line-offset", "through": [[1, 2], [4, -2]], "position": [2, 0]});
+    trials.push(Trial::new(line, 3, Shape::Polynomial));
+    let others = analytic().into_iter();
+    trials.extend(others.map(|(described, n, shape)| Trial::new(described, n, Shape::Analytic(shape))));
     trials
 }
 

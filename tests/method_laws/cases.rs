@@ -53,6 +53,16 @@ pub fn moments(method: &MethodSpec, sensor: &dyn Sensor, prior: &Gaussian, noise
 /// One sensor of every kind at least, each reading all components of its prior.
 pub fn sensors() -> Vec<(SensorSpec, Gaussian)> {
     let planar = || law(&[30.0, 10.0], &[&[5.0, 1.0], &[-0.5, 2.0]]);
+    let space = || law(&[3.0, -2.0, 40.0], &[&[1.0, 0.2, 0.0], &[0.3, 1.5, 0.0], &[-0.5, 0.4, 2.0]]);
+    let small = || law(&[0.1, -0.2, 0.3], &[&[0.2, 0.0, 0.0], &[0.05, 0.1, 0.0], &[-0.1, 0.02, 0.3]]);
+    let single = || law(&[1.5], &[&[0.7]]);
+    let polar = || law(&[30.0, 0.5], &[&[2.0, 0.0], &[0.05, 0.2]]);
+    let wall = || {
+        law(
+            &[30.0, 10.0, 25.0, 0.6],
+            &[&[2.0, 0.0, 0.0, 0.0], &[0.5, 1.5, 0.0, 0.0], &[0.2, 0.1, 0.5, 0.0], &[0.01, -0.02, 0.0, 0.2]],
+        )
+    };
     let described = [
         (json!({"kind": "range-bearing", "station": [2.0, -1.0]}), planar()),
         (json!({"kind": "bearing-only", "station": [2.0, -1.0]}), planar()),
@@ -68,6 +78,19 @@ pub fn sensors() -> Vec<(SensorSpec, Gaussian)> {
                 {"name": "bearing", "formula": "atan2(y + 1, x - 2)", "angular": true}]}),
             planar(),
         ),
+        (json!({"kind": "polar-to-cartesian"}), polar()),
+        (json!({"kind": "line-offset", "through": [[0, 0], [900, 300]]}), planar()),
+        (json!({"kind": "line-feature"}), wall()),
+        (json!({"kind": "pinhole", "focal_length": 800, "centre": [640, 360]}), space()),
+        (json!({"kind": "stereo-disparity", "focal_length": 800, "baseline": 0.6}), space()),
+        (json!({"kind": "attitude-vector", "direction": [0.5, 0.2, 0.8]}), small()),
+        (
+            json!({"kind": "dipole-field", "moment": [2e4, 5e3, -4e4], "place": [0, 0, -8], "background": [18e3, 1e3, -45e3]}),
+            space(),
+        ),
+        (json!({"kind": "exponential-decay", "amplitude": 900, "scale": 3.5}), single()),
+        (json!({"kind": "saturating", "limit": 2}), single()),
+        (json!({"kind": "phase-sine", "amplitude": 1.8, "frequency": 0.5, "offset": 3}), single()),
     ];
     for kind in KINDS {
         assert!(described.iter().any(|(d, _)| d["kind"] == kind.name), "no law is tried on sensor {}", kind.name);
