@@ -40,9 +40,27 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         let prior = if from.is_empty() { format!("{flat}\n{to}") } else { flat.replacen(from, to, 1) };
         with("mean = [3000, 400]\ncovariance = [[900, 0], [0, 400]]", &prior)
     };
+    let space = |from: &str, to: &str| planar("", &"elevation = \"8 deg\"\nup_sd = \"5 m\"".replacen(from, to, 1));
+    // Away from the planar sensor, to one that reads the three components.
+    let unbound = |text: String| {
+        text.replace(
+            "kind = \"range-bearing\"\nstation = [0, 0]\n[prior]",
+            "kind = \"linear\"\nH = [[1, 1, 1]]\n[prior]\nseen_from = [0, 0, 0]",
+        )
+    };
+    let framed = |covariance: &str| {
+        planar("along_sd = \"20 m\"\nacross_sd = \"3 deg\"", &format!("frame_covariance = {covariance}"))
+    };
+    let moving = |from: &str, to: &str| {
+        let velocity = "speed = \"8 kn\"\ncourse = \"200 deg\"\nspeed_sd = \"10 %\"\ncourse_sd = \"5 deg\"";
+        planar("", &if from.is_empty() { format!("{velocity}\n{to}") } else { velocity.replacen(from, to, 1) })
+    };
     let spread = |sd: &str| with("covariance = [[900, 0], [0, 400]]", sd);
     const FORMS: &str = "give exactly one form: `mean` and `covariance`; `mean` and `sd`, perhaps `correlation`; \
-        or `range`, `bearing`, `along_sd` and `across_sd`, perhaps `seen_from`, `rest_mean` and `rest_sd`";
+        or `range`, `bearing`, `along_sd` and `across_sd`, perhaps `elevation` and `up_sd`, `speed` and `course`, \
+        `seen_from`, `rest_mean` and `rest_sd`";
+    const UNITS: &str = "a length in m, km, cm, mm; an angle in deg, rad, mrad; a time in s, ms, us, ns, min, h; \
+        a speed in m/s, km/h, kn; an angular rate in deg/s, rad/s; a frequency in Hz, kHz, MHz, GHz; a share in %";
     let forms = |start: &str| format!("{start}; {FORMS}");
     let table: Vec<(String, String)> = [
         // The file as a whole.
@@ -53,7 +71,7 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (with("", "[prior]\n"), "x.toml:10: is not TOML: duplicate key".into()),
         // Unknown keys, with the nearest known one.
         (with("[noise]", "[nosie]"), "x.toml:8: nosie: unknown key `nosie`; did you mean `noise`? allowed: title, note, seed, precision, cap, draws, limits, method, family, sensor, prior, noise".into()),
-        (with("covariance", "covarience"), "x.toml:7: prior.covarience: unknown key `covarience`; did you mean `covariance`? allowed: mean, covariance, sd, correlation, range, bearing, along_sd, across_sd, seen_from, rest_mean, rest_sd".into()),
+        (with("covariance", "covarience"), "x.toml:7: prior.covarience: unknown key `covarience`; did you mean `covariance`? allowed: mean, covariance, sd, correlation, frame_bearing, frame_elevation, range, bearing, elevation, along_sd, across_sd, up_sd, frame_covariance, seen_from, speed, speed_sd, course, course_sd, climb, climb_sd, rest_mean, rest_sd".into()),
         (with("station =", "statoin ="), "x.toml:4: sensor.statoin: unknown key `statoin`; did you mean `station`? allowed: station, stations, position".into()),
         (with("sd =", "std ="), "x.toml:9: noise.std: unknown key `std`; did you mean `sd`? allowed: sd, covariance".into()),
         (with("", "[[family]]\nname = \"a\"\nnotes = 1\n"), "x.toml:12: family[0].notes: unknown key `notes`; did you mean `noise`? allowed: name, draws, sensor, prior, noise".into()),
@@ -87,8 +105,8 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (spread("sd = [30, 20]\ncorrelation = [[1, 0.5], [0.5, 2]]"), "x.toml:8: prior.correlation[1][1]: is 2; a correlation matrix has 1 here".into()),
         (planar("bearing = \"30 deg\"", "bearing = 30"), "x.toml:7: prior.bearing: 30 has no unit; an angle needs one: \"30 deg\" or \"30 rad\"".into()),
         (planar("range = \"2 km\"", "range = \"3 deg\""), "x.toml:6: prior.range: \"3 deg\" is an angle; a length is needed: m, km, cm, mm".into()),
-        (planar("range = \"2 km\"", "range = \"2 furlong\""), "x.toml:6: prior.range: there is no unit `furlong` (\"2 furlong\"); give a length in m, km, cm, mm; an angle in deg, rad, mrad; a share in %".into()),
-        (planar("range = \"2 km\"", "range = \"far\""), "x.toml:6: prior.range: \"far\" is not a quantity; give a number and a unit: a length in m, km, cm, mm; an angle in deg, rad, mrad; a share in %".into()),
+        (planar("range = \"2 km\"", "range = \"2 furlong\""), format!("x.toml:6: prior.range: there is no unit `furlong` (\"2 furlong\"); give {UNITS}")),
+        (planar("range = \"2 km\"", "range = \"far\""), format!("x.toml:6: prior.range: \"far\" is not a quantity; give a number and a unit: {UNITS}")),
         (planar("range = \"2 km\"", "range = 0"), "x.toml:6: prior.range: 0 is not above 0, as a range is".into()),
         (planar("along_sd = \"20 m\"", "along_sd = \"2 deg\""), "x.toml:8: prior.along_sd: \"2 deg\" is an angle; along the line of sight give a length or a share".into()),
         (planar("across_sd = \"3 deg\"", "across_sd = \"-3 deg\""), "x.toml:9: prior.across_sd: \"-3 deg\" is below 0; a standard deviation is 0 or above".into()),
@@ -96,6 +114,44 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (planar("", "rest_mean = [1, 2]"), "x.toml:5: prior: `rest_sd` is missing; `rest_mean` stands without it".into()),
         (planar("", "rest_mean = [1, 2]\nrest_sd = [1]"), "x.toml:11: prior.rest_sd: has 1 entries, but `rest_mean` has 2".into()),
         (planar("", "").replace("kind = \"range-bearing\"\nstation = [0, 0]", "kind = \"linear\"\nH = [[1, 0]]"), "x.toml:5: prior: the sensor `linear` has no station to see range and bearing from; give `seen_from = [x, y]`, or the prior by `mean` and `sd`".into()),
+        (planar("range = \"2 km\"", "range = \"2 min\""), "x.toml:6: prior.range: \"2 min\" is a time; a length is needed: m, km, cm, mm".into()),
+        (planar("bearing = \"30 deg\"", "bearing = \"3 deg/s\""), "x.toml:7: prior.bearing: \"3 deg/s\" is an angular rate; an angle is needed: deg, rad, mrad".into()),
+        (planar("across_sd = \"3 deg\"", "across_sd = \"3 kn\""), "x.toml:9: prior.across_sd: \"3 kn\" is a speed; across the line of sight give a length, an angle or a share".into()),
+        (planar("", "rest_mean = [\"3 %\"]\nrest_sd = [1]"), "x.toml:10: prior.rest_mean[0]: \"3 %\" is a share; a number is needed, or a quantity such as \"3 m\" or \"3 deg\"".into()),
+        // Priors in space.
+        (space("", ""), "x.toml:10: prior.elevation: the sensor `range-bearing` reads a position in the plane, components [0, 1]; leave `elevation` out".into()),
+        (space("up_sd = \"5 m\"", ""), "x.toml:5: prior: `up_sd` is missing; `elevation` stands without it: give a length, an angle, as \"3 deg\", or a share of the range".into()),
+        (space("elevation = \"8 deg\"", ""), "x.toml:11: prior.up_sd: stands without `elevation`; a position in the plane has no spread upwards".into()),
+        (unbound(space("\"8 deg\"", "\"100 deg\"")), "x.toml:11: prior.elevation: \"100 deg\" is beyond the vertical; give -90 deg to 90 deg".into()),
+        (unbound(space("\"8 deg\"", "8")), "x.toml:11: prior.elevation: 8 has no unit; an angle needs one: \"8 deg\" or \"8 rad\"".into()),
+        (unbound(space("\"5 m\"", "\"-5 m\"")), "x.toml:12: prior.up_sd: \"-5 m\" is below 0; a standard deviation is 0 or above".into()),
+        (space("", "").replace("kind = \"range-bearing\"\nstation = [0, 0]", "kind = \"linear\"\nH = [[1, 0, 0]]"), "x.toml:5: prior: the sensor `linear` has no station to see range and bearing from; give `seen_from = [x, y, z]`, or the prior by `mean` and `sd`".into()),
+        (unbound(space("\"5 m\"", "\"5 m\"\nseen_from = [0, 0]")).replacen("seen_from = [0, 0, 0]\n", "", 1), "x.toml:12: prior.seen_from: give one point [x, y, z]".into()),
+        // Frames.
+        (planar("", "frame_bearing = \"3 deg\""), "x.toml:10: prior.frame_bearing: turns a `frame_covariance`, or the spread about a `mean`; `along_sd` and `across_sd` go with the line of sight".into()),
+        (planar("", "frame_covariance = [[4, 1], [1, 9]]"), "x.toml:10: prior.frame_covariance: stands beside `along_sd`; give one of the two".into()),
+        (framed("[[4, 1], [1, 9]]\nframe_elevation = \"3 deg\""), "x.toml:9: prior.frame_elevation: stands without `frame_bearing`; give both".into()),
+        (framed("[[4, 1], [1, 9]]\nframe_bearing = \"9 deg\"\nframe_elevation = \"3 deg\""), "x.toml:10: prior.frame_elevation: lifts the axes of a position in the plane; leave it out".into()),
+        (framed("[[4, 1], [1, 9]]\nframe_bearing = 20"), "x.toml:9: prior.frame_bearing: 20 has no unit; an angle needs one: \"20 deg\" or \"20 rad\"".into()),
+        (framed("[[4, 7],\n[7, 9]]"), "x.toml:8: prior.frame_covariance: the covariance is indefinite: its correlation matrix has the eigenvalue -1.667e-1; none may be negative".into()),
+        (framed("[[4, 0],\n[0, -9]]"), "x.toml:9: prior.frame_covariance[1][1]: covariance[1][1] is -9; a variance cannot be negative".into()),
+        (framed("[[4]]"), "x.toml:8: prior.frame_covariance: the covariance is 1 x 1, but 2 x 2 is needed".into()),
+        (with("mean = [3000, 400]\ncovariance = [[900, 0], [0, 400]]", "frame_bearing = \"9 deg\""), format!("x.toml:5: prior: {}", forms("has neither a mean nor a range"))),
+        (with("", "").replace("kind = \"range-bearing\"\nstation = [0, 0]", "kind = \"linear\"\nH = [[1]]").replace("mean = [3000, 400]\ncovariance = [[900, 0], [0, 400]]", "mean = [1]\nsd = [1]\nframe_bearing = \"9 deg\""), "x.toml:8: prior.frame_bearing: turns a position, components [0, 1], but the state has 1 components; leave it out".into()),
+        // Velocities.
+        (moving("speed = \"8 kn\"\n", ""), "x.toml:5: prior: `speed` is missing; give a speed, as \"8 kn\"".into()),
+        (moving("course = \"200 deg\"\n", ""), "x.toml:5: prior: `course` is missing; give an angle, counter-clockwise from the x axis, as \"30 deg\"".into()),
+        (moving("speed_sd = \"10 %\"\n", ""), "x.toml:5: prior: `speed_sd` is missing; give a speed, as \"0.5 m/s\", or a share of `speed`, as \"10 %\"".into()),
+        (moving("course_sd = \"5 deg\"", ""), "x.toml:5: prior: `course_sd` is missing; give an angle, as \"5 deg\"".into()),
+        (moving("\"8 kn\"", "\"8 km\""), "x.toml:10: prior.speed: \"8 km\" is a length; a speed is needed: m/s, km/h, kn".into()),
+        (moving("\"8 kn\"", "\"8 knots\""), format!("x.toml:10: prior.speed: there is no unit `knots` (\"8 knots\"); give {UNITS}")),
+        (moving("\"8 kn\"", "0"), "x.toml:10: prior.speed: 0 is not above 0, and without way there is no course; give the velocity by `rest_mean` and `rest_sd`".into()),
+        (moving("\"200 deg\"", "200"), "x.toml:11: prior.course: 200 has no unit; an angle needs one: \"200 deg\" or \"200 rad\"".into()),
+        (moving("\"10 %\"", "\"-1 m/s\""), "x.toml:12: prior.speed_sd: \"-1 m/s\" is below 0; a standard deviation is 0 or above".into()),
+        (moving("\"10 %\"", "\"5 deg\""), "x.toml:12: prior.speed_sd: \"5 deg\" is an angle; a speed is needed: m/s, km/h, kn".into()),
+        (moving("course_sd = \"5 deg\"", "course_sd = \"0.5 m/s\""), "x.toml:13: prior.course_sd: \"0.5 m/s\" is a speed; an angle is needed: deg, rad, mrad".into()),
+        (moving("", "climb = 1\nclimb_sd = 1"), "x.toml:14: prior.climb: stands without `elevation`; a position in the plane has no climb".into()),
+        (moving("", "climb = 1"), "x.toml:5: prior: `climb_sd` is missing; give a speed, as \"0.5 m/s\"".into()),
         // Noise.
         (with("\"0.3 deg\"", "0.3"), "x.toml:9: noise.sd[1]: 0.3 has no unit; an angle needs one: \"0.3 deg\" or \"0.3 rad\"; output 1 is the bearing".into()),
         (with("\"0.3 deg\"", "\"0.3 m\""), "x.toml:9: noise.sd[1]: \"0.3 m\" is a length; an angle is needed: deg, rad, mrad; output 1 is the bearing".into()),
@@ -317,6 +373,206 @@ fn spreads_and_noise_take_their_units() {
     assert!(none.noise().is_none());
 }
 
+/// The case of a suite that has one.
+#[track_caller]
+fn only(text: &str) -> Case {
+    let mut cases = read(text).unwrap_or_else(|e| panic!("{e}")).cases;
+    assert_eq!(cases.len(), 1);
+    cases.remove(0)
+}
+
+#[track_caller]
+fn all_close<'a>(found: impl IntoIterator<Item = &'a f64>, expected: impl IntoIterator<Item = f64>) {
+    let found: Vec<_> = found.into_iter().copied().collect();
+    let expected: Vec<_> = expected.into_iter().collect();
+    assert_eq!(found.len(), expected.len());
+    for (found, expected) in found.into_iter().zip(expected) {
+        close(found, expected);
+    }
+}
+
+/// A sensor without a station, on a state of `n`.
+fn gauge(n: usize) -> String {
+    format!("[sensor]\nkind = \"linear\"\nH = [{:?}]\n[prior]\n", vec![1; n])
+}
+
+/// The bearing whose cosine is 3/5 and the elevation whose sine is 5/13: right triangles in whole numbers.
+fn whole_triangles() -> (String, String) {
+    ((4.0_f64 / 3.0).atan().to_string(), (5.0_f64 / 12.0).atan().to_string())
+}
+
+#[test]
+fn a_place_in_space_is_worked_by_hand() {
+    // 65 m away along u = (36, 48, 25) / 65; across lies a = (-4, 3, 0) / 5, up w = (-3, -4, 12) / 13. All three are
+    // unit vectors at right angles, so P = 2^2 u u' + 3^2 a a' + 1 w w'.
+    let (bearing, elevation) = whole_triangles();
+    let text = |spread: &str| {
+        format!(
+            "{}range = 65\nbearing = \"{bearing} rad\"\nelevation = \"{elevation} rad\"\nseen_from = [10, 20, 30]\n\
+             {spread}\nrest_mean = [7]\nrest_sd = [5]\n",
+            gauge(4)
+        )
+    };
+    let (u, a, w) = ([36.0, 48.0, 25.0], [-4.0, 3.0, 0.0], [-3.0, -4.0, 12.0]);
+    let p = |i: usize, j: usize| {
+        if i == 3 || j == 3 {
+            return if i == j { 25.0 } else { 0.0 };
+        }
+        4.0 * u[i] * u[j] / 4225.0 + 9.0 * a[i] * a[j] / 25.0 + w[i] * w[j] / 169.0
+    };
+    // The angles are seen from 65 m: 3 m across and 1 m up.
+    let in_angles = format!("along_sd = 2\nacross_sd = \"{} rad\"\nup_sd = \"{} %\"", 3.0 / 65.0, 100.0 / 65.0);
+    for spread in [
+        "along_sd = \"200 cm\"\nacross_sd = 3\nup_sd = \"1 m\"",
+        &in_angles,
+        "frame_covariance = [[4, 0, 0], [0, 9, 0], [0, 0, 1]]",
+    ] {
+        let case = only(&text(spread));
+        all_close(case.prior().mean(), [46.0, 68.0, 55.0, 7.0]);
+        all_close(case.prior().covariance(), (0..16).map(|k| p(k / 4, k % 4)));
+    }
+    // A covariance between along and up adds 0.5 (u w' + w u').
+    let case = only(&text("frame_covariance = [[4, 0, 0.5], [0, 9, 0], [0.5, 0, 1]]"));
+    let cross = |i: usize, j: usize| {
+        if i == 3 || j == 3 { 0.0 } else { 0.5 * (u[i] * w[j] + w[i] * u[j]) / 845.0 }
+    };
+    all_close(case.prior().covariance(), (0..16).map(|k| p(k / 4, k % 4) + cross(k / 4, k % 4)));
+}
+
+#[test]
+fn a_place_at_elevation_zero_is_the_place_in_the_plane() {
+    let seen = "range = \"3 km\"\nbearing = \"250 deg\"\nalong_sd = \"40 m\"\nacross_sd = \"2 deg\"\n";
+    let flat = only(&format!("{}seen_from = [5, 6]\n{seen}", gauge(2)));
+    let space = only(&format!("{}seen_from = [5, 6, 7]\n{seen}elevation = \"0 deg\"\nup_sd = 9\n", gauge(3)));
+    let (flat, space) = (flat.prior(), space.prior());
+    assert_eq!(space.mean().rows(0, 2), flat.mean().rows(0, 2));
+    assert_eq!(space.covariance().view((0, 0), (2, 2)), flat.covariance().view((0, 0), (2, 2)));
+    assert_eq!((space.mean()[2], space.covariance()[(2, 2)], space.covariance()[(0, 2)]), (7.0, 81.0, 0.0));
+    // Straight up, along is z and up points back against the bearing.
+    let up = only(&format!("{}seen_from = [5, 6, 7]\n{seen}elevation = \"90 deg\"\nup_sd = 9\n", gauge(3)));
+    close(up.prior().mean()[2], 3007.0);
+    close(up.prior().covariance()[(2, 2)], 1600.0);
+}
+
+#[test]
+fn frames_turn_the_spread_of_the_position_only() {
+    // T = [[3, -4], [4, 3]] / 5 and K = [[4, 1], [1, 9]]: T K T' by hand = [[156, -67], [-67, 169]] / 25.
+    let (bearing, _) = whole_triangles();
+    let expected = [156.0 / 25.0, -67.0 / 25.0, -67.0 / 25.0, 169.0 / 25.0];
+    let frame = format!("frame_bearing = \"{bearing} rad\"\n");
+    let k = "[[4, 1], [1, 9]]";
+    let seen = "range = 100\nbearing = \"77 deg\"\nseen_from = [0, 0]\n";
+    let along = format!("range = 100\nbearing = \"{bearing} rad\"\nseen_from = [0, 0]\n");
+    for prior in [
+        format!("{seen}frame_covariance = {k}\n{frame}"),
+        format!("{along}frame_covariance = {k}\n"),
+        format!("mean = [1, 2]\ncovariance = {k}\n{frame}"),
+        format!("mean = [1, 2]\nsd = [2, 3]\ncorrelation = [[0, 1, {}]]\n{frame}", 1.0 / 6.0),
+    ] {
+        all_close(only(&format!("{}{prior}", gauge(2))).prior().covariance(), expected);
+    }
+    // Within a larger state the rows of the position are turned, T (2, 3)' = (-6, 17) / 5, the others left.
+    let text = format!(
+        "[sensor]\nkind = \"bearing-only\"\nstation = [0, 0]\nposition = [2, 0]\n[prior]\nmean = [\"1 km\", 2, 3]\n\
+         covariance = [[9, 3, 1], [3, 16, 2], [1, 2, 4]]\n{frame}"
+    );
+    let turned = only(&text);
+    all_close(turned.prior().mean(), [1000.0, 2.0, 3.0]);
+    let (x, y, cross) = (156.0 / 25.0, 169.0 / 25.0, -67.0 / 25.0);
+    all_close(
+        turned.prior().covariance(),
+        [y, 17.0 / 5.0, cross, 17.0 / 5.0, 16.0, -6.0 / 5.0, cross, -6.0 / 5.0, x],
+    );
+    // In space: lifted by a right angle, what was along x lies along z, what was up lies against x.
+    let lifted = only(&format!(
+        "{}mean = [0, 0, 0]\nsd = [1, 2, 3]\nframe_bearing = \"0 deg\"\nframe_elevation = \"90 deg\"\n",
+        gauge(3)
+    ));
+    all_close(lifted.prior().covariance(), [9.0, 0.0, 0.0, 0.0, 4.0, 0.0, 0.0, 0.0, 1.0]);
+}
+
+#[test]
+fn speed_and_course_are_worked_by_hand() {
+    // 5 m/s along (3, 4) / 5 with 10 % = 0.5 m/s along and 5 * 0.2 = 1 m/s across: mean (3, 4), covariance
+    // xx = (9 * 0.25 + 16) / 25 = 0.73, yy = (16 * 0.25 + 9) / 25 = 0.52, xy = 12 * (0.25 - 1) / 25 = -0.36.
+    let (course, _) = whole_triangles();
+    let velocity =
+        format!("speed = \"18 km/h\"\ncourse = \"{course} rad\"\nspeed_sd = \"10 %\"\ncourse_sd = \"0.2 rad\"\n");
+    let seen = "range = 100\nbearing = \"90 deg\"\nalong_sd = 2\nacross_sd = 3\nrest_mean = [6]\nrest_sd = [8]\n";
+    // Components: position, velocity, rest. The velocity takes the first that are not of the position.
+    for (position, order) in [("[0, 1]", [0, 1, 2, 3, 4]), ("[0, 2]", [0, 2, 1, 3, 4]), ("[4, 1]", [4, 1, 0, 2, 3])]
+    {
+        let sensor =
+            format!("[sensor]\nkind = \"bearing-only\"\nstation = [0, 0]\nposition = {position}\n[prior]\n");
+        let case = only(&format!("{sensor}{seen}{velocity}"));
+        let (mean, p) = (case.prior().mean(), case.prior().covariance());
+        all_close(&order.map(|i| mean[i]), [0.0, 100.0, 3.0, 4.0, 6.0]);
+        let [x, y, vx, vy, rest] = order;
+        all_close(&[p[(x, x)], p[(y, y)], p[(rest, rest)]], [9.0, 4.0, 64.0]);
+        all_close(
+            &[p[(vx, vx)], p[(vy, vy)], p[(vx, vy)], p[(x, vx)], p[(rest, vy)]],
+            [0.73, 0.52, -0.36, 0.0, 0.0],
+        );
+    }
+    let climbing = only(&format!(
+        "{}seen_from = [0, 0, 0]\nelevation = \"0 deg\"\nup_sd = 1\n{velocity}climb = \"-3.6 km/h\"\nclimb_sd = 0.25\n{seen}",
+        gauge(7)
+    ));
+    let (mean, p) = (climbing.prior().mean(), climbing.prior().covariance());
+    all_close(mean, [0.0, 100.0, 0.0, 3.0, 4.0, -1.0, 6.0]);
+    all_close(&[p[(3, 3)], p[(4, 4)], p[(3, 4)], p[(5, 5)], p[(3, 5)]], [0.73, 0.52, -0.36, 0.0625, 0.0]);
+}
+
+#[test]
+fn course_is_of_first_order() {
+    // Speed N(v, a^2) and course N(c, s^2), independent, have along and across c the exact variances
+    // (v^2 + a^2) (1 + exp(-2 s^2)) / 2 - v^2 exp(-s^2) and (v^2 + a^2) (1 - exp(-2 s^2)) / 2, from the characteristic
+    // function of the normal law, E cos k(theta - c) = exp(-k^2 s^2 / 2). First order leaves out shares of the order
+    // of s^2 and (a / v)^2, and along also v^2 s^4 / 2.
+    let (v, a, s) = (8.0_f64, 0.2_f64, 0.03_f64);
+    let case = only(&format!(
+        "{}seen_from = [0, 0]\nrange = 1\nbearing = \"0 deg\"\nalong_sd = 1\nacross_sd = 1\n\
+         speed = {v}\nspeed_sd = {a}\ncourse = \"0 deg\"\ncourse_sd = \"{s} rad\"\n",
+        gauge(4)
+    ));
+    let p = case.prior().covariance();
+    let square = v * v + a * a;
+    let along = square * (1.0 + (-2.0 * s * s).exp()) / 2.0 - v * v * (-s * s).exp();
+    let across = square * (1.0 - (-2.0 * s * s).exp()) / 2.0;
+    let order = s * s + (a / v).powi(2);
+    assert!((p[(2, 2)] / along - 1.0).abs() < 2.0 * order + v * v * s.powi(4) / (a * a), "{p} {along}");
+    assert!((p[(3, 3)] / across - 1.0).abs() < 2.0 * order, "{p} {across}");
+}
+
+#[test]
+fn new_keys_are_swept_and_drawn() {
+    let text = format!(
+        "draws = 3\n{}seen_from = [0, 0, 0]\nrange = \"1 km\"\nbearing = \"0 deg\"\n\
+         elevation = {{ from = \"0 deg\", to = \"60 deg\", steps = 3 }}\n\
+         frame_covariance = [[{{ list = [1, 4] }}, 0, 0], [0, 9, 0], [0, 0, 16]]\n\
+         frame_bearing = {{ list = [\"0 deg\", \"90 deg\"] }}\n\
+         speed = {{ draw = \"log-uniform\", from = \"1 kn\", to = \"30 kn\" }}\n\
+         course = {{ draw = \"uniform\", from = \"0 deg\", to = \"360 deg\" }}\n\
+         speed_sd = {{ list = [\"5 %\"] }}\ncourse_sd = \"5 deg\"\n",
+        gauge(5)
+    );
+    let cases = read(&text).unwrap_or_else(|e| panic!("{e}")).cases;
+    assert_eq!(cases.len(), 3 * 2 * 2 * 3);
+    // Elevation runs slowest, the draws fastest.
+    for (i, case) in cases.iter().enumerate() {
+        let (mean, p) = (case.prior().mean(), case.prior().covariance());
+        close(mean[2], 1000.0 * (30.0 * (i / 12) as f64 * PI / 180.0).sin());
+        let along = [1.0, 4.0][i / 6 % 2];
+        let (x, y) = if i / 3 % 2 == 0 { (along, 9.0) } else { (9.0, along) };
+        all_close(&[p[(0, 0)], p[(1, 1)], p[(2, 2)]], [x, y, 16.0]);
+        let speed = mean[3].hypot(mean[4]);
+        assert!((1852.0 / 3600.0 - 1e-9..=30.0 * 1852.0 / 3600.0 + 1e-9).contains(&speed), "{speed}");
+        // The trace of a turned covariance is that of the variances.
+        close(p[(3, 3)] + p[(4, 4)], speed * speed * (0.05_f64.powi(2) + (5.0 * PI / 180.0).powi(2)));
+    }
+    assert!(cases.windows(2).all(|pair| pair[0].prior().mean()[3] != pair[1].prior().mean()[3]));
+}
+
 fn file(folder: &Path, name: &str, bytes: &[u8]) -> std::path::PathBuf {
     let path = folder.join(name);
     std::fs::File::create(&path).unwrap().write_all(bytes).unwrap();
@@ -417,8 +673,40 @@ sd = [1, 2, 3]
 correlation = [[0, 1, 0.5], [0, 2, 0.1], [1, 2, 0.2]]
 [family.noise]
 sd = 0.5
+[[family]]
+name = "c"
+[family.sensor]
+kind = "linear"
+H = [[1, 0, 1, 0, 1, 0]]
+[family.prior]
+seen_from = [0, 0, "1 m"]
+range = "1 km"
+bearing = "20 deg"
+elevation = "5 deg"
+frame_covariance = [[4, 1, 0], [1, 9, 0], [0, 0, 1]]
+frame_bearing = "70 deg"
+frame_elevation = "-3 deg"
+speed = "8 kn"
+speed_sd = "10 %"
+course = { list = ["20 deg", "1 rad"] }
+course_sd = "5 deg"
+climb = -1
+climb_sd = 0.5
+[family.noise]
+sd = "1 m"
+[[family]]
+name = "d"
+[family.sensor]
+kind = "linear"
+H = [[1, 0, 1]]
+[family.prior]
+mean = [1, 2, 3]
+sd = [1, 2, 3]
+frame_bearing = "20 deg"
+[family.noise]
+sd = 2
 "#;
-    assert_eq!(read(TEXT).unwrap().cases.len(), 9);
+    assert_eq!(read(TEXT).unwrap().cases.len(), 12);
     let mut stream = rand_pcg::Pcg64::seed_from_u64(11);
     let mut refused = 0;
     for _ in 0..4000 {

@@ -58,6 +58,11 @@ impl<'a> Scorer<'a> {
         self.whole.whitened.is_some()
     }
 
+    /// Whether the prior has variance in some direction, without which there is nothing to update.
+    pub fn has_update(&self) -> bool {
+        self.support.rank() > 0
+    }
+
     /// Every score of a method's moments, each with its jackknife standard error over the replicates.
     ///
     /// # Errors

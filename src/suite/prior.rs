@@ -3,38 +3,54 @@
 use nalgebra::{DMatrix, DVector};
 
 use super::SuiteError;
+use super::frame::Frame;
+use super::layout::{Layout, free};
 use super::node::Node;
 use super::numbers::{covariance_error, matrix};
-use super::planar::Planar;
 use super::quantity::Wanted;
+use super::sighting::Sighting;
 use crate::gaussian::Gaussian;
 use crate::sensor::SensorSpec;
 
 const FORMS: &str = "`mean` and `covariance`; `mean` and `sd`, perhaps `correlation`; \
-    or `range`, `bearing`, `along_sd` and `across_sd`, perhaps `seen_from`, `rest_mean` and `rest_sd`";
-const KEYS: [&str; 11] = [
+    or `range`, `bearing`, `along_sd` and `across_sd`, perhaps `elevation` and `up_sd`, `speed` and `course`, \
+    `seen_from`, `rest_mean` and `rest_sd`";
+const KEYS: [&str; 22] = [
     "mean",
     "covariance",
     "sd",
     "correlation",
+    "frame_bearing",
+    "frame_elevation",
     "range",
     "bearing",
+    "elevation",
     "along_sd",
     "across_sd",
+    "up_sd",
+    "frame_covariance",
     "seen_from",
+    "speed",
+    "speed_sd",
+    "course",
+    "course_sd",
+    "climb",
+    "climb_sd",
     "rest_mean",
     "rest_sd",
 ];
+/// The keys of [`KEYS`] from here on are of the third form only; the two before go with every form.
+const SIGHTED: usize = 6;
 
 /// How a prior is written.
 #[derive(Debug)]
 pub(super) enum Prior<'a> {
-    /// `mean` and `covariance`.
-    Full { mean: &'a Node, covariance: &'a Node },
-    /// `mean`, `sd` and perhaps `correlation`.
-    Spread { mean: &'a Node, sd: &'a Node, correlation: Option<&'a Node> },
+    /// `mean` and `covariance`, perhaps in a frame.
+    Full { mean: &'a Node, covariance: &'a Node, frame: Option<Frame<'a>> },
+    /// `mean`, `sd` and perhaps `correlation`, perhaps in a frame.
+    Spread { mean: &'a Node, sd: &'a Node, correlation: Option<&'a Node>, frame: Option<Frame<'a>> },
     /// Relative to a station.
-    Planar(Planar<'a>),
+    Sighting(Sighting<'a>),
 }
 
 impl<'a> Prior<'a> {
@@ -44,22 +60,27 @@ impl<'a> Prior<'a> {
         let has = |keys: &[&str]| entries.iter().any(|(name, _)| keys.contains(&name.as_str()));
         let full = has(&["covariance"]);
         let spread = has(&["sd", "correlation"]);
-        let planar = has(&KEYS[4..]);
+        let sighted = has(&KEYS[SIGHTED..]);
         let right = format!("give exactly one form: {FORMS}");
-        if usize::from(full) + usize::from(spread) + usize::from(planar) > 1 || (planar && has(&["mean"])) {
+        if usize::from(full) + usize::from(spread) + usize::from(sighted) > 1 || (sighted && has(&["mean"])) {
             return Err(section.error(format!("mixes two forms; {right}")));
         }
+        let need_mean = || section.need("mean", &right);
         if full {
-            Ok(Self::Full { mean: section.need("mean", &right)?, covariance: section.at("covariance") })
+            let (mean, covariance) = (need_mean()?, section.at("covariance"));
+            Ok(Self::Full { mean, covariance, frame: Frame::read(section)? })
         } else if spread {
-            let (mean, sd) = (section.need("mean", &right)?, section.need("sd", &right)?);
-            Ok(Self::Spread { mean, sd, correlation: section.get("correlation") })
-        } else if planar {
-            Ok(Self::Planar(Planar::read(section)?))
+            let (mean, sd) = (need_mean()?, section.need("sd", &right)?);
+            let correlation = section.get("correlation");
+            Ok(Self::Spread { mean, sd, correlation, frame: Frame::read(section)? })
+        } else if sighted {
+            Ok(Self::Sighting(Sighting::read(section)?))
         } else if has(&["mean"]) {
             Err(section.error(format!("has a mean but no spread; {right}")))
-        } else {
+        } else if entries.is_empty() {
             Err(section.error(format!("is empty; {right}")))
+        } else {
+            Err(section.error(format!("has neither a mean nor a range; {right}")))
         }
     }
 
@@ -70,20 +91,22 @@ impl<'a> Prior<'a> {
                 let n = mean.list()?.len();
                 if n == 0 { Err(mean.error("is empty; give at least one number")) } else { Ok(n) }
             }
-            Self::Planar(planar) => planar.dimension(),
+            Self::Sighting(sighting) => sighting.dimension(),
         }
     }
 
-    /// The Gaussian; a planar position that `sensor` reads is a length.
+    /// The Gaussian; a position that `sensor` reads is a length, a velocity a speed.
     pub(super) fn gaussian(&self, sensor: &SensorSpec) -> Result<Gaussian, SuiteError> {
+        let layout = Layout::of(sensor);
         match self {
-            Self::Full { mean, covariance } => {
-                let m = components(mean, sensor, Wanted::read)?;
-                law(mean, m, covariance, matrix(covariance)?)
+            Self::Full { mean, covariance, frame } => {
+                let m = components(mean, layout, Wanted::read)?;
+                let given = law(mean, m, covariance, matrix(covariance)?)?;
+                turned(given, *frame, layout, covariance)
             }
-            Self::Spread { mean, sd, correlation } => {
-                let m = components(mean, sensor, Wanted::read)?;
-                let sds = components(sd, sensor, Wanted::read_sd)?;
+            Self::Spread { mean, sd, correlation, frame } => {
+                let m = components(mean, layout, Wanted::read)?;
+                let sds = components(sd, layout, Wanted::read_sd)?;
                 let n = m.len();
                 if sds.len() != n {
                     return Err(sd.error(format!("has {} entries, but `mean` has {n}", sds.len())));
@@ -93,11 +116,33 @@ impl<'a> Prior<'a> {
                     None => DMatrix::identity(n, n),
                 };
                 let p = DMatrix::from_fn(n, n, |i, j| rho[(i, j)] * sds[i] * sds[j]);
-                law(mean, m, correlation.unwrap_or(sd), p)
+                let spread = correlation.unwrap_or(sd);
+                turned(law(mean, m, spread, p)?, *frame, layout, spread)
             }
-            Self::Planar(planar) => planar.gaussian(sensor),
+            Self::Sighting(sighting) => sighting.gaussian(layout),
         }
     }
+}
+
+/// The law whose covariance is `given` in the axes of the frame, as far as the position goes: T P T', where T turns
+/// the components that the sensor reads as the position (else the first ones) and leaves the others.
+fn turned(
+    given: Gaussian,
+    frame: Option<Frame<'_>>,
+    layout: Layout<'_>,
+    spread: &Node,
+) -> Result<Gaussian, SuiteError> {
+    let Some(frame) = frame else { return Ok(given) };
+    let n = given.dimension();
+    let position = layout.position().unwrap_or_else(|| free(2 + usize::from(frame.elevation.is_some()), &[]));
+    if position.iter().any(|&i| i >= n) || !(2..=3).contains(&position.len()) {
+        return Err(frame.bearing.error(format!(
+            "turns a position, components {position:?}, but the state has {n} components; leave it out"
+        )));
+    }
+    let direction = frame.direction(position.len())?;
+    let covariance = direction.of_covariance(given.covariance(), &position);
+    law(frame.bearing, given.mean().iter().copied().collect(), spread, covariance)
 }
 
 /// The law; what is wrong with its covariance is said at `spread`.
@@ -113,19 +158,12 @@ pub(super) fn law(
     })
 }
 
-/// The components of the planar position that a sensor reads, if it reads one.
-pub(super) fn position(sensor: &SensorSpec) -> Option<[usize; 2]> {
-    serde_json::from_value(sensor.parameters().get("position")?.clone()).ok()
-}
-
 fn components(
     list: &Node,
-    sensor: &SensorSpec,
+    layout: Layout<'_>,
     read: fn(Wanted, &Node) -> Result<f64, SuiteError>,
 ) -> Result<Vec<f64>, SuiteError> {
-    let planar = position(sensor).unwrap_or([usize::MAX; 2]);
-    let wanted = |i| if planar.contains(&i) { Wanted::Length } else { Wanted::Any };
-    list.list()?.iter().enumerate().map(|(i, node)| read(wanted(i), node)).collect()
+    list.list()?.iter().enumerate().map(|(i, node)| read(layout.wanted(i), node)).collect()
 }
 
 /// The correlation matrix, written out or as triples `[i, j, rho]`.

@@ -1,47 +1,8 @@
-//! Quantities with units, such as `"1.5 km"`. A new dimension or unit is one line in the tables here.
+//! Quantities with units, such as `"1.5 km"`, and what a key takes.
 
 use super::SuiteError;
 use super::node::{Item, Node};
-
-/// What a quantity measures.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub(super) enum Dimension {
-    /// In metres.
-    Length,
-    /// In radians.
-    Angle,
-    /// A share of something else, 1 for the whole.
-    Share,
-}
-
-/// Unit, what it measures, and its size in the base unit of that.
-const UNITS: &[(&str, Dimension, f64)] = &[
-    ("m", Dimension::Length, 1.0),
-    ("km", Dimension::Length, 1e3),
-    ("cm", Dimension::Length, 1e-2),
-    ("mm", Dimension::Length, 1e-3),
-    ("deg", Dimension::Angle, std::f64::consts::PI / 180.0),
-    ("rad", Dimension::Angle, 1.0),
-    ("mrad", Dimension::Angle, 1e-3),
-    ("%", Dimension::Share, 1e-2),
-];
-
-impl Dimension {
-    /// Its name with an article.
-    pub(super) fn name(self) -> &'static str {
-        match self {
-            Self::Length => "a length",
-            Self::Angle => "an angle",
-            Self::Share => "a share",
-        }
-    }
-
-    /// The units that measure it.
-    pub(super) fn units(self) -> String {
-        let units: Vec<_> = UNITS.iter().filter(|u| u.1 == self).map(|u| u.0).collect();
-        units.join(", ")
-    }
-}
+use super::unit::{Dimension, UNITS};
 
 /// A number in the base unit of its dimension; a bare number has none.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -53,11 +14,7 @@ pub(super) struct Quantity {
 impl Quantity {
     /// Reads `NUMBER UNIT`; the error is the message for the reader.
     fn parse(text: &str) -> Result<Self, String> {
-        let all = || {
-            [Dimension::Length, Dimension::Angle, Dimension::Share]
-                .map(|d| format!("{} in {}", d.name(), d.units()))
-                .join("; ")
-        };
+        let all = || Dimension::ALL.map(|d| format!("{} in {}", d.name(), d.units())).join("; ");
         let number = text.trim().trim_end_matches(|c: char| c.is_alphabetic() || matches!(c, '%' | '/'));
         let unit = &text.trim()[number.len()..];
         let value: f64 = match number.trim().parse() {
@@ -92,9 +49,7 @@ impl Quantity {
     pub(super) fn describe(self) -> String {
         match self.dimension {
             None => self.value.to_string(),
-            Some(Dimension::Length) => format!("\"{} m\"", self.value),
-            Some(Dimension::Angle) => format!("\"{} rad\"", self.value),
-            Some(Dimension::Share) => format!("\"{} %\"", 100.0 * self.value),
+            Some(dimension) => dimension.write(self.value),
         }
     }
 
@@ -110,42 +65,58 @@ impl Quantity {
 /// What a key takes.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub(super) enum Wanted {
-    /// A length; a bare number is metres.
-    Length,
-    /// An angle; its unit must be said, for degrees and radians are mistaken too easily.
-    Angle,
-    /// A length, an angle, or a bare number in a unit of the author's own.
+    /// A quantity of this dimension; a bare number is in its base unit, but an angle or an angular rate must say
+    /// its unit.
+    Of(Dimension),
+    /// A quantity of any dimension but a share, or a bare number in a unit of the author's own.
     Any,
+    /// A bare number, for the unit is none that is known here.
+    Bare,
 }
 
 impl Wanted {
+    /// What is measured in `unit`: a base unit, one that is not known here, or none (empty).
+    pub(super) fn in_unit(unit: &str) -> Self {
+        match Dimension::of_base(unit) {
+            Some(dimension) => Self::Of(dimension),
+            None if unit.is_empty() => Self::Any,
+            None => Self::Bare,
+        }
+    }
+
     /// The value at the node in base units.
     pub(super) fn read(self, node: &Node) -> Result<f64, SuiteError> {
+        if self == Self::Bare {
+            return node.number();
+        }
         let quantity = Quantity::of(node)?;
-        let fits = match self {
-            Self::Length => matches!(quantity.dimension, None | Some(Dimension::Length)),
-            Self::Angle => quantity.dimension == Some(Dimension::Angle),
-            Self::Any => quantity.dimension != Some(Dimension::Share),
-        };
-        if fits { Ok(quantity.value) } else { Err(node.error(self.complaint(node, quantity))) }
+        let given = || node.describe();
+        match (self, quantity.dimension) {
+            (Self::Of(wanted), None) if wanted.needs_unit() => Err(node.error(format!(
+                "{0} has no unit; {1} needs one: {2}",
+                given(),
+                wanted.name(),
+                wanted.examples(&given())
+            ))),
+            (Self::Of(wanted), Some(is)) if is != wanted => Err(node.error(format!(
+                "{} is {}; {} is needed: {}",
+                given(),
+                is.name(),
+                wanted.name(),
+                wanted.units()
+            ))),
+            (Self::Any, Some(Dimension::Share)) => Err(node.error(format!(
+                "{} is a share; a number is needed, or a quantity such as \"3 m\" or \"3 deg\"",
+                given()
+            ))),
+            _ => Ok(quantity.value),
+        }
     }
 
     /// As [`Wanted::read`], for a standard deviation.
     pub(super) fn read_sd(self, node: &Node) -> Result<f64, SuiteError> {
         let sd = self.read(node)?;
         checked_sd(node, sd)
-    }
-
-    fn complaint(self, node: &Node, quantity: Quantity) -> String {
-        let given = node.describe();
-        match (quantity.dimension, self) {
-            (None, _) => format!("{given} has no unit; an angle needs one: \"{given} deg\" or \"{given} rad\""),
-            (Some(is), Self::Any) => format!("{given} is {}; a number, a length or an angle is needed", is.name()),
-            (Some(is), wanted) => {
-                let needed = if wanted == Self::Length { Dimension::Length } else { Dimension::Angle };
-                format!("{given} is {}; {} is needed: {}", is.name(), needed.name(), needed.units())
-            }
-        }
     }
 }
 
@@ -171,6 +142,18 @@ mod tests {
             ("180 deg", std::f64::consts::PI, Dimension::Angle),
             ("0.01 rad", 0.01, Dimension::Angle),
             ("8 mrad", 0.008, Dimension::Angle),
+            ("250 ms", 0.25, Dimension::Time),
+            ("3 us", 3e-6, Dimension::Time),
+            ("5 ns", 5e-9, Dimension::Time),
+            ("2 min", 120.0, Dimension::Time),
+            ("0.5 h", 1800.0, Dimension::Time),
+            ("18 km/h", 5.0, Dimension::Speed),
+            ("0.9 kn", 0.463, Dimension::Speed),
+            ("-4m/s", -4.0, Dimension::Speed),
+            ("180 deg/s", std::f64::consts::PI, Dimension::AngularRate),
+            ("0.1 rad/s", 0.1, Dimension::AngularRate),
+            ("50 Hz", 50.0, Dimension::Frequency),
+            ("9.4 GHz", 9.4e9, Dimension::Frequency),
             (" 20% ", 0.2, Dimension::Share),
         ] {
             assert_eq!(Quantity::parse(text), Ok(Quantity { value, dimension: Some(dimension) }), "{text}");

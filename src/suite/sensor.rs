@@ -1,4 +1,4 @@
-//! The `[sensor]` section: `kind` and parameters; lengths and angles may carry units.
+//! The `[sensor]` section: `kind` and parameters; those that are quantities may carry units.
 
 use super::SuiteError;
 use super::node::{Item, Node};
@@ -15,8 +15,8 @@ pub(super) fn read(section: &Node, n: usize) -> Result<SensorSpec, SuiteError> {
         .iter()
         .map(|(name, node)| {
             let node = match quantities.iter().find(|(key, _)| key == name) {
-                Some(&(_, unit)) => in_base_unit(node, if unit == "rad" { Wanted::Angle } else { Wanted::Length })?,
-                None if written && name == "parameters" => in_base_units(node)?,
+                Some((_, unit)) => in_base_units(node, Wanted::in_unit(unit))?,
+                None if written && name == "parameters" => parameters_of_formulas(node)?,
                 None => node.clone(),
             };
             Ok((name.clone(), node))
@@ -32,10 +32,10 @@ pub(super) fn read(section: &Node, n: usize) -> Result<SensorSpec, SuiteError> {
 }
 
 /// The parameters of formulas, each in the base unit of whatever it is.
-fn in_base_units(node: &Node) -> Result<Node, SuiteError> {
+fn parameters_of_formulas(node: &Node) -> Result<Node, SuiteError> {
     let item = match &node.item {
         Item::Table(entries) => {
-            let entries = entries.iter().map(|(name, node)| Ok((name.clone(), in_base_units(node)?)));
+            let entries = entries.iter().map(|(name, node)| Ok((name.clone(), parameters_of_formulas(node)?)));
             Item::Table(entries.collect::<Result<_, SuiteError>>()?)
         }
         Item::Text(_) | Item::Quantity(_) => Quantity { value: Quantity::of(node)?.value, dimension: None }.item(),
@@ -44,13 +44,58 @@ fn in_base_units(node: &Node) -> Result<Node, SuiteError> {
     Ok(Node { place: node.place.clone(), item })
 }
 
-fn in_base_unit(node: &Node, wanted: Wanted) -> Result<Node, SuiteError> {
+/// The numbers at a node, alone or in lists, as bare numbers in the base unit of what is wanted. What is no number
+/// at all is left for the sensor to refuse.
+fn in_base_units(node: &Node, wanted: Wanted) -> Result<Node, SuiteError> {
     let item = match &node.item {
         Item::List(list) => {
-            Item::List(list.iter().map(|entry| in_base_unit(entry, wanted)).collect::<Result<_, _>>()?)
+            Item::List(list.iter().map(|entry| in_base_units(entry, wanted)).collect::<Result<_, _>>()?)
         }
-        Item::Text(_) | Item::Quantity(_) => Quantity { value: wanted.read(node)?, dimension: None }.item(),
+        Item::Number(_) | Item::Whole(_) | Item::Text(_) | Item::Quantity(_) => {
+            Quantity { value: wanted.read(node)?, dimension: None }.item()
+        }
         other => other.clone(),
     };
     Ok(Node { place: node.place.clone(), item })
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::suite::unit::Dimension;
+
+    #[test]
+    fn the_units_of_every_kind_are_known() {
+        for kind in KINDS {
+            for (key, unit) in kind.quantities {
+                assert!(Dimension::of_base(unit).is_some(), "{}: {key} is in {unit}, no base unit", kind.name);
+            }
+        }
+    }
+
+    #[test]
+    fn quantities_come_in_the_base_unit_of_their_key() {
+        let text = "a = [[\"2 km\", 3], \"40 cm\"]\nb = \"90 deg\"\nc = [\"250 ms\", 2]\nd = \"36 km/h\"\ne = \"5 kHz\"\n\
+            f = \"2 rad/s\"\ng = 3\nh = true\n";
+        let root = Node::parse(text).unwrap();
+        let read = |key: &str, unit| in_base_units(root.get(key).unwrap(), Wanted::in_unit(unit));
+        let json = |key: &str, unit| read(key, unit).unwrap().json().unwrap().to_string();
+        assert_eq!(json("a", "m"), "[[2000.0,3.0],0.4]");
+        assert_eq!(json("b", "rad"), std::f64::consts::FRAC_PI_2.to_string());
+        assert_eq!(json("c", "s"), "[0.25,2.0]");
+        assert_eq!(json("d", "m/s"), "10.0");
+        assert_eq!(json("e", "Hz"), "5000.0");
+        assert_eq!(json("f", "rad/s"), "2.0");
+        assert_eq!((json("g", "dB"), json("g", "Hz"), json("h", "m")), ("3.0".into(), "3.0".into(), "true".into()));
+        for (key, unit, said) in [
+            ("a", "s", ":1: a[0][0]: \"2 km\" is a length; a time is needed: s, ms, us, ns, min, h"),
+            ("b", "rad/s", ":2: b: \"90 deg\" is an angle; an angular rate is needed: deg/s, rad/s"),
+            ("c", "m/s", ":3: c[0]: \"250 ms\" is a time; a speed is needed: m/s, km/h, kn"),
+            ("d", "Hz", ":4: d: \"36 km/h\" is a speed; a frequency is needed: Hz, kHz, MHz, GHz"),
+            ("e", "nT", ":5: e: is \"5 kHz\"; give a bare number"),
+            ("g", "rad/s", ":7: g: 3 has no unit; an angular rate needs one: \"3 deg/s\" or \"3 rad/s\""),
+        ] {
+            assert_eq!(read(key, unit).unwrap_err().to_string(), said);
+        }
+    }
 }

@@ -2,7 +2,8 @@
 
 use super::SuiteError;
 use super::node::{Item, Node, Place};
-use super::quantity::{Dimension, Quantity};
+use super::quantity::Quantity;
+use super::unit::Dimension;
 use crate::wording::proposal;
 
 /// The two ends between which a value is swept or drawn.

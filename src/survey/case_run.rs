@@ -135,10 +135,12 @@ pub(super) fn run_case(
 
 fn judge(scorer: &Scorer<'_>, moments: &Moments, plan: &SurveyPlan) -> (Result<Scores, Invalid>, Verdict) {
     let scores = scorer.score(moments);
-    let verdict = if scorer.is_defined() {
-        plan.judge.verdict(&scores)
-    } else {
+    let verdict = if !scorer.is_defined() {
         undecided("the covariance of the measurement is singular: add noise or drop an output".into())
+    } else if !scorer.has_update() {
+        undecided("the prior knows the state exactly: no measurement updates it".into())
+    } else {
+        plan.judge.verdict(&scores)
     };
     (scores, verdict)
 }

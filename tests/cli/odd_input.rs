@@ -100,11 +100,11 @@ fn every_odd_case_ends_with_a_word_and_harms_no_other() {
     let said = |name: &str| -> Vec<&Row> { rows.iter().filter(|row| row.case == name).collect() };
     assert!(said("easy").iter().all(|row| row.verdict == Verdict::Trusted), "{:?}", said("easy"));
     for (name, sound, word) in [
-        // A state known exactly leaves nothing to update: no word on the update, but no refusal either.
-        ("radar-known", Soundness::Sound, "expected NEES ratio is undefined"),
-        ("buoy-known", Soundness::Sound, "expected NEES ratio is undefined"),
-        ("radar-known-on-the-cut", Soundness::Sound, "expected NEES ratio is undefined"),
-        ("buoy-known-on-the-cut", Soundness::Sound, "expected NEES ratio is undefined"),
+        // A state known exactly leaves nothing to update: that is said, and the reference stands.
+        ("radar-known", Soundness::Sound, "knows the state exactly: no measurement updates it"),
+        ("buoy-known", Soundness::Sound, "knows the state exactly: no measurement updates it"),
+        ("radar-known-on-the-cut", Soundness::Sound, "knows the state exactly: no measurement updates it"),
+        ("buoy-known-on-the-cut", Soundness::Sound, "knows the state exactly: no measurement updates it"),
         ("buoy-on-the-station", Soundness::Refused, "no mean direction"),
         ("radar-on-the-station", Soundness::Refused, "no mean direction"),
         ("square-mean-1e300", Soundness::Refused, "is not a finite number"),

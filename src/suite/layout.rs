@@ -1,0 +1,90 @@
+//! Where a sensor's parameters say that position and velocity stand in the state, and from where it looks.
+
+use serde::de::DeserializeOwned;
+use serde_json::{Map, Value};
+
+use super::quantity::Wanted;
+use super::unit::Dimension;
+use crate::sensor::SensorSpec;
+
+/// The parameters of a sensor, asked by their names: `position` and `velocity` are lists of components, `station` a
+/// point, `stations` several.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Layout<'a> {
+    /// The sensor's name, for messages.
+    pub sensor: &'a str,
+    pub parameters: &'a Map<String, Value>,
+}
+
+impl<'a> Layout<'a> {
+    pub(super) fn of(spec: &'a SensorSpec) -> Self {
+        Self { sensor: spec.kind(), parameters: spec.parameters() }
+    }
+
+    /// The components of the position that the sensor reads, if it names them.
+    pub(super) fn position(self) -> Option<Vec<usize>> {
+        read(self.parameters.get("position"))
+    }
+
+    /// The components of the velocity that the sensor reads, if it names them.
+    pub(super) fn velocity(self) -> Option<Vec<usize>> {
+        read(self.parameters.get("velocity"))
+    }
+
+    /// Its station, or the first of several.
+    pub(super) fn station(self) -> Option<Vec<f64>> {
+        let first = || self.parameters.get("stations")?.get(0);
+        read(self.parameters.get("station").filter(|station| !station.is_null()).or_else(first))
+    }
+
+    /// What a number at component `i` measures.
+    pub(super) fn wanted(self, i: usize) -> Wanted {
+        let holds = |components: Option<Vec<usize>>| components.is_some_and(|c| c.contains(&i));
+        if holds(self.position()) {
+            Wanted::Of(Dimension::Length)
+        } else if holds(self.velocity()) {
+            Wanted::Of(Dimension::Speed)
+        } else {
+            Wanted::Any
+        }
+    }
+}
+
+fn read<T: DeserializeOwned>(value: Option<&Value>) -> Option<T> {
+    serde_json::from_value(value?.clone()).ok()
+}
+
+/// The first `count` components of a state that are not `taken`.
+pub(super) fn free(count: usize, taken: &[usize]) -> Vec<usize> {
+    (0..).filter(|i| !taken.contains(i)).take(count).collect()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn parameters_are_found_in_the_plane_and_in_space() {
+        let ask = |parameters: Value| {
+            let Value::Object(parameters) = parameters else { panic!("no object") };
+            let layout = Layout { sensor: "invented", parameters: &parameters };
+            (layout.station(), layout.position(), layout.velocity(), layout.wanted(4))
+        };
+        assert_eq!(
+            ask(serde_json::json!({ "station": [1, 2.5], "position": [4, 2] })),
+            (Some(vec![1.0, 2.5]), Some(vec![4, 2]), None, Wanted::Of(Dimension::Length))
+        );
+        assert_eq!(
+            ask(serde_json::json!({ "station": null, "stations": [[1, 2, 3], [4, 5, 6]], "velocity": [3, 4, 5] })),
+            (Some(vec![1.0, 2.0, 3.0]), None, Some(vec![3, 4, 5]), Wanted::Of(Dimension::Speed))
+        );
+        assert_eq!(ask(serde_json::json!({ "position": "here" })), (None, None, None, Wanted::Any));
+    }
+
+    #[test]
+    fn free_components_skip_what_is_taken() {
+        assert_eq!(free(2, &[0, 2]), [1, 3]);
+        assert_eq!(free(3, &[2, 1, 0]), [3, 4, 5]);
+        assert_eq!(free(0, &[]), [0; 0]);
+    }
+}
