@@ -59,7 +59,7 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (with("", "[[family]]\nname = \"a\"\nnotes = 1\n"), "x.toml:12: family[0].notes: unknown key `notes`; did you mean `noise`? allowed: name, draws, sensor, prior, noise".into()),
         // Sensors.
         (with("range-bearing", "range-baering"), "x.toml:3: sensor.kind: there is no sensor `range-baering`; did you mean `range-bearing`? give one of KINDS".into()),
-        (with("kind = \"range-bearing\"", "kind = 5"), "x.toml:3: sensor.kind: is 5; give one of range-bearing, bearing-only, quadratic, linear".into()),
+        (with("kind = \"range-bearing\"", "kind = 5"), "x.toml:3: sensor.kind: is 5; give one of KINDS".into()),
         (with("kind = \"range-bearing\"", ""), "x.toml:2: sensor: `kind` is missing; give one of KINDS".into()),
         (with("station = [0, 0]", ""), "x.toml:2: sensor: `station` is missing; give `station` [x, y] or `stations` [[x, y], ...]".into()),
         (with("station = [0, 0]", "station = [0]"), "x.toml:4: sensor.station: has length 1; give a list of length 2".into()),

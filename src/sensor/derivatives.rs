@@ -86,6 +86,8 @@ fn whole<F: Formula + ?Sized, const N: usize>(f: &F, x: &[f64], at: &mut Derivat
         at.value[j] = dual.re;
         at.jacobian.row_mut(j).copy_from(&dual.v1.unwrap_generic(U1, Const::<N>));
         at.hessians[j].copy_from(&dual.v2.unwrap_generic(Const::<N>, Const::<N>));
+        // A product adds its terms in another order on either side of the diagonal and rounds them apart.
+        at.hessians[j].fill_lower_triangle_with_upper_triangle();
     }
 }
 

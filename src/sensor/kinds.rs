@@ -6,7 +6,10 @@ use serde_json::{Map, Value};
 
 use crate::wording::{plain, proposal};
 
-use super::{ParameterError, Sensor, bearing_only, linear, quadratic, range_bearing};
+use super::{
+    ParameterError, Sensor, azimuth_elevation, bearing_only, bearing_rate, frequency_difference, linear, quadratic,
+    range_azimuth_elevation, range_bearing, range_doppler, range_only, received_strength, time_difference,
+};
 
 /// A sensor that a suite or a case record can name.
 #[derive(Debug, Clone, Copy)]
@@ -32,7 +35,20 @@ pub struct Kind {
 pub(super) type Built = (Map<String, Value>, Arc<dyn Sensor>);
 
 /// Every built-in sensor. A new one is one line here.
-pub const KINDS: &[Kind] = &[range_bearing::KIND, bearing_only::KIND, quadratic::KIND, linear::KIND];
+pub const KINDS: &[Kind] = &[
+    range_bearing::KIND,
+    bearing_only::KIND,
+    range_only::KIND,
+    range_doppler::KIND,
+    bearing_rate::KIND,
+    range_azimuth_elevation::KIND,
+    azimuth_elevation::KIND,
+    time_difference::KIND,
+    frequency_difference::KIND,
+    received_strength::KIND,
+    quadratic::KIND,
+    linear::KIND,
+];
 
 /// Why a sensor could not be made from what a suite or a case record says.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]

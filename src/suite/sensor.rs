@@ -13,8 +13,8 @@ pub(super) fn read(section: &Node, n: usize) -> Result<SensorSpec, SuiteError> {
         .entries()?
         .iter()
         .map(|(name, node)| {
-            let is_quantity = quantities.iter().any(|(key, _)| key == name);
-            let node = if is_quantity { in_metres(node)? } else { node.clone() };
+            let is_length = quantities.iter().any(|(key, base)| key == name && *base == "m");
+            let node = if is_length { in_metres(node)? } else { node.clone() };
             Ok((name.clone(), node))
         })
         .collect::<Result<_, SuiteError>>()?;

@@ -4,6 +4,8 @@
 #![allow(dead_code)]
 
 pub mod close;
+pub mod deviations;
 pub mod random;
 pub mod records;
+pub mod sightings;
 pub mod trials;

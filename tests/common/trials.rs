@@ -9,6 +9,7 @@ use rand_pcg::Pcg64;
 use serde_json::{Value, json};
 
 use super::random;
+use super::sightings::{Sighting, sightings};
 
 /// A sensor to try.
 pub struct Trial {
@@ -23,6 +24,8 @@ pub struct Trial {
 enum Shape {
     /// Range (where not angular) and bearing from these stations, one an output.
     Planar(Vec<[f64; 2]>),
+    /// Analytic around any position but a few.
+    Sighting(Sighting),
     /// Second degree, coefficients of order one.
     Polynomial,
 }
@@ -59,6 +62,7 @@ impl Trial {
                 let direction = rng.random_range(-PI..PI);
                 vec![sx + range * direction.cos(), sy + range * direction.sin()]
             }
+            Shape::Sighting(sighting) => sighting.point(rng),
             Shape::Polynomial => random::normal_vector(a, rng).iter().map(|z| 10.0 * z).collect(),
         }
     }
@@ -81,6 +85,19 @@ impl Trial {
                     Bend { step, value: PI, slope: 1.0 / near, third, fourth }
                 } else {
                     Bend { step, value: r, slope: 1.0, third: 3.0 / near.powi(2), fourth: 15.0 / near.powi(3) }
+                }
+            }
+            Shape::Sighting(sighting) => {
+                let reach = sighting.reach(x, j);
+                let (step, departure) = (6e-6 * reach.radius, reach.departure);
+                // What is left around a point of the ball.
+                let radius = reach.radius - step;
+                Bend {
+                    step,
+                    value: reach.value,
+                    slope: departure / radius,
+                    third: 6.0 * departure / radius.powi(3),
+                    fourth: 24.0 * departure / radius.powi(4),
                 }
             }
             Shape::Polynomial => {
@@ -108,6 +125,7 @@ pub fn trials() -> Vec<Trial> {
         bearing_only(&stations, [0, 2], 4),
         bearing_only(&stations, [5, 0], 6),
     ];
+    trials.extend(sightings().into_iter().map(|s| Trial::new(s.described(), 6, Shape::Sighting(s))));
     for n in 1..=9 {
         for p in 1..=3 {
             trials.push(quadratic(n, p, &mut rng));

@@ -91,20 +91,24 @@ fn values_that_are_not_numbers_pass_through() {
 fn the_workspace_carries_nothing_over() {
     // Once on a sensor that leaves NaN everywhere, then on a sound one: the same bits as from a fresh plan,
     // with the root given, made by Cholesky, or by eigenvalues.
-    let singular = Gaussian::new(dvector![30.0, 10.0], dmatrix![4.0, 2.0; 2.0, 1.0]).unwrap();
-    let rooted = Gaussian::from_root(dvector![30.0, 10.0], dmatrix![1.0, 2.0; 3.0, -1.0]).unwrap();
     for (sensor, prior) in sensors() {
         let sensor = sensor.sensor();
-        let p = sensor.outputs().len();
+        let (a, p) = (sensor.reads().len(), sensor.outputs().len());
         let noise = DMatrix::from_diagonal_element(p, p, 0.01);
+        let mean = prior.mean().clone();
+        let line = DMatrix::from_fn(a, 1, |i, _| 2.0 / (i + 1) as f64);
+        let singular = Gaussian::new(mean.clone(), &line * line.transpose()).unwrap();
+        let root =
+            DMatrix::from_fn(a, a, |i, j| if i == j { 1.0 } else { 0.5 - (i as f64 - 2.0 * j as f64) / 4.0 });
+        let rooted = Gaussian::from_root(mean, root).unwrap();
         for method in methods() {
-            let mut transform = method.method().plan(2, p).unwrap();
-            let mut got = Moments::zeros(2, p);
+            let mut transform = method.method().plan(a, p).unwrap();
+            let mut got = Moments::zeros(a, p);
             for prior in [&prior, &singular, &rooted, &prior] {
                 got.mean.fill(f64::NAN);
                 got.covariance.fill(f64::NAN);
                 got.cross_covariance.fill(f64::NAN);
-                let poison = Poison { outputs: sensor.outputs().to_vec() };
+                let poison = Poison { reads: sensor.reads().to_vec(), outputs: sensor.outputs().to_vec() };
                 transform.apply(Problem { sensor: &poison, prior, noise: &noise }, &mut got);
                 assert!(!got.is_finite());
                 transform.apply(Problem { sensor, prior, noise: &noise }, &mut got);
@@ -119,12 +123,13 @@ fn the_workspace_carries_nothing_over() {
 /// A sensor whose every output is NaN.
 #[derive(Debug)]
 struct Poison {
+    reads: Vec<usize>,
     outputs: Vec<Output>,
 }
 
 impl gaussworthy::sensor::Formula for Poison {
     fn reads(&self) -> &[usize] {
-        &[0, 1]
+        &self.reads
     }
 
     fn outputs(&self) -> &[Output] {
