@@ -5,7 +5,7 @@ mod common;
 
 use common::close::{assert_within, scaled_difference};
 use common::records::{Record, case_of, load};
-use gaussworthy::gaussian::{Gaussian, Marginal, Moments, wrap};
+use gaussworthy::gaussian::{Gaussian, Marginal, Moments};
 use gaussworthy::reference::{Key, Reference, Sampler, SamplerSettings, Soundness};
 use gaussworthy::sensor::{Formula, Number, Output};
 use gaussworthy::suite::Case;
@@ -20,9 +20,6 @@ const FAMILIES: [&str; 5] = [
     "f09_linear_update.json",
 ];
 
-/// An entry that sampling knows exactly, but for rounding, is held to this share of its natural scale.
-const ROUNDING: f64 = 1e-12;
-
 fn reference(case: &Case, cap: u64) -> Reference {
     let settings = SamplerSettings { precision: 1e-9, cap, ..SamplerSettings::default() };
     Sampler::new(case, settings).unwrap().run()
@@ -30,31 +27,8 @@ fn reference(case: &Case, cap: u64) -> Reference {
 
 /// Deviations of every entry from the outside value in standard errors, with what to call each.
 fn deviations(record: &Record, case: &Case, reference: &Reference) -> Vec<(String, f64)> {
-    let (exact, outputs) = (record.moments(), record.outputs());
-    let (found, error) = (&reference.moments, &reference.standard_error);
-    let sd: Vec<f64> = exact.covariance.diagonal().iter().map(|v| v.sqrt()).collect();
-    let mut all = Vec::new();
-    let mut push = |entry: String, difference: f64, error: f64, scale: f64| {
-        // Where nothing is left to chance the standard error is rounding too, and says nothing.
-        let deviation =
-            if difference.abs() <= ROUNDING * scale { 0.0 } else { difference / error.max(ROUNDING * scale) };
-        all.push((format!("{} {entry}", record.id), deviation));
-    };
-    for (j, &out) in outputs.iter().enumerate() {
-        let angular = case.sensor().outputs()[out].angular;
-        let shift = found.mean[out] - exact.mean[j];
-        push(format!("mean[{j}]"), if angular { wrap(shift) } else { shift }, error.mean[out], sd[j]);
-        for (k, &other) in outputs.iter().enumerate().take(j + 1) {
-            let difference = found.covariance[(out, other)] - exact.covariance[(j, k)];
-            push(format!("covariance[{j}][{k}]"), difference, error.covariance[(out, other)], sd[j] * sd[k]);
-        }
-        for i in 0..record.inputs.n {
-            let difference = found.cross_covariance[(i, out)] - exact.cross_covariance[(i, j)];
-            let scale = case.prior().covariance()[(i, i)].sqrt() * sd[j];
-            push(format!("cross_covariance[{i}][{j}]"), difference, error.cross_covariance[(i, out)], scale);
-        }
-    }
-    all
+    let all = common::deviations::deviations(case, reference, &record.moments(), &record.outputs());
+    all.into_iter().map(|d| (d.entry, d.z)).collect()
 }
 
 /// Sources stand in the check files: closed forms of quadratic forms (among them the comparison loss of JCGM
