@@ -187,7 +187,7 @@ fn bundled_suites_are_sound_and_large_enough() {
     for bundled in Suite::bundled() {
         let suite = Suite::load(bundled.name, None).unwrap_or_else(|e| panic!("{e}"));
         assert_eq!(suite.title, bundled.summary);
-        let range = if bundled.name == "smoke" { 10..=14 } else { 60..=100 };
+        let range = if bundled.name == "smoke" { 24..=40 } else { 24..=100 };
         assert!(range.contains(&suite.cases.len()), "{} has {} cases", suite.name, suite.cases.len());
         let names: HashSet<_> = suite.cases.iter().map(Case::id).collect();
         assert_eq!(names.len(), suite.cases.len());
@@ -344,7 +344,7 @@ fn files_that_are_no_suite_are_refused() {
     assert_eq!(
         Suite::load("harbor-radar", None).unwrap_err().to_string(),
         "harbor-radar: there is no bundled suite of this name; did you mean `harbour-radar`? give one of \
-         harbour-radar, listening-buoys, power-meter, smoke, or the path of a file that ends in .toml (case records go to --cases)"
+         harbour-radar, listening-buoys, power-meter, pilot-boats, mast-cameras, wave-timing, smoke, or the path of a file that ends in .toml (case records go to --cases)"
     );
 }
 

@@ -20,14 +20,14 @@ fn smoke_leaves_every_file_as_the_formats_say() {
     let out = desk.succeed(&["survey", "smoke", "--out", "found"]);
 
     assert_narrow(&out);
-    assert!(out.contains(CAUTION) && out.contains("12 of 12 cases"), "{out}");
+    assert!(out.contains(CAUTION) && out.contains("28 of 28 cases"), "{out}");
     assert!(out.contains("Written to found/smoke") || cfg!(windows), "{out}");
     assert_eq!(names(&desk.path("found")), [".references", "smoke"]);
     assert_eq!(names(&desk.path("found/smoke")), FILES);
 
     let cases: Vec<CaseRecord> = desk.lines("found/smoke/cases.jsonl");
     let by_name: HashMap<&str, &CaseRecord> = cases.iter().map(|c| (c.case.as_str(), c)).collect();
-    assert_eq!((cases.len(), by_name.len()), (12, 12));
+    assert_eq!((cases.len(), by_name.len()), (28, 28));
     for c in &cases {
         let (n, p) = (c.prior.mean.len(), c.sensor.outputs());
         assert!(c.prior.covariance.len() == n && c.prior.covariance.iter().all(|r| r.len() == n), "{c:?}");
@@ -66,7 +66,11 @@ fn smoke_leaves_every_file_as_the_formats_say() {
     assert_eq!((answered, rows.len()), (asked, cases.len() * methods.len()));
     for row in &rows {
         assert!(!row.reason.is_empty() && row.verdict != Verdict::Skipped, "{row:?}");
-        assert!(row.inputs == 2 && [row.values, row.jacobians, row.hessians].iter().flatten().sum::<u64>() > 0);
+        // Every sensor of the suite reads its whole state.
+        let n = by_name[row.case.as_str()].prior.mean.len();
+        assert!(
+            row.inputs == n as u64 && [row.values, row.jacobians, row.hessians].iter().flatten().sum::<u64>() > 0
+        );
         let linear = by_name[row.case.as_str()].sensor.is_linear();
         let exact = by_name[row.case.as_str()].sensor.is_polynomial();
         let least = if exact { 0.0 } else { f64::MIN_POSITIVE };
@@ -94,7 +98,7 @@ fn smoke_leaves_every_file_as_the_formats_say() {
     assert_eq!(manifest.settings.limits["excess"], 0.05);
     assert_eq!(manifest.samples, references.iter().map(|r| r.points).sum::<u64>());
     let c = &manifest.cases;
-    assert_eq!((c.asked, c.finished, c.complete), (12, 12, true));
+    assert_eq!((c.asked, c.finished, c.complete), (28, 28, true));
     let cost = manifest.cost.unwrap();
     assert_eq!(cost.len(), methods.len());
     assert!(cost.iter().all(|c| c.time_ratio.is_some() && c.transforms_per_second.unwrap() > 0.0), "{cost:?}");

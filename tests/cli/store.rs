@@ -46,7 +46,7 @@ fn any_precision_gives_the_files_of_a_fresh_run_whatever_is_stored() {
     }
     assert!(samples(&desk, "fresh-1e-5/smoke") > 2 * samples(&desk, "fresh-1e-3/smoke"), "nothing was deepened");
     assert_eq!(names(&desk.path("kept")), [".references", "smoke"]);
-    assert_eq!(names(&desk.path("kept/.references")).len(), 12);
+    assert_eq!(names(&desk.path("kept/.references")).len(), 28);
     // Other methods need other verdicts decided: another depth.
     let methods = ["--methods", "gauss-hermite:order=5", "--precision", "1e-2"];
     survey(&desk, "fresh-methods", &methods);
