@@ -1,6 +1,6 @@
 use comfy_table::Table;
 
-use super::table::{lines, plain_table, wrapped};
+use super::table::{keep_whole, lines, plain_table, wrapped};
 use crate::score::ScoreKind;
 use crate::{method, sensor};
 
@@ -10,11 +10,15 @@ pub fn sensor_table() -> String {
     for kind in sensor::KINDS {
         table.add_row([kind.name, kind.summary, kind.formula, kind.parameters, kind.source]);
     }
+    // A name is there to be copied.
+    keep_whole(&mut table, 0..1);
     with_legend(
         &table,
         &[
-            "x: the state, n components, counted from 0; (x, y) its planar position; (sx, sy) a station; p: number \
-             of outputs; y_j, theta_j: output j; ': transposed.",
+            "x: the state, n components, counted from 0; (x, y), (x, y, z) its position; (sx, sy), (sx, sy, sz) a \
+             station; p: number of outputs; y_j, theta_j: output j; ': transposed.",
+            "|p - s_j|: distance of the position p, in the plane or in space, from station j; v: its velocity; [x, y(, z)]: two \
+             or three coordinates.",
             "n x n and the like: rows x columns, a list of rows. A value after = is the default.",
             "[rad, angular]: counter-clockwise from the x axis, on the circle, so that -pi and +pi are the same.",
         ],
