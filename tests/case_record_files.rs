@@ -71,7 +71,7 @@ fn case_records_that_cannot_be_meant_are_refused() {
             second("[[9,2],[2,4]]", "[[9,2],[2]]"),
             "r.jsonl:3: prior.covariance[1]: has 1 numbers, but the first row has 2",
         ),
-        (second("[0,0]", "[0,0,0]"), "r.jsonl:3: sensor.station: has length 3; give fewer entries"),
+        (second("[0,0]", "[0,0,0]"), "r.jsonl:3: sensor.station: has length 3; give a list of length 2"),
         (second("range-bearing", "sonar"), "r.jsonl:3: sensor.kind: there is no sensor `sonar`; give one of KINDS"),
         (
             second("0.01", "-0.01"),

@@ -25,6 +25,10 @@ fn a_record_comes_back_as_it_was() {
         json!({"kind": "range-bearing", "station": [0.5, -1.0], "position": [2, 0]}),
         json!({"kind": "bearing-only", "station": [0.1, 0.2], "position": [0, 1]}),
         json!({"kind": "bearing-only", "stations": [[0.1, 0.2], [3.0, 1e-300]], "position": [1, 2]}),
+        json!({"kind": "range-only", "station": [0.1, 0.2, 1e-300], "position": [2, 0, 1]}),
+        json!({"kind": "azimuth-elevation", "stations": [[0.1, 0.2, 0.3]], "position": [0, 1, 2]}),
+        json!({"kind": "time-difference", "stations": [[0.1, 0.2], [3.0, 4.0]], "position": [0, 2], "wave_speed": 0.3}),
+        json!({"kind": "received-strength", "station": [0.1, 0.2], "position": [0, 1], "strength": -40.0, "reference_distance": 0.1, "exponent": 2.4}),
         json!({"kind": "quadratic", "A": [[[1.0, 0.0, 0.3], [0.0, 0.0, 0.0], [0.0, 2.0, 0.1]]]}),
         json!({"kind": "quadratic", "A": [[[1.0, 0.0, 0.3], [0.0, 0.0, 0.0], [0.0, 2.0, 0.1]]], "b": [[1.0, 2.0, 3.0]], "c": [0.7]}),
         json!({"kind": "linear", "H": [[1.0, 0.0, 0.5]]}),
@@ -56,6 +60,32 @@ fn what_may_be_left_out_is_filled_in() {
     assert_eq!(long["sensor"]["position"], json!([0, 1]));
     assert_eq!(long["noise"]["covariance"], json!([[0.25, 0.0], [0.0, 0.25]]));
     assert_eq!(read(&long).to_json(), long);
+}
+
+/// The components of the position are as many as the coordinates of a station, those of the velocity follow them.
+#[test]
+fn default_components_follow_the_stations() {
+    let described = |kind: &str, station: Value, position: Value| {
+        let mut sensor = json!({"kind": kind, "station": station});
+        if !position.is_null() {
+            sensor["position"] = position;
+        }
+        let identity: Vec<Vec<f64>> =
+            (0..6).map(|i| (0..6).map(|j| f64::from(u8::from(i == j))).collect()).collect();
+        let prior = json!({"mean": [9, 8, 7, 6, 5, 4], "covariance": identity});
+        let case = read(&json!({"case": "d", "sensor": sensor, "prior": prior}));
+        let told = case.to_json()["sensor"].clone();
+        (case.sensor().reads().to_vec(), told["position"].clone(), told["velocity"].clone())
+    };
+    let nothing = Value::Null;
+    let (reads, position, _) = described("range-only", json!([0, 0, 0]), nothing.clone());
+    assert_eq!((reads, position), (vec![0, 1, 2], json!([0, 1, 2])));
+    let (reads, _, velocity) = described("range-doppler", json!([0, 0]), nothing.clone());
+    assert_eq!((reads, velocity), (vec![0, 1, 2, 3], json!([2, 3])));
+    let (reads, _, velocity) = described("range-doppler", json!([0, 0, 0]), nothing);
+    assert_eq!((reads, velocity), (vec![0, 1, 2, 3, 4, 5], json!([3, 4, 5])));
+    let (reads, _, velocity) = described("bearing-rate", json!([0, 0]), json!([2, 3]));
+    assert_eq!((reads, velocity), (vec![2, 3, 4, 5], json!([4, 5])));
 }
 
 /// Puts `value` at the JSON pointer `path` of a good record, reads it and returns the key at fault and the
@@ -130,6 +160,111 @@ fn every_mistake_is_answered_with_its_key() {
             sensor(json!({"kind": "bearing-only", "station": [0, 0], "stations": [[0, 0]]})),
             "sensor.stations",
             "one of the two",
+        ),
+        (sensor(json!({"kind": "range-only"})), "sensor.station", "give `station` [x, y(, z)] or"),
+        (sensor(json!({"kind": "range-only", "station": [1]})), "sensor.station", "give a list of length 2 or 3"),
+        (
+            sensor(json!({"kind": "range-only", "stations": [[1, 2], [1, 2, 3]]})),
+            "sensor.stations[1]",
+            "the first station has 2",
+        ),
+        (
+            sensor(json!({"kind": "range-only", "station": [1, 2, 3], "position": [0, 1]})),
+            "sensor.position",
+            "names 2 components; give 3",
+        ),
+        (
+            sensor(json!({"kind": "range-only", "station": [1, 2], "velocity": [0, 1]})),
+            "sensor.velocity",
+            "unknown key `velocity`",
+        ),
+        (
+            sensor(json!({"kind": "azimuth-elevation", "station": [1, 2]})),
+            "sensor.station",
+            "give a list of length 3",
+        ),
+        (
+            sensor(json!({"kind": "range-azimuth-elevation", "stations": [[1, 2]]})),
+            "sensor.stations[0]",
+            "give a list of length 3",
+        ),
+        (
+            sensor(json!({"kind": "bearing-rate", "station": [1, 2, 3]})),
+            "sensor.station",
+            "give a list of length 2",
+        ),
+        // The state has three components.
+        (
+            sensor(json!({"kind": "range-doppler", "station": [1, 2]})),
+            "sensor.velocity[1]",
+            "3 is outside the state",
+        ),
+        (
+            sensor(json!({"kind": "range-doppler", "station": [1, 2], "position": [0, 2]})),
+            "sensor.velocity",
+            "is missing; give its 2 components",
+        ),
+        (
+            sensor(json!({"kind": "range-doppler", "station": [1, 2], "velocity": [2]})),
+            "sensor.velocity",
+            "names 1 components; give 2",
+        ),
+        (
+            sensor(json!({"kind": "range-doppler", "station": [1, 2], "velocity": [2, 1]})),
+            "sensor.velocity[1]",
+            "one of the position",
+        ),
+        (
+            sensor(json!({"kind": "bearing-rate", "station": [1, 2], "position": [0, u64::MAX]})),
+            "sensor.position[1]",
+            "outside the state",
+        ),
+        (
+            sensor(json!({"kind": "time-difference", "wave_speed": 1490})),
+            "sensor.stations",
+            "is missing; give two or more",
+        ),
+        (
+            sensor(json!({"kind": "time-difference", "stations": [[0, 0], [1, 0]]})),
+            "sensor.wave_speed",
+            "is missing; give the speed",
+        ),
+        (
+            sensor(json!({"kind": "time-difference", "stations": [[0, 0]], "wave_speed": 1490})),
+            "sensor.stations",
+            "give at least 2",
+        ),
+        (
+            sensor(json!({"kind": "time-difference", "stations": [[0, 0], [1, 0], [0, 0]], "wave_speed": 1490})),
+            "sensor.stations[2]",
+            "stands where stations[0] does",
+        ),
+        (
+            sensor(json!({"kind": "time-difference", "stations": [[0, 0], [1, 0]], "wave_speed": -1})),
+            "sensor.wave_speed",
+            "-1 is not above 0",
+        ),
+        (
+            sensor(json!({"kind": "time-difference", "station": [0, 0], "wave_speed": 1})),
+            "sensor.station",
+            "did you mean `stations`",
+        ),
+        (
+            sensor(json!({"kind": "frequency-difference", "stations": [[0], [1]], "wave_speed": 1, "carrier": 1})),
+            "sensor.stations[0]",
+            "length 2 or 3",
+        ),
+        (
+            sensor(json!({"kind": "received-strength", "station": [0, 0], "strength": 1, "exponent": 2})),
+            "sensor.reference_distance",
+            "is missing; give the length in m",
+        ),
+        (
+            sensor(
+                json!({"kind": "received-strength", "station": [0, 0], "strength": 1, "exponent": 0, "reference_distance": 1}),
+            ),
+            "sensor.exponent",
+            "0 is not above 0; give how fast",
         ),
         (sensor(json!({"kind": "quadratic"})), "sensor", "`A` is missing"),
         (sensor(json!({"kind": "quadratic", "A": []})), "sensor.A", "at least one"),

@@ -27,7 +27,8 @@ fn reference(case: &Case, cap: u64) -> Reference {
 
 /// Deviations of every entry from the outside value in standard errors, with what to call each.
 fn deviations(record: &Record, case: &Case, reference: &Reference) -> Vec<(String, f64)> {
-    common::deviations::deviations(&record.id, &record.moments(), &record.outputs(), case, reference)
+    let all = common::deviations::deviations(case, reference, &record.moments(), &record.outputs());
+    all.into_iter().map(|d| (d.entry, d.z)).collect()
 }
 
 /// Sources stand in the check files: closed forms of quadratic forms (among them the comparison loss of JCGM

@@ -5,7 +5,7 @@ mod common;
 
 use std::collections::BTreeMap;
 
-use common::deviations::deviations;
+use common::deviations::{Deviation, deviations};
 use common::records::{Record, load, matrix};
 use gaussworthy::gaussian::Moments;
 use gaussworthy::reference::{Sampler, SamplerSettings, Soundness};
@@ -106,7 +106,7 @@ fn references_lie_within_their_standard_errors_of_outside_values() {
         let (id, reason) = (case.id(), &reference.reason);
         assert!(matches!(reference.soundness, Soundness::Sound | Soundness::Wide), "{id}: {reason:?}");
         let outputs: Vec<usize> = (0..exact.mean.len()).collect();
-        for (entry, z) in deviations(id, exact, &outputs, case, &reference) {
+        for Deviation { entry, z, .. } in deviations(case, &reference, exact, &outputs) {
             assert!(z.abs() < MOST, "{entry}: {z:.2} standard errors off");
             let most = largest.entry(case.spec().kind()).or_default();
             *most = most.max(z.abs());

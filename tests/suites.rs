@@ -243,7 +243,7 @@ fn bundled_suites_are_sound_and_large_enough() {
     for bundled in Suite::bundled() {
         let suite = Suite::load(bundled.name, None).unwrap_or_else(|e| panic!("{e}"));
         assert_eq!(suite.title, bundled.summary);
-        let range = if bundled.name == "smoke" { 30..=60 } else { 30..=100 };
+        let range = if bundled.name == "smoke" { 30..=80 } else { 24..=100 };
         assert!(range.contains(&suite.cases.len()), "{} has {} cases", suite.name, suite.cases.len());
         let names: HashSet<_> = suite.cases.iter().map(Case::id).collect();
         assert_eq!(names.len(), suite.cases.len());

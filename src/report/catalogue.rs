@@ -1,6 +1,6 @@
 use comfy_table::Table;
 
-use super::table::{labelled, lines, plain_table, wrapped};
+use super::table::{keep_whole, labelled, lines, plain_table, wrapped};
 use crate::score::ScoreKind;
 use crate::sensor::Output;
 use crate::suite::Case;
@@ -13,6 +13,8 @@ pub fn sensor_table() -> String {
     for kind in sensor::KINDS {
         table.add_row([kind.name, kind.summary, &outputs(&example(kind))]);
     }
+    // A name is there to be copied.
+    keep_whole(&mut table, 0..1);
     with_legend(
         &table,
         &[

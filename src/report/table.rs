@@ -29,7 +29,7 @@ pub(super) fn plain_table(header: &[&str], right: std::ops::Range<usize>) -> Tab
 }
 
 /// Keeps the words of these columns on one line.
-fn keep_whole(table: &mut Table, columns: std::ops::Range<usize>) {
+pub(super) fn keep_whole(table: &mut Table, columns: std::ops::Range<usize>) {
     for i in columns {
         if let Some(column) = table.column_mut(i) {
             column.set_constraint(ColumnConstraint::ContentWidth);

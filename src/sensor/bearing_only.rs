@@ -1,5 +1,5 @@
 use super::kinds::{Kind, built};
-use super::planar::{Lookout, Parameters, seen_from};
+use super::lookout::{Coordinates, Lookout, Parameters, seen_from, with_position};
 use super::{Formula, Number, Output, ParameterError};
 
 pub(super) const KIND: Kind = Kind {
@@ -10,7 +10,7 @@ pub(super) const KIND: Kind = Kind {
     quantities: &[("station", "m"), ("stations", "m")],
     source: "Bar-Shalom, Li, Kirubarajan 2001",
     example: r#"{"case":"trawler","sensor":{"kind":"bearing-only","stations":[[0,0],[1200,0]]},"prior":{"mean":[800,1500],"covariance":[[40000,0],[0,40000]]},"noise":{"covariance":3e-4}}"#,
-    build: |map, n| built(map, n, BearingOnly::from_parameters),
+    build: |map, n| built(with_position(map), n, BearingOnly::from_parameters),
 };
 
 /// Bearings of a planar position from one or several stations.
@@ -32,20 +32,23 @@ impl BearingOnly {
     /// [`ParameterError`] if there is no station, a coordinate is not finite, or a component is outside the
     /// state or stands twice.
     pub fn new(stations: Vec<[f64; 2]>, position: [usize; 2], n: usize) -> Result<Self, ParameterError> {
-        let lookout = Lookout::new(stations, position, n)?;
+        let stations = stations.into_iter().map(Vec::from).collect();
+        Ok(Self::over(Lookout::new(stations, &position, Coordinates::Two, n)?))
+    }
+
+    fn over(lookout: Lookout) -> Self {
         let outputs = lookout.outputs(|called| vec![Output::angle(called("bearing"))]);
-        Ok(Self { lookout, outputs })
+        Self { lookout, outputs }
     }
 
     pub(super) fn from_parameters(p: Parameters, n: usize) -> Result<Self, ParameterError> {
-        let (stations, position) = p.places()?;
-        Self::new(stations, position, n)
+        Ok(Self::over(p.lookout(Coordinates::Two, n)?))
     }
 }
 
 impl Formula for BearingOnly {
     fn reads(&self) -> &[usize] {
-        &self.lookout.position
+        &self.lookout.reads
     }
 
     fn outputs(&self) -> &[Output] {

@@ -2,7 +2,7 @@ use serde::{Deserialize, Serialize};
 
 use super::kinds::{Kind, built};
 use super::parameter::{checked_components, checked_row};
-use super::space::default_position;
+use super::position::first_three;
 use super::{Formula, Number, Output, ParameterError};
 
 pub(super) const KIND: Kind = Kind {
@@ -48,7 +48,7 @@ pub(super) struct Parameters {
     place: [f64; 3],
     #[serde(default)]
     background: [f64; 3],
-    #[serde(default = "default_position")]
+    #[serde(default = "first_three")]
     position: [usize; 3],
 }
 

@@ -7,9 +7,10 @@ use serde_json::{Map, Value};
 use crate::wording::{plain, unknown_name};
 
 use super::{
-    ParameterError, Sensor, attitude_vector, bearing_only, dipole_field, exponential_decay, line_feature,
-    line_offset, linear, phase_sine, pinhole, polar_to_cartesian, quadratic, range_bearing, saturating,
-    stereo_disparity, written,
+    ParameterError, Sensor, attitude_vector, azimuth_elevation, bearing_only, bearing_rate, dipole_field,
+    exponential_decay, frequency_difference, line_feature, line_offset, linear, phase_sine, pinhole,
+    polar_to_cartesian, quadratic, range_azimuth_elevation, range_bearing, range_doppler, range_only,
+    received_strength, saturating, stereo_disparity, time_difference, written,
 };
 
 /// A sensor that a suite or a case record can name.
@@ -39,6 +40,14 @@ pub(super) type Built = (Map<String, Value>, Arc<dyn Sensor>);
 pub const KINDS: &[Kind] = &[
     range_bearing::KIND,
     bearing_only::KIND,
+    range_only::KIND,
+    range_doppler::KIND,
+    bearing_rate::KIND,
+    range_azimuth_elevation::KIND,
+    azimuth_elevation::KIND,
+    time_difference::KIND,
+    frequency_difference::KIND,
+    received_strength::KIND,
     polar_to_cartesian::KIND,
     line_offset::KIND,
     line_feature::KIND,

@@ -2,7 +2,7 @@ use serde::{Deserialize, Serialize};
 
 use super::kinds::{Kind, built};
 use super::parameter::{checked_components, checked_row};
-use super::planar::default_position;
+use super::position::first_two;
 use super::{Formula, Number, Output, ParameterError};
 
 pub(super) const KIND: Kind = Kind {
@@ -35,7 +35,7 @@ pub struct LineOffset {
 #[serde(deny_unknown_fields)]
 pub(super) struct Parameters {
     through: [[f64; 2]; 2],
-    #[serde(default = "default_position")]
+    #[serde(default = "first_two")]
     position: [usize; 2],
 }
 

@@ -72,3 +72,16 @@ pub(super) fn checked_components(key: &str, components: &[usize], n: usize) -> R
     }
     Ok(())
 }
+
+/// The number, if it is finite and above zero; `right` says what it should be.
+pub(super) fn positive(key: &str, value: f64, right: &str) -> Result<f64, ParameterError> {
+    if value > 0.0 && value.is_finite() {
+        return Ok(value);
+    }
+    Err(ParameterError::new(key, format!("{value} is not above 0; give {right}")))
+}
+
+/// The parameter, if it was given; `right` says what it should be.
+pub(super) fn given<T>(key: &str, value: Option<T>, right: &str) -> Result<T, ParameterError> {
+    value.ok_or_else(|| ParameterError::new(key, format!("is missing; give {right}")))
+}

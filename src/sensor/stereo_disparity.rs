@@ -2,7 +2,7 @@ use serde::{Deserialize, Serialize};
 
 use super::kinds::{Kind, built};
 use super::parameter::{above_zero, checked_components, checked_row};
-use super::space::default_position;
+use super::position::first_three;
 use super::{Formula, Number, Output, ParameterError};
 
 pub(super) const KIND: Kind = Kind {
@@ -43,7 +43,7 @@ pub(super) struct Parameters {
     baseline: f64,
     #[serde(default)]
     centre: [f64; 2],
-    #[serde(default = "default_position")]
+    #[serde(default = "first_three")]
     position: [usize; 3],
 }
 

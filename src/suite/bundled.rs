@@ -30,6 +30,21 @@ pub(super) const ALL: &[Bundled] = &[
         text: include_str!("../../suites/power-meter.toml"),
     },
     Bundled {
+        name: "pilot-boats",
+        summary: "Pilot boats of Brackmoor Sound: range rates, bearing rates and ranges alone, with velocity states",
+        text: include_str!("../../suites/pilot-boats.toml"),
+    },
+    Bundled {
+        name: "mast-cameras",
+        summary: "Mast cameras of Brackmoor Sound: azimuth and elevation of a drone, with range and from two masts",
+        text: include_str!("../../suites/mast-cameras.toml"),
+    },
+    Bundled {
+        name: "wave-timing",
+        summary: "Distress transmitter in Brackmoor Sound: differences of time and frequency, and received strength",
+        text: include_str!("../../suites/wave-timing.toml"),
+    },
+    Bundled {
         name: "leading-lights",
         summary: "Leading lights of Brackmoor Sound: offsets from lines known and mapped, directions through attitude errors",
         text: include_str!("../../suites/leading-lights.toml"),

@@ -30,6 +30,31 @@ pub enum Sensor {
         stations: Option<Vec<[f64; 2]>>,
         position: [usize; 2],
     },
+    RangeOnly(Seen),
+    RangeDoppler(Moving),
+    BearingRate(Moving),
+    RangeAzimuthElevation(Seen),
+    AzimuthElevation(Seen),
+    TimeDifference {
+        stations: Matrix,
+        position: Vec<usize>,
+        wave_speed: f64,
+    },
+    FrequencyDifference {
+        stations: Matrix,
+        position: Vec<usize>,
+        velocity: Vec<usize>,
+        carrier: f64,
+        wave_speed: f64,
+    },
+    ReceivedStrength {
+        station: Option<Vec<f64>>,
+        stations: Option<Matrix>,
+        position: Vec<usize>,
+        strength: f64,
+        reference_distance: f64,
+        exponent: f64,
+    },
     Quadratic {
         #[serde(rename = "A")]
         a: Vec<Matrix>,
@@ -98,12 +123,41 @@ pub enum Sensor {
     },
 }
 
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Seen {
+    station: Option<Vec<f64>>,
+    stations: Option<Matrix>,
+    position: Vec<usize>,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Moving {
+    station: Option<Vec<f64>>,
+    stations: Option<Matrix>,
+    position: Vec<usize>,
+    velocity: Vec<usize>,
+}
+
+fn count(stations: &Option<Matrix>) -> usize {
+    stations.as_ref().map_or(1, Vec::len)
+}
+
 impl Sensor {
     /// Number of outputs.
     pub fn outputs(&self) -> usize {
         match self {
             Self::RangeBearing { .. } => 2,
             Self::BearingOnly { stations, .. } => stations.as_ref().map_or(1, Vec::len),
+            Self::RangeOnly(seen) => count(&seen.stations),
+            Self::RangeDoppler(moving) | Self::BearingRate(moving) => 2 * count(&moving.stations),
+            Self::RangeAzimuthElevation(seen) => 3 * count(&seen.stations),
+            Self::AzimuthElevation(seen) => 2 * count(&seen.stations),
+            Self::TimeDifference { stations, .. } | Self::FrequencyDifference { stations, .. } => {
+                stations.len() - 1
+            }
+            Self::ReceivedStrength { stations, .. } => count(stations),
             Self::Quadratic { a, .. } => a.len(),
             Self::Linear { h, .. } => h.len(),
             Self::PolarToCartesian { .. } | Self::Pinhole { .. } => 2,

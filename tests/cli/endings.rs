@@ -86,7 +86,9 @@ fn a_reader_who_leaves_does_not_stop_the_survey() {
     drop(child.stdout.take());
     let output = child.wait_with_output().unwrap();
     let said = String::from_utf8(output.stderr).unwrap();
-    assert_eq!((output.status.code(), said.as_str()), (Some(0), ""));
+    assert_eq!(output.status.code(), Some(0), "{said}");
+    // Nothing but the lines of progress that a slow machine gets.
+    assert!(said.lines().all(|line| line.contains(" cases, ") && line.ends_with(" s left")), "{said}");
     for suite in ["smoke", "mine"] {
         assert_eq!(names(&desk.path(&format!("out/{suite}"))), FILES);
         let manifest: Manifest = serde_json::from_str(&desk.read(&format!("out/{suite}/manifest.json"))).unwrap();

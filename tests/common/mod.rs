@@ -8,4 +8,5 @@ pub mod close;
 pub mod deviations;
 pub mod random;
 pub mod records;
+pub mod sightings;
 pub mod trials;

@@ -65,7 +65,7 @@ pub struct Inputs {
     #[serde(rename = "c")]
     pub constant: Option<Vec<f64>>,
     pub sensor: Option<Vec<f64>>,
-    pub position_indices: Option<[usize; 2]>,
+    pub position_indices: Option<Vec<usize>>,
     #[serde(rename = "H")]
     pub rows: Option<Vec<Vec<f64>>>,
     #[serde(rename = "R")]
@@ -101,7 +101,7 @@ impl Record {
 #[track_caller]
 pub fn case_of(record: &Record) -> Option<Case> {
     let inputs = &record.inputs;
-    let position = inputs.position_indices.unwrap_or([0, 1]);
+    let position = inputs.position_indices.clone().unwrap_or(vec![0, 1]);
     let sensor = match record.family {
         2 => json!({"kind": "quadratic", "A": inputs.quadratic, "b": inputs.linear, "c": inputs.constant}),
         3 if inputs.n == 2 => json!({"kind": "range-bearing", "station": inputs.sensor}),

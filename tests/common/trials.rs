@@ -10,6 +10,7 @@ use serde_json::{Value, json};
 
 use super::analytic::{Analytic, analytic};
 use super::random;
+use super::sightings::{Sighting, sightings};
 
 /// A sensor to try.
 pub struct Trial {
@@ -24,6 +25,8 @@ pub struct Trial {
 enum Shape {
     /// Range (where not angular) and bearing from these stations, one an output.
     Planar(Vec<[f64; 2]>),
+    /// Analytic around any position but a few.
+    Sighting(Sighting),
     /// Second degree, coefficients of order one.
     Polynomial,
     /// Anything else, by its size in the complex plane.
@@ -62,6 +65,7 @@ impl Trial {
                 let direction = rng.random_range(-PI..PI);
                 vec![sx + range * direction.cos(), sy + range * direction.sin()]
             }
+            Shape::Sighting(sighting) => sighting.point(rng),
             Shape::Polynomial => random::normal_vector(a, rng).iter().map(|z| 10.0 * z).collect(),
             Shape::Analytic(analytic) => (analytic.point)(rng),
         }
@@ -85,6 +89,19 @@ impl Trial {
                     Bend { step, value: PI, slope: 1.0 / near, third, fourth }
                 } else {
                     Bend { step, value: r, slope: 1.0, third: 3.0 / near.powi(2), fourth: 15.0 / near.powi(3) }
+                }
+            }
+            Shape::Sighting(sighting) => {
+                let reach = sighting.reach(x, j);
+                let (step, departure) = (6e-6 * reach.radius, reach.departure);
+                // What is left around a point of the ball.
+                let radius = reach.radius - step;
+                Bend {
+                    step,
+                    value: reach.value,
+                    slope: departure / radius,
+                    third: 6.0 * departure / radius.powi(3),
+                    fourth: 24.0 * departure / radius.powi(4),
                 }
             }
             Shape::Polynomial => {
@@ -115,6 +132,7 @@ pub fn trials() -> Vec<Trial> {
         written_range_bearing([3.0, -2.0]),
         written_polynomial(),
     ];
+    trials.extend(sightings().into_iter().map(|s| Trial::new(s.described(), 6, Shape::Sighting(s))));
     for n in 1..=9 {
         for p in 1..=3 {
             trials.push(quadratic(n, p, &mut rng));

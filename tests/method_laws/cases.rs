@@ -53,6 +53,11 @@ pub fn moments(method: &MethodSpec, sensor: &dyn Sensor, prior: &Gaussian, noise
 /// One sensor of every kind at least, each reading all components of its prior.
 pub fn sensors() -> Vec<(SensorSpec, Gaussian)> {
     let planar = || law(&[30.0, 10.0], &[&[5.0, 1.0], &[-0.5, 2.0]]);
+    let spatial = || law(&[30.0, 10.0, 20.0], &[&[4.0, 1.0, 0.0], &[-0.5, 2.0, 1.0], &[0.5, 0.0, 3.0]]);
+    let moving = || {
+        let root = [[5.0, 1.0, 0.0, 0.0], [-0.5, 2.0, 0.0, 0.0], [0.3, 0.0, 0.5, 0.1], [0.0, -0.2, 0.0, 0.4]];
+        law(&[30.0, 10.0, -2.0, 3.0], &root.each_ref().map(|row| row.as_slice()))
+    };
     let space = || law(&[3.0, -2.0, 40.0], &[&[1.0, 0.2, 0.0], &[0.3, 1.5, 0.0], &[-0.5, 0.4, 2.0]]);
     let small = || law(&[0.1, -0.2, 0.3], &[&[0.2, 0.0, 0.0], &[0.05, 0.1, 0.0], &[-0.1, 0.02, 0.3]]);
     let single = || law(&[1.5], &[&[0.7]]);
@@ -69,6 +74,24 @@ pub fn sensors() -> Vec<(SensorSpec, Gaussian)> {
         (json!({"kind": "bearing-only", "stations": [[2.0, -1.0], [60.0, 3.0]]}), planar()),
         (
             json!({"kind": "quadratic", "A": [[[1, 2], [0, -1]], [[0, 0], [0, 1]]], "b": [[1, 0], [0, 3]], "c": [1, 2]}),
+            planar(),
+        ),
+        (json!({"kind": "range-only", "stations": [[2.0, -1.0], [60.0, 3.0]]}), planar()),
+        (json!({"kind": "range-only", "station": [2.0, -1.0, 4.0]}), spatial()),
+        (json!({"kind": "range-doppler", "station": [2.0, -1.0]}), moving()),
+        (json!({"kind": "bearing-rate", "station": [2.0, -1.0]}), moving()),
+        (json!({"kind": "range-azimuth-elevation", "station": [2.0, -1.0, 4.0]}), spatial()),
+        (json!({"kind": "azimuth-elevation", "stations": [[2.0, -1.0, 4.0], [60.0, 3.0, 5.0]]}), spatial()),
+        (
+            json!({"kind": "time-difference", "stations": [[2.0, -1.0], [60.0, 3.0]], "wave_speed": 1500.0}),
+            planar(),
+        ),
+        (
+            json!({"kind": "frequency-difference", "stations": [[2.0, -1.0], [60.0, 3.0], [1.0, 70.0]], "carrier": 9e3, "wave_speed": 1500.0}),
+            moving(),
+        ),
+        (
+            json!({"kind": "received-strength", "station": [2.0, -1.0], "strength": -40.0, "reference_distance": 1.0, "exponent": 2.4}),
             planar(),
         ),
         (json!({"kind": "linear", "H": [[1, 2], [3, -1], [0.5, 0]], "offset": [1, 2, 3]}), planar()),
