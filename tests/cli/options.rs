@@ -34,15 +34,15 @@ fn precision_is_reached_and_the_cap_is_kept() {
         let said = desk.succeed(&[&["survey", "smoke", "--no-timing", "--out", out], more].concat());
         (desk.lines(&format!("{out}/smoke/references.jsonl")), said)
     };
-    let (fine, _) = survey("fine", &["--precision", "1e-5"]);
+    let (fine, _) = survey("fine", &["--precision", "3e-5"]);
     let (coarse, _) = survey("coarse", &["--precision", "5e-2"]);
-    let (capped, said) = survey("capped", &["--precision", "1e-8", "--cap", "40000"]);
+    let (capped, said) = survey("capped", &["--precision", "1e-10", "--cap", "40000"]);
     let cases: Vec<CaseRecord> = desk.lines("fine/smoke/cases.jsonl");
-    assert_eq!(manifest(&desk, "fine/smoke").settings.precision, 1e-5);
+    assert_eq!(manifest(&desk, "fine/smoke").settings.precision, 3e-5);
     assert_eq!(manifest(&desk, "capped/smoke").settings.cap, 40_000);
     let samples = |records: &[MomentsRecord]| records.iter().map(|r| r.points).sum::<u64>();
     assert!(samples(&fine) > 2 * samples(&coarse), "{} and {}", samples(&fine), samples(&coarse));
-    for (record, limit) in fine.iter().map(|r| (r, 1e-5)).chain(coarse.iter().map(|r| (r, 5e-2))) {
+    for (record, limit) in fine.iter().map(|r| (r, 3e-5)).chain(coarse.iter().map(|r| (r, 5e-2))) {
         assert!(record.soundness == Soundness::Sound && worst(record) <= limit, "{record:?}");
     }
     for (record, case) in capped.iter().zip(&cases) {
@@ -51,7 +51,9 @@ fn precision_is_reached_and_the_cap_is_kept() {
         assert_eq!(record.soundness, soundness, "{record:?}");
     }
     assert_narrow(&said);
-    assert!(said.contains("23 references fell short of the asked precision at the cap of 40000 samples"), "{said}");
+    let short = cases.iter().filter(|case| !case.sensor.is_polynomial()).count();
+    let note = format!("{short} references fell short of the asked precision at the cap of 40000 samples");
+    assert!(said.contains(&note), "{said}");
 }
 
 /// Too large a state for a product rule is nobody's mistake: the method is skipped and says why.
