@@ -73,7 +73,7 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (with("[noise]", "[nosie]"), "x.toml:8: nosie: unknown key `nosie`; did you mean `noise`? allowed: title, note, seed, precision, cap, draws, limits, method, family, sensor, prior, noise".into()),
         (with("covariance", "covarience"), "x.toml:7: prior.covarience: unknown key `covarience`; did you mean `covariance`? allowed: mean, covariance, sd, correlation, frame_bearing, frame_elevation, range, bearing, elevation, along_sd, across_sd, up_sd, frame_covariance, seen_from, speed, speed_sd, course, course_sd, climb, climb_sd, rest_mean, rest_sd".into()),
         (with("station =", "statoin ="), "x.toml:4: sensor.statoin: unknown key `statoin`; did you mean `station`? allowed: station, stations, position".into()),
-        (with("sd =", "std ="), "x.toml:9: noise.std: unknown key `std`; did you mean `sd`? allowed: sd, covariance".into()),
+        (with("sd =", "std ="), "x.toml:9: noise.std: unknown key `std`; did you mean `sd`? allowed: sd, covariance, inside".into()),
         (with("", "[[family]]\nname = \"a\"\nnotes = 1\n"), "x.toml:12: family[0].notes: unknown key `notes`; did you mean `noise`? allowed: name, draws, sensor, prior, noise".into()),
         // Sensors.
         (with("range-bearing", "range-baering"), "x.toml:3: sensor.kind: there is no sensor `range-baering`; did you mean `range-bearing`? give one of KINDS".into()),

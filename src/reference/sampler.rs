@@ -253,16 +253,16 @@ impl<'a> Sampler<'a> {
 
     fn refusal(&self, moments: &Moments) -> Option<String> {
         let outputs = self.question.sensor.outputs();
-        let undefined = self.foresight.undefined;
-        if undefined > MAY_BE_UNDEFINED {
-            return Some(format!("the sensor is undefined with probability {undefined:.1e} under this prior"));
-        }
         if !moments.is_finite() {
             let which = (0..outputs.len()).find(|&j| !moments.covariance[(j, j)].is_finite()).unwrap_or(0);
             return Some(format!(
                 "output `{}` or its square is not a finite number at every sample",
                 outputs[which].name
             ));
+        }
+        let undefined = self.foresight.undefined;
+        if undefined > MAY_BE_UNDEFINED {
+            return Some(format!("the sensor is undefined with probability {undefined:.1e} under this prior"));
         }
         for (i, &component) in self.question.sensor.reads().iter().enumerate() {
             let prior = self.question.prior;

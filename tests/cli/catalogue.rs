@@ -107,10 +107,10 @@ fn a_name_that_is_not_there_is_answered_with_the_nearest() {
             "sensors",
             "pinhoel",
             "there is no sensor `pinhoel`; did you mean `pinhole`? give one of range-bearing, ",
-            "linear",
+            "formula",
         ),
-        ("sensors", "", "there is no sensor ``; give one of range-bearing, ", "linear"),
-        ("sensors", "taylor-1", "there is no sensor `taylor-1`; give one of range-bearing, ", "linear"),
+        ("sensors", "", "there is no sensor ``; give one of range-bearing, ", "formula"),
+        ("sensors", "taylor-1", "there is no sensor `taylor-1`; give one of range-bearing, ", "formula"),
         (
             "methods",
             "tailor-1",

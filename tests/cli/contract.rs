@@ -3,7 +3,7 @@
 // Fields are here to be read into, whether or not a test looks at them.
 #![allow(dead_code)]
 
-use std::collections::HashMap;
+use std::collections::{BTreeMap, HashMap};
 
 use serde::Deserialize;
 
@@ -121,6 +121,32 @@ pub enum Sensor {
         component: usize,
         unit: String,
     },
+    /// Written out: it has no kind.
+    #[serde(untagged)]
+    Formula(Written),
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Written {
+    state: Vec<String>,
+    #[serde(default)]
+    parameters: BTreeMap<String, f64>,
+    #[serde(default)]
+    noise: Vec<String>,
+    #[serde(default)]
+    definitions: BTreeMap<String, String>,
+    outputs: Vec<WrittenOutput>,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+struct WrittenOutput {
+    name: String,
+    formula: String,
+    unit: Option<String>,
+    #[serde(default)]
+    angular: bool,
 }
 
 #[derive(Debug, Deserialize)]
@@ -164,7 +190,13 @@ impl Sensor {
             Self::StereoDisparity { .. } | Self::AttitudeVector { .. } => 3,
             Self::LineOffset { .. } | Self::LineFeature { .. } | Self::DipoleField { .. } => 1,
             Self::ExponentialDecay { .. } | Self::Saturating { .. } | Self::PhaseSine { .. } => 1,
+            Self::Formula(written) => written.outputs.len(),
         }
+    }
+
+    /// Number of noise variables inside.
+    pub fn noise(&self) -> usize {
+        if let Self::Formula(written) = self { written.noise.len() } else { 0 }
     }
 
     pub fn is_linear(&self) -> bool {
@@ -187,6 +219,13 @@ pub struct Prior {
 #[derive(Debug, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub struct Noise {
+    pub covariance: Matrix,
+    pub inside: Option<Inside>,
+}
+
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Inside {
     pub covariance: Matrix,
 }
 

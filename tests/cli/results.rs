@@ -67,8 +67,9 @@ fn smoke_leaves_every_file_as_the_formats_say() {
     assert_eq!((answered, rows.len()), (asked, cases.len() * methods.len()));
     for row in &rows {
         assert!(!row.reason.is_empty() && row.verdict != Verdict::Skipped, "{row:?}");
-        // Every sensor of the suite reads its whole state.
-        let n = by_name[row.case.as_str()].prior.mean.len() as u64;
+        // Every sensor of the suite reads its whole state and all noise inside.
+        let case = &by_name[row.case.as_str()];
+        let n = (case.prior.mean.len() + case.sensor.noise()) as u64;
         assert!(row.inputs == n && [row.values, row.jacobians, row.hessians].iter().flatten().sum::<u64>() > 0);
         let linear = by_name[row.case.as_str()].sensor.is_linear();
         let exact = by_name[row.case.as_str()].sensor.is_polynomial();
