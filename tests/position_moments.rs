@@ -150,8 +150,16 @@ fn outside_values_lie_within_four_and_a_half_standard_errors() {
     println!("{chance} entries left to chance, {beyond} beyond 2.04");
     assert!(chance > 300, "only {chance} entries were left to chance");
     assert!(f64::from(beyond) <= 0.12 * f64::from(chance), "{beyond} of {chance} beyond 2.04");
-    // What the other check files speak of is held to them in references.rs.
-    let elsewhere = ["range-bearing", "bearing-only", "quadratic", "linear"];
-    let known: BTreeSet<&str> = KINDS.iter().map(|k| k.name).filter(|name| !elsewhere.contains(name)).collect();
-    assert_eq!(largest.keys().copied().collect::<BTreeSet<_>>(), known, "a sensor without an outside value");
+    let known: BTreeSet<&str> = KINDS
+        .iter()
+        .filter(|kind| {
+            kind.parameters.contains("station") && !["range-bearing", "bearing-only"].contains(&kind.name)
+        })
+        .map(|kind| kind.name)
+        .collect();
+    assert_eq!(
+        largest.keys().copied().collect::<BTreeSet<_>>(),
+        known,
+        "a sensor of a position without an outside value"
+    );
 }

@@ -79,7 +79,11 @@ fn smoke_leaves_every_file_as_the_formats_say() {
             let (value, error) = (value.unwrap(), error.unwrap());
             assert!(value.is_finite() && error >= least && error.is_finite(), "{row:?}");
         }
-        assert!(row.floor.parse::<f64>().unwrap().is_finite() && row.floor_standard_error.unwrap() >= least);
+        if case.sensor.noise() > 0 {
+            assert_eq!(row.floor, "not defined for noise inside h");
+        } else {
+            assert!(row.floor.parse::<f64>().unwrap().is_finite() && row.floor_standard_error.unwrap() >= least);
+        }
         if linear {
             assert_eq!(row.verdict, Verdict::Trusted, "{row:?}");
         }
