@@ -71,7 +71,7 @@ fn stored_references_are_used_and_fresh_ones_are_not() {
         fs::write(path, format!("{body},\n\"sha256\": \"{checksum}\"\n}}\n")).unwrap();
     }
     let altered = desk.run(&["survey", "smoke", "--no-timing", "--out", "altered", "--store", "kept"]);
-    assert_eq!((altered.code, altered.err.as_str()), (Some(0), ""));
+    assert_eq!((altered.code, without_progress(&altered.err)), (Some(0), vec![]));
     let references = |out: &str| desk.read(&format!("{out}/smoke/references.jsonl"));
     assert!(references("one").lines().zip(references("altered").lines()).all(|(a, b)| a != b));
     survey(&desk, "fresh", &["--store", "kept", "--fresh"]);
@@ -79,6 +79,11 @@ fn stored_references_are_used_and_fresh_ones_are_not() {
     survey(&desk, "again", &["--store", "kept"]);
     assert_same(&desk, "one/smoke", "again/smoke");
     assert_eq!(names(&desk.path("again")), ["smoke"], "the store is where it was asked for");
+}
+
+/// What was said on standard error but for the progress of a survey that takes its time.
+fn without_progress(said: &str) -> Vec<&str> {
+    said.lines().filter(|line| !line.contains(" samples/s")).collect()
 }
 
 #[test]
@@ -91,13 +96,14 @@ fn a_damaged_reference_is_said_once_and_sampled_anew() {
     fs::write(&path, &text[..text.len() / 2]).unwrap();
     let again = desk.run(&["survey", "smoke", "--no-timing", "--out", "again", "--store", "kept"]);
     assert_eq!(again.code, Some(0));
-    assert_eq!(again.err.lines().count(), 1, "{}", again.err);
-    let said = again.err.starts_with("smoke: a stored reference is sampled anew: ");
-    assert!(said && again.err.contains(name.as_str()) && again.err.contains("cut short"), "{}", again.err);
+    let said = without_progress(&again.err);
+    assert_eq!(said.len(), 1, "{}", again.err);
+    let start = said[0].starts_with("smoke: a stored reference is sampled anew: ");
+    assert!(start && said[0].contains(name.as_str()) && said[0].contains("cut short"), "{}", again.err);
     assert_same(&desk, "one/smoke", "again/smoke");
     assert_eq!(fs::read_to_string(&path).unwrap(), text);
     let silent = desk.run(&["survey", "smoke", "--no-timing", "--out", "again", "--store", "kept"]);
-    assert_eq!((silent.code, silent.err.as_str()), (Some(0), ""));
+    assert_eq!((silent.code, without_progress(&silent.err)), (Some(0), vec![]));
 }
 
 #[test]
