@@ -136,23 +136,23 @@ fn power(x: f64, n: f64, value: f64) -> [f64; 3] {
 macro_rules! dual_number {
     ($type:ty, $($generic:tt)*) => {
         impl $($generic)* Number for $type {
-            #[inline]
+            #[inline(always)]
             fn constant(value: f64) -> Self {
                 <$type>::from_re(value)
             }
-            #[inline]
+            #[inline(always)]
             fn sqrt(self) -> Self {
                 DualNum::sqrt(&self)
             }
-            #[inline]
+            #[inline(always)]
             fn sin(self) -> Self {
                 DualNum::sin(&self)
             }
-            #[inline]
+            #[inline(always)]
             fn cos(self) -> Self {
                 DualNum::cos(&self)
             }
-            #[inline]
+            #[inline(always)]
             fn atan2(self, x: Self) -> Self {
                 // The crate's own atan2 differentiates atan(y / x), which is NaN due north (x = 0). The larger
                 // coordinate below the line is defined everywhere but at the origin.
@@ -164,32 +164,32 @@ macro_rules! dual_number {
                 angle.re = self.re.atan2(x.re);
                 angle
             }
-            #[inline]
+            #[inline(always)]
             fn hypot(self, other: Self) -> Self {
                 DualNum::sqrt(&(self * self + other * other))
             }
-            #[inline]
+            #[inline(always)]
             fn tan(self) -> Self {
                 let value = self.re.tan();
                 let slope = 1.0 + value * value;
                 composed(self, self.re, [value, slope, 2.0 * value * slope])
             }
-            #[inline]
+            #[inline(always)]
             fn exp(self) -> Self {
                 DualNum::exp(&self)
             }
-            #[inline]
+            #[inline(always)]
             fn ln(self) -> Self {
                 DualNum::ln(&self)
             }
-            #[inline]
+            #[inline(always)]
             fn tanh(self) -> Self {
                 // The crate's own is sinh / cosh, which is NaN beyond 710.
                 let value = self.re.tanh();
                 let slope = self.re.cosh().powi(-2);
                 composed(self, self.re, [value, slope, -2.0 * value * slope])
             }
-            #[inline]
+            #[inline(always)]
             fn abs(self) -> Self {
                 let value = self.re.abs();
                 let [slope, bend] = if value == 0.0 { [f64::NAN; 2] } else { [self.re.signum(), 0.0] };
@@ -197,25 +197,25 @@ macro_rules! dual_number {
                 size.re = value;
                 size
             }
-            #[inline]
+            #[inline(always)]
             fn powi(self, exponent: i32) -> Self {
                 let value = self.re.powi(exponent);
                 let mut result = composed(self, self.re, power(self.re, f64::from(exponent), value));
                 result.re = value;
                 result
             }
-            #[inline]
+            #[inline(always)]
             fn powf(self, exponent: f64) -> Self {
                 let value = self.re.powf(exponent);
                 let mut result = composed(self, self.re, power(self.re, exponent, value));
                 result.re = value;
                 result
             }
-            #[inline]
+            #[inline(always)]
             fn if_less(self, other: Self, yes: Self, no: Self) -> Self {
                 if self.re < other.re { yes } else { no }
             }
-            #[inline]
+            #[inline(always)]
             fn if_at_most(self, other: Self, yes: Self, no: Self) -> Self {
                 if self.re <= other.re { yes } else { no }
             }
