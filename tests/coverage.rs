@@ -240,8 +240,9 @@ fn z_scores(known: &Known, reference: &Reference) -> [Vec<f64>; 3] {
 /// entries of one case help a little: a share off by 1.5 % has odds of about 0.3 % a kind. The Kolmogorov-Smirnov distance
 /// of one entry a case is above 1.95 / sqrt(2000) with odds of 0.1 %.
 ///
-/// The far tail, all entries together: beyond the 99.9 % bound of the t law lie 24 of some 24,000; twice that has odds of
-/// 1e-5, and of 1e-3 where a third of the entries of a case go together. Beyond seven standard errors lie 8e-8: none.
+/// The far tail, all entries together: beyond the 99.9 % bound of the t law lie 21 of some 20,600; twice as many have odds of
+/// 2e-5 if all entries are independent, and more as those of one case go together. Beyond seven standard errors lies a share
+/// of 7e-8: none of them.
 #[test]
 fn standard_errors_of_references_are_true() {
     for seed in [2024, 977_331] {

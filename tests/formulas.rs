@@ -82,12 +82,7 @@ fn formulas_mean_what_mathematics_means() {
         ("if(x == x, 1, 2) + if(x != y, 10, 20)", 11.0),
         ("if(not (x < y or z < 0) and y <= -1.3, 1, ln(-1))", 1.0),
         ("if((x) > (0), sqrt(x), sqrt(-x))", x.sqrt()),
-        ("orbit_free(1)", f64::INFINITY),
     ] {
-        if expected.is_infinite() {
-            assert!(formula(text).is_err());
-            continue;
-        }
         let found = value(text, [x, y, z]);
         let same = (found - expected).abs() <= 8.0 * f64::EPSILON * expected.abs().max(1.0);
         assert!(same || found.is_nan() && expected.is_nan(), "{text}: {found}, expected {expected}");

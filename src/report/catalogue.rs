@@ -36,7 +36,9 @@ pub fn sensor_page(name: &str) -> Result<String, String> {
         return Err(unknown_name("sensor", name, &names));
     };
     let case = example(kind);
-    let components: Vec<_> = case.sensor().reads().iter().map(usize::to_string).collect();
+    let n = case.prior().dimension();
+    let of_state = case.sensor().reads().iter().filter(|&&i| i < n);
+    let components: Vec<_> = of_state.map(usize::to_string).collect();
     let mut facts = vec![
         ("measures", kind.summary.into()),
         ("formula", kind.formula.into()),
@@ -48,9 +50,12 @@ pub fn sensor_page(name: &str) -> Result<String, String> {
     }
     facts.extend([
         ("outputs", outputs(&case)),
-        ("reads", format!("components {} of {} in the example", components.join(", "), case.prior().dimension())),
+        ("reads", format!("components {} of {n} in the example", components.join(", "))),
         ("source", kind.source.into()),
     ]);
+    if let names @ [_, ..] = case.sensor().noise() {
+        facts.push(("noise", format!("inside, in the example: {}", names.join(", "))));
+    }
     let mut page = format!("{}\n{}", kind.name, labelled(&facts));
     for paragraph in SENSOR_LEGEND {
         page.push_str(&format!("\n\n{}", wrapped(paragraph, 2)));

@@ -19,7 +19,10 @@ use crate::lanes::Simd;
 pub(super) const KIND: Kind = Kind {
     name: "formula",
     summary: "any sensor, written out as formulas",
-    formula: "y_j = the formula of output j, of state components, noise inside, parameters and definitions",
+    formula: "y_j = the formula of output j, of state components, noise inside, parameters and definitions. Operators by \
+              rising strength: or; and; not; < <= > >= == !=; + -; * /; signs; ^. Functions: sqrt, sin, cos, tan, asin, acos, \
+              atan, atan2, hypot, exp, ln, log10, sinh, cosh, tanh, abs, min, max, if(condition, a, b). Constants: pi, e. \
+              Angles are radians",
     parameters: "state: n names; outputs: p of {name, formula, unit = \"\", angular = false}; parameters {name = number} = \
                  none; definitions {name = formula} = none, in any order; noise: q names = none",
     quantities: &[],
@@ -219,5 +222,18 @@ impl Formula for Written {
     #[inline(always)]
     fn evaluate_block<S: Simd>(&self, length: usize, x: &[f64], y: &mut [f64]) {
         self.program.run_block::<S>(length, x, y);
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_catalogue_tells_every_function_and_constant() {
+        let told: BTreeSet<&str> = KIND.formula.split(|c: char| !c.is_ascii_alphanumeric()).collect();
+        for name in FUNCTIONS.iter().map(|f| f.name).chain(CONSTANTS.iter().map(|c| c.0)).chain([IF]) {
+            assert!(told.contains(name), "{name}");
+        }
     }
 }
