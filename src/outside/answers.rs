@@ -66,6 +66,8 @@ pub struct Tally {
     pub unusable: usize,
     /// Cases without an answer.
     pub missing: usize,
+    /// Answers for cases of other parts of the suite.
+    pub elsewhere: u64,
     /// Answers for cases that are not in the suite.
     pub unknown: u64,
     /// Lines of which it cannot be told what case they are for.

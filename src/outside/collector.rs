@@ -23,6 +23,7 @@ pub(super) struct Collector<'a> {
     places: HashMap<&'a str, usize>,
     given: Vec<Option<Given>>,
     answered: usize,
+    elsewhere: u64,
     unknown: u64,
     unreadable: u64,
     strays: Vec<String>,
@@ -48,7 +49,17 @@ impl<'a> Collector<'a> {
     pub fn new(suite: &'a Suite, shard: Option<Shard>) -> Self {
         let places = suite.cases.iter().enumerate().map(|(index, case)| (case.id(), index)).collect();
         let given = suite.cases.iter().map(|_| None).collect();
-        Self { suite, shard, places, given, answered: 0, unknown: 0, unreadable: 0, strays: Vec::new() }
+        Self {
+            suite,
+            shard,
+            places,
+            given,
+            answered: 0,
+            elsewhere: 0,
+            unknown: 0,
+            unreadable: 0,
+            strays: Vec::new(),
+        }
     }
 
     fn asks(&self, index: usize) -> bool {
@@ -89,6 +100,7 @@ impl<'a> Collector<'a> {
             return false;
         };
         if !self.asks(index) {
+            self.elsewhere += 1;
             return false;
         }
         let number = line.number;
@@ -116,8 +128,13 @@ impl<'a> Collector<'a> {
 
     /// Everything that came, and what was to be said of it; `failure` is how the command failed that gave it.
     pub fn finish(self, name: Name, origin: Origin, failure: Option<String>) -> Outside {
-        let mut tally =
-            Tally { asked: self.asked(), unknown: self.unknown, unreadable: self.unreadable, ..Tally::default() };
+        let mut tally = Tally {
+            asked: self.asked(),
+            elsewhere: self.elsewhere,
+            unknown: self.unknown,
+            unreadable: self.unreadable,
+            ..Tally::default()
+        };
         let why_missing: Option<Arc<str>> = failure.as_deref().map(Arc::from);
         let (mut unusable, mut missing) = (Vec::new(), Vec::new());
         let mut answers = Vec::with_capacity(self.given.len());

@@ -103,7 +103,7 @@ struct AnswersEntry<'a> {
 
 impl<'a> AnswersEntry<'a> {
     fn of(outside: &'a Outside) -> Self {
-        let Tally { asked, usable, unusable, missing, unknown, unreadable } = outside.tally();
+        let Tally { asked, usable, unusable, missing, unknown, unreadable, .. } = outside.tally();
         Self {
             name: outside.name(),
             asked,
