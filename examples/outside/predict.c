@@ -152,7 +152,8 @@ static bool square(const Value *value, double *to, size_t size) {
 static void write_matrix(const char *key, const double *matrix, size_t rows, size_t columns) {
     printf(",\"%s\":[", key);
     for (size_t i = 0; i < rows; i++) {
-        for (size_t j = 0; j < columns; j++) printf("%s%.17g", j ? "," : i ? ",[" : "[", matrix[i * columns + j]);
+        printf(i ? ",[" : "[");
+        for (size_t j = 0; j < columns; j++) printf("%s%.17g", j ? "," : "", matrix[i * columns + j]);
         printf("]");
     }
     printf("]");

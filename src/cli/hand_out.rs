@@ -9,6 +9,7 @@ use super::questions::Questions;
 use super::stdout::Stdout;
 
 #[derive(Debug, Args)]
+#[command(after_help = "Name one suite, or give --cases.")]
 pub struct Arguments {
     #[command(flatten)]
     questions: Questions,

@@ -12,6 +12,7 @@ use super::measuring::{Measuring, admit};
 use super::questions::Questions;
 
 #[derive(Debug, Args)]
+#[command(after_help = "Name one suite, or give --cases.")]
 pub struct Arguments {
     #[command(flatten)]
     questions: Questions,

@@ -117,6 +117,10 @@ impl OutsideCommand {
                         heard = Instant::now();
                     }
                 }
+                // What it has started may hold its output open; there is nothing more to wait for.
+                Some(Err(RecvTimeoutError::Timeout)) if collector.answered() == asked && running.has_ended() => {
+                    break End::Exit;
+                }
                 Some(Err(RecvTimeoutError::Timeout)) => {}
                 Some(Err(RecvTimeoutError::Disconnected)) => lines = None,
                 None if running.has_ended() => break End::Exit,
@@ -225,7 +229,7 @@ impl Running {
                 rustix::process::Pid::from_child(&self.child),
                 rustix::process::Signal::KILL,
             );
-            #[cfg(not(unix))]
+            // Alone, in case it has left the group.
             let _ = self.child.kill();
             self.ended = true;
         }
@@ -255,7 +259,10 @@ mod tests {
     fn words_are_split_as_a_shell_does() {
         let parse = |text| OutsideCommand::parse(text, Duration::from_secs(1));
         let command = parse("mine = ./a b='c d' \"e f\"").unwrap();
-        assert_eq!((command.name(), command.words), ("mine", ["./a", "b=c d", "e f"].map(String::from).to_vec()));
+        assert_eq!(
+            (command.name(), command.words.clone()),
+            ("mine", ["./a", "b=c d", "e f"].map(String::from).to_vec())
+        );
         for (text, error) in [
             ("mine", CommandError::Form),
             ("mine=", CommandError::Form),

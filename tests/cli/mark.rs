@@ -290,6 +290,28 @@ fn what_cannot_be_used_is_said_and_counts_as_rejected() {
     );
 }
 
+/// A bearing from the middle of its prior has no mean direction: nothing can be said of an answer there, but that there is
+/// none needs no reference.
+#[test]
+fn on_a_refused_reference_only_what_is_missing_is_judged() {
+    let desk = Desk::new();
+    desk.write(
+        "around.toml",
+        "cap = 131072\nprecision = 1e-1\n[sensor]\nkind = \"bearing-only\"\nstation = [0, 0]\n[prior]\n\
+         mean = [{ list = [0, 1000] }, 0]\nsd = [1, 1]\n[noise]\nsd = \"0.5 deg\"\n",
+    );
+    let answer = |k: usize| json!({"case": format!("around-{k:03}"), "mean": [0], "covariance": [[1e-3]], "cross_covariance": [[0], [0]]});
+    for (answered, verdict, reason) in [
+        (&[0, 1][..], Verdict::Undecided, "no verdict rests on this reference: "),
+        (&[1], Verdict::Rejected, "no answer"),
+    ] {
+        desk.write("answers.jsonl", &lines(answered.iter().map(|&k| answer(k))));
+        desk.succeed(&["mark", "around.toml", "--answers", "answers.jsonl", "--as", "mine", "--no-timing"]);
+        let row = &rows_of(&desk, "results/around", "mine")[0];
+        assert!(row.verdict == verdict && row.reason.starts_with(reason), "{row:?}");
+    }
+}
+
 /// Single precision rounds mirrored entries apart; that is no flaw.
 #[test]
 fn rounding_in_single_precision_is_no_asymmetry() {

@@ -143,6 +143,8 @@ fn other_ends_are_told_apart() {
         ("head -n 1 answers.jsonl", "exit status 0 after 1 of 4 answers"),
         ("head -n 1 answers.jsonl; kill -9 $$", "ended by signal 9 after 1 of 4 answers"),
         ("cat answers.jsonl; exit 5", "exit status 5 after 4 of 4 answers"),
+        // What it leaves behind holds its output open, and is ended.
+        ("cat answers.jsonl; sleep 300 & exit 6", "exit status 6 after 4 of 4 answers"),
     ] {
         let desk = desk(script);
         let outcome = survey(&desk, &[]);
