@@ -158,8 +158,8 @@ fn other_ends_are_told_apart() {
 #[test]
 fn a_silent_command_is_stopped_with_all_it_started() {
     let desk = desk("echo $$ > parent; sleep 300 & echo $! > child; echo tired >&2; wait");
-    let outcome = survey(&desk, &["--outside-timeout", "0.5"]);
-    let failure = "stopped after 0 of 4 answers and 0.5 s without a new one; its last words: tired";
+    let outcome = survey(&desk, &["--outside-timeout", "1.5"]);
+    let failure = "stopped after 0 of 4 answers and 1.5 s without a new one; its last words: tired";
     assert!(outcome.err.starts_with(&format!("readings: mine: {failure}\n")), "{}", outcome.err);
     for row in rows(&desk) {
         assert_eq!((row.verdict, row.reason), (Verdict::Rejected, format!("no answer: {failure}")));
@@ -172,7 +172,7 @@ fn a_silent_command_is_stopped_with_all_it_started() {
 #[test]
 fn a_slow_command_may_take_its_time() {
     let desk = desk("while read -r line; do echo \"$line\"; sleep 1; done < answers.jsonl");
-    let outcome = survey(&desk, &["--outside-timeout", "3"]);
+    let outcome = survey(&desk, &["--outside-timeout", "3.5"]);
     assert_eq!(outcome.err, "");
     all_trusted(&desk, 4);
 }
