@@ -66,7 +66,7 @@ fn ours(case: &Case, method: &MethodSpec) -> Moments {
     let (a, p) = (prior.dimension(), case.sensor().outputs().len());
     let noise = case.noise_or_zero();
     let mut moments = Moments::zeros(a, p);
-    let mut transform = method.method().plan(a, p).unwrap();
+    let mut transform = method.plan(a, p).unwrap();
     transform.apply(Problem { sensor: case.sensor(), prior, noise: &noise }, &mut moments);
     moments.cross_covariance = case.marginal().lift(moments.cross_covariance);
     moments

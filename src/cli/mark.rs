@@ -12,7 +12,10 @@ use super::measuring::{Measuring, admit};
 use super::questions::Questions;
 
 #[derive(Debug, Args)]
-#[command(after_help = "Name one suite, or give --cases.")]
+#[command(
+    after_help = "Name one suite, or give --cases. Take the suite and the seed that the cases were handed out with: an answer \
+                  says the name of its case and nothing else of it."
+)]
 pub struct Arguments {
     #[command(flatten)]
     questions: Questions,
