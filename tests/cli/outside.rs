@@ -3,7 +3,7 @@
 use std::process::Stdio;
 use std::time::{Duration, Instant};
 
-use serde_json::Value;
+use serde_json::{Value, json};
 
 use crate::contract::{CaseRecord, Manifest, Row, Verdict};
 use crate::desk::{Desk, FILES, Outcome, assert_narrow, assert_same, names};
@@ -18,11 +18,31 @@ fn desk(script: &str) -> Desk {
     desk
 }
 
-/// More cases than a pipe holds, with their answers: 600 of 150 bytes and more.
-fn many(script: &str) -> Desk {
+/// How many cases [`large`] has.
+const LARGE: usize = 40;
+
+/// Cases and answers of some 3,500 bytes each, more than a pipe holds on either way: thirty components, of which one is read.
+fn large(script: &str) -> Desk {
     let desk = desk(script);
-    desk.write("readings.toml", &READINGS.replace("to = 4, steps = 4", "to = 600, steps = 600"));
-    desk.write("answers.jsonl", &lines((0..600).map(reading)));
+    let list = |first: &str, others: &str| [&[first], &[others; 29][..]].concat().join(", ");
+    let suite = READINGS
+        .replace("[[1]]", &format!("[[{}]]", list("1", "0")))
+        .replace(
+            "[{ from = 1, to = 4, steps = 4 }]",
+            &format!("[{}]", list("{ from = 1, to = 40, steps = 40 }", "0")),
+        )
+        .replace("sd = [1]", &format!("sd = [{}]", list("1", "1")));
+    desk.write("readings.toml", &suite);
+    let answers = (0..LARGE).map(|k| {
+        let mut answer = reading(k);
+        let cross: Vec<[u8; 1]> = (0..30).map(|i| [u8::from(i == 0)]).collect();
+        answer["cross_covariance"] = json!(cross);
+        answer["for_its_own_use"] = json!("x".repeat(3000));
+        answer
+    });
+    desk.write("answers.jsonl", &lines(answers));
+    let handed_out = desk.succeed(&["hand-out", "readings.toml"]);
+    assert!(handed_out.len() > 100_000 && desk.read("answers.jsonl").len() > 100_000);
     desk
 }
 
@@ -225,7 +245,7 @@ fn full_pipes_do_not_stop_anybody() {
         "cat answers.jsonl",
         "exec < /dev/null; sleep 0.2; cat answers.jsonl",
     ] {
-        let desk = many(script);
+        let desk = large(script);
         let outcome = survey(&desk, &[]);
         assert_eq!(
             outcome.err.lines().filter(|line| line.contains("mine")).count(),
@@ -233,7 +253,7 @@ fn full_pipes_do_not_stop_anybody() {
             "{script}: {}",
             outcome.err
         );
-        all_trusted(&desk, 600);
+        all_trusted(&desk, LARGE);
     }
 }
 
