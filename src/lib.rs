@@ -3,7 +3,7 @@
 //!
 //! Data flows one way: [`suite`] makes cases; [`reference`](mod@reference) samples their true moments
 //! beside the [`method`]s that approximate them, and the answers of implementations [`outside`]; [`score`] compares the two; [`trust`] judges; [`survey`]
-//! runs it all in parallel; [`report`] writes it down. [`gaussian`] and [`sensor`] are the ground they
+//! runs it all in parallel; [`guidance`] draws conclusions; [`report`] writes it down. [`gaussian`] and [`sensor`] are the ground they
 //! stand on.
 //!
 //! Results guide a choice, they certify nothing: before an estimator steers, lands, stops or warns
@@ -11,6 +11,7 @@
 //! responsible engineers decide.
 
 pub mod gaussian;
+pub mod guidance;
 pub mod lanes;
 pub mod method;
 pub mod outside;

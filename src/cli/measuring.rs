@@ -8,7 +8,7 @@ use clap::Args;
 use gaussworthy::method::MethodSpec;
 use gaussworthy::outside::Outside;
 use gaussworthy::reference::Store;
-use gaussworthy::report::{CAUTION, ResultsFolder, printable, write_summary};
+use gaussworthy::report::{CAUTION, ResultsFolder, printable, write_envelopes, write_summary};
 use gaussworthy::suite::Suite;
 use gaussworthy::survey::{Shard, SurveyPlan, SurveySettings, summarise, survey};
 
@@ -119,8 +119,9 @@ impl Measuring {
             let progress = Progress::new(&suite.name, asked);
             let result = survey(suite, plan, !self.no_timing, &progress);
             progress.finish();
-            folder.write(&result).map_err(Failure::unfinished)?;
+            let conclusions = folder.write(&result).map_err(Failure::unfinished)?;
             write_summary(&result, &summarise(&result), &mut out)?;
+            write_envelopes(&conclusions, &mut out)?;
             writeln!(out, "  Written to {}\n", folder.path().display())?;
             if Progress::interrupted() {
                 return Err(Failure::Unfinished(anyhow!(

@@ -4,7 +4,7 @@ use serde::Serialize;
 
 use crate::outside::{Origin, Outside, Tally};
 use crate::survey::{Quartiles, SurveyResult};
-use crate::trust::Limits;
+use crate::trust::{Claim, Limits};
 
 /// What a results folder is: enough to make it again and to know what its times mean.
 #[derive(Serialize)]
@@ -52,6 +52,9 @@ struct Settings<'a> {
     #[serde(skip_serializing_if = "Vec::is_empty")]
     outside: Vec<OutsideEntry<'a>>,
     limits: &'a Limits,
+    /// What envelopes are asked to promise.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    envelope: Option<Claim>,
 }
 
 /// An outside implementation: where its answers come from.
@@ -176,6 +179,7 @@ pub(super) fn write(survey: &SurveyResult<'_>, to: &mut dyn Write) -> io::Result
             methods: labels.clone(),
             outside: plan.outside.iter().map(OutsideEntry::of).collect(),
             limits: &plan.limits,
+            envelope: survey.suite.envelope,
         },
         machine: Machine {
             threads: rayon::current_num_threads(),

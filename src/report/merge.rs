@@ -7,7 +7,9 @@ use std::path::{Path, PathBuf};
 
 use super::folder::{FolderError, ResultsFolder};
 use super::part::{Part, Records, Rows};
+use crate::trust::Claim;
 use crate::whole_file::WholeFile;
+use serde::Deserialize;
 use serde_json::{Value, json};
 
 /// One suite whose parts were joined.
@@ -135,6 +137,13 @@ fn join(suite: String, parts: &[Part], out: &Path) -> Result<Merged, MergeError>
     reference_file.finish_on_disk().map_err(failed("references.jsonl"))?;
     let score_file = score_file.into_inner().map_err(|e| failed("scores.csv")(e.into_error()))?;
     score_file.finish_on_disk().map_err(failed("scores.csv"))?;
+    let seed = parts[0].manifest["seed"].as_u64();
+    let claim = &parts[0].manifest["settings"]["envelope"];
+    let claim = if claim.is_null() { None } else { Claim::deserialize(claim).ok() };
+    let Some(seed) = seed else {
+        return Err(MergeError::at(&parts[0].folder, "its manifest names no seed"));
+    };
+    folder.conclude(seed, claim)?;
     let write_manifest = || {
         let mut file = WholeFile::create(&folder.path().join("manifest.json"))?;
         serde_json::to_writer_pretty(&mut file, &manifest(parts))?;

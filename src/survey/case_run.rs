@@ -9,7 +9,9 @@ use crate::suite::Case;
 use crate::trust::{Standing, Trust, Verdict};
 
 use super::SurveyPlan;
+use super::cause::leading_cause;
 use super::entrant::Candidate;
+use super::regime::{Indices, OpinionsOf, Panel, indices};
 
 /// What a survey found on one case.
 #[derive(Debug, Clone)]
@@ -24,6 +26,8 @@ pub struct CaseResult {
     pub floor: Floor,
     /// The floor against its limit.
     pub floor_standing: Standing,
+    /// Where the case lies.
+    pub indices: Indices,
     /// One an entrant, in the plan's order.
     pub answers: Vec<Answer>,
 }
@@ -48,12 +52,16 @@ pub type Answer = Result<Answered, Refusal>;
 pub struct Answered {
     /// Its moments of the whole state, or why an outside implementation has none.
     pub moments: Result<Moments, Flaw>,
+    /// What richer rules say of it.
+    pub opinions: OpinionsOf,
     /// What it evaluated, counted; `None` for an outside implementation.
     pub evaluations: Option<Evaluations>,
     /// Its scores, or why it has none.
     pub scores: Result<Scores, Invalid>,
     /// The verdict.
     pub verdict: Verdict,
+    /// The leading cause of a rejection, in one sentence.
+    pub cause: Option<String>,
 }
 
 /// Samples, scores and judges one case: deepens the reference until it is as precise as asked and every
@@ -96,16 +104,25 @@ pub(super) fn run_case(
         // What no verdict can rest on says nothing, of the case no more than of a method.
         let doubt = reference.reason.as_ref().map(|reason| format!("no verdict rests on this reference: {reason}"));
         let floor_standing = if doubt.is_some() { Standing::Open } else { floor_standing };
+        let panel = Panel::of(case);
         let answers = candidates
             .into_iter()
             .zip(judged)
-            .map(|(candidate, judged)| {
+            .zip(plan.entrants())
+            .map(|((candidate, judged), entrant)| {
                 let Candidate { moments, evaluations } = candidate?;
                 let (scores, verdict) = judged?;
                 // That there is no answer needs no reference.
                 let doubt = doubt.clone().filter(|_| moments.is_ok());
                 let verdict = doubt.map_or(verdict, self::undecided);
-                Ok(Answered { moments, evaluations, scores, verdict })
+                let opinions = moments.as_ref().map(|m| panel.on(case, entrant.label(), m)).unwrap_or_default();
+                let cause = match (&verdict, &moments) {
+                    (Verdict { trust: Trust::Rejected, finding: Some(finding), .. }, Ok(moments)) => {
+                        leading_cause(case, &reference, moments, finding)
+                    }
+                    _ => None,
+                };
+                Ok(Answered { moments, opinions, evaluations, scores, verdict, cause })
             })
             .collect();
         let stop = match reference.soundness {
@@ -115,7 +132,8 @@ pub(super) fn run_case(
             _ => Stop::Decided,
         };
         let reference = Reference { replicates: Vec::new(), ..reference };
-        return Some(CaseResult { index, reference, stop, floor, floor_standing, answers });
+        let indices = indices(case);
+        return Some(CaseResult { index, reference, stop, floor, floor_standing, indices, answers });
     }
 }
 

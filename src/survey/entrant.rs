@@ -49,7 +49,8 @@ impl<'a> Entrant<'a> {
     }
 }
 
-fn transformed(case: &Case, method: &MethodSpec) -> Result<Candidate, Refusal> {
+/// The moments of a case by a method, of the whole state.
+pub(super) fn transformed(case: &Case, method: &MethodSpec) -> Result<Candidate, Refusal> {
     let prior = case.marginal().law();
     let (a, p) = (prior.dimension(), case.sensor().outputs().len());
     let mut transform = method.plan(a, p)?;

@@ -36,6 +36,17 @@ pub enum Standing {
     Open,
 }
 
+impl Standing {
+    /// Its name in files.
+    pub fn name(self) -> &'static str {
+        match self {
+            Self::Kept => "kept",
+            Self::Broken => "broken",
+            Self::Open => "open",
+        }
+    }
+}
+
 /// Which side of a limit is forbidden.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum Side {

@@ -287,11 +287,12 @@ pub enum Verdict {
     Skipped,
 }
 
-/// A row of `scores.csv`: an empty field is a value that does not exist.
+/// A row of `scores.csv`: an empty field is a value that does not exist. Behind these columns come the second opinions and what
+/// the suite sweeps and draws.
 #[derive(Debug, Deserialize)]
-#[serde(deny_unknown_fields)]
 pub struct Row {
     pub case: String,
+    pub family: String,
     pub method: String,
     pub inputs: u64,
     pub values: Option<u64>,
@@ -299,6 +300,7 @@ pub struct Row {
     pub hessians: Option<u64>,
     pub verdict: Verdict,
     pub reason: String,
+    pub cause: String,
     pub mean_error: Option<f64>,
     pub mean_error_standard_error: Option<f64>,
     pub covariance_error: Option<f64>,
@@ -320,12 +322,17 @@ pub struct Row {
     /// A number, or `unbounded`.
     pub floor: String,
     pub floor_standard_error: Option<f64>,
+    pub floor_standing: String,
     pub time_ns: Option<f64>,
     pub time_ns_lower_quartile: Option<f64>,
     pub time_ns_upper_quartile: Option<f64>,
     pub time_ratio: Option<f64>,
     pub time_ratio_lower_quartile: Option<f64>,
     pub time_ratio_upper_quartile: Option<f64>,
+    pub curvature: Option<f64>,
+    pub bend_over_noise: Option<f64>,
+    pub information: Option<f64>,
+    pub spread: Option<f64>,
 }
 
 impl Row {
