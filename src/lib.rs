@@ -4,7 +4,7 @@
 //! Data flows one way: [`suite`] makes cases; [`reference`](mod@reference) samples their true moments
 //! beside the [`method`]s that approximate them; [`score`] compares the two; [`trust`] judges; [`survey`]
 //! runs it all in parallel; [`report`] writes it down. [`gaussian`] and [`sensor`] are the ground they
-//! stand on.
+//! stand on; [`net`] and [`lanes`] are what sampling is made of.
 //!
 //! Results guide a choice, they certify nothing: before an estimator steers, lands, stops or warns
 //! anything, the reader's own verification process, the applicable standards and codes, and licensed or
@@ -13,6 +13,7 @@
 pub mod gaussian;
 pub mod lanes;
 pub mod method;
+pub mod net;
 pub mod reference;
 pub mod report;
 pub mod score;
