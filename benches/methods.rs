@@ -16,7 +16,7 @@ fn transforms(criterion: &mut Criterion, name: &str, case: &Case) {
     let mut group = criterion.benchmark_group(format!("transform/{name}"));
     group.sample_size(20).warm_up_time(Duration::from_millis(500)).measurement_time(Duration::from_secs(1));
     for method in default_methods() {
-        let Ok(mut transform) = method.method().plan(a, p) else { continue };
+        let Ok(mut transform) = method.plan(a, p) else { continue };
         let mut moments = Moments::zeros(a, p);
         group.bench_function(BenchmarkId::from_parameter(method.label()), |bencher| {
             bencher.iter(|| {

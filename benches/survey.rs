@@ -32,7 +32,7 @@ fn scores(criterion: &mut Criterion) {
     let method = MethodSpec::parse("taylor-1").expect("a built-in method");
     let mut moments = Moments::zeros(2, 2);
     let problem = Problem { sensor: case.sensor(), prior, noise: &noise };
-    method.method().plan(2, 2).expect("two of two").apply(problem, &mut moments);
+    method.plan(2, 2).expect("two of two").apply(problem, &mut moments);
 
     let outputs = case.sensor().outputs();
     let mut group = criterion.benchmark_group("score");

@@ -7,6 +7,7 @@ use std::sync::Arc;
 use gaussworthy::gaussian::Moments;
 use gaussworthy::method::{Method, MethodSpec, Problem, Refusal, Transform, default_methods};
 use gaussworthy::report::write_summary;
+use gaussworthy::sensor::Arithmetic;
 use gaussworthy::suite::Suite;
 use gaussworthy::survey::{SurveyPlan, SurveySettings, Unwatched, summarise, survey};
 use nalgebra::{DMatrix, DVector};
@@ -15,7 +16,7 @@ use nalgebra::{DMatrix, DVector};
 struct Differences;
 
 impl Method for Differences {
-    fn plan(&self, a: usize, p: usize) -> Result<Box<dyn Transform>, Refusal> {
+    fn plan(&self, a: usize, p: usize, _: Arithmetic) -> Result<Box<dyn Transform>, Refusal> {
         let y = [(); 2].map(|()| DVector::zeros(p));
         Ok(Box::new(Workspace { y, slope: DMatrix::zeros(p, a) }))
     }

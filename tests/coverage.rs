@@ -161,7 +161,7 @@ fn taylor(known: &Known) -> Moments {
     let Known { sensor, prior, noise, .. } = known;
     let (a, p) = (prior.dimension(), noise.nrows());
     let mut moments = Moments::zeros(a, p);
-    let mut transform = MethodSpec::parse("taylor-1").unwrap().method().plan(a, p).unwrap();
+    let mut transform = MethodSpec::parse("taylor-1").unwrap().plan(a, p).unwrap();
     transform.apply(Problem { sensor, prior, noise }, &mut moments);
     moments
 }

@@ -191,8 +191,28 @@ fn a_state_known_exactly() {
     all_undecided(&found[1], "the prior knows the state exactly: no measurement updates it");
     all_undecided(&found[2], "the covariance of the measurement is singular: add noise or drop an output");
     assert_eq!(found[2].floor, Floor::Unbounded);
-    // On the station itself, where range has no derivative and bearing no value.
-    all_undecided(&found[3], "the prior knows the state exactly: no measurement updates it");
+    // On the station itself, where a bearing of atan2(0, 0) is a convention.
+    assert_eq!(found[3].reference.soundness, Soundness::Refused);
+    all_undecided(&found[3], "output `bearing` has no direction at the one state that the prior knows");
+}
+
+/// The square of a variance, which the spread of variances needs, leaves the numbers of a computer at spreads of 1e77 and
+/// of 1e-81.
+#[test]
+fn spreads_beyond_the_numbers_of_a_computer() {
+    let linear = "[family.sensor]\nkind = \"linear\"\nH = [[1]]\n[family.noise]\nsd = ";
+    for sd in ["1e150", "1e80", "1e-80", "1e-150"] {
+        let others = format!("{linear}{sd}\n");
+        let found = results(&[(&others, &format!("mean = [0]\nsd = [{sd}]"))]);
+        assert_eq!(found[0].reference.soundness, Soundness::Refused, "{sd}");
+        all_undecided(&found[0], "measure it in another unit");
+    }
+    for sd in ["1e60", "1e-60"] {
+        let others = format!("{linear}{sd}\n");
+        let found = results(&[(&others, &format!("mean = [0]\nsd = [{sd}]"))]);
+        assert_eq!(found[0].reference.soundness, Soundness::Sound, "{sd}");
+        assert!(verdicts(&found[0]).iter().all(|(trust, _)| *trust == Trust::Trusted), "{sd}");
+    }
 }
 
 /// y = (x / a)^2 + x z + (a z)^2 with a = 1e-6, x ~ N(a, a^2) and z ~ N(1 / a, 1 / a^2), beside the same in units of one:
@@ -306,7 +326,7 @@ fn a_prior_that_covers_the_station_is_measured_as_it_is() {
 
 #[test]
 fn a_place_too_far_for_its_digits_is_refused() {
-    let found = results(&[("", "mean = [1e200, 1]\nsd = [1e150, 1]")]);
+    let found = results(&[("", "mean = [1e60, 1]\nsd = [1e45, 1]")]);
     assert_eq!(found[0].reference.soundness, Soundness::Refused);
     let reason = found[0].reference.reason.as_ref().unwrap();
     assert!(

@@ -306,7 +306,7 @@ fn moments_of(method: &str, case: &Case) -> Moments {
     let (a, p) = (case.sensor().reads().len(), case.sensor().outputs().len());
     let mut moments = Moments::zeros(a, p);
     let spec = MethodSpec::parse(method).unwrap();
-    let mut transform = spec.method().plan(a, p).unwrap();
+    let mut transform = spec.plan(a, p).unwrap();
     let (sensor, prior, noise) = (case.sensor(), case.marginal().law(), case.noise_or_zero());
     transform.apply(Problem { sensor, prior, noise: &noise }, &mut moments);
     Moments { cross_covariance: case.marginal().lift(moments.cross_covariance), ..moments }

@@ -34,7 +34,7 @@ fn moments(case: &Case, method: &str) -> Moments {
     let mut moments = Moments::zeros(a, p);
     let method = MethodSpec::parse(method).unwrap();
     let problem = Problem { sensor: case.sensor(), prior, noise: &noise };
-    method.method().plan(a, p).unwrap().apply(problem, &mut moments);
+    method.plan(a, p).unwrap().apply(problem, &mut moments);
     moments.cross_covariance = case.marginal().lift(moments.cross_covariance);
     moments
 }

@@ -122,6 +122,64 @@ fn hessians_are_the_slopes_of_the_jacobians() {
     each_point(hessians_match);
 }
 
+/// Single precision against double at the same point, in sizes of the output over all points: steps of 6e-8, and differences
+/// inside a formula (two ranges, a field and its background) that lose four digits of them; each derivative may lose one more.
+#[test]
+fn single_precision_is_double_precision_rounded() {
+    for (t, trial) in trials().iter().enumerate() {
+        let sensor = trial.spec.sensor();
+        let (a, p) = (sensor.reads().len(), sensor.outputs().len());
+        let mut rng = random::stream(t as u64);
+        let points: Vec<Vec<f32>> =
+            (0..POINTS).map(|_| trial.point(&mut rng).iter().map(|&x| x as f32).collect()).collect();
+        let doubles: Vec<Derivatives> = points
+            .iter()
+            .map(|x| derivatives(sensor, &x.iter().map(|&x| x.into()).collect::<Vec<f64>>()))
+            .collect();
+        let sizes = |j: usize| {
+            let value = doubles.iter().map(|d| d.value[j].abs()).fold(0.0, f64::max);
+            let slope = doubles.iter().map(|d| d.jacobian.row(j).amax()).fold(0.0, f64::max);
+            (value, slope, doubles.iter().map(|d| d.hessians[j].amax()).fold(0.0, f64::max))
+        };
+        let mut differs = false;
+        for (x, double) in points.iter().zip(&doubles) {
+            let mut y = vec![0.0_f32; p];
+            sensor.values_single(1, x, &mut y);
+            let (mut beside, mut slopes) = (vec![0.0_f32; p], DMatrix::<f32>::zeros(p, a));
+            sensor.jacobian_single(x, &mut beside, &mut slopes);
+            let mut at = Derivatives::<f32>::zeros(a, p);
+            sensor.hessians_single(x, &mut at);
+            for j in 0..p {
+                let (value, slope, bend) = sizes(j);
+                let close = |found: f32, wanted: f64, allowed: f64, what: &str| {
+                    let error = (f64::from(found) - wanted).abs();
+                    assert!(error <= allowed, "{}: {what} {found} is not {wanted}", trial.name);
+                };
+                let near = |angle: f32| {
+                    let wanted = double.value[j];
+                    if sensor.outputs()[j].angular {
+                        wrap(f64::from(angle) - wanted) + wanted
+                    } else {
+                        angle.into()
+                    }
+                };
+                for found in [y[j], beside[j], at.value[j]] {
+                    close(near(found) as f32, double.value[j], 1e-3 * value, "value");
+                }
+                differs |= f64::from(y[j]) != double.value[j];
+                for i in 0..a {
+                    close(slopes[(j, i)], double.jacobian[(j, i)], 1e-3 * slope, "slope");
+                    close(at.jacobian[(j, i)], double.jacobian[(j, i)], 1e-3 * slope, "slope");
+                    for k in 0..a {
+                        close(at.hessians[j][(i, k)], double.hessians[j][(i, k)], 3e-2 * bend, "bend");
+                    }
+                }
+            }
+        }
+        assert!(differs, "{}: nothing is rounded", trial.name);
+    }
+}
+
 #[test]
 fn blocks_are_single_points_to_the_bit() {
     for (t, trial) in trials().iter().enumerate() {

@@ -1,9 +1,11 @@
-use nalgebra::{Cholesky, DMatrix, Dyn};
+use nalgebra::{Cholesky, DMatrix, Dyn, RealField};
 
 /// An eigenvalue of the correlation matrix at or below this share of the largest counts as zero.
 const RANK_SLACK: f64 = 1e-13;
 /// A squared pivot at or below this share of its diagonal entry is rounding, not variance.
 const PIVOT_SLACK: f64 = 1e-14;
+/// The same in any arithmetic, in steps of the number's last place.
+const PIVOT_STEPS: f64 = PIVOT_SLACK / f64::EPSILON;
 
 /// A square root F of a covariance A, F F' = A, and how it was found.
 #[derive(Debug, Clone, PartialEq)]
@@ -39,14 +41,16 @@ impl SquareRoot {
 /// definite.
 ///
 /// nalgebra's factorisation accepts a pivot of any positive size, so a matrix that is singular but for
-/// rounding would pass with a worthless last column: a pivot under 1e-14 of its diagonal entry is refused.
-pub(crate) fn cholesky_in_place(a: DMatrix<f64>) -> Option<DMatrix<f64>> {
+/// rounding would pass with a worthless last column: a pivot under 1e-14 of its diagonal entry (5e-6 in single precision) is
+/// refused.
+pub(crate) fn cholesky_in_place<T: RealField + Copy>(a: DMatrix<T>) -> Option<DMatrix<T>> {
     let n = a.nrows();
-    let variances: smallvec::SmallVec<[f64; 8]> = (0..n).map(|i| a[(i, i)]).collect();
+    let slack = nalgebra::convert::<f64, T>(PIVOT_STEPS) * T::default_epsilon();
+    let variances: smallvec::SmallVec<[T; 8]> = (0..n).map(|i| a[(i, i)]).collect();
     let lower = Cholesky::new(a)?.unpack();
     let sound = (0..n).all(|i| {
         let pivot = lower[(i, i)];
-        pivot * pivot > PIVOT_SLACK * variances[i]
+        pivot * pivot > slack * variances[i]
     });
     sound.then_some(lower)
 }

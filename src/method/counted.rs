@@ -88,4 +88,18 @@ impl Sensor for Counted<'_> {
         self.hessians.fetch_add(1, Ordering::Relaxed);
         self.sensor.hessians(x, at);
     }
+    fn values_single(&self, length: usize, x: &[f32], y: &mut [f32]) {
+        self.values.fetch_add(length as u64, Ordering::Relaxed);
+        self.sensor.values_single(length, x, y);
+    }
+
+    fn jacobian_single(&self, x: &[f32], y: &mut [f32], jacobian: &mut DMatrix<f32>) {
+        self.jacobians.fetch_add(1, Ordering::Relaxed);
+        self.sensor.jacobian_single(x, y, jacobian);
+    }
+
+    fn hessians_single(&self, x: &[f32], at: &mut Derivatives<f32>) {
+        self.hessians.fetch_add(1, Ordering::Relaxed);
+        self.sensor.hessians_single(x, at);
+    }
 }

@@ -1,6 +1,7 @@
 use serde::{Deserialize, Serialize};
 
 use super::{BuildError, Method, PointSet, PointTransform, Refusal, Transform};
+use crate::sensor::Arithmetic;
 
 /// The third-degree spherical-radial cubature rule: 2a points
 ///
@@ -28,9 +29,9 @@ impl ThirdDegreeCubature {
 }
 
 impl Method for ThirdDegreeCubature {
-    fn plan(&self, a: usize, p: usize) -> Result<Box<dyn Transform>, Refusal> {
+    fn plan(&self, a: usize, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal> {
         Refusal::unless_something_is_read(a)?;
         let n = a as f64;
-        PointTransform::plan(PointSet::on_axes(a, n.sqrt(), 0.5 / n, None), p)
+        PointTransform::plan(PointSet::on_axes(a, n.sqrt(), 0.5 / n, None), p, arithmetic)
     }
 }

@@ -3,6 +3,7 @@ use serde::{Deserialize, Serialize};
 
 use super::kinds::{BuildError, given_whole};
 use super::{Method, PointSet, PointTransform, Refusal, Transform};
+use crate::sensor::Arithmetic;
 
 const ORDERS: std::ops::RangeInclusive<usize> = 2..=20;
 const DEFAULT_ORDER: usize = 3;
@@ -80,7 +81,7 @@ impl GaussHermite {
 }
 
 impl Method for GaussHermite {
-    fn plan(&self, a: usize, p: usize) -> Result<Box<dyn Transform>, Refusal> {
+    fn plan(&self, a: usize, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal> {
         let (count, order) = (self.count(a)?, self.rule.len());
         let mut points = DMatrix::zeros(count, a);
         let mut weights = DVector::from_element(count, 1.0);
@@ -94,7 +95,7 @@ impl Method for GaussHermite {
                 digits /= order;
             }
         }
-        PointTransform::plan(PointSet::new(points, weights.clone(), weights), p)
+        PointTransform::plan(PointSet::new(points, weights.clone(), weights), p, arithmetic)
     }
 }
 
@@ -157,12 +158,13 @@ mod tests {
     #[test]
     fn a_plan_beyond_the_cap_says_how_many_nodes_it_would_need() {
         let rule = GaussHermite::new(5, 1000).unwrap();
-        assert!(rule.plan(4, 1).is_ok());
+        assert!(rule.plan(4, 1, Arithmetic::Double).is_ok());
         assert_eq!(
-            rule.plan(5, 1).unwrap_err().0,
+            rule.plan(5, 1, Arithmetic::Double).unwrap_err().0,
             "order 5 on 5 read components needs 5^5 = 3125 nodes; the cap max_nodes is 1000"
         );
-        let refused = GaussHermite::new(20, DEFAULT_MAX_NODES).unwrap().plan(40, 1).unwrap_err().0;
+        let refused =
+            GaussHermite::new(20, DEFAULT_MAX_NODES).unwrap().plan(40, 1, Arithmetic::Double).unwrap_err().0;
         assert!(refused.contains("20^40 = about 1.1e52 nodes"), "{refused}");
     }
 

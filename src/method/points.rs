@@ -1,8 +1,8 @@
 use nalgebra::{DMatrix, DVector};
 
 use super::{Problem, Refusal, Transform};
-use crate::gaussian::{Gaussian, Moments, cholesky_in_place, wrap};
-use crate::sensor::Output;
+use crate::gaussian::{Gaussian, Moments, cholesky_in_place};
+use crate::sensor::{Arithmetic, Output, Real};
 
 /// A quadrature rule for N(0, I) in a components: unit points z_k, weights for the mean and weights for the
 /// second moments. The two differ only in the scaled unscented transform.
@@ -86,22 +86,36 @@ impl PointSet {
 /// a little. That belongs to the published methods. A square-root filter, which carries L through its
 /// rotations, gives exactly rotated results.
 ///
+/// In single precision all of this is done in it: mean and covariance of the prior, weights, points and noise are rounded first,
+/// and the root is factored from the rounded covariance. Where rounding has left that indefinite the root is the rounded one
+/// of the prior.
+///
 /// Everything is laid out beforehand: `apply` allocates nothing unless P is singular or the sensor has more
 /// than eight inputs or outputs.
 #[derive(Debug)]
-pub struct PointTransform {
-    set: PointSet,
-    root: DMatrix<f64>,
+pub struct PointTransform<T: Real = f64> {
+    /// z_k, N x a.
+    points: DMatrix<T>,
+    /// wm_k.
+    mean_weights: DVector<T>,
+    /// wc_k.
+    covariance_weights: DVector<T>,
+    centre: Option<usize>,
+    root: DMatrix<T>,
+    /// m, then for a rule that has no centre point h(m).
+    mean: DVector<T>,
+    at_mean: DVector<T>,
     /// x_k, N x a.
-    inputs: DMatrix<f64>,
+    inputs: DMatrix<T>,
     /// h(x_k), then d_k - e, N x p.
-    deviations: DMatrix<f64>,
-    /// h(m) for a rule that has no centre point.
-    at_mean: DVector<f64>,
+    deviations: DMatrix<T>,
+    /// c, then mu.
+    middle: DVector<T>,
     /// wc_k (d_k - e) of one output.
-    weighted: DVector<f64>,
-    /// sum_k wc_k z_k (d_k - e) of one output.
-    unit_cross: DVector<f64>,
+    weighted: DVector<T>,
+    /// sum_k wc_k z_k (d_k - e) of one output, and L times it.
+    unit_cross: DVector<T>,
+    cross: DVector<T>,
 }
 
 impl PointTransform {
@@ -109,97 +123,117 @@ impl PointTransform {
     ///
     /// # Errors
     /// [`Refusal`] if the set has no coordinate.
-    pub fn plan(set: PointSet, p: usize) -> Result<Box<dyn Transform>, Refusal> {
+    pub fn plan(set: PointSet, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal> {
+        Refusal::unless_something_is_read(set.points.ncols())?;
+        Ok(match arithmetic {
+            Arithmetic::Double => Box::new(PointTransform::<f64>::new(&set, p)),
+            Arithmetic::Single => Box::new(PointTransform::<f32>::new(&set, p)),
+        })
+    }
+}
+
+impl<T: Real> PointTransform<T> {
+    fn new(set: &PointSet, p: usize) -> Self {
         let (n, a) = set.points.shape();
-        Refusal::unless_something_is_read(a)?;
-        Ok(Box::new(Self {
-            set,
+        Self {
+            points: set.points.map(T::rounded),
+            mean_weights: set.mean_weights.map(T::rounded),
+            covariance_weights: set.covariance_weights.map(T::rounded),
+            centre: set.centre,
             root: DMatrix::zeros(a, a),
+            mean: DVector::zeros(a),
+            at_mean: DVector::zeros(p),
             inputs: DMatrix::zeros(n, a),
             deviations: DMatrix::zeros(n, p),
-            at_mean: DVector::zeros(p),
+            middle: DVector::zeros(p),
             weighted: DVector::zeros(n),
             unit_cross: DVector::zeros(a),
-        }))
+            cross: DVector::zeros(a),
+        }
     }
 
-    fn take_root(&mut self, prior: &Gaussian) {
+    fn take_prior(&mut self, prior: &Gaussian) {
+        self.mean.zip_apply(prior.mean(), |to, from| *to = T::rounded(from));
         if let Some(root) = prior.given_root() {
-            self.root.copy_from(root);
+            self.root.zip_apply(root, |to, from| *to = T::rounded(from));
             return;
         }
         // The factorisation works in the storage it is given: lend it ours. An empty matrix costs nothing.
         let mut storage = std::mem::replace(&mut self.root, DMatrix::zeros(0, 0));
-        storage.copy_from(prior.covariance());
-        self.root = cholesky_in_place(storage).unwrap_or_else(|| prior.root());
+        storage.zip_apply(prior.covariance(), |to, from| *to = T::rounded(from));
+        self.root = cholesky_in_place(storage).unwrap_or_else(|| prior.root().map(T::rounded));
     }
 
     /// x_k = m + L z_k, the mean added last so that it rounds once.
-    fn place(&mut self, mean: &DVector<f64>) {
+    fn place(&mut self) {
         for (i, mut x) in self.inputs.column_iter_mut().enumerate() {
-            x.fill(0.0);
-            for (k, z) in self.set.points.column_iter().enumerate() {
+            x.fill(T::rounded(0.0));
+            for (k, z) in self.points.column_iter().enumerate() {
                 let scale = self.root[(i, k)];
-                if scale != 0.0 {
-                    x.axpy(scale, &z, 1.0);
+                if scale != T::rounded(0.0) {
+                    x.axpy(scale, &z, T::rounded(1.0));
                 }
             }
-            x.add_scalar_mut(mean[i]);
+            x.add_scalar_mut(self.mean[i]);
         }
     }
 
-    /// Writes c into the mean, which is completed by [`Self::centre_deviations`].
-    fn write_centre(&mut self, problem: Problem<'_>, mean: &mut DVector<f64>) {
+    /// Writes c into the middle, which is completed by [`Self::centre_deviations`].
+    fn write_centre(&mut self, problem: Problem<'_>) {
         let outputs = problem.sensor.outputs();
         for j in 0..outputs.len() {
-            mean[j] = self.deviations[(self.set.centre.unwrap_or(0), j)];
+            self.middle[j] = self.deviations[(self.centre.unwrap_or(0), j)];
         }
-        if self.set.centre.is_none() && outputs.iter().any(|o| o.angular) {
-            problem.sensor.value(problem.prior.mean().as_slice(), self.at_mean.as_mut_slice());
+        if self.centre.is_none() && outputs.iter().any(|o| o.angular) {
+            T::values(problem.sensor, 1, self.mean.as_slice(), self.at_mean.as_mut_slice());
             for (j, _) in outputs.iter().enumerate().filter(|(_, o)| o.angular) {
-                mean[j] = self.at_mean[j];
+                self.middle[j] = self.at_mean[j];
             }
         }
     }
 
     /// Turns values into d_k - e and the centre into the mean.
-    fn centre_deviations(&mut self, outputs: &[Output], mean: &mut DVector<f64>) {
+    fn centre_deviations(&mut self, outputs: &[Output]) {
         for (j, (mut d, output)) in self.deviations.column_iter_mut().zip(outputs).enumerate() {
-            let centre = mean[j];
+            let centre = self.middle[j];
             if output.angular {
-                d.apply(|v| *v = wrap(*v - centre));
+                d.apply(|v| *v = (*v - centre).wrapped());
             } else {
                 d.add_scalar_mut(-centre);
             }
-            let shift = d.dot(&self.set.mean_weights);
+            let shift = d.dot(&self.mean_weights);
             d.add_scalar_mut(-shift);
-            mean[j] = if output.angular { wrap(centre + shift) } else { centre + shift };
+            self.middle[j] = if output.angular { (centre + shift).wrapped() } else { centre + shift };
         }
     }
 }
 
-impl Transform for PointTransform {
+impl<T: Real> Transform for PointTransform<T> {
     fn apply(&mut self, problem: Problem<'_>, moments: &mut Moments) {
-        let (n, a) = self.set.points.shape();
+        let (n, a) = self.points.shape();
         let p = self.deviations.ncols();
         problem.assert_fits(a, p, moments);
-        self.take_root(problem.prior);
-        self.place(problem.prior.mean());
-        problem.sensor.values(n, self.inputs.as_slice(), self.deviations.as_mut_slice());
-        self.write_centre(problem, &mut moments.mean);
-        self.centre_deviations(problem.sensor.outputs(), &mut moments.mean);
+        self.take_prior(problem.prior);
+        self.place();
+        T::values(problem.sensor, n, self.inputs.as_slice(), self.deviations.as_mut_slice());
+        self.write_centre(problem);
+        self.centre_deviations(problem.sensor.outputs());
         for l in 0..p {
+            moments.mean[l] = self.middle[l].widened();
             let d = self.deviations.column(l);
-            self.weighted.cmpy(1.0, &self.set.covariance_weights, &d, 0.0);
+            self.weighted.cmpy(T::rounded(1.0), &self.covariance_weights, &d, T::rounded(0.0));
             for j in 0..=l {
                 let s = self.deviations.column(j).dot(&self.weighted);
-                moments.covariance[(j, l)] = s + problem.noise[(j, l)];
-                moments.covariance[(l, j)] = s + problem.noise[(l, j)];
+                moments.covariance[(j, l)] = (s + T::rounded(problem.noise[(j, l)])).widened();
+                moments.covariance[(l, j)] = (s + T::rounded(problem.noise[(l, j)])).widened();
             }
-            for (k, z) in self.set.points.column_iter().enumerate() {
+            for (k, z) in self.points.column_iter().enumerate() {
                 self.unit_cross[k] = z.dot(&self.weighted);
             }
-            moments.cross_covariance.column_mut(l).gemv(1.0, &self.root, &self.unit_cross, 0.0);
+            self.cross.gemv(T::rounded(1.0), &self.root, &self.unit_cross, T::rounded(0.0));
+            for (k, cross) in self.cross.iter().enumerate() {
+                moments.cross_covariance[(k, l)] = cross.widened();
+            }
         }
     }
 }

@@ -4,18 +4,28 @@ use serde_json::{Map, Number, Value};
 
 use crate::wording::{flaw, proposal};
 
-use super::{BuildError, KINDS, Kind, Method};
+use super::{BuildError, KINDS, Kind, Method, Refusal, Transform};
+use crate::sensor::Arithmetic;
+
+/// The key of the arithmetic, which every method has beside its own parameters.
+const ARITHMETIC: &str = "arithmetic";
+/// How single precision is written.
+const SINGLE: &str = "f32";
+/// What can be written.
+const PRECISIONS: &str = "give \"f64\" (double precision, what is meant without it) or \"f32\" (single)";
 
 /// A method and how it was written.
 #[derive(Debug, Clone)]
 pub struct MethodSpec {
     kind: Option<&'static Kind>,
     label: String,
+    arithmetic: Arithmetic,
     method: Arc<dyn Method>,
 }
 
 impl MethodSpec {
-    /// Makes the method that a JSON object describes: `id` and its parameters.
+    /// Makes the method that a JSON object describes: `id`, its parameters and, for every method, `arithmetic`: `"f32"` for
+    /// single precision, `"f64"` (what is meant without it) for double.
     ///
     /// # Errors
     /// [`BuildError`] with the key at fault: no `id`, an unknown one, an unknown parameter, one of wrong type
@@ -28,7 +38,7 @@ impl MethodSpec {
         }
     }
 
-    /// Makes the method of a command line: `id:parameter=number:parameter=number`.
+    /// Makes the method of a command line: `id:parameter=value:parameter=value`.
     ///
     /// # Errors
     /// As [`MethodSpec::from_json`], and if a parameter is not of this form or stands twice.
@@ -48,31 +58,44 @@ impl MethodSpec {
             let Some((key, value)) = part.split_once('=') else {
                 return Err(BuildError::new(
                     "",
-                    format!("`{part}` in `{text}` is not of the form parameter=number"),
+                    format!("`{part}` in `{text}` is not of the form parameter=value"),
                 ));
             };
             let (key, value) = (key.trim(), value.trim());
-            if parameters.insert(key.to_string(), number(key, value)?).is_some() {
+            let value = if key == ARITHMETIC { value.into() } else { number(key, value)? };
+            if parameters.insert(key.to_string(), value).is_some() {
                 return Err(BuildError::new(key, format!("stands twice in `{text}`")));
             }
         }
         Self::build(id, parameters)
     }
 
-    fn build(id: &str, parameters: Map<String, Value>) -> Result<Self, BuildError> {
+    fn build(id: &str, mut parameters: Map<String, Value>) -> Result<Self, BuildError> {
         let kind = KINDS.iter().find(|k| k.id == id).ok_or_else(|| {
             let near = proposal(id, KINDS.iter().map(|k| k.id));
             BuildError::new("id", format!("there is no method `{id}`; {near}give one of {}", known_ids()))
         })?;
+        let arithmetic = match parameters.shift_remove(ARITHMETIC) {
+            None => Arithmetic::Double,
+            Some(Value::String(name)) if name == "f64" => Arithmetic::Double,
+            Some(Value::String(name)) if name == SINGLE => Arithmetic::Single,
+            Some(Value::String(name)) => {
+                return Err(BuildError::new(ARITHMETIC, format!("is `{name}`; {PRECISIONS}")));
+            }
+            Some(other) => return Err(BuildError::new(ARITHMETIC, format!("is {other}; {PRECISIONS}"))),
+        };
         let (written, method) = (kind.build)(parameters)?;
         let mut label = kind.id.to_string();
         for (key, value) in &written {
             label.push_str(&format!(":{key}={}", shortest(value)));
         }
-        Ok(Self { kind: Some(kind), label, method })
+        if arithmetic == Arithmetic::Single {
+            label.push_str(&format!(":{ARITHMETIC}={SINGLE}"));
+        }
+        Ok(Self { kind: Some(kind), label, arithmetic, method })
     }
 
-    /// A method of the caller's own, under a label that names it in tables and files.
+    /// A method of the caller's own, in double precision, under a label that names it in tables and files.
     ///
     /// # Errors
     /// [`BuildError`] if the label is that of a built-in method, or would break a table.
@@ -83,7 +106,7 @@ impl MethodSpec {
         }
         match flaw(label) {
             Some(flaw) => Err(BuildError::new("id", flaw)),
-            None => Ok(Self { kind: None, label: label.into(), method }),
+            None => Ok(Self { kind: None, label: label.into(), arithmetic: Arithmetic::Double, method }),
         }
     }
 
@@ -96,6 +119,19 @@ impl MethodSpec {
     /// Its entry in [`KINDS`]; `None` for a method of the caller's own.
     pub fn kind(&self) -> Option<&'static Kind> {
         self.kind
+    }
+
+    /// The arithmetic that it runs in.
+    pub fn arithmetic(&self) -> Arithmetic {
+        self.arithmetic
+    }
+
+    /// Lays it out for `a` read components and `p` outputs, in its arithmetic.
+    ///
+    /// # Errors
+    /// As [`Method::plan`].
+    pub fn plan(&self, a: usize, p: usize) -> Result<Box<dyn Transform>, Refusal> {
+        self.method.plan(a, p, self.arithmetic)
     }
 
     /// The method.
@@ -165,6 +201,11 @@ mod tests {
             (json!({"id": "unscented", "kappa": 0.1 + 0.2}), "unscented:kappa=0.30000000000000004"),
             (json!({"beta": 0.0, "alpha": 1e-7, "id": "unscented-scaled"}), "unscented-scaled:alpha=1e-7:beta=0"),
             (json!({"id": "gauss-hermite"}), "gauss-hermite"),
+            (json!({"id": "taylor-1", "arithmetic": "f64"}), "taylor-1"),
+            (
+                json!({"arithmetic": "f32", "id": "unscented-scaled", "alpha": 1}),
+                "unscented-scaled:alpha=1:arithmetic=f32",
+            ),
             (
                 json!({"id": "gauss-hermite", "max_nodes": 5e5, "order": 7}),
                 "gauss-hermite:order=7:max_nodes=500000",
@@ -176,6 +217,7 @@ mod tests {
             let again = MethodSpec::parse(label).unwrap();
             assert_eq!(again.label(), label);
             assert_eq!(again.kind().unwrap().id, spec.kind().unwrap().id);
+            assert_eq!(again.arithmetic(), spec.arithmetic());
             assert_eq!(format!("{:?}", again.method()), format!("{:?}", spec.method()));
         }
     }
@@ -194,7 +236,7 @@ mod tests {
         let texts = [
             ("", "id", format!("there is no method ``; {known}")),
             ("ekf", "id", format!("there is no method `ekf`; {known}")),
-            ("unscented:3", "", "`3` in `unscented:3` is not of the form parameter=number".into()),
+            ("unscented:3", "", "`3` in `unscented:3` is not of the form parameter=value".into()),
             ("unscented:kappa=1:kappa=1", "kappa", "stands twice in `unscented:kappa=1:kappa=1`".into()),
             ("unscented:kappa=nan", "kappa", "is nan; a finite number is needed".into()),
             ("unscented:kappa=-inf", "kappa", "is -inf; a finite number is needed".into()),
@@ -203,6 +245,7 @@ mod tests {
             ("unscented:id=1", "id", "unknown key `id`; allowed: kappa".into()),
             ("taylor-1:order=1", "order", "unknown key `order`; none is allowed here".into()),
             ("unscented-scaled:alpha=0", "alpha", "is 0; the spread of the points is above zero, 1e-3 to 1".into()),
+            ("taylor-1:arithmetic=f16", "arithmetic", format!("is `f16`; {PRECISIONS}")),
             ("gauss-hermite:order=1", "order", "is 1; give 2 to 20 points an axis".into()),
             ("gauss-hermite:order=2.5", "order", "is 2.5; a whole number is needed".into()),
             ("gauss-hermite:order=-3", "order", "is -3; a whole number is needed".into()),
@@ -217,6 +260,7 @@ mod tests {
         }
         let objects = [
             (json!({"kappa": 1}), "id", format!("is missing; {known}")),
+            (json!({"id": "taylor-1", "arithmetic": 32}), "arithmetic", format!("is 32; {PRECISIONS}")),
             (json!({"id": 3}), "id", format!("is 3; {known}")),
             // A NaN of a TOML file arrives as null: it must not pass for the default.
             (json!({"id": "unscented", "kappa": null}), "kappa", "is null; give a number".into()),

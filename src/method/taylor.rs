@@ -2,8 +2,8 @@ use nalgebra::{DMatrix, DVector};
 use serde::{Deserialize, Serialize};
 
 use super::{BuildError, Method, Problem, Refusal, Transform};
-use crate::gaussian::{Moments, wrap};
-use crate::sensor::{Derivatives, Output};
+use crate::gaussian::{Gaussian, Moments};
+use crate::sensor::{Arithmetic, Derivatives, Output, Real};
 
 /// First-order Taylor expansion at the mean, as in the extended Kalman filter: with J = h'(m) (p x a),
 ///
@@ -53,98 +53,157 @@ impl SecondOrderTaylor {
 }
 
 impl Method for FirstOrderTaylor {
-    fn plan(&self, a: usize, p: usize) -> Result<Box<dyn Transform>, Refusal> {
+    fn plan(&self, a: usize, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal> {
         Refusal::unless_something_is_read(a)?;
-        Ok(Box::new(FirstOrder { value: DVector::zeros(p), jacobian: DMatrix::zeros(p, a) }))
+        Ok(match arithmetic {
+            Arithmetic::Double => Box::new(FirstOrder::<f64>::new(a, p)),
+            Arithmetic::Single => Box::new(FirstOrder::<f32>::new(a, p)),
+        })
     }
 }
 
 impl Method for SecondOrderTaylor {
-    fn plan(&self, a: usize, p: usize) -> Result<Box<dyn Transform>, Refusal> {
+    fn plan(&self, a: usize, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal> {
         Refusal::unless_something_is_read(a)?;
-        Ok(Box::new(SecondOrder { at: Derivatives::zeros(a, p), bends: vec![DMatrix::zeros(a, a); p] }))
+        Ok(match arithmetic {
+            Arithmetic::Double => Box::new(SecondOrder::<f64>::new(a, p)),
+            Arithmetic::Single => Box::new(SecondOrder::<f32>::new(a, p)),
+        })
     }
 }
 
 #[derive(Debug)]
-struct FirstOrder {
-    value: DVector<f64>,
-    jacobian: DMatrix<f64>,
+struct FirstOrder<T: Real> {
+    linear: Linear<T>,
+    value: DVector<T>,
+    jacobian: DMatrix<T>,
 }
 
-impl Transform for FirstOrder {
+impl<T: Real> FirstOrder<T> {
+    fn new(a: usize, p: usize) -> Self {
+        Self { linear: Linear::new(a, p), value: DVector::zeros(p), jacobian: DMatrix::zeros(p, a) }
+    }
+}
+
+impl<T: Real> Transform for FirstOrder<T> {
     fn apply(&mut self, problem: Problem<'_>, moments: &mut Moments) {
         let (p, a) = self.jacobian.shape();
         problem.assert_fits(a, p, moments);
-        let at = problem.prior.mean().as_slice();
-        problem.sensor.jacobian(at, self.value.as_mut_slice(), &mut self.jacobian);
+        self.linear.take_prior(problem.prior);
+        T::jacobian(problem.sensor, self.linear.mean.as_slice(), self.value.as_mut_slice(), &mut self.jacobian);
         for (j, output) in problem.sensor.outputs().iter().enumerate() {
             moments.mean[j] = landed(output, self.value[j]);
         }
-        write_linear_part(problem, &self.jacobian, moments);
+        self.linear.propagate(problem.noise, &self.jacobian);
+        self.linear.write(moments);
     }
 }
 
 #[derive(Debug)]
-struct SecondOrder {
-    at: Derivatives,
+struct SecondOrder<T: Real> {
+    linear: Linear<T>,
+    at: Derivatives<T>,
     /// H_i P.
-    bends: Vec<DMatrix<f64>>,
+    bends: Vec<DMatrix<T>>,
 }
 
-impl Transform for SecondOrder {
+impl<T: Real> SecondOrder<T> {
+    fn new(a: usize, p: usize) -> Self {
+        Self { linear: Linear::new(a, p), at: Derivatives::zeros(a, p), bends: vec![DMatrix::zeros(a, a); p] }
+    }
+}
+
+impl<T: Real> Transform for SecondOrder<T> {
     fn apply(&mut self, problem: Problem<'_>, moments: &mut Moments) {
         let (p, a) = self.at.jacobian.shape();
         problem.assert_fits(a, p, moments);
-        problem.sensor.hessians(problem.prior.mean().as_slice(), &mut self.at);
-        write_linear_part(problem, &self.at.jacobian, moments);
+        self.linear.take_prior(problem.prior);
+        T::hessians(problem.sensor, self.linear.mean.as_slice(), &mut self.at);
+        self.linear.propagate(problem.noise, &self.at.jacobian);
         for (bend, hessian) in self.bends.iter_mut().zip(&self.at.hessians) {
-            write_product(hessian, problem.prior.covariance(), bend);
+            write_product(hessian, &self.linear.prior, bend);
         }
+        let half = T::rounded(0.5);
         for (j, output) in problem.sensor.outputs().iter().enumerate() {
-            moments.mean[j] = landed(output, self.at.value[j] + 0.5 * self.bends[j].trace());
+            moments.mean[j] = landed(output, self.at.value[j] + half * self.bends[j].trace());
             for i in 0..=j {
-                let spread = 0.5 * trace_of_product(&self.bends[i], &self.bends[j]);
-                moments.covariance[(i, j)] += spread;
+                let spread = half * trace_of_product(&self.bends[i], &self.bends[j]);
+                self.linear.covariance[(i, j)] += spread;
                 if i != j {
-                    moments.covariance[(j, i)] += spread;
+                    self.linear.covariance[(j, i)] += spread;
                 }
             }
         }
+        self.linear.write(moments);
     }
 }
 
-fn landed(output: &Output, value: f64) -> f64 {
-    if output.angular { wrap(value) } else { value }
+fn landed<T: Real>(output: &Output, value: T) -> f64 {
+    if output.angular { value.wrapped().widened() } else { value.widened() }
 }
 
-/// C = P J' and S = J C + R. Plain loops: the matrices are small, and the library's product allocates once
-/// all dimensions are above five.
-fn write_linear_part(problem: Problem<'_>, jacobian: &DMatrix<f64>, moments: &mut Moments) {
-    let (p, a) = jacobian.shape();
-    let covariance = problem.prior.covariance();
-    for j in 0..p {
-        for i in 0..a {
-            moments.cross_covariance[(i, j)] = (0..a).map(|k| covariance[(i, k)] * jacobian[(j, k)]).sum();
+/// The linear part of an expansion, and the prior that it starts from, in the arithmetic of the method.
+#[derive(Debug)]
+struct Linear<T: Real> {
+    /// m and P.
+    mean: DVector<T>,
+    prior: DMatrix<T>,
+    /// S and C.
+    covariance: DMatrix<T>,
+    cross_covariance: DMatrix<T>,
+}
+
+impl<T: Real> Linear<T> {
+    fn new(a: usize, p: usize) -> Self {
+        Self {
+            mean: DVector::zeros(a),
+            prior: DMatrix::zeros(a, a),
+            covariance: DMatrix::zeros(p, p),
+            cross_covariance: DMatrix::zeros(a, p),
         }
-        for i in 0..=j {
-            let s: f64 = (0..a).map(|k| jacobian[(i, k)] * moments.cross_covariance[(k, j)]).sum();
-            moments.covariance[(i, j)] = s + problem.noise[(i, j)];
-            moments.covariance[(j, i)] = s + problem.noise[(j, i)];
+    }
+
+    fn take_prior(&mut self, prior: &Gaussian) {
+        self.mean.zip_apply(prior.mean(), |to, from| *to = T::rounded(from));
+        self.prior.zip_apply(prior.covariance(), |to, from| *to = T::rounded(from));
+    }
+
+    /// C = P J' and S = J C + R. Plain loops: the matrices are small, and the library's product allocates once
+    /// all dimensions are above five.
+    fn propagate(&mut self, noise: &DMatrix<f64>, jacobian: &DMatrix<T>) {
+        let (p, a) = jacobian.shape();
+        for j in 0..p {
+            for i in 0..a {
+                self.cross_covariance[(i, j)] = sum((0..a).map(|k| self.prior[(i, k)] * jacobian[(j, k)]));
+            }
+            for i in 0..=j {
+                let s = sum((0..a).map(|k| jacobian[(i, k)] * self.cross_covariance[(k, j)]));
+                self.covariance[(i, j)] = s + T::rounded(noise[(i, j)]);
+                self.covariance[(j, i)] = s + T::rounded(noise[(j, i)]);
+            }
         }
+    }
+
+    fn write(&self, moments: &mut Moments) {
+        moments.covariance.zip_apply(&self.covariance, |to, from| *to = from.widened());
+        moments.cross_covariance.zip_apply(&self.cross_covariance, |to, from| *to = from.widened());
     }
 }
 
-fn write_product(left: &DMatrix<f64>, right: &DMatrix<f64>, product: &mut DMatrix<f64>) {
+fn write_product<T: Real>(left: &DMatrix<T>, right: &DMatrix<T>, product: &mut DMatrix<T>) {
     let n = left.nrows();
     for j in 0..n {
         for i in 0..n {
-            product[(i, j)] = (0..n).map(|k| left[(i, k)] * right[(k, j)]).sum();
+            product[(i, j)] = sum((0..n).map(|k| left[(i, k)] * right[(k, j)]));
         }
     }
 }
 
-fn trace_of_product(left: &DMatrix<f64>, right: &DMatrix<f64>) -> f64 {
+fn trace_of_product<T: Real>(left: &DMatrix<T>, right: &DMatrix<T>) -> T {
     let n = left.nrows();
-    (0..n).map(|i| (0..n).map(|k| left[(i, k)] * right[(k, i)]).sum::<f64>()).sum()
+    sum((0..n).map(|i| sum((0..n).map(|k| left[(i, k)] * right[(k, i)]))))
+}
+
+fn sum<T: Real>(terms: impl Iterator<Item = T>) -> T {
+    terms.fold(T::rounded(0.0), |sum, term| sum + term)
 }

@@ -3,7 +3,7 @@ use std::fmt::Debug;
 use nalgebra::DMatrix;
 
 use crate::gaussian::{Gaussian, Moments};
-use crate::sensor::Sensor;
+use crate::sensor::{Arithmetic, Sensor};
 
 /// One transform to do: the sensor, the prior of the components that it reads, the noise covariance.
 #[derive(Debug, Clone, Copy)]
@@ -32,11 +32,12 @@ impl Problem<'_> {
 
 /// A published approximation with its parameters fixed.
 pub trait Method: Debug + Send + Sync {
-    /// Lays out weights and workspace for `a` read components and `p` outputs.
+    /// Lays out weights and workspace for `a` read components and `p` outputs; the transform does its sums, and asks the
+    /// sensor, in this arithmetic.
     ///
     /// # Errors
-    /// [`Refusal`] says why this method cannot serve these dimensions.
-    fn plan(&self, a: usize, p: usize) -> Result<Box<dyn Transform>, Refusal>;
+    /// [`Refusal`] says why this method cannot serve these dimensions, or this arithmetic.
+    fn plan(&self, a: usize, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal>;
 }
 
 /// A method laid out for one pair of dimensions: what an estimator would run at every measurement.

@@ -2,6 +2,7 @@ use serde::{Deserialize, Serialize};
 
 use super::kinds::{finite, given};
 use super::{BuildError, Method, PointSet, PointTransform, Refusal, Transform};
+use crate::sensor::Arithmetic;
 
 /// The unscented transform: 2a + 1 points
 ///
@@ -45,12 +46,12 @@ impl Unscented {
 }
 
 impl Method for Unscented {
-    fn plan(&self, a: usize, p: usize) -> Result<Box<dyn Transform>, Refusal> {
+    fn plan(&self, a: usize, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal> {
         let n = a as f64;
         let kappa = self.kappa.unwrap_or(3.0 - n);
         let scale = positive_scale(a, kappa, 1.0)?;
         let centre = kappa / scale;
-        PointTransform::plan(PointSet::on_axes(a, scale.sqrt(), 0.5 / scale, Some((centre, centre))), p)
+        PointTransform::plan(PointSet::on_axes(a, scale.sqrt(), 0.5 / scale, Some((centre, centre))), p, arithmetic)
     }
 }
 
@@ -114,12 +115,16 @@ impl ScaledUnscented {
 }
 
 impl Method for ScaledUnscented {
-    fn plan(&self, a: usize, p: usize) -> Result<Box<dyn Transform>, Refusal> {
+    fn plan(&self, a: usize, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal> {
         let squared = self.alpha * self.alpha;
         let scale = positive_scale(a, self.kappa, squared)?;
         let mean = (scale - a as f64) / scale;
         let covariance = mean + (1.0 - squared + self.beta);
-        PointTransform::plan(PointSet::on_axes(a, scale.sqrt(), 0.5 / scale, Some((mean, covariance))), p)
+        PointTransform::plan(
+            PointSet::on_axes(a, scale.sqrt(), 0.5 / scale, Some((mean, covariance))),
+            p,
+            arithmetic,
+        )
     }
 }
 

@@ -28,6 +28,10 @@ const MAY_BE_UNDEFINED: f64 = 1e-9;
 /// Ours, no source: the rounding of a value, a few units, is then under 1e-3 of what is measured.
 const LEAST_SPREAD: f64 = 1e4 * f64::EPSILON;
 
+/// Standard deviations whose fourth power, the size of a squared error of a variance, is a number with all its digits. Ours, no
+/// source.
+const SPREADS: std::ops::RangeInclusive<f64> = 1e-70..=1e70;
+
 /// Samples the moments of one case, deeper at every call; nothing sampled is thrown away.
 ///
 /// The result depends on the case, the seed and the number of points only: the same bits on any number of
@@ -264,24 +268,22 @@ impl<'a> Sampler<'a> {
         if undefined > MAY_BE_UNDEFINED {
             return Some(format!("the sensor is undefined with probability {undefined:.1e} under this prior"));
         }
+        let prior = self.question.prior;
         for (i, &component) in self.question.sensor.reads().iter().enumerate() {
-            let prior = self.question.prior;
-            let (sd, size) = (prior.covariance()[(i, i)].sqrt(), prior.mean()[i].abs());
-            if sd > 0.0 && sd < LEAST_SPREAD * size {
-                return Some(format!(
-                    "state {component} spreads by {sd:.1e} around {:.1e}: the digits of a number do not show it; measure it \
-                     from an origin nearer by",
-                    prior.mean()[i]
-                ));
+            let sd = prior.covariance()[(i, i)].sqrt();
+            if let Some(flaw) = unfit(sd, prior.mean()[i]) {
+                return Some(format!("state {component} {flaw}"));
             }
         }
         for (j, output) in outputs.iter().enumerate() {
-            let (sd, size) = (moments.covariance[(j, j)].sqrt(), moments.mean[j].abs());
-            if sd > 0.0 && sd < LEAST_SPREAD * size {
+            let sd = moments.covariance[(j, j)].sqrt();
+            if let Some(flaw) = unfit(sd, moments.mean[j]) {
+                return Some(format!("output `{}` {flaw}", output.name));
+            }
+            if output.angular && self.is_without_direction(j) {
                 return Some(format!(
-                    "output `{}` spreads by {sd:.1e} around {:.1e}: the digits of a number do not show it; measure \
-                     it from an origin nearer by",
-                    output.name, moments.mean[j]
+                    "output `{}` has no direction at the one state that the prior knows (does it lie on the station?)",
+                    output.name
                 ));
             }
         }
@@ -300,10 +302,42 @@ impl<'a> Sampler<'a> {
         lost.then(|| "the mean direction of an angle moved by more than chance allows".into())
     }
 
+    /// Whether the prior fixes what angular output `j` reads to a point at which it has no slope: the number that stands
+    /// there, atan2(0, 0) = 0, is a convention and not a direction.
+    fn is_without_direction(&self, j: usize) -> bool {
+        let fixed = |m: &Moments| m.covariance[(j, j)] == self.noise[(j, j)];
+        if !self.looks().all(|look| fixed(&(&look.moments).into())) {
+            return false;
+        }
+        let (a, p) = (self.question.inputs(), self.question.outputs());
+        let (mut value, mut jacobian) = (vec![0.0; p], DMatrix::zeros(p, a));
+        self.question.sensor.jacobian(self.question.prior.mean().as_slice(), &mut value, &mut jacobian);
+        jacobian.row(j).iter().any(|slope| !slope.is_finite())
+    }
+
     /// Resultant length of angular output `j` over all replicates together: the least of theirs would depend on
     /// how many samples each has, and refuse at a first look what more samples would answer.
     fn resultant(&self, j: usize) -> Option<f64> {
         let circles = self.looks().filter_map(|look| look.circles[j]);
         circles.reduce(CircularSum::merged).map(|circle| circle.resultant())
+    }
+}
+
+/// What keeps a spread of `sd` around `mean` from being measured, if anything does.
+fn unfit(sd: f64, mean: f64) -> Option<String> {
+    if sd == 0.0 {
+        None
+    } else if !SPREADS.contains(&sd) {
+        Some(format!(
+            "spreads by {sd:.1e}: its fourth power, which a standard error needs, is no number of a computer any more; \
+             measure it in another unit"
+        ))
+    } else if sd < LEAST_SPREAD * mean.abs() {
+        Some(format!(
+            "spreads by {sd:.1e} around {mean:.1e}: the digits of a number do not show it; measure it from an origin \
+             nearer by"
+        ))
+    } else {
+        None
     }
 }

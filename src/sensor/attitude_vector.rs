@@ -127,6 +127,8 @@ fn cross<T: Number>(a: &[T], b: &[T; 3]) -> [T; 3] {
 }
 
 impl Formula for AttitudeVector {
+    const INPUTS: &'static [usize] = &[3];
+
     fn reads(&self) -> &[usize] {
         &self.attitude
     }

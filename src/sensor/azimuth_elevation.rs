@@ -51,6 +51,8 @@ impl AzimuthElevation {
 }
 
 impl Formula for AzimuthElevation {
+    const INPUTS: &'static [usize] = &[3];
+
     fn reads(&self) -> &[usize] {
         &self.lookout.reads
     }

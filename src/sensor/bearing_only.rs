@@ -47,6 +47,8 @@ impl BearingOnly {
 }
 
 impl Formula for BearingOnly {
+    const INPUTS: &'static [usize] = &[2];
+
     fn reads(&self) -> &[usize] {
         &self.lookout.reads
     }

@@ -60,6 +60,8 @@ impl BearingRate {
 }
 
 impl Formula for BearingRate {
+    const INPUTS: &'static [usize] = &[4];
+
     fn reads(&self) -> &[usize] {
         &self.lookout.reads
     }

@@ -78,6 +78,8 @@ impl DipoleField {
 }
 
 impl Formula for DipoleField {
+    const INPUTS: &'static [usize] = &[3];
+
     fn reads(&self) -> &[usize] {
         &self.position
     }

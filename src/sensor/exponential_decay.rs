@@ -73,6 +73,8 @@ impl ExponentialDecay {
 }
 
 impl Formula for ExponentialDecay {
+    const INPUTS: &'static [usize] = &[1];
+
     fn reads(&self) -> &[usize] {
         &self.single.reads
     }

@@ -3,7 +3,7 @@ use std::fmt::Debug;
 use nalgebra::DMatrix;
 use smallvec::SmallVec;
 
-use super::{Derivatives, Number, Output, derivatives};
+use super::{Derivatives, Number, Output, Real, derivatives};
 use crate::lanes::{Lanes, Level, Simd, Task, dispatch};
 
 /// A measurement function as its author writes it: once, generic over the number.
@@ -11,6 +11,10 @@ use crate::lanes::{Lanes, Level, Simd, Task, dispatch};
 /// The formula sees only the state components that it reads, in the order of [`Formula::reads`], so the same
 /// code serves a position anywhere in a state of any size.
 pub trait Formula: Debug + Send + Sync {
+    /// How many inputs the sensor can have, if not any number: derivatives are compiled for these alone, so that many sensors
+    /// compile quickly. With another number derivatives are as exact, but slower.
+    const INPUTS: &'static [usize] = &[];
+
     /// Which components of state and noise inside are read (indices from 0, each once): the inputs of
     /// [`Formula::evaluate`].
     fn reads(&self) -> &[usize];
@@ -88,6 +92,15 @@ pub trait Sensor: Debug + Send + Sync {
 
     /// Writes value, exact Jacobian and exact Hessians at x.
     fn hessians(&self, x: &[f64], at: &mut Derivatives);
+
+    /// [`Sensor::values`] in single precision, the sensor's parameters rounded too.
+    fn values_single(&self, length: usize, x: &[f32], y: &mut [f32]);
+
+    /// [`Sensor::jacobian`] in single precision: exact but for its rounding.
+    fn jacobian_single(&self, x: &[f32], y: &mut [f32], jacobian: &mut DMatrix<f32>);
+
+    /// [`Sensor::hessians`] in single precision: exact but for its rounding.
+    fn hessians_single(&self, x: &[f32], at: &mut Derivatives<f32>);
 }
 
 impl<F: Formula> Sensor for F {
@@ -108,19 +121,7 @@ impl<F: Formula> Sensor for F {
     }
 
     fn values(&self, length: usize, x: &[f64], y: &mut [f64]) {
-        let mut point: SmallVec<[f64; 8]> = SmallVec::from_elem(0.0, Formula::reads(self).len());
-        let mut output: SmallVec<[f64; 8]> = SmallVec::from_elem(0.0, Formula::outputs(self).len());
-        // Plain slices: through the small vectors each access would ask again where the numbers are kept.
-        let (point, output) = (point.as_mut_slice(), output.as_mut_slice());
-        for k in 0..length {
-            for (coordinate, column) in point.iter_mut().zip(x.chunks_exact(length)) {
-                *coordinate = column[k];
-            }
-            self.evaluate(point, output);
-            for (value, column) in output.iter().zip(y.chunks_exact_mut(length)) {
-                column[k] = *value;
-            }
-        }
+        one_by_one(self, length, x, y);
     }
 
     fn sample(&self, level: Level, length: usize, x: &[f64], y: &mut [f64]) {
@@ -134,6 +135,35 @@ impl<F: Formula> Sensor for F {
 
     fn hessians(&self, x: &[f64], at: &mut Derivatives) {
         derivatives::hessians(self, x, at);
+    }
+
+    fn values_single(&self, length: usize, x: &[f32], y: &mut [f32]) {
+        one_by_one(self, length, x, y);
+    }
+
+    fn jacobian_single(&self, x: &[f32], y: &mut [f32], jacobian: &mut DMatrix<f32>) {
+        derivatives::jacobian(self, x, y, jacobian);
+    }
+
+    fn hessians_single(&self, x: &[f32], at: &mut Derivatives<f32>) {
+        derivatives::hessians(self, x, at);
+    }
+}
+
+/// h of `length` points, laid out as in [`Sensor::values`].
+fn one_by_one<F: Formula, T: Real>(formula: &F, length: usize, x: &[T], y: &mut [T]) {
+    let mut point: SmallVec<[T; 8]> = SmallVec::from_elem(T::constant(0.0), formula.reads().len());
+    let mut output: SmallVec<[T; 8]> = SmallVec::from_elem(T::constant(0.0), formula.outputs().len());
+    // Plain slices: through the small vectors each access would ask again where the numbers are kept.
+    let (point, output) = (point.as_mut_slice(), output.as_mut_slice());
+    for k in 0..length {
+        for (coordinate, column) in point.iter_mut().zip(x.chunks_exact(length)) {
+            *coordinate = column[k];
+        }
+        formula.evaluate(point, output);
+        for (value, column) in output.iter().zip(y.chunks_exact_mut(length)) {
+            column[k] = *value;
+        }
     }
 }
 

@@ -88,6 +88,8 @@ impl FrequencyDifference {
 }
 
 impl Formula for FrequencyDifference {
+    const INPUTS: &'static [usize] = &[4, 6];
+
     fn reads(&self) -> &[usize] {
         &self.lookout.reads
     }

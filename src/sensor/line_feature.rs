@@ -69,6 +69,8 @@ impl LineFeature {
 }
 
 impl Formula for LineFeature {
+    const INPUTS: &'static [usize] = &[4];
+
     fn reads(&self) -> &[usize] {
         &self.reads
     }

@@ -67,6 +67,8 @@ impl LineOffset {
 }
 
 impl Formula for LineOffset {
+    const INPUTS: &'static [usize] = &[2];
+
     fn reads(&self) -> &[usize] {
         &self.position
     }

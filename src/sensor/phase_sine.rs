@@ -81,6 +81,8 @@ impl PhaseSine {
 }
 
 impl Formula for PhaseSine {
+    const INPUTS: &'static [usize] = &[1];
+
     fn reads(&self) -> &[usize] {
         &self.single.reads
     }

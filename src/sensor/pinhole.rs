@@ -70,6 +70,8 @@ impl Pinhole {
 }
 
 impl Formula for Pinhole {
+    const INPUTS: &'static [usize] = &[3];
+
     fn reads(&self) -> &[usize] {
         &self.position
     }

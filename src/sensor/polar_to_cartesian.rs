@@ -67,6 +67,8 @@ impl PolarToCartesian {
 }
 
 impl Formula for PolarToCartesian {
+    const INPUTS: &'static [usize] = &[2];
+
     fn reads(&self) -> &[usize] {
         &self.reads
     }

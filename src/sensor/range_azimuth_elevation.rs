@@ -57,6 +57,8 @@ impl RangeAzimuthElevation {
 }
 
 impl Formula for RangeAzimuthElevation {
+    const INPUTS: &'static [usize] = &[3];
+
     fn reads(&self) -> &[usize] {
         &self.lookout.reads
     }

@@ -50,6 +50,8 @@ impl RangeBearing {
 }
 
 impl Formula for RangeBearing {
+    const INPUTS: &'static [usize] = &[2];
+
     fn reads(&self) -> &[usize] {
         &self.lookout.reads
     }

@@ -57,6 +57,8 @@ impl RangeDoppler {
 }
 
 impl Formula for RangeDoppler {
+    const INPUTS: &'static [usize] = &[4, 6];
+
     fn reads(&self) -> &[usize] {
         &self.lookout.reads
     }

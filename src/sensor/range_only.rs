@@ -48,6 +48,8 @@ impl RangeOnly {
 }
 
 impl Formula for RangeOnly {
+    const INPUTS: &'static [usize] = &[2, 3];
+
     fn reads(&self) -> &[usize] {
         &self.lookout.reads
     }

@@ -108,6 +108,8 @@ impl ReceivedStrength {
 }
 
 impl Formula for ReceivedStrength {
+    const INPUTS: &'static [usize] = &[2, 3];
+
     fn reads(&self) -> &[usize] {
         &self.lookout.reads
     }

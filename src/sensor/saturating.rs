@@ -75,6 +75,8 @@ impl Saturating {
 }
 
 impl Formula for Saturating {
+    const INPUTS: &'static [usize] = &[1];
+
     fn reads(&self) -> &[usize] {
         &self.single.reads
     }

@@ -75,6 +75,8 @@ impl StereoDisparity {
 }
 
 impl Formula for StereoDisparity {
+    const INPUTS: &'static [usize] = &[3];
+
     fn reads(&self) -> &[usize] {
         &self.position
     }

@@ -70,6 +70,8 @@ impl TimeDifference {
 }
 
 impl Formula for TimeDifference {
+    const INPUTS: &'static [usize] = &[2, 3];
+
     fn reads(&self) -> &[usize] {
         &self.lookout.reads
     }

@@ -63,7 +63,7 @@ struct Candidate {
 fn candidate(case: &Case, method: &MethodSpec) -> Result<Candidate, Refusal> {
     let prior = case.marginal().law();
     let (a, p) = (prior.dimension(), case.sensor().outputs().len());
-    let mut transform = method.method().plan(a, p)?;
+    let mut transform = method.plan(a, p)?;
     let counted = Counted::new(case.sensor());
     let noise = case.noise_or_zero();
     let mut moments = Moments::zeros(a, p);

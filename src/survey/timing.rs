@@ -100,7 +100,7 @@ impl<'a> Bench<'a> {
         Some(Self {
             case,
             noise: case.noise_or_zero(),
-            planned: method.method().plan(a, p).ok()?,
+            planned: method.plan(a, p).ok()?,
             moments: Moments::zeros(a, p),
             whole: DMatrix::zeros(case.prior().dimension(), p),
         })

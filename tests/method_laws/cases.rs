@@ -45,7 +45,7 @@ pub fn methods() -> Vec<MethodSpec> {
 pub fn moments(method: &MethodSpec, sensor: &dyn Sensor, prior: &Gaussian, noise: &DMatrix<f64>) -> Moments {
     let (a, p) = (sensor.reads().len(), sensor.outputs().len());
     let mut moments = Moments::zeros(a, p);
-    let mut transform = method.method().plan(a, p).unwrap();
+    let mut transform = method.plan(a, p).unwrap();
     transform.apply(Problem { sensor, prior, noise }, &mut moments);
     moments
 }

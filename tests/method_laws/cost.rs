@@ -52,7 +52,7 @@ fn evaluations_are_as_many_as_the_table_says() {
 fn allocations(method: &MethodSpec, sensor: &dyn Sensor, prior: &gaussworthy::gaussian::Gaussian) -> u64 {
     let (a, p) = (sensor.reads().len(), sensor.outputs().len());
     let (noise, mut moments) = (DMatrix::identity(p, p), Moments::zeros(a, p));
-    let mut transform = method.method().plan(a, p).unwrap();
+    let mut transform = method.plan(a, p).unwrap();
     let problem = Problem { sensor, prior, noise: &noise };
     allocation_counter::measure(|| transform.apply(problem, &mut moments)).count_total
 }

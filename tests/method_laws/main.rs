@@ -4,6 +4,7 @@ mod cases;
 mod cost;
 mod linear;
 mod polynomial;
+mod precision;
 mod published;
 mod robust;
 mod rotation;

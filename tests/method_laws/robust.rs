@@ -25,7 +25,7 @@ fn an_indefinite_covariance_comes_out_as_it_is() {
 
 #[test]
 fn a_kappa_that_leaves_no_distance_is_refused_with_the_reason() {
-    let refusal = |label: &str, a| MethodSpec::parse(label).unwrap().method().plan(a, 1).unwrap_err().0;
+    let refusal = |label: &str, a| MethodSpec::parse(label).unwrap().plan(a, 1).unwrap_err().0;
     assert_eq!(
         refusal("unscented:kappa=-2", 2),
         "a + kappa is 2 + -2 = 0, which has no square root to place points at; kappa must be above -2"
@@ -34,7 +34,7 @@ fn a_kappa_that_leaves_no_distance_is_refused_with_the_reason() {
     assert!(refusal("unscented-scaled:alpha=1e-200", 2).starts_with("the squared distance of the points"));
     assert!(refusal("unscented-scaled:alpha=1e200", 2).starts_with("the squared distance of the points"));
     for method in methods() {
-        assert!(method.method().plan(0, 1).unwrap_err().0.contains("reads no state component"));
+        assert!(method.plan(0, 1).unwrap_err().0.contains("reads no state component"));
     }
 }
 
@@ -101,7 +101,7 @@ fn the_workspace_carries_nothing_over() {
         let rooted = Gaussian::from_root(prior.mean().clone(), root).unwrap();
         let noise = DMatrix::from_diagonal_element(p, p, 0.01);
         for method in methods() {
-            let mut transform = method.method().plan(a, p).unwrap();
+            let mut transform = method.plan(a, p).unwrap();
             let mut got = Moments::zeros(a, p);
             for prior in [&prior, &singular, &rooted, &prior] {
                 got.mean.fill(f64::NAN);
