@@ -3,7 +3,7 @@ use std::fmt::Debug;
 use nalgebra::DMatrix;
 use smallvec::SmallVec;
 
-use super::{Derivatives, Number, Output, Real, derivatives};
+use super::{Derivatives, ExactMoments, Number, Output, Real, derivatives};
 use crate::lanes::{Lanes, Level, Simd, Task, dispatch};
 
 /// A measurement function as its author writes it: once, generic over the number.
@@ -38,6 +38,11 @@ pub trait Formula: Debug + Send + Sync {
     /// May panic if `x` or `y` is shorter than [`Formula::reads`] or [`Formula::outputs`].
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]);
 
+    /// Its moments in closed form, if it has them.
+    fn exact_moments(&self) -> Option<&dyn ExactMoments> {
+        None
+    }
+
     /// [`Formula::evaluate`] at `length` points, a multiple of eight, eight at a time; laid out as in [`Sensor::values`].
     /// A formula that is not compiled may know a faster order of work.
     #[inline(always)]
@@ -71,6 +76,9 @@ pub trait Sensor: Debug + Send + Sync {
 
     /// The p outputs, in order.
     fn outputs(&self) -> &[Output];
+
+    /// Its moments in closed form, if it has them.
+    fn exact_moments(&self) -> Option<&dyn ExactMoments>;
 
     /// Writes h(x) into `y` (p).
     fn value(&self, x: &[f64], y: &mut [f64]);
@@ -114,6 +122,10 @@ impl<F: Formula> Sensor for F {
 
     fn outputs(&self) -> &[Output] {
         Formula::outputs(self)
+    }
+
+    fn exact_moments(&self) -> Option<&dyn ExactMoments> {
+        Formula::exact_moments(self)
     }
 
     fn value(&self, x: &[f64], y: &mut [f64]) {
