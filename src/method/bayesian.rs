@@ -42,7 +42,8 @@ const MOST_NODES: usize = 1000;
 ///
 /// Two things are as the charts of angles and the units of outputs ask and not as published: the process has the mean h(m),
 /// where the papers have zero, and the amplitude can be estimated. No polynomial but a constant has exact moments; the mean of
-/// a linear sensor is exact by symmetry. The length scale 3 is common practice, no source.
+/// a linear sensor is exact by symmetry, but for the digits that the condition of K takes: the longer the length scale, and the
+/// more nodes, the more (eight of 16 on 729 nodes at the default). The length scale 3 is common practice, no source.
 ///
 /// Sources: A. O'Hagan, "Bayes-Hermite quadrature", J. Statistical Planning and Inference 29 (1991) 245-260; S. Sarkka,
 /// J. Hartikainen, L. Svensson, F. Sandblom, "On the relation between Gaussian process quadratures and sigma-point

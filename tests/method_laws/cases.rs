@@ -19,11 +19,12 @@ pub const TIGHT: f64 = 1e-12;
 /// output the second moments lose only one power of alpha, 1e3 * 4 * 1.1e-16 = 4e-13, because the deviations
 /// are of size alpha themselves: there it keeps [`TIGHT`].)
 ///
-/// Bayesian quadrature solves with its kernel matrix, of condition up to 1e9 on 729 nodes: 1e9 * 1.1e-16 = 1e-7.
+/// Bayesian quadrature solves with its kernel matrix. On three Gauss-Hermite nodes at the length scale 3 its condition is 76, on
+/// the product in six components 76^6 = 2e11: at the worst 2e11 * 1.1e-16 = 2e-5 is lost, and a tenth of that is asked.
 pub fn tolerance(method: &MethodSpec) -> f64 {
     match method.kind().unwrap().id {
         _ if has_tiny_alpha(method) => 4e-10,
-        "bayesian-quadrature" => 1e-7,
+        "bayesian-quadrature" => 2e-6,
         _ => TIGHT,
     }
 }
