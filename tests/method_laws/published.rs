@@ -189,12 +189,15 @@ fn quadratic_forms_have_their_published_moments() {
     }
 }
 
+/// A point and its weight.
+type Weighted = (Vec<f64>, f64);
+
 /// Points and weights as the papers write them, worked by hand from their formulas (from memory); each point with its mean weight.
 #[test]
 fn small_sets_are_those_of_their_papers() {
     let (half, third, sixth) = (0.5f64.sqrt(), 1.0 / 3.0, 1.0 / 6.0);
     let root = f64::sqrt;
-    let sets: [(&str, Vec<(Vec<f64>, f64)>); 6] = [
+    let sets: [(&str, Vec<Weighted>); 6] = [
         // Julier 2003 with w = 1/3: -+1 / sqrt(2w), -1 / sqrt(6w) and 2 / sqrt(6w).
         (
             "simplex",
