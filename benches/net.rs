@@ -6,8 +6,8 @@
 use std::hint::black_box;
 
 use criterion::{Criterion, Throughput, criterion_group, criterion_main};
+use gaussworthy::net::{BLOCK, Net, normal, normals};
 use gaussworthy::reference::Key;
-use gaussworthy::reference::net::{BLOCK, Net, normal, normals};
 use rand::{RngExt, SeedableRng};
 use rand_distr::StandardNormal;
 use rand_pcg::Pcg64Dxsm;

@@ -40,6 +40,11 @@ pub(crate) fn plain(message: &str) -> String {
         let allowed: Vec<&str> = quoted.filter(|name| !name.is_empty()).collect();
         return unknown_key(word, &allowed);
     }
+    if let Some((word, known)) =
+        message.strip_prefix("unknown variant `").and_then(|rest| rest.split_once("`, expected "))
+    {
+        return format!("is `{word}`; give {known}");
+    }
     if let Some(rest) = message.strip_prefix("missing field `") {
         return format!("`{}` is missing", rest.trim_end_matches('`'));
     }
@@ -134,6 +139,7 @@ mod tests {
             ),
             ("unknown field `q`, expected one of `A`, `b`, `c`", "unknown key `q`; allowed: A, b, c"),
             ("missing field `A`", "`A` is missing"),
+            ("unknown variant `c`, expected `a` or `b`", "is `c`; give `a` or `b`"),
             ("invalid type: string \"3\", expected f64", "is the text \"3\"; give a number"),
             (
                 "invalid type: floating point `0.5`, expected usize",

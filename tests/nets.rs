@@ -4,8 +4,8 @@
 use std::collections::HashSet;
 use std::sync::LazyLock;
 
+use gaussworthy::net::{BLOCK, Directions, MOST_DIMENSIONS, MOST_LOG2, Net, NetError, normal};
 use gaussworthy::reference::Key;
-use gaussworthy::reference::net::{BLOCK, Directions, MOST_DIMENSIONS, MOST_LOG2, Net, NetError, normal};
 use serde::Deserialize;
 
 #[derive(Deserialize)]

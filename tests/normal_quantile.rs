@@ -2,7 +2,7 @@
 
 use std::sync::LazyLock;
 
-use gaussworthy::reference::net::{BLOCK, normal, normal_quantile, normals};
+use gaussworthy::net::{BLOCK, normal, normal_quantile, normals};
 use rand::{Rng, RngExt, SeedableRng};
 use rand_pcg::Pcg64;
 use serde::Deserialize;

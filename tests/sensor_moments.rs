@@ -118,3 +118,39 @@ fn references_lie_within_their_standard_errors_of_outside_values() {
     }
     assert_eq!((largest.len(), entries), (10, 221), "sensors and entries");
 }
+
+/// How far a closed form may be from an outside value, in standard deviations: quadrature has converged to 1e-10, and the second
+/// moments of a position at range r with standard deviation s lose the digits of (r / s)^2, up to 1e4 here.
+const CLOSED_FORM: f64 = 1e-9;
+
+#[test]
+fn closed_forms_of_the_sensors_are_the_outside_values() {
+    let cases = [by_quadrature(), polar_in_closed_form(), exponentials_and_sines_in_closed_form()].concat();
+    let mut tried: BTreeMap<&str, usize> = BTreeMap::new();
+    for (case, exact) in &cases {
+        let Some(closed) = case.sensor().exact_moments() else { continue };
+        let prior = case.marginal().law();
+        let mut found = Moments::zeros(prior.dimension(), exact.mean.len());
+        closed.write_exact(prior, &mut found);
+        found.cross_covariance = case.marginal().lift(found.cross_covariance);
+        let sd = |j: usize| exact.covariance[(j, j)].sqrt();
+        let check = |got: f64, wanted: f64, scale: f64, what: &str| {
+            let off = (got - wanted).abs() / scale;
+            assert!(off < CLOSED_FORM, "{} {what}: {got}, not {wanted}: {off:.1e} sd", case.id());
+        };
+        for j in 0..exact.mean.len() {
+            check(found.mean[j], exact.mean[j], sd(j), "mean");
+            for l in 0..exact.mean.len() {
+                check(found.covariance[(j, l)], exact.covariance[(j, l)], sd(j) * sd(l), "covariance");
+            }
+            for i in 0..case.prior().dimension() {
+                let scale = case.prior().covariance()[(i, i)].sqrt() * sd(j);
+                let (got, wanted) = (found.cross_covariance[(i, j)], exact.cross_covariance[(i, j)]);
+                check(got, wanted, scale, "cross-covariance");
+            }
+        }
+        *tried.entry(case.spec().kind()).or_default() += 1;
+    }
+    let kinds: Vec<_> = tried.keys().copied().collect();
+    assert_eq!(kinds, ["exponential-decay", "line-offset", "phase-sine", "polar-to-cartesian"]);
+}

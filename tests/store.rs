@@ -31,7 +31,7 @@ fn product() -> Case {
 
 /// More dimensions than there are direction numbers: plain streams.
 fn many_dimensions() -> Case {
-    let n = gaussworthy::reference::net::MOST_DIMENSIONS + 1;
+    let n = gaussworthy::net::MOST_DIMENSIONS + 1;
     let identity: Vec<Vec<f64>> = (0..n).map(|i| (0..n).map(|j| f64::from(u8::from(i == j))).collect()).collect();
     case(json!({"case": "many", "sensor": {"kind": "quadratic", "A": [identity]},
         "prior": {"mean": vec![1.0; n], "covariance": identity}}))

@@ -1,10 +1,11 @@
 use std::sync::atomic::{AtomicU64, Ordering};
 
-use nalgebra::DMatrix;
+use nalgebra::{DMatrix, DVector};
 
-use crate::gaussian::Gaussian;
+use super::{Method, Problem, Refusal};
+use crate::gaussian::{Gaussian, Moments};
 use crate::lanes::Level;
-use crate::sensor::{Derivatives, Output, Sensor};
+use crate::sensor::{Arithmetic, Derivatives, ExactMoments, Linear, Output, Sensor};
 
 /// How often a sensor was asked, and for what.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
@@ -15,6 +16,25 @@ pub struct Evaluations {
     pub jacobians: u64,
     /// Sets of all p Hessians; the value and the Jacobian that come with one are not counted beside it.
     pub hessians: u64,
+    /// Sets of exact moments.
+    pub exact_moments: u64,
+}
+
+impl Evaluations {
+    /// What one transform of `method` asks of a sensor that reads `a` components and has no angular output, counted on one.
+    ///
+    /// # Errors
+    /// [`Refusal`] if the method does not serve `a` components.
+    pub fn of(method: &dyn Method, a: usize) -> Result<Self, Refusal> {
+        let sensor = Linear::new(vec![vec![1.0; a]], vec![0.0], a).map_err(|e| Refusal(e.to_string()))?;
+        let prior =
+            Gaussian::new(DVector::zeros(a), DMatrix::identity(a, a)).map_err(|e| Refusal(e.to_string()))?;
+        let counted = Counted::new(&sensor);
+        let mut transform = method.plan(a, 1, Arithmetic::Double)?;
+        let problem = Problem { sensor: &counted, prior: &prior, noise: &DMatrix::zeros(1, 1) };
+        transform.apply(problem, &mut Moments::zeros(a, 1));
+        Ok(counted.evaluations())
+    }
 }
 
 /// A sensor that counts what is asked of it.
@@ -34,12 +54,13 @@ pub struct Counted<'a> {
     values: AtomicU64,
     jacobians: AtomicU64,
     hessians: AtomicU64,
+    exact_moments: AtomicU64,
 }
 
 impl<'a> Counted<'a> {
     /// `sensor`, asked nothing yet.
     pub fn new(sensor: &'a dyn Sensor) -> Self {
-        Self { sensor, values: 0.into(), jacobians: 0.into(), hessians: 0.into() }
+        Self { sensor, values: 0.into(), jacobians: 0.into(), hessians: 0.into(), exact_moments: 0.into() }
     }
 
     /// What was asked so far.
@@ -48,6 +69,7 @@ impl<'a> Counted<'a> {
             values: self.values.load(Ordering::Relaxed),
             jacobians: self.jacobians.load(Ordering::Relaxed),
             hessians: self.hessians.load(Ordering::Relaxed),
+            exact_moments: self.exact_moments.load(Ordering::Relaxed),
         }
     }
 }
@@ -67,6 +89,10 @@ impl Sensor for Counted<'_> {
 
     fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
         self.sensor.natural_spread(prior)
+    }
+
+    fn exact_moments(&self) -> Option<&dyn ExactMoments> {
+        self.sensor.exact_moments().map(|_| self as &dyn ExactMoments)
     }
 
     fn value(&self, x: &[f64], y: &mut [f64]) {
@@ -106,5 +132,14 @@ impl Sensor for Counted<'_> {
     fn hessians_single(&self, x: &[f32], at: &mut Derivatives<f32>) {
         self.hessians.fetch_add(1, Ordering::Relaxed);
         self.sensor.hessians_single(x, at);
+    }
+}
+
+impl ExactMoments for Counted<'_> {
+    fn write_exact(&self, prior: &Gaussian, moments: &mut Moments) {
+        if let Some(exact) = self.sensor.exact_moments() {
+            self.exact_moments.fetch_add(1, Ordering::Relaxed);
+            exact.write_exact(prior, moments);
+        }
     }
 }

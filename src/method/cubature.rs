@@ -1,7 +1,15 @@
-use serde::{Deserialize, Serialize};
+use super::kinds::{Kind, NoParameters, built};
+use super::{PointRule, PointSet, Refusal};
 
-use super::{BuildError, Method, PointSet, PointTransform, Refusal, Transform};
-use crate::sensor::Arithmetic;
+pub(super) const KIND: Kind = Kind {
+    id: "cubature-3",
+    name: "third-degree spherical-radial cubature",
+    parameters: "none",
+    evaluations: "2a, and 1 where an output is angular",
+    source: "Arasaratnam, Haykin 2009",
+    examples: &[],
+    build: |map| built(map, |_: NoParameters| Ok(ThirdDegreeCubature)),
+};
 
 /// The third-degree spherical-radial cubature rule: 2a points
 ///
@@ -17,21 +25,13 @@ use crate::sensor::Arithmetic;
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
 pub struct ThirdDegreeCubature;
 
-/// The rule has no parameter.
-#[derive(Debug, Clone, Serialize, Deserialize)]
-#[serde(deny_unknown_fields)]
-pub(super) struct Parameters {}
-
-impl ThirdDegreeCubature {
-    pub(super) fn from_parameters(_: Parameters) -> Result<Self, BuildError> {
-        Ok(Self)
-    }
-}
-
-impl Method for ThirdDegreeCubature {
-    fn plan(&self, a: usize, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal> {
-        Refusal::unless_something_is_read(a)?;
+impl PointRule for ThirdDegreeCubature {
+    fn lay_out(&self, a: usize) -> Result<PointSet, Refusal> {
         let n = a as f64;
-        PointTransform::plan(PointSet::on_axes(a, n.sqrt(), 0.5 / n, None), p, arithmetic)
+        Ok(PointSet::on_axes(a, n.sqrt(), 0.5 / n, None))
+    }
+
+    fn degree(&self) -> u32 {
+        3
     }
 }

@@ -1,9 +1,18 @@
 use nalgebra::{DMatrix, DVector};
 use serde::{Deserialize, Serialize};
 
-use super::kinds::{BuildError, given_whole};
-use super::{Method, PointSet, PointTransform, Refusal, Transform};
-use crate::sensor::Arithmetic;
+use super::kinds::{BuildError, Kind, built, given_whole};
+use super::{PointRule, PointSet, Refusal};
+
+pub(super) const KIND: Kind = Kind {
+    id: "gauss-hermite",
+    name: "Gauss-Hermite product rule",
+    parameters: "order = 3 (2 to 20), max_nodes = 100000",
+    evaluations: "order^a, and 1 where an output is angular and the order even",
+    source: "Ito, Xiong 2000; Golub, Welsch 1969",
+    examples: &["gauss-hermite:order=2", "gauss-hermite:order=4", "gauss-hermite:order=5"],
+    build: |map| built(map, GaussHermite::from_parameters),
+};
 
 const ORDERS: std::ops::RangeInclusive<usize> = 2..=20;
 const DEFAULT_ORDER: usize = 3;
@@ -28,7 +37,7 @@ pub struct GaussHermite {
 
 #[derive(Debug, Clone, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
-pub(super) struct Parameters {
+struct Parameters {
     #[serde(default, deserialize_with = "given_whole", skip_serializing_if = "Option::is_none")]
     order: Option<usize>,
     #[serde(default, deserialize_with = "given_whole", skip_serializing_if = "Option::is_none")]
@@ -54,7 +63,7 @@ impl GaussHermite {
         Ok(Self { max_nodes, rule: normal_rule(order) })
     }
 
-    pub(super) fn from_parameters(p: Parameters) -> Result<Self, BuildError> {
+    fn from_parameters(p: Parameters) -> Result<Self, BuildError> {
         Self::new(p.order.unwrap_or(DEFAULT_ORDER), p.max_nodes.unwrap_or(DEFAULT_MAX_NODES))
     }
 
@@ -80,8 +89,8 @@ impl GaussHermite {
     }
 }
 
-impl Method for GaussHermite {
-    fn plan(&self, a: usize, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal> {
+impl PointRule for GaussHermite {
+    fn lay_out(&self, a: usize) -> Result<PointSet, Refusal> {
         let (count, order) = (self.count(a)?, self.rule.len());
         let mut points = DMatrix::zeros(count, a);
         let mut weights = DVector::from_element(count, 1.0);
@@ -95,7 +104,11 @@ impl Method for GaussHermite {
                 digits /= order;
             }
         }
-        PointTransform::plan(PointSet::new(points, weights.clone(), weights), p, arithmetic)
+        Ok(PointSet::new(points, weights.clone(), weights))
+    }
+
+    fn degree(&self) -> u32 {
+        2 * self.rule.len() as u32 - 1
     }
 }
 
@@ -104,7 +117,7 @@ impl Method for GaussHermite {
 /// The nodes are the eigenvalues of the Jacobi matrix (zero diagonal, sqrt(k) beside it), polished by Newton
 /// on the orthonormal Hermite polynomials; the weights are 1 / sum_k p_k(x)^2 over k < order, whose error is
 /// only x times that of the node. The upper half is computed and mirrored, so the rule is symmetric to the last bit.
-fn normal_rule(order: usize) -> Vec<(f64, f64)> {
+pub(super) fn normal_rule(order: usize) -> Vec<(f64, f64)> {
     let jacobi =
         DMatrix::from_fn(order, order, |i, j| if i.abs_diff(j) == 1 { (i.max(j) as f64).sqrt() } else { 0.0 });
     let mut nodes: Vec<f64> = jacobi.symmetric_eigenvalues().iter().copied().collect();
@@ -158,13 +171,12 @@ mod tests {
     #[test]
     fn a_plan_beyond_the_cap_says_how_many_nodes_it_would_need() {
         let rule = GaussHermite::new(5, 1000).unwrap();
-        assert!(rule.plan(4, 1, Arithmetic::Double).is_ok());
+        assert!(rule.lay_out(4).is_ok());
         assert_eq!(
-            rule.plan(5, 1, Arithmetic::Double).unwrap_err().0,
+            rule.lay_out(5).unwrap_err().0,
             "order 5 on 5 read components needs 5^5 = 3125 nodes; the cap max_nodes is 1000"
         );
-        let refused =
-            GaussHermite::new(20, DEFAULT_MAX_NODES).unwrap().plan(40, 1, Arithmetic::Double).unwrap_err().0;
+        let refused = GaussHermite::new(20, DEFAULT_MAX_NODES).unwrap().lay_out(40).unwrap_err().0;
         assert!(refused.contains("20^40 = about 1.1e52 nodes"), "{refused}");
     }
 

@@ -6,7 +6,10 @@ use serde_json::{Map, Value};
 
 use crate::wording::plain;
 
-use super::{Method, cubature, gauss_hermite, taylor, unscented};
+use super::{
+    Method, bayesian, central_differences, conjugate, cubature, fifth_degree, gauss_hermite, linearisation,
+    monte_carlo, simplex, sparse_grid, stochastic, taylor, unscented,
+};
 
 /// A method that a suite or the command line can name.
 #[derive(Debug, Clone, Copy)]
@@ -21,6 +24,8 @@ pub struct Kind {
     pub evaluations: &'static str,
     /// Where it is published.
     pub source: &'static str,
+    /// Other parameters that are worth a try, as a command line has them; the laws of the tests hold for these too.
+    pub examples: &'static [&'static str],
     pub(super) build: fn(Map<String, Value>) -> Result<Built, BuildError>,
 }
 
@@ -29,55 +34,32 @@ pub(super) type Built = (Map<String, Value>, Arc<dyn Method>);
 
 /// Every built-in method. A new one is one line here.
 pub const KINDS: &[Kind] = &[
-    Kind {
-        id: "taylor-1",
-        name: "first-order Taylor (extended Kalman filter)",
-        parameters: "none",
-        evaluations: "1 Jacobian",
-        source: "Jazwinski 1970",
-        build: |map| built(map, taylor::FirstOrderTaylor::from_parameters),
-    },
-    Kind {
-        id: "taylor-2",
-        name: "second-order Taylor",
-        parameters: "none",
-        evaluations: "1 Hessian set",
-        source: "Athans, Wishner, Bertolini 1968",
-        build: |map| built(map, taylor::SecondOrderTaylor::from_parameters),
-    },
-    Kind {
-        id: "unscented",
-        name: "unscented transform",
-        parameters: "kappa = 3 - a",
-        evaluations: "2a + 1",
-        source: "Julier, Uhlmann, Durrant-Whyte 2000",
-        build: |map| built(map, unscented::Unscented::from_parameters),
-    },
-    Kind {
-        id: "unscented-scaled",
-        name: "scaled unscented transform",
-        parameters: "alpha = 1e-3, beta = 2, kappa = 0",
-        evaluations: "2a + 1",
-        source: "Wan, van der Merwe 2000; Julier 2002",
-        build: |map| built(map, unscented::ScaledUnscented::from_parameters),
-    },
-    Kind {
-        id: "cubature-3",
-        name: "third-degree spherical-radial cubature",
-        parameters: "none",
-        evaluations: "2a, and 1 where an output is angular",
-        source: "Arasaratnam, Haykin 2009",
-        build: |map| built(map, cubature::ThirdDegreeCubature::from_parameters),
-    },
-    Kind {
-        id: "gauss-hermite",
-        name: "Gauss-Hermite product rule",
-        parameters: "order = 3 (2 to 20), max_nodes = 100000",
-        evaluations: "order^a, and 1 where an output is angular and the order even",
-        source: "Ito, Xiong 2000; Golub, Welsch 1969",
-        build: |map| built(map, gauss_hermite::GaussHermite::from_parameters),
-    },
+    taylor::FIRST,
+    taylor::SECOND,
+    central_differences::FIRST,
+    central_differences::SECOND,
+    linearisation::KIND,
+    unscented::PLAIN,
+    unscented::SCALED,
+    simplex::SPHERICAL,
+    simplex::MINIMAL_SKEW,
+    conjugate::KIND,
+    cubature::KIND,
+    fifth_degree::CUBATURE,
+    fifth_degree::FULLY_SYMMETRIC,
+    gauss_hermite::KIND,
+    sparse_grid::KIND,
+    bayesian::KIND,
+    stochastic::THIRD_DEGREE,
+    stochastic::FIFTH_DEGREE,
+    monte_carlo::PLAIN,
+    monte_carlo::QUASI,
 ];
+
+/// No parameter at all.
+#[derive(Debug, Clone, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(super) struct NoParameters {}
 
 /// Why a method could not be made from what a suite or the command line says.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
@@ -100,7 +82,11 @@ fn prefix(key: &str) -> String {
     if key.is_empty() { String::new() } else { format!("{key}: ") }
 }
 
-fn built<P, M>(map: Map<String, Value>, make: impl Fn(P) -> Result<M, BuildError>) -> Result<Built, BuildError>
+/// Reads the parameters of a kind and makes its method.
+pub(super) fn built<P, M>(
+    map: Map<String, Value>,
+    make: impl Fn(P) -> Result<M, BuildError>,
+) -> Result<Built, BuildError>
 where
     P: DeserializeOwned + Serialize,
     M: Method + 'static,

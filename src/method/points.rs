@@ -1,7 +1,8 @@
 use nalgebra::{DMatrix, DVector};
 
+use super::placed::Placed;
 use super::{Problem, Refusal, Transform};
-use crate::gaussian::{Gaussian, Moments, cholesky_in_place};
+use crate::gaussian::Moments;
 use crate::sensor::{Arithmetic, Output, Real};
 
 /// A quadrature rule for N(0, I) in a components: unit points z_k, weights for the mean and weights for the
@@ -94,28 +95,22 @@ impl PointSet {
 /// than eight inputs or outputs.
 #[derive(Debug)]
 pub struct PointTransform<T: Real = f64> {
-    /// z_k, N x a.
-    points: DMatrix<T>,
+    placed: Placed<T>,
     /// wm_k.
     mean_weights: DVector<T>,
     /// wc_k.
     covariance_weights: DVector<T>,
     centre: Option<usize>,
-    root: DMatrix<T>,
-    /// m, then for a rule that has no centre point h(m).
-    mean: DVector<T>,
+    /// h(m) for a rule that has no centre point.
     at_mean: DVector<T>,
-    /// x_k, N x a.
-    inputs: DMatrix<T>,
     /// h(x_k), then d_k - e, N x p.
     deviations: DMatrix<T>,
     /// c, then mu.
     middle: DVector<T>,
     /// wc_k (d_k - e) of one output.
     weighted: DVector<T>,
-    /// sum_k wc_k z_k (d_k - e) of one output, and L times it.
+    /// sum_k wc_k z_k (d_k - e) of one output.
     unit_cross: DVector<T>,
-    cross: DVector<T>,
 }
 
 impl PointTransform {
@@ -136,45 +131,15 @@ impl<T: Real> PointTransform<T> {
     fn new(set: &PointSet, p: usize) -> Self {
         let (n, a) = set.points.shape();
         Self {
-            points: set.points.map(T::rounded),
+            placed: Placed::new(&set.points),
             mean_weights: set.mean_weights.map(T::rounded),
             covariance_weights: set.covariance_weights.map(T::rounded),
             centre: set.centre,
-            root: DMatrix::zeros(a, a),
-            mean: DVector::zeros(a),
             at_mean: DVector::zeros(p),
-            inputs: DMatrix::zeros(n, a),
             deviations: DMatrix::zeros(n, p),
             middle: DVector::zeros(p),
             weighted: DVector::zeros(n),
             unit_cross: DVector::zeros(a),
-            cross: DVector::zeros(a),
-        }
-    }
-
-    fn take_prior(&mut self, prior: &Gaussian) {
-        self.mean.zip_apply(prior.mean(), |to, from| *to = T::rounded(from));
-        if let Some(root) = prior.given_root() {
-            self.root.zip_apply(root, |to, from| *to = T::rounded(from));
-            return;
-        }
-        // The factorisation works in the storage it is given: lend it ours. An empty matrix costs nothing.
-        let mut storage = std::mem::replace(&mut self.root, DMatrix::zeros(0, 0));
-        storage.zip_apply(prior.covariance(), |to, from| *to = T::rounded(from));
-        self.root = cholesky_in_place(storage).unwrap_or_else(|| prior.root().map(T::rounded));
-    }
-
-    /// x_k = m + L z_k, the mean added last so that it rounds once.
-    fn place(&mut self) {
-        for (i, mut x) in self.inputs.column_iter_mut().enumerate() {
-            x.fill(T::rounded(0.0));
-            for (k, z) in self.points.column_iter().enumerate() {
-                let scale = self.root[(i, k)];
-                if scale != T::rounded(0.0) {
-                    x.axpy(scale, &z, T::rounded(1.0));
-                }
-            }
-            x.add_scalar_mut(self.mean[i]);
         }
     }
 
@@ -185,7 +150,7 @@ impl<T: Real> PointTransform<T> {
             self.middle[j] = self.deviations[(self.centre.unwrap_or(0), j)];
         }
         if self.centre.is_none() && outputs.iter().any(|o| o.angular) {
-            T::values(problem.sensor, 1, self.mean.as_slice(), self.at_mean.as_mut_slice());
+            T::values(problem.sensor, 1, self.placed.mean.as_slice(), self.at_mean.as_mut_slice());
             for (j, _) in outputs.iter().enumerate().filter(|(_, o)| o.angular) {
                 self.middle[j] = self.at_mean[j];
             }
@@ -210,12 +175,11 @@ impl<T: Real> PointTransform<T> {
 
 impl<T: Real> Transform for PointTransform<T> {
     fn apply(&mut self, problem: Problem<'_>, moments: &mut Moments) {
-        let (n, a) = self.points.shape();
+        let (n, a) = self.placed.points.shape();
         let p = self.deviations.ncols();
         problem.assert_fits(a, p, moments);
-        self.take_prior(problem.prior);
-        self.place();
-        T::values(problem.sensor, n, self.inputs.as_slice(), self.deviations.as_mut_slice());
+        self.placed.around(problem.prior);
+        T::values(problem.sensor, n, self.placed.inputs.as_slice(), self.deviations.as_mut_slice());
         self.write_centre(problem);
         self.centre_deviations(problem.sensor.outputs());
         for l in 0..p {
@@ -227,13 +191,10 @@ impl<T: Real> Transform for PointTransform<T> {
                 moments.covariance[(j, l)] = (s + T::rounded(problem.noise[(j, l)])).widened();
                 moments.covariance[(l, j)] = (s + T::rounded(problem.noise[(l, j)])).widened();
             }
-            for (k, z) in self.points.column_iter().enumerate() {
+            for (k, z) in self.placed.points.column_iter().enumerate() {
                 self.unit_cross[k] = z.dot(&self.weighted);
             }
-            self.cross.gemv(T::rounded(1.0), &self.root, &self.unit_cross, T::rounded(0.0));
-            for (k, cross) in self.cross.iter().enumerate() {
-                moments.cross_covariance[(k, l)] = cross.widened();
-            }
+            self.placed.write_cross(&self.unit_cross, l, &mut moments.cross_covariance);
         }
     }
 }

@@ -55,14 +55,14 @@ impl MethodSpec {
         let id = parts.next().unwrap_or_default();
         let mut parameters = Map::new();
         for part in parts {
-            let Some((key, value)) = part.split_once('=') else {
+            let Some((key, written)) = part.split_once('=') else {
                 return Err(BuildError::new(
                     "",
                     format!("`{part}` in `{text}` is not of the form parameter=value"),
                 ));
             };
-            let (key, value) = (key.trim(), value.trim());
-            let value = if key == ARITHMETIC { value.into() } else { number(key, value)? };
+            let (key, written) = (key.trim(), written.trim());
+            let value = if key == ARITHMETIC { written.into() } else { value(key, written)? };
             if parameters.insert(key.to_string(), value).is_some() {
                 return Err(BuildError::new(key, format!("stands twice in `{text}`")));
             }
@@ -143,8 +143,7 @@ pub(crate) fn check_own_label(label: &str) -> Result<(), BuildError> {
     flaw(label).map_or(Ok(()), |flaw| Err(BuildError::new("id", flaw)))
 }
 
-/// What is measured when nobody names methods: every kind with its defaults, and Gauss-Hermite of orders 3
-/// and 5.
+/// What is measured when nobody names methods: the usual seven, so that a survey stays quick.
 pub fn default_methods() -> Vec<MethodSpec> {
     let labels = [
         "taylor-1",
@@ -158,29 +157,38 @@ pub fn default_methods() -> Vec<MethodSpec> {
     labels.map(|label| MethodSpec::parse(label).expect("a built-in label names a built-in method")).to_vec()
 }
 
+/// Every kind with its defaults and with its examples of other parameters.
+pub fn every_method() -> Vec<MethodSpec> {
+    let labels = KINDS.iter().flat_map(|kind| std::iter::once(&kind.id).chain(kind.examples));
+    labels.map(|label| MethodSpec::parse(label).expect("a test holds that every example names a method")).collect()
+}
+
 fn known_ids() -> String {
     KINDS.iter().map(|k| k.id).collect::<Vec<_>>().join(", ")
 }
 
-fn number(key: &str, text: &str) -> Result<Value, BuildError> {
+/// A number, or a word for the parameter that wants one.
+fn value(key: &str, text: &str) -> Result<Value, BuildError> {
     if let Ok(whole) = text.parse::<i64>() {
         return Ok(whole.into());
     }
     match text.parse::<f64>().map(Number::from_f64) {
         Ok(Some(number)) => Ok(Value::Number(number)),
         Ok(None) => Err(BuildError::new(key, format!("is {text}; a finite number is needed"))),
-        Err(_) => Err(BuildError::new(key, format!("is `{text}`; a number is needed"))),
+        Err(_) if text.is_empty() => Err(BuildError::new(key, "is empty; a value is needed")),
+        Err(_) => Ok(text.into()),
     }
 }
 
-/// The shortest text that reads back as the same number.
+/// The shortest text that reads back as the same value.
 fn shortest(value: &Value) -> String {
-    match value.as_f64() {
-        Some(number) => {
+    match (value.as_f64(), value) {
+        (Some(number), _) => {
             let text = format!("{number:?}");
             text.strip_suffix(".0").unwrap_or(&text).to_string()
         }
-        None => value.to_string(),
+        (None, Value::String(word)) => word.clone(),
+        (None, other) => other.to_string(),
     }
 }
 
@@ -204,6 +212,10 @@ mod tests {
             (json!({"id": "unscented", "kappa": 0.1 + 0.2}), "unscented:kappa=0.30000000000000004"),
             (json!({"beta": 0.0, "alpha": 1e-7, "id": "unscented-scaled"}), "unscented-scaled:alpha=1e-7:beta=0"),
             (json!({"id": "gauss-hermite"}), "gauss-hermite"),
+            (
+                json!({"id": "bayesian-quadrature", "order": 4, "nodes": "gauss-hermite"}),
+                "bayesian-quadrature:nodes=gauss-hermite:order=4",
+            ),
             (json!({"id": "taylor-1", "arithmetic": "f64"}), "taylor-1"),
             (
                 json!({"arithmetic": "f32", "id": "unscented-scaled", "alpha": 1}),
@@ -226,10 +238,13 @@ mod tests {
     }
 
     #[test]
-    fn the_defaults_cover_every_kind() {
-        let methods = default_methods();
+    fn every_kind_is_read_with_its_defaults_and_its_examples() {
+        let methods = every_method();
         for kind in KINDS {
-            assert!(methods.iter().any(|m| m.kind().is_some_and(|k| k.id == kind.id)), "{} is missing", kind.id);
+            let labels =
+                methods.iter().filter(|m| m.kind().is_some_and(|k| k.id == kind.id)).map(MethodSpec::label);
+            let wanted: Vec<_> = std::iter::once(kind.id).chain(kind.examples.iter().copied()).collect();
+            assert_eq!(labels.collect::<Vec<_>>(), wanted);
         }
     }
 
@@ -243,7 +258,34 @@ mod tests {
             ("unscented:kappa=1:kappa=1", "kappa", "stands twice in `unscented:kappa=1:kappa=1`".into()),
             ("unscented:kappa=nan", "kappa", "is nan; a finite number is needed".into()),
             ("unscented:kappa=-inf", "kappa", "is -inf; a finite number is needed".into()),
-            ("unscented:kappa=", "kappa", "is ``; a number is needed".into()),
+            ("unscented:kappa=", "kappa", "is empty; a value is needed".into()),
+            ("unscented:kappa=one", "kappa", "is the text \"one\"; give a number".into()),
+            (
+                "bayesian-quadrature:nodes=cubature",
+                "nodes",
+                "is `cubature`; give `unscented` or `gauss-hermite`".into(),
+            ),
+            ("bayesian-quadrature:order=4", "order", "has no meaning for unscented nodes; leave it out".into()),
+            ("bayesian-quadrature:length_scale=0", "length_scale", "is 0; a length scale is above zero".into()),
+            ("bayesian-quadrature:amplitude=-1", "amplitude", "is -1; an amplitude is zero or above".into()),
+            ("central-difference-1:step=0", "step", "is 0; a step is above zero, sqrt(3) for a Gaussian".into()),
+            (
+                "central-difference-2:step=0.9",
+                "step",
+                "is 0.9; the second order needs a step of 1 or above, sqrt(3) for a Gaussian".into(),
+            ),
+            ("simplex:w0=1", "w0", "is 1; the weight of the centre is 0 or above and below 1".into()),
+            (
+                "minimal-skew-simplex:w0=-0.1",
+                "w0",
+                "is -0.1; the weight of the centre is 0 or above and below 1".into(),
+            ),
+            ("conjugate-4:w0=1", "w0", "is 1; the weight of the centre is 0 or above and below 1".into()),
+            ("sparse-gauss-hermite:level=5", "level", "is 5; give 2, 3 or 4".into()),
+            ("stochastic-5:iterations=0", "iterations", "is 0; give 1 or more draws to average over".into()),
+            ("monte-carlo:points=1", "points", "is 1; give 2 to 1000000".into()),
+            ("monte-carlo:seed=-1", "seed", "is -1; a whole number is needed".into()),
+            ("quasi-monte-carlo:points=100", "points", "is 100; give a power of two from 2 to 524288".into()),
             ("unscented:kapa=1", "kapa", "unknown key `kapa`; did you mean `kappa`? allowed: kappa".into()),
             ("unscented:id=1", "id", "unknown key `id`; allowed: kappa".into()),
             ("taylor-1:order=1", "order", "unknown key `order`; none is allowed here".into()),

@@ -1,9 +1,29 @@
 use nalgebra::{DMatrix, DVector};
-use serde::{Deserialize, Serialize};
 
-use super::{BuildError, Method, Problem, Refusal, Transform};
+use super::kinds::{Kind, NoParameters, built};
+use super::{Exactness, Method, Problem, Refusal, Transform};
 use crate::gaussian::{Gaussian, Moments};
 use crate::sensor::{Arithmetic, Derivatives, Output, Real};
+
+pub(super) const FIRST: Kind = Kind {
+    id: "taylor-1",
+    name: "first-order Taylor (extended Kalman filter)",
+    parameters: "none",
+    evaluations: "1 Jacobian",
+    source: "Jazwinski 1970",
+    examples: &[],
+    build: |map| built(map, |_: NoParameters| Ok(FirstOrderTaylor)),
+};
+
+pub(super) const SECOND: Kind = Kind {
+    id: "taylor-2",
+    name: "second-order Taylor",
+    parameters: "none",
+    evaluations: "1 Hessian set",
+    source: "Athans, Wishner, Bertolini 1968",
+    examples: &[],
+    build: |map| built(map, |_: NoParameters| Ok(SecondOrderTaylor)),
+};
 
 /// First-order Taylor expansion at the mean, as in the extended Kalman filter: with J = h'(m) (p x a),
 ///
@@ -35,23 +55,6 @@ pub struct FirstOrderTaylor;
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
 pub struct SecondOrderTaylor;
 
-/// A Taylor expansion has no parameter.
-#[derive(Debug, Clone, Serialize, Deserialize)]
-#[serde(deny_unknown_fields)]
-pub(super) struct Parameters {}
-
-impl FirstOrderTaylor {
-    pub(super) fn from_parameters(_: Parameters) -> Result<Self, BuildError> {
-        Ok(Self)
-    }
-}
-
-impl SecondOrderTaylor {
-    pub(super) fn from_parameters(_: Parameters) -> Result<Self, BuildError> {
-        Ok(Self)
-    }
-}
-
 impl Method for FirstOrderTaylor {
     fn plan(&self, a: usize, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal> {
         Refusal::unless_something_is_read(a)?;
@@ -59,6 +62,10 @@ impl Method for FirstOrderTaylor {
             Arithmetic::Double => Box::new(FirstOrder::<f64>::new(a, p)),
             Arithmetic::Single => Box::new(FirstOrder::<f32>::new(a, p)),
         })
+    }
+
+    fn exactness(&self) -> Option<Exactness> {
+        Some(Exactness::up_to(1, 2, 1))
     }
 }
 
@@ -69,6 +76,10 @@ impl Method for SecondOrderTaylor {
             Arithmetic::Double => Box::new(SecondOrder::<f64>::new(a, p)),
             Arithmetic::Single => Box::new(SecondOrder::<f32>::new(a, p)),
         })
+    }
+
+    fn exactness(&self) -> Option<Exactness> {
+        Some(Exactness::up_to(3, 2, 2))
     }
 }
 

@@ -5,6 +5,8 @@ use nalgebra::DMatrix;
 use crate::gaussian::{Gaussian, Moments};
 use crate::sensor::{Arithmetic, Sensor};
 
+use super::{Exactness, PointSet};
+
 /// One transform to do: the sensor, the prior of the components that it reads, the noise covariance.
 #[derive(Debug, Clone, Copy)]
 pub struct Problem<'a> {
@@ -38,6 +40,27 @@ pub trait Method: Debug + Send + Sync {
     /// # Errors
     /// [`Refusal`] says why this method cannot serve these dimensions, or this arithmetic.
     fn plan(&self, a: usize, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal>;
+
+    /// Whether it serves this sensor, whatever the dimensions: every sensor unless it says otherwise.
+    ///
+    /// # Errors
+    /// [`Refusal`] says what the sensor lacks.
+    fn serves(&self, _sensor: &dyn Sensor) -> Result<(), Refusal> {
+        Ok(())
+    }
+
+    /// Up to which degree of a polynomial sensor its moments are exact, if it claims any.
+    fn exactness(&self) -> Option<Exactness> {
+        None
+    }
+
+    /// Its points and weights for `a` read components, if it is a weighted point set.
+    ///
+    /// # Errors
+    /// As [`Method::plan`].
+    fn point_set(&self, _a: usize) -> Result<Option<PointSet>, Refusal> {
+        Ok(None)
+    }
 }
 
 /// A method laid out for one pair of dimensions: what an estimator would run at every measurement.

@@ -1,8 +1,27 @@
 use serde::{Deserialize, Serialize};
 
-use super::kinds::{finite, given};
-use super::{BuildError, Method, PointSet, PointTransform, Refusal, Transform};
-use crate::sensor::Arithmetic;
+use super::kinds::{Kind, built, finite, given};
+use super::{BuildError, PointRule, PointSet, Refusal};
+
+pub(super) const PLAIN: Kind = Kind {
+    id: "unscented",
+    name: "unscented transform",
+    parameters: "kappa = 3 - a",
+    evaluations: "2a + 1",
+    source: "Julier, Uhlmann, Durrant-Whyte 2000",
+    examples: &["unscented:kappa=0", "unscented:kappa=1"],
+    build: |map| built(map, |p: Parameters| Unscented::new(p.kappa)),
+};
+
+pub(super) const SCALED: Kind = Kind {
+    id: "unscented-scaled",
+    name: "scaled unscented transform",
+    parameters: "alpha = 1e-3, beta = 2, kappa = 0",
+    evaluations: "2a + 1",
+    source: "Wan, van der Merwe 2000; Julier 2002",
+    examples: &["unscented-scaled:alpha=1", "unscented-scaled:alpha=0.5:beta=0:kappa=1"],
+    build: |map| built(map, ScaledUnscented::from_parameters),
+};
 
 /// The unscented transform: 2a + 1 points
 ///
@@ -24,7 +43,7 @@ pub struct Unscented {
 
 #[derive(Debug, Clone, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
-pub(super) struct Parameters {
+struct Parameters {
     #[serde(default, deserialize_with = "given", skip_serializing_if = "Option::is_none")]
     kappa: Option<f64>,
 }
@@ -34,24 +53,24 @@ impl Unscented {
     ///
     /// # Errors
     /// [`BuildError`] if kappa is not finite. Whether a + kappa is positive is seen only when a is known, by
-    /// [`Method::plan`].
+    /// [`Method::plan`](super::Method::plan).
     pub fn new(kappa: Option<f64>) -> Result<Self, BuildError> {
         kappa.map_or(Ok(()), |kappa| finite("kappa", kappa))?;
         Ok(Self { kappa })
     }
-
-    pub(super) fn from_parameters(p: Parameters) -> Result<Self, BuildError> {
-        Self::new(p.kappa)
-    }
 }
 
-impl Method for Unscented {
-    fn plan(&self, a: usize, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal> {
+impl PointRule for Unscented {
+    fn lay_out(&self, a: usize) -> Result<PointSet, Refusal> {
         let n = a as f64;
         let kappa = self.kappa.unwrap_or(3.0 - n);
         let scale = positive_scale(a, kappa, 1.0)?;
         let centre = kappa / scale;
-        PointTransform::plan(PointSet::on_axes(a, scale.sqrt(), 0.5 / scale, Some((centre, centre))), p, arithmetic)
+        Ok(PointSet::on_axes(a, scale.sqrt(), 0.5 / scale, Some((centre, centre))))
+    }
+
+    fn degree(&self) -> u32 {
+        3
     }
 }
 
@@ -62,7 +81,9 @@ impl Method for Unscented {
 /// z = +-sqrt(s) e_i, weight 1 / (2 s) each
 /// ```
 ///
-/// Defaults alpha = 1e-3, beta = 2, kappa = 0. Exact for polynomials of degree 3 in the mean, 2 in the
+/// Three choices are usual: alpha = 1e-3, beta = 2, kappa = 0, the default (Wan & van der Merwe); alpha = 1 with beta = 0
+/// and kappa = 3 - a, which is [`Unscented`] with its default; alpha = 1 with beta = 2 and kappa = 3 - a. kappa is a number
+/// here, so 3 - a is written out for the a at hand. Exact for polynomials of degree 3 in the mean, 2 in the
 /// cross-covariance, 1 in the covariance.
 ///
 /// With a small alpha the weights are of size 1 / alpha^2 and the points alpha standard deviations apart, so
@@ -81,7 +102,7 @@ pub struct ScaledUnscented {
 
 #[derive(Debug, Clone, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
-pub(super) struct ScaledParameters {
+struct ScaledParameters {
     #[serde(default, deserialize_with = "given", skip_serializing_if = "Option::is_none")]
     alpha: Option<f64>,
     #[serde(default, deserialize_with = "given", skip_serializing_if = "Option::is_none")]
@@ -95,7 +116,7 @@ impl ScaledUnscented {
     ///
     /// # Errors
     /// [`BuildError`] if one is not finite or alpha is not positive. Whether a + kappa is positive is seen
-    /// only when a is known, by [`Method::plan`].
+    /// only when a is known, by [`Method::plan`](super::Method::plan).
     pub fn new(alpha: f64, beta: f64, kappa: f64) -> Result<Self, BuildError> {
         finite("alpha", alpha)?;
         finite("beta", beta)?;
@@ -109,29 +130,28 @@ impl ScaledUnscented {
         Ok(Self { alpha, beta, kappa })
     }
 
-    pub(super) fn from_parameters(p: ScaledParameters) -> Result<Self, BuildError> {
+    fn from_parameters(p: ScaledParameters) -> Result<Self, BuildError> {
         Self::new(p.alpha.unwrap_or(1e-3), p.beta.unwrap_or(2.0), p.kappa.unwrap_or(0.0))
     }
 }
 
-impl Method for ScaledUnscented {
-    fn plan(&self, a: usize, p: usize, arithmetic: Arithmetic) -> Result<Box<dyn Transform>, Refusal> {
+impl PointRule for ScaledUnscented {
+    fn lay_out(&self, a: usize) -> Result<PointSet, Refusal> {
         let squared = self.alpha * self.alpha;
         let scale = positive_scale(a, self.kappa, squared)?;
         let mean = (scale - a as f64) / scale;
         let covariance = mean + (1.0 - squared + self.beta);
-        PointTransform::plan(
-            PointSet::on_axes(a, scale.sqrt(), 0.5 / scale, Some((mean, covariance))),
-            p,
-            arithmetic,
-        )
+        Ok(PointSet::on_axes(a, scale.sqrt(), 0.5 / scale, Some((mean, covariance))))
+    }
+
+    fn degree(&self) -> u32 {
+        3
     }
 }
 
 /// `factor` (a + kappa): the square of the points' distance, which must be a positive number whose inverse is
 /// a weight.
 fn positive_scale(a: usize, kappa: f64, factor: f64) -> Result<f64, Refusal> {
-    Refusal::unless_something_is_read(a)?;
     let sum = a as f64 + kappa;
     if sum <= 0.0 {
         return Err(Refusal(format!(

@@ -141,7 +141,7 @@ fn extend(
 mod tests {
     use super::*;
     use crate::lanes::{Level, Task, dispatch};
-    use crate::reference::net::BLOCK;
+    use crate::net::BLOCK;
 
     struct Add<'a>(&'a Basis, &'a [Column], &'a mut [f64]);
 

@@ -5,9 +5,9 @@ use smallvec::SmallVec;
 
 use super::basis::Basis;
 use super::columns::Column;
-use super::net::{BLOCK, Net};
 use super::sums::Sums;
 use crate::lanes::{Lanes, Level, Simd, Task, dispatch};
+use crate::net::{BLOCK, Net};
 use crate::sensor::Sensor;
 
 /// A block of points on its way from the net to the sums, one array a coordinate.

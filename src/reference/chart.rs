@@ -267,8 +267,8 @@ mod plain_list {
 mod tests {
     use super::*;
     use crate::gaussian::wrap;
+    use crate::net::BLOCK;
     use crate::reference::basis::Basis;
-    use crate::reference::net::BLOCK;
     use nalgebra::DMatrix;
     use rand::{RngExt, SeedableRng};
     use rand_distr::StandardNormal;

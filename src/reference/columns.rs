@@ -5,8 +5,8 @@
 //! by side and share the factors that they have in common. Written in lanes: left to itself the compiler pairs the
 //! lanes as the fold does and shuffles every load, at twice to three times the time.
 
-use super::net::BLOCK;
 use crate::lanes::{Lanes, Level, Simd, Task, dispatch};
+use crate::net::BLOCK;
 
 /// One array of a block.
 pub(super) type Column = [f64; BLOCK];

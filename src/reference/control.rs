@@ -5,9 +5,9 @@ use nalgebra::{Cholesky, DMatrix};
 use super::basis::Basis;
 use super::block::Block;
 use super::columns::{Column, add_dots};
-use super::net::BLOCK;
 use super::sums::Sums;
 use crate::lanes::{Level, Simd, Task, dispatch};
+use crate::net::BLOCK;
 
 /// Regression of every integrand on the control variates.
 ///

@@ -1,9 +1,9 @@
 use super::basis::Basis;
 use super::block::Block;
 use super::columns::Column;
-use super::net::{BLOCK, Net};
 use super::outskirts::{Gathering, Outskirts};
 use super::pilot::{Pilot, Question};
+use crate::net::{BLOCK, Net};
 
 /// Binary logarithm of the points of the look ahead.
 const LOG2: u32 = 14;

@@ -12,7 +12,6 @@ mod columns;
 mod control;
 mod estimate;
 mod foresight;
-pub mod net;
 mod outskirts;
 mod pilot;
 mod replicate;

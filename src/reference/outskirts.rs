@@ -4,11 +4,11 @@ use super::block::Block;
 use super::columns::Column;
 use super::control::Residuals;
 use super::estimate::combine;
-use super::net::BLOCK;
 use super::pilot::{Pilot, Question};
 use super::sums::Sums;
 use crate::gaussian::Moments;
 use crate::lanes::{Simd, Task, dispatch};
+use crate::net::BLOCK;
 
 /// A region is out of sight while fewer samples than this are expected in it: 97 of 100 references have none there. Ours,
 /// chosen by the coverage of 95 % intervals on closed-form cases: 0.1 covers 97 %, 0.05 96.2 %, 0.03 95.7 %, none 94 %.

@@ -8,11 +8,11 @@ use super::block::Block;
 use super::chart::CircularSum;
 use super::columns::{add_dots_at, add_totals_at};
 use super::control::{Controls, Means, Regression};
-use super::net::{BLOCK, Net};
 use super::stream::Key;
 use super::sums::Sums;
 use crate::gaussian::Gaussian;
 use crate::lanes::Level;
+use crate::net::{BLOCK, Net};
 use crate::sensor::Sensor;
 
 /// Blocks that a replicate starts with.

@@ -2,11 +2,11 @@ use nalgebra::DMatrix;
 
 use super::block::Block;
 use super::chart::Charts;
-use super::net::Net;
 use super::pilot::{Pilot, Question, take_stream};
 use super::state::{Look, ReplicateState};
 use super::sums::Sums;
 use crate::gaussian::Moments;
+use crate::net::Net;
 
 /// Of a near angle's blocks, one in this many feeds its circular mean: its moments hardly depend on where the
 /// cut lies, and sine and cosine cost as much as the sample.
@@ -137,11 +137,11 @@ impl Replicate {
 mod tests {
     use super::*;
     use crate::lanes::Level;
+    use crate::net::{BLOCK, Directions};
     use crate::reference::basis::Basis;
     use crate::reference::control::Controls;
     use crate::reference::estimate::combine;
     use crate::reference::foresight::Foresight;
-    use crate::reference::net::{BLOCK, Directions};
     use crate::reference::stream::Key;
     use crate::reference::witness::{Testimony, hear};
     use crate::suite::Case;

@@ -1,6 +1,6 @@
-use super::net::{BLOCK, MOST_LOG2};
 use super::pilot::FIRST_BLOCKS;
 use crate::lanes::Level;
+use crate::net::{BLOCK, MOST_LOG2};
 use crate::shard::Shard;
 
 /// Independent replicates of a reference unless told otherwise.

@@ -2,11 +2,11 @@ use nalgebra::{DMatrix, DVector};
 use serde::{Deserialize, Serialize};
 
 use super::chart::{Charts, CircularSum};
-use super::net::BLOCK;
 use super::pilot::Question;
 use super::settings::{SamplerError, SamplerSettings};
 use super::sums::Sums;
 use crate::gaussian::Moments;
+use crate::net::BLOCK;
 use crate::suite::rows;
 
 /// What a [`Sampler`](super::Sampler) has found so far: the sums of every replicate, from which it goes on, and what it

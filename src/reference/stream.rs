@@ -2,6 +2,8 @@ use rand::SeedableRng;
 use rand_pcg::Pcg64Dxsm;
 use sha2::{Digest, Sha256};
 
+use crate::net::Scrambles;
+
 /// What a case's random numbers depend on: its content and the seed, nothing else.
 ///
 /// Not its name, not its place in a suite, not the machine or the number of threads: the same question asked
@@ -31,11 +33,6 @@ impl Key {
     /// The stream of block `block` of the pilot, apart from every replicate's.
     pub(super) fn pilot(&self, block: u64) -> Pcg64Dxsm {
         self.derived(b"pilot", 0, block)
-    }
-
-    /// The stream that scrambles dimension `dimension` of the net of replicate `replicate`.
-    pub(super) fn scramble(&self, replicate: u64, dimension: u64) -> Pcg64Dxsm {
-        self.derived(b"digit", replicate, dimension)
     }
 
     /// The stream of batch `batch` of the witness.
@@ -72,5 +69,11 @@ impl Key {
         hash.update(replicate.to_le_bytes());
         hash.update(part.to_le_bytes());
         Pcg64Dxsm::from_seed(hash.finalize().into())
+    }
+}
+
+impl Scrambles for Key {
+    fn scramble(&self, replicate: u64, dimension: u64) -> impl rand::Rng {
+        self.derived(b"digit", replicate, dimension)
     }
 }

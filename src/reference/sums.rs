@@ -2,8 +2,8 @@ use serde::{Deserialize, Serialize};
 
 use super::basis::Basis;
 use super::columns::{Column, add_dots, add_totals};
-use super::net::BLOCK;
 use crate::lanes::Simd;
+use crate::net::BLOCK;
 
 /// Sums over the points of one replicate, on which every moment rests.
 ///

@@ -9,10 +9,10 @@ use super::basis::Basis;
 use super::block::Block;
 use super::estimate::combine;
 use super::foresight::{Foresight, reach_out};
-use super::net::{BLOCK, Net};
 use super::pilot::Question;
 use super::tails::fit_pareto;
 use crate::gaussian::{Moments, SquareRoot, wrap};
+use crate::net::{BLOCK, Net};
 use crate::sensor::Output;
 
 /// Batches of the witness: their spread gives its standard errors.

@@ -1,6 +1,7 @@
 use comfy_table::Table;
 
 use super::table::{keep_whole, labelled, lines, plain_table, wrapped};
+use crate::method::{Degree, Evaluations, MethodSpec};
 use crate::score::ScoreKind;
 use crate::sensor::Output;
 use crate::suite::Case;
@@ -89,18 +90,37 @@ fn outputs(case: &Case) -> String {
     case.sensor().outputs().iter().map(one).collect::<Vec<_>>().join(", ")
 }
 
-/// The methods: id, published name, parameters, evaluations in the number a of read components, source.
+/// Read components at which the catalogue says what a method costs.
+const SHOWN: [usize; 4] = [2, 4, 6, 10];
+
+/// The methods: id, published name, evaluations and negative weights by the number a of read components, exactness.
 pub fn method_table() -> String {
-    let mut table = plain_table(&["method", "published as", "parameters", "evaluations", "source"], 0..0);
+    let header = ["method", "published as", "evaluations", "exact", "negative"];
+    let mut table = plain_table(&header, 0..0);
     for kind in method::KINDS {
-        table.add_row([kind.id, kind.name, kind.parameters, kind.evaluations, kind.source]);
+        let method = default_of(kind);
+        let mut evaluations =
+            SHOWN.map(|a| Evaluations::of(method.method(), a).map_or_else(|_| "-".into(), short)).to_vec();
+        if evaluations.iter().all(|e| *e == evaluations[0]) {
+            evaluations.truncate(1);
+        }
+        let exact = method.method().exactness().map_or_else(String::new, |e| {
+            [e.mean, e.cross_covariance, e.covariance].map(|degree| degree.to_string()).join(", ")
+        });
+        table.add_row([kind.id, kind.name, &evaluations.join(", "), &exact, &negative(&method)]);
     }
+    keep_whole(&mut table, 0..1);
+    keep_whole(&mut table, 2..5);
     with_legend(
         &table,
         &[
             "a: number of state components that the sensor reads, for points are laid in these alone.",
-            "evaluations: of the sensor in one transform. A value after = is the default; another is given as in \
-             gauss-hermite:order=5.",
+            "evaluations: of the sensor in one transform with the default parameters, at a = 2, 4, 6 and 10 (once where all are \
+             equal), where no output is angular. J: a Jacobian; H: a set of Hessians; M: a set of exact moments, which only some sensors know; -: not served.",
+            "exact: up to which degree of a polynomial sensor, in the mean, the cross-covariance and the covariance.",
+            "negative: at which of these a a weight is below zero, so that a covariance can come out indefinite; \
+             nothing: no weighted point set.",
+            "`catalogue methods NAME` shows all of one: parameters with their defaults, other parameters to try, source.",
         ],
     )
 }
@@ -114,13 +134,63 @@ pub fn method_page(id: &str) -> Result<String, String> {
         let ids: Vec<_> = method::KINDS.iter().map(|kind| kind.id).collect();
         return Err(unknown_name("method", id, &ids));
     };
-    let facts = [
-        ("published as", kind.name.into()),
-        ("parameters", kind.parameters.into()),
+    let method = default_of(kind);
+    let mut facts = vec![("published as", kind.name.to_string()), ("parameters", kind.parameters.into())];
+    if !kind.examples.is_empty() {
+        facts.push(("others to try", kind.examples.join(", ")));
+    }
+    if let Some(exact) = method.method().exactness() {
+        let words = |degree| match degree {
+            Degree::UpTo(degree) => format!("up to degree {degree}"),
+            Degree::Every => "for every sensor that it serves".into(),
+        };
+        let [mean, cross, covariance] = [exact.mean, exact.cross_covariance, exact.covariance].map(words);
+        facts.push(("exact", format!("mean {mean}, cross-covariance {cross}, covariance {covariance}")));
+    }
+    facts.extend([
         ("evaluations", format!("{}, a the number of state components that the sensor reads", kind.evaluations)),
+        ("", SHOWN.map(|a| at(&method, a)).join("; ")),
         ("source", kind.source.into()),
-    ];
+    ]);
     Ok(format!("{}\n{}", kind.id, labelled(&facts)))
+}
+
+fn default_of(kind: &method::Kind) -> MethodSpec {
+    MethodSpec::parse(kind.id).unwrap_or_else(|e| unreachable!("a test holds that every kind has defaults: {e}"))
+}
+
+/// `4 at a = 2, some weights negative`.
+fn at(method: &MethodSpec, a: usize) -> String {
+    match Evaluations::of(method.method(), a) {
+        Ok(evaluations) if has_negative_weights(method, a) => {
+            format!("{} at a = {a}, some weights negative", short(evaluations))
+        }
+        Ok(evaluations) => format!("{} at a = {a}", short(evaluations)),
+        Err(refusal) => format!("none at a = {a}: {refusal}"),
+    }
+}
+
+/// At which of the shown numbers of components weights are negative; nothing where there are no weights.
+fn negative(method: &MethodSpec) -> String {
+    if !matches!(method.method().point_set(SHOWN[1]), Ok(Some(_))) {
+        return String::new();
+    }
+    let at: Vec<_> =
+        SHOWN.into_iter().filter(|&a| has_negative_weights(method, a)).map(|a| a.to_string()).collect();
+    if at.is_empty() { "none".into() } else { format!("a = {}", at.join(", ")) }
+}
+
+fn has_negative_weights(method: &MethodSpec, a: usize) -> bool {
+    let Ok(Some(set)) = method.method().point_set(a) else { return false };
+    set.mean_weights().iter().chain(set.covariance_weights().iter()).any(|&w| w < 0.0)
+}
+
+/// `9`, `1 J`, `1 H` or `1 M`.
+fn short(evaluations: Evaluations) -> String {
+    let Evaluations { values, jacobians, hessians, exact_moments } = evaluations;
+    let counts = [(values, ""), (jacobians, " J"), (hessians, " H"), (exact_moments, " M")];
+    let parts = counts.iter().filter(|(count, _)| *count > 0).map(|(count, mark)| format!("{count}{mark}"));
+    parts.collect::<Vec<_>>().join(" + ")
 }
 
 /// The scores: name, formula, unit, how it reads.

@@ -86,7 +86,7 @@ fn row(m: &MethodSummary) -> Vec<String> {
     ]
 }
 
-/// Evaluations of h as a number, with a Jacobian as J and a set of Hessians as H beside it.
+/// Evaluations of h as a number, with a Jacobian as J, a set of Hessians as H and a set of exact moments as M beside it.
 fn evaluations((least, most): (Evaluations, Evaluations)) -> String {
     let mut parts = Vec::new();
     if most.values > 0 {
@@ -96,7 +96,7 @@ fn evaluations((least, most): (Evaluations, Evaluations)) -> String {
             format!("{}-{}", least.values, most.values)
         });
     }
-    for (count, mark) in [(most.jacobians, "J"), (most.hessians, "H")] {
+    for (count, mark) in [(most.jacobians, "J"), (most.hessians, "H"), (most.exact_moments, "M")] {
         if count > 0 {
             parts.push(format!("{count} {mark}"));
         }

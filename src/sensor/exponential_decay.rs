@@ -1,10 +1,11 @@
 use serde::{Deserialize, Serialize};
 
+use crate::gaussian::{Gaussian, Moments};
+
 use super::kinds::{Kind, built};
 use super::parameter::{above_zero, finite};
 use super::single::Single;
-use super::{Formula, Number, Output, ParameterError};
-use crate::gaussian::Gaussian;
+use super::{ExactMoments, Formula, Number, Output, ParameterError};
 
 pub(super) const KIND: Kind = Kind {
     name: "exponential-decay",
@@ -88,9 +89,23 @@ impl Formula for ExponentialDecay {
         Some(prior.largest_sd(&[0])? / self.scale.abs())
     }
 
+    fn exact_moments(&self) -> Option<&dyn ExactMoments> {
+        Some(self)
+    }
+
     #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         let decay = (x[0] * T::constant(-1.0 / self.scale)).exp();
         y[0] = T::constant(self.amplitude) * decay + T::constant(self.offset);
+    }
+}
+
+impl ExactMoments for ExponentialDecay {
+    fn write_exact(&self, prior: &Gaussian, moments: &mut Moments) {
+        let (mean, variance) = (prior.mean()[0] / self.scale, prior.covariance()[(0, 0)] / self.scale.powi(2));
+        let decaying = self.amplitude * (0.5 * variance - mean).exp();
+        moments.mean[0] = decaying + self.offset;
+        moments.covariance[(0, 0)] = decaying * decaying * variance.exp_m1();
+        moments.cross_covariance[(0, 0)] = -decaying * variance * self.scale;
     }
 }

@@ -3,7 +3,7 @@ use std::fmt::Debug;
 use nalgebra::DMatrix;
 use smallvec::SmallVec;
 
-use super::{Derivatives, Number, Output, Real, derivatives};
+use super::{Derivatives, ExactMoments, Number, Output, Real, derivatives};
 use crate::gaussian::Gaussian;
 use crate::lanes::{Lanes, Level, Simd, Task, dispatch};
 
@@ -47,6 +47,11 @@ pub trait Formula: Debug + Send + Sync {
     /// May panic if `x` or `y` is shorter than [`Formula::reads`] or [`Formula::outputs`].
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]);
 
+    /// Its moments in closed form, if it has them.
+    fn exact_moments(&self) -> Option<&dyn ExactMoments> {
+        None
+    }
+
     /// [`Formula::evaluate`] at `length` points, a multiple of eight, eight at a time; laid out as in [`Sensor::values`].
     /// A formula that is not compiled may know a faster order of work.
     #[inline(always)]
@@ -83,6 +88,9 @@ pub trait Sensor: Debug + Send + Sync {
 
     /// The prior's spread against the sensor's own length, as [`Formula::natural_spread`].
     fn natural_spread(&self, prior: &Gaussian) -> Option<f64>;
+
+    /// Its moments in closed form, if it has them.
+    fn exact_moments(&self) -> Option<&dyn ExactMoments>;
 
     /// Writes h(x) into `y` (p).
     fn value(&self, x: &[f64], y: &mut [f64]);
@@ -130,6 +138,10 @@ impl<F: Formula> Sensor for F {
 
     fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
         Formula::natural_spread(self, prior)
+    }
+
+    fn exact_moments(&self) -> Option<&dyn ExactMoments> {
+        Formula::exact_moments(self)
     }
 
     fn value(&self, x: &[f64], y: &mut [f64]) {

@@ -1,9 +1,12 @@
 use serde::{Deserialize, Serialize};
 
+use crate::gaussian::{Gaussian, Moments};
+
+use super::exact::write_linear;
 use super::kinds::{Kind, built};
 use super::parameter::{checked_components, checked_row};
 use super::position::first_two;
-use super::{Formula, Number, Output, ParameterError};
+use super::{ExactMoments, Formula, Number, Output, ParameterError};
 
 pub(super) const KIND: Kind = Kind {
     name: "line-offset",
@@ -77,6 +80,10 @@ impl Formula for LineOffset {
         &self.outputs
     }
 
+    fn exact_moments(&self) -> Option<&dyn ExactMoments> {
+        Some(self)
+    }
+
     #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         let mut sum = T::constant(0.0);
@@ -84,5 +91,12 @@ impl Formula for LineOffset {
             sum = sum + T::constant(normal) * (x - T::constant(first));
         }
         y[0] = sum;
+    }
+}
+
+impl ExactMoments for LineOffset {
+    fn write_exact(&self, prior: &Gaussian, moments: &mut Moments) {
+        self.evaluate(prior.mean().as_slice(), moments.mean.as_mut_slice());
+        write_linear(prior, |_, k| self.normal[k], moments);
     }
 }

@@ -1,8 +1,11 @@
 use serde::{Deserialize, Serialize};
 
+use crate::gaussian::{Gaussian, Moments};
+
+use super::exact::write_linear;
 use super::kinds::{Kind, built};
 use super::parameter::{checked_row, read_components};
-use super::{Formula, Number, Output, ParameterError};
+use super::{ExactMoments, Formula, Number, Output, ParameterError};
 
 pub(super) const KIND: Kind = Kind {
     name: "linear",
@@ -73,6 +76,10 @@ impl Formula for Linear {
         &self.outputs
     }
 
+    fn exact_moments(&self) -> Option<&dyn ExactMoments> {
+        Some(self)
+    }
+
     #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         for (j, row) in self.rows.iter().enumerate() {
@@ -82,5 +89,12 @@ impl Formula for Linear {
             }
             y[j] = sum;
         }
+    }
+}
+
+impl ExactMoments for Linear {
+    fn write_exact(&self, prior: &Gaussian, moments: &mut Moments) {
+        self.evaluate(prior.mean().as_slice(), moments.mean.as_mut_slice());
+        write_linear(prior, |j, k| self.rows[j][k], moments);
     }
 }

@@ -1,10 +1,11 @@
 use serde::{Deserialize, Serialize};
 
+use crate::gaussian::{Gaussian, Moments};
+
 use super::kinds::{Kind, built};
 use super::parameter::finite;
 use super::single::Single;
-use super::{Formula, Number, Output, ParameterError};
-use crate::gaussian::Gaussian;
+use super::{ExactMoments, Formula, Number, Output, ParameterError};
 
 pub(super) const KIND: Kind = Kind {
     name: "phase-sine",
@@ -96,9 +97,27 @@ impl Formula for PhaseSine {
         Some(prior.largest_sd(&[0])? * self.frequency.abs())
     }
 
+    fn exact_moments(&self) -> Option<&dyn ExactMoments> {
+        Some(self)
+    }
+
     #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         let phase = T::constant(self.frequency) * x[0] + T::constant(self.phase);
         y[0] = T::constant(self.amplitude) * phase.sin() + T::constant(self.offset);
+    }
+}
+
+impl ExactMoments for PhaseSine {
+    fn write_exact(&self, prior: &Gaussian, moments: &mut Moments) {
+        let variance = prior.covariance()[(0, 0)];
+        let (phase, spread) = (self.frequency * prior.mean()[0] + self.phase, self.frequency.powi(2) * variance);
+        let damped = self.amplitude * (-0.5 * spread).exp();
+        moments.mean[0] = damped * phase.sin() + self.offset;
+        moments.cross_covariance[(0, 0)] = damped * phase.cos() * self.frequency * variance;
+        // E[sin^2] - E[sin]^2 with the common factor 1 - e^-w taken out, which is small where w is.
+        let lost = -(-spread).exp_m1();
+        let share = 0.5 * lost * (1.0 + (-spread).exp() * (2.0 * phase).cos());
+        moments.covariance[(0, 0)] = self.amplitude.powi(2) * share;
     }
 }

@@ -1,9 +1,11 @@
 use serde::{Deserialize, Serialize};
 
+use crate::gaussian::{Gaussian, Moments};
+
+use super::exact::write_linear;
 use super::kinds::{Kind, built};
 use super::parameter::checked_component;
-use super::{Formula, Number, Output, ParameterError};
-use crate::gaussian::Gaussian;
+use super::{ExactMoments, Formula, Number, Output, ParameterError};
 
 pub(super) const KIND: Kind = Kind {
     name: "polar-to-cartesian",
@@ -82,9 +84,40 @@ impl Formula for PolarToCartesian {
         prior.largest_sd(&[1])
     }
 
+    fn exact_moments(&self) -> Option<&dyn ExactMoments> {
+        Some(self)
+    }
+
     #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         y[0] = x[0] * x[1].cos();
         y[1] = x[0] * x[1].sin();
+    }
+}
+
+impl ExactMoments for PolarToCartesian {
+    /// With r ~ N(m, V) and theta of mean t and variance v, s their covariance: E\[r e^(i k t)\] and E\[r^2 e^(i k t)\] from
+    /// the characteristic function are (m + i k s) and ((m + i k s)^2 + V) times e^(i k t - k^2 v / 2); the cross-covariance is
+    /// P E\[h'\] by Stein's identity. Second moments are differences of sums of the size m^2 + V, and lose the digits by which
+    /// that is larger than the spread.
+    fn write_exact(&self, prior: &Gaussian, moments: &mut Moments) {
+        let p = prior.covariance();
+        let (m, t) = (prior.mean()[0], prior.mean()[1]);
+        let (range, both, angle) = (p[(0, 0)], p[(0, 1)], p[(1, 1)]);
+        let damped = (-0.5 * angle).exp();
+        let (cos, sin) = (damped * t.cos(), damped * t.sin());
+        let (east, north) = (m * cos - both * sin, m * sin + both * cos);
+        write_linear(prior, |j, k| [[cos, -north], [sin, east]][j][k], moments);
+        moments.mean[0] = east;
+        moments.mean[1] = north;
+        let (real, imaginary) = (m * m - 4.0 * both * both + range, 4.0 * m * both);
+        let twice = (-2.0 * angle).exp();
+        let (cos, sin) = (twice * (2.0 * t).cos(), twice * (2.0 * t).sin());
+        let (squares, difference) = (m * m + range, real * cos - imaginary * sin);
+        let product = 0.5 * (real * sin + imaginary * cos) - east * north;
+        moments.covariance[(0, 0)] = 0.5 * (squares + difference) - east * east;
+        moments.covariance[(1, 1)] = 0.5 * (squares - difference) - north * north;
+        moments.covariance[(0, 1)] = product;
+        moments.covariance[(1, 0)] = product;
     }
 }

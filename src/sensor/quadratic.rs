@@ -1,8 +1,12 @@
+use nalgebra::{DMatrix, DVector};
 use serde::{Deserialize, Serialize};
 
+use crate::gaussian::{Gaussian, Moments};
+
+use super::exact::write_linear;
 use super::kinds::{Kind, built};
 use super::parameter::{checked_row, read_components};
-use super::{Formula, Number, Output, ParameterError};
+use super::{ExactMoments, Formula, Number, Output, ParameterError};
 
 pub(super) const KIND: Kind = Kind {
     name: "quadratic",
@@ -122,6 +126,10 @@ impl Formula for Quadratic {
         &self.outputs
     }
 
+    fn exact_moments(&self) -> Option<&dyn ExactMoments> {
+        Some(self)
+    }
+
     #[inline(always)]
     fn evaluate<T: Number>(&self, x: &[T], y: &mut [T]) {
         for (form, output) in self.forms.iter().zip(y) {
@@ -134,6 +142,42 @@ impl Formula for Quadratic {
                 sum = sum + slope * x[i];
             }
             *output = sum;
+        }
+    }
+}
+
+impl Form {
+    /// A_ik of the symmetric A.
+    fn entry(&self, i: usize, k: usize) -> f64 {
+        if i == k { self.upper[i][0] } else { 0.5 * self.upper[i.min(k)][i.abs_diff(k)] }
+    }
+
+    /// (A P)_ik.
+    fn bend(&self, covariance: &DMatrix<f64>, i: usize, k: usize) -> f64 {
+        (0..self.upper.len()).map(|l| self.entry(i, l) * covariance[(l, k)]).sum()
+    }
+
+    /// g_k = (2 A m + b)_k.
+    fn slope(&self, mean: &DVector<f64>, k: usize) -> f64 {
+        self.linear[k] + 2.0 * (0..self.upper.len()).map(|l| self.entry(k, l) * mean[l]).sum::<f64>()
+    }
+}
+
+impl ExactMoments for Quadratic {
+    fn write_exact(&self, prior: &Gaussian, moments: &mut Moments) {
+        let (a, covariance) = (prior.dimension(), prior.covariance());
+        self.evaluate(prior.mean().as_slice(), moments.mean.as_mut_slice());
+        write_linear(prior, |j, k| self.forms[j].slope(prior.mean(), k), moments);
+        for (j, form) in self.forms.iter().enumerate() {
+            moments.mean[j] += (0..a).map(|i| form.bend(covariance, i, i)).sum::<f64>();
+            for (l, other) in self.forms[..=j].iter().enumerate() {
+                let product = |i: usize, k: usize| form.bend(covariance, i, k) * other.bend(covariance, k, i);
+                let bent = 2.0 * (0..a).map(|i| (0..a).map(|k| product(i, k)).sum::<f64>()).sum::<f64>();
+                moments.covariance[(j, l)] += bent;
+                if l != j {
+                    moments.covariance[(l, j)] += bent;
+                }
+            }
         }
     }
 }

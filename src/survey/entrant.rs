@@ -53,6 +53,7 @@ impl<'a> Entrant<'a> {
 pub(super) fn transformed(case: &Case, method: &MethodSpec) -> Result<Candidate, Refusal> {
     let prior = case.marginal().law();
     let (a, p) = (prior.dimension(), case.sensor().outputs().len());
+    method.method().serves(case.sensor())?;
     let mut transform = method.plan(a, p)?;
     let counted = Counted::new(case.sensor());
     let noise = case.noise_or_zero();

@@ -97,6 +97,7 @@ struct Bench<'a> {
 impl<'a> Bench<'a> {
     fn new(case: &'a Case, method: &MethodSpec) -> Option<Self> {
         let (a, p) = (case.marginal().law().dimension(), case.sensor().outputs().len());
+        method.method().serves(case.sensor()).ok()?;
         Some(Self {
             case,
             noise: case.noise_or_zero(),

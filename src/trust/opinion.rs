@@ -4,9 +4,10 @@ use crate::sensor::{Output, chart_deviation};
 /// Rules that can be asked for a second opinion on a method's answer, from cheap to rich, as labels of methods.
 ///
 /// The rich ones are refused where they would take more than 5,000 points, which no estimator would pay for a check.
-pub const OPINIONS: [&str; 5] = [
+pub const OPINIONS: [&str; 6] = [
     "taylor-2",
     "unscented",
+    "cubature-5",
     "gauss-hermite:order=3:max_nodes=5000",
     "gauss-hermite:order=5:max_nodes=5000",
     "gauss-hermite:order=7:max_nodes=5000",

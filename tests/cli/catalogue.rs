@@ -37,7 +37,7 @@ fn symbols_are_explained_below_the_tables() {
     let desk = Desk::new();
     for (shelf, symbols) in [
         ("sensors", &["outputs:", "[rad, angular]:", "`catalogue sensors NAME` shows all"][..]),
-        ("methods", &["a:", "evaluations:", "default"]),
+        ("methods", &["a:", "evaluations:", "J:", "H:", "M:", "exact:", "negative:", "default"]),
         ("scores", &["n:", "p:", "mu, S, C:", "P:", "R:", "A hat", "b =", "O:", "B:", "K:", "M:", "nats:", "tr:"]),
     ] {
         let page = desk.succeed(&["catalogue", shelf]);
@@ -93,9 +93,43 @@ fn a_method_is_shown_whole() {
         assert_narrow(&page);
         assert_eq!(page.lines().next(), Some(kind.id));
         let flat = page.split_whitespace().collect::<Vec<_>>().join(" ");
-        for fact in [kind.name, kind.parameters, kind.evaluations, kind.source] {
+        for fact in [kind.name, kind.parameters, kind.evaluations, kind.source].iter().chain(kind.examples) {
             assert!(flat.contains(fact), "{fact} is missing in {page}");
         }
+    }
+    // Counts by hand from the formulas; 0 of the weights of cubature-5 at a = 2 and 4 is below zero, (4 - a) is from 5 on.
+    for (id, facts) in [
+        (
+            "cubature-5",
+            "exact mean up to degree 5, cross-covariance up to degree 4, covariance up to degree 2",
+            "9 at a = 2; 33 at a = 4; 73 at a = 6, some weights negative; 201 at a = 10, some weights negative source",
+        ),
+        (
+            "statistical-linearisation",
+            "exact mean for every sensor that it serves, cross-covariance for every sensor that it serves, covariance up to \
+             degree 1",
+            "1 M at a = 2; 1 M at a = 4; 1 M at a = 6; 1 M at a = 10 source",
+        ),
+        (
+            "conjugate-4",
+            "cross-covariance up to degree 4",
+            "have to lie infinitely far away; give w0 above 0 and up to 0.5; 24 at a = 4; 76 at a = 6; 1044 at a = 10 source",
+        ),
+    ]
+    .map(|(id, one, two)| (id, [one, two]))
+    {
+        let page = desk.succeed(&["catalogue", "methods", id]);
+        let flat = page.split_whitespace().collect::<Vec<_>>().join(" ");
+        for fact in facts {
+            assert!(flat.contains(fact), "{fact} is missing in {flat}");
+        }
+    }
+    let table = desk.succeed(&["catalogue", "methods"]);
+    let flat = table.split_whitespace().collect::<Vec<_>>().join(" ");
+    for row in
+        ["5, 9, 13, 21 3, 2, 1 a = 4, 6, 10", "9, 33, 73, 201 5, 4, 2 a = 6, 10", "4, 8, 12, 20 3, 2, 1 none"]
+    {
+        assert!(flat.contains(row), "{row} is missing in {table}");
     }
 }
 
@@ -115,7 +149,7 @@ fn a_name_that_is_not_there_is_answered_with_the_nearest() {
             "methods",
             "tailor-1",
             "there is no method `tailor-1`; did you mean `taylor-1`? give one of taylor-1, ",
-            "gauss-hermite",
+            "quasi-monte-carlo",
         ),
         ("scores", "floor", "`catalogue scores` shows every score whole; ", "leave out `floor`"),
     ] {

@@ -7,7 +7,7 @@ use gaussworthy::method::MethodSpec;
 use gaussworthy::sensor::{BearingOnly, RangeBearing, Sensor};
 use nalgebra::{DMatrix, Matrix2, Vector2, dmatrix};
 
-use crate::cases::{assert_close, has_tiny_alpha, methods, moments};
+use crate::cases::{assert_close, has_tiny_alpha, is_exact_on_linear, is_mirrored, methods_for, moments};
 
 /// A planar case: a position seen from stations, by a root of its covariance.
 struct Scene {
@@ -117,7 +117,7 @@ fn tolerance(method: &MethodSpec) -> f64 {
 #[test]
 fn every_method_is_unchanged_when_the_case_and_its_root_rotate() {
     for scene in scenes() {
-        for method in methods() {
+        for method in methods_for(scene.sensor().as_ref()) {
             let upright = scene.moments(&method, &scene.rooted());
             for angle in angles(&scene) {
                 let rotated = scene.rotated(&turn(angle));
@@ -168,10 +168,12 @@ fn deviations_are_taken_across_the_cut() {
         stations: vec![Vector2::zeros()],
         with_range: false,
     };
-    for method in methods() {
-        let got = scene.moments(&method, &scene.plain());
+    for method in methods_for(scene.sensor().as_ref()).iter().filter(|m| is_exact_on_linear(m)) {
+        let got = scene.moments(method, &scene.plain());
         assert_close(got.covariance[(0, 0)], 0.0101, 0.05, 0.0101, method.label());
-        assert_close(wrap(got.mean[0] - PI), 0.0, 1e-9, 1.0, method.label());
+        // Other points see odd powers and mixed terms of the deviation, of the size 0.1^3 / 3 rad at one sd.
+        let centred = if is_mirrored(method.method(), 2) { 1e-9 } else { 1e-3 };
+        assert_close(wrap(got.mean[0] - PI), 0.0, centred, 1.0, method.label());
         let slope = dmatrix![0.0; -0.1];
         assert!((got.cross_covariance - slope).amax() < 0.005, "{}", method.label());
     }

@@ -1,7 +1,7 @@
 #!/usr/bin/env python3
-"""Writes src/reference/net/joe_kuo.rs: the first dimensions of the direction numbers "new-joe-kuo-6".
+"""Writes src/net/joe_kuo.rs: the first dimensions of the direction numbers "new-joe-kuo-6".
 
-    python3 tests/oracle/joe_kuo_table.py > src/reference/net/joe_kuo.rs
+    python3 tests/oracle/joe_kuo_table.py > src/net/joe_kuo.rs
 
 Reads the copy that SciPy ships (scipy/stats/_sobol_direction_numbers.npz: `poly` is the primitive polynomial
 with its outer coefficients, `vinit` the initial numbers m_1..m_s; its first row is the van der Corput

@@ -24,7 +24,7 @@ pub(super) const FAR_TAIL: f64 = 1.388794386496402e-11;
 /// 37 (1988) 477-484, doi:10.2307/2347330, routine PPND16, with the change-over at 5/64 in place of 0.075.
 ///
 /// ```
-/// use gaussworthy::reference::net::normal_quantile;
+/// use gaussworthy::net::normal_quantile;
 /// assert!((normal_quantile(0.975) - 1.959963984540054).abs() < 1e-15);
 /// ```
 pub fn normal_quantile(p: f64) -> f64 {

@@ -1,4 +1,5 @@
-//! Points of references: randomised Sobol' nets in 64-bit integers, and their normal quantiles.
+//! Randomised Sobol' nets in 64-bit integers, and their normal quantiles: the points of references and of
+//! quasi-Monte Carlo methods.
 //!
 //! A net of one replicate holds 2^m points in their natural order, in blocks of [`BLOCK`]. Asked for more points, it
 //! gives the same ones first: a reference that is doubled throws nothing away. Replicates are scrambled
@@ -14,7 +15,7 @@ pub use directions::Directions;
 pub use normals::{normal, normals};
 pub use quantile::normal_quantile;
 
-use super::stream::Key;
+use rand::Rng;
 use scramble::Scramble;
 
 /// Points of a block.
@@ -46,6 +47,12 @@ pub enum NetError {
     },
 }
 
+/// Where nets get their random numbers: one stream a replicate and dimension, independent of all others.
+pub trait Scrambles {
+    /// The stream that scrambles dimension `dimension` of the net of replicate `replicate`.
+    fn scramble(&self, replicate: u64, dimension: u64) -> impl Rng;
+}
+
 /// One replicate of a randomised digital net: linear matrix scrambling and a digital shift, both its own in each
 /// dimension.
 ///
@@ -55,7 +62,7 @@ pub enum NetError {
 ///
 /// ```
 /// use gaussworthy::reference::Key;
-/// use gaussworthy::reference::net::{BLOCK, Net, normal};
+/// use gaussworthy::net::{BLOCK, Net, normal};
 ///
 /// let net = Net::new(&Key::new(1, "a question"), 0, 2, 12)?;
 /// let (mut bits, mut z) = (vec![0; 2 * BLOCK], vec![0.0; 2 * BLOCK]);
@@ -63,7 +70,7 @@ pub enum NetError {
 /// net.normals(15, &mut z);
 /// assert_eq!(net.blocks(), 16);
 /// assert_eq!(z[BLOCK + 3], normal(bits[BLOCK + 3])); // coordinate 1 of point 3 of the block
-/// # Ok::<(), gaussworthy::reference::net::NetError>(())
+/// # Ok::<(), gaussworthy::net::NetError>(())
 /// ```
 #[derive(Debug, Clone)]
 pub struct Net {
@@ -85,7 +92,7 @@ impl Net {
     ///
     /// # Errors
     /// [`NetError::TooManyDimensions`] above [`MOST_DIMENSIONS`], [`NetError::TooManyPoints`] above 2^[`MOST_LOG2`].
-    pub fn new(key: &Key, replicate: u64, dimensions: usize, log2: u32) -> Result<Self, NetError> {
+    pub fn new(key: &impl Scrambles, replicate: u64, dimensions: usize, log2: u32) -> Result<Self, NetError> {
         Self::over(Directions::joe_kuo(), key, replicate, dimensions, log2)
     }
 
@@ -95,7 +102,7 @@ impl Net {
     /// As [`Net::new`], with the dimensions of `directions`.
     pub fn over(
         directions: &Directions,
-        key: &Key,
+        key: &impl Scrambles,
         replicate: u64,
         dimensions: usize,
         log2: u32,
