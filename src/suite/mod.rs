@@ -187,6 +187,7 @@ mod settings;
 mod sighting;
 mod source;
 mod sweep;
+mod unique;
 mod unit;
 mod velocity;
 
