@@ -68,7 +68,7 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         ("# only a comment\n".into(), "x.toml:1: is empty; a suite needs [sensor] and [prior], and perhaps [noise] and [[family]]".into()),
         ("title = \"x\"\n[sensor\n".into(), "x.toml:2: is not TOML: unclosed table, expected `]`".into()),
         ("title = \"x\"\n".into(), "x.toml:1: [sensor] is missing; say what measures, as [sensor] with `kind = \"range-bearing\"`".into()),
-        (with("", "[prior]\n"), "x.toml:10: is not TOML: duplicate key".into()),
+        (with("", "[prior]\n"), "x.toml:10: is not TOML: duplicate key `prior`; delete one".into()),
         // Unknown keys, with the nearest known one.
         (with("[noise]", "[nosie]"), "x.toml:8: nosie: unknown key `nosie`; did you mean `noise`? allowed: title, note, seed, precision, cap, draws, limits, method, family, sensor, prior, noise".into()),
         (with("covariance", "covarience"), "x.toml:7: prior.covarience: unknown key `covarience`; did you mean `covariance`? allowed: mean, covariance, sd, correlation, frame_bearing, frame_elevation, range, bearing, elevation, along_sd, across_sd, up_sd, frame_covariance, seen_from, speed, speed_sd, course, course_sd, climb, climb_sd, rest_mean, rest_sd".into()),
@@ -191,6 +191,8 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (with("title = \"sound\"", "title = \"\"\"two\nlines\"\"\""), "x.toml:1: title: has several lines; give one".into()),
         (with("", "[limits]\nmean_eror = 1\n"), "x.toml:11: limits.mean_eror: unknown key `mean_eror`; did you mean `mean_error`? allowed: mean_error, variance_ratio_low, variance_ratio_high, cross_covariance_error, nees_ratio_low, nees_ratio_high, excess, floor, confidence".into()),
         (with("", "[limits]\nmean_error = -1\n"), "x.toml:11: limits.mean_error: is -1; a limit is a number above 0".into()),
+        (with("", "[limits]\nnees_ratio_high = 0.5\n"), "x.toml:10: limits: `nees_ratio_low` is 0.9, not below `nees_ratio_high`, which is 0.5".into()),
+        (with("", "[limits]\nvariance_ratio_low = 2\n"), "x.toml:11: limits.variance_ratio_low: is 2, not below `variance_ratio_high`, which is 1.25".into()),
         (with("", "[limits]\nfloor = \"much\"\n"), "x.toml:11: limits.floor: is the text \"much\"; give a number".into()),
         (with("", "[method]\nid = \"taylor-1\"\n"), "x.toml:10: method: is a table; give a list [..], as [[method]]".into()),
         (with("", "[[method]]\nid = \"taylor-1\"\n[[method]]\nid = \"taylor-1\"\n"), "x.toml:12: method[1]: `taylor-1` stands on line 10 already; delete one".into()),

@@ -4,10 +4,10 @@ use std::path::PathBuf;
 use anyhow::{Context, anyhow};
 use clap::Args;
 use gaussworthy::method::MethodSpec;
-use gaussworthy::reference::Store;
+use gaussworthy::reference::{SamplerError, Store};
 use gaussworthy::report::{CAUTION, ResultsFolder, write_summary};
 use gaussworthy::suite::Suite;
-use gaussworthy::survey::{Shard, SurveyPlan, SurveySettings, sample_share, summarise, survey};
+use gaussworthy::survey::{Shard, SurveyError, SurveyPlan, SurveySettings, sample_share, summarise, survey};
 
 use super::Failure;
 use super::progress::{Progress, heed_interrupts};
@@ -69,8 +69,7 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
         .into_iter()
         .map(|suite| {
             let plan = SurveyPlan::new(&suite, &settings)
-                .with_context(|| format!("suite `{}`", suite.name))
-                .map_err(Failure::Input)?;
+                .map_err(|e| Failure::Input(anyhow!("{}: {e}", blamed(&e, &arguments, &suite))))?;
             Ok((suite, plan))
         })
         .collect::<Result<Vec<_>, Failure>>()?;
@@ -112,6 +111,16 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
     }
     writeln!(out, "{CAUTION}")?;
     Ok(())
+}
+
+/// Who said what cannot be meant: the option, where there is one, else the suite.
+fn blamed(error: &SurveyError, arguments: &Arguments, suite: &Suite) -> String {
+    match error {
+        SurveyError::Precision(_) if arguments.precision.is_some() => "--precision".into(),
+        SurveyError::Sampler(SamplerError::CapTooSmall { .. }) if arguments.cap.is_some() => "--cap".into(),
+        SurveyError::MethodTwice(_) if arguments.methods.is_some() => "--methods".into(),
+        _ => format!("suite `{}`", suite.name),
+    }
 }
 
 /// Sets the threads and heeds interrupts.
