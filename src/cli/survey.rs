@@ -85,6 +85,16 @@ pub fn run(arguments: Arguments) -> Result<(), Failure> {
             Ok((suite, plan, folder))
         })
         .collect::<Result<Vec<_>, Failure>>()?;
+    for (suite, _, folder) in &jobs {
+        if folder.holds_another(suite) {
+            // With standard error gone there is nobody left to tell.
+            let _ = writeln!(
+                std::io::stderr(),
+                "{}: holds results of another suite of this name, or of this one before it was changed; they are replaced",
+                folder.path().display()
+            );
+        }
+    }
     let store = store(&arguments)?;
     for (_, plan, _) in &mut jobs {
         plan.store = Some(store.clone());
