@@ -12,7 +12,7 @@ anything, your own verification process, the applicable standards and codes, and
 responsible engineers decide.";
 
 /// Columns that a table may take.
-const WIDTH: u16 = 100;
+pub(super) const WIDTH: u16 = 100;
 
 /// A table without borders that fits [`WIDTH`] columns; `right` are the columns of numbers.
 pub(super) fn plain_table(header: &[&str], right: std::ops::Range<usize>) -> Table {
