@@ -2,7 +2,7 @@
 //! *your* sensor and *your* operating conditions, and says where it can be trusted.
 //!
 //! Data flows one way: [`suite`] makes cases; [`reference`](mod@reference) samples their true moments
-//! beside the [`method`]s that approximate them; [`score`] compares the two; [`trust`] judges; [`survey`]
+//! beside the [`method`]s that approximate them, and the answers of implementations [`outside`]; [`score`] compares the two; [`trust`] judges; [`survey`]
 //! runs it all in parallel; [`report`] writes it down. [`gaussian`] and [`sensor`] are the ground they
 //! stand on.
 //!
@@ -13,6 +13,7 @@
 pub mod gaussian;
 pub mod lanes;
 pub mod method;
+pub mod outside;
 pub mod reference;
 pub mod report;
 pub mod score;

@@ -2,6 +2,7 @@ use std::sync::atomic::{AtomicU64, Ordering};
 
 use nalgebra::DMatrix;
 
+use crate::gaussian::Gaussian;
 use crate::lanes::Level;
 use crate::sensor::{Derivatives, Output, Sensor};
 
@@ -62,6 +63,10 @@ impl Sensor for Counted<'_> {
 
     fn outputs(&self) -> &[Output] {
         self.sensor.outputs()
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        self.sensor.natural_spread(prior)
     }
 
     fn value(&self, x: &[f64], y: &mut [f64]) {

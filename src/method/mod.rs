@@ -19,6 +19,7 @@ pub use cubature::ThirdDegreeCubature;
 pub use gauss_hermite::GaussHermite;
 pub use kinds::{BuildError, KINDS, Kind};
 pub use points::{PointSet, PointTransform};
+pub(crate) use spec::check_own_label;
 pub use spec::{MethodSpec, default_methods};
 pub use taylor::{FirstOrderTaylor, SecondOrderTaylor};
 pub use transform::{Method, Problem, Refusal, Transform};

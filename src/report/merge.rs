@@ -116,7 +116,7 @@ fn join(suite: String, parts: &[Part], out: &Path) -> Result<Merged, MergeError>
     let mut scores = parts.iter().map(Part::scores).collect::<Vec<_>>();
     let header = same_header(&mut scores)?;
     score_file.write_byte_record(&header).map_err(|e| failed("scores.csv")(e.into()))?;
-    let rows = parts[0].methods();
+    let rows = parts[0].rows();
     for index in 0..cases {
         let k = index % parts.len();
         let name = records[k].copy_next(None, &mut case_file).map_err(|e| e.or_in(failed("cases.jsonl")))?;
@@ -175,5 +175,29 @@ fn manifest(parts: &[Part]) -> Value {
         "sampling_seconds": seconds("sampling_seconds"),
         "timing_seconds": seconds("timing_seconds"),
     });
+    if let Some(entries) = fields.get_mut("answers").and_then(Value::as_array_mut) {
+        for (k, entry) in entries.iter_mut().enumerate() {
+            join_answers(entry, k, parts);
+        }
+    }
     whole
+}
+
+/// The answers of the outside implementation number `k`, counted over all parts. Each part has read a file of answers whole,
+/// so lines that belong to no case are the same ones in all; a command has run once a part.
+fn join_answers(entry: &mut Value, k: usize, parts: &[Part]) {
+    let of_file = parts[0].manifest["settings"]["outside"][k].get("file").is_some();
+    let in_parts = |key: &'static str| parts.iter().map(move |part| &part.manifest["answers"][k][key]);
+    let sum = |key: &'static str| in_parts(key).filter_map(Value::as_u64).sum::<u64>();
+    for key in ["asked", "valid", "invalid", "missing"] {
+        entry[key] = json!(sum(key));
+    }
+    if !of_file {
+        for key in ["unknown", "unreadable"] {
+            entry[key] = json!(sum(key));
+        }
+    }
+    if let Some(failure) = in_parts("failure").find(|failure| failure.is_string()) {
+        entry["failure"] = failure.clone();
+    }
 }

@@ -2,6 +2,7 @@
 
 mod catalogue;
 mod folder;
+mod hand_out;
 mod manifest;
 mod merge;
 mod part;
@@ -12,5 +13,6 @@ mod table;
 pub use crate::wording::printable;
 pub use catalogue::{method_page, method_table, score_table, sensor_page, sensor_table};
 pub use folder::{FolderError, ResultsFolder};
+pub use hand_out::{hand_out, hand_out_file};
 pub use merge::{MergeError, Merged, merge};
 pub use table::{CAUTION, write_summary};

@@ -3,14 +3,15 @@ use std::io::{self, Write};
 use crate::score::{Estimate, Floor, ScoreKind};
 use crate::survey::{Answer, CaseResult, Cost, SurveyResult};
 
-/// One row a case and method. An empty field is a value that does not exist (undefined, not timed); every
+/// One row a case and method, or outside implementation. An empty field is a value that does not exist (undefined, not
+/// counted, not timed); every
 /// score stands beside its standard error.
 pub(super) fn write(survey: &SurveyResult<'_>, to: &mut dyn Write) -> io::Result<()> {
     let mut csv = csv::Writer::from_writer(to);
     csv.write_record(header())?;
     for result in &survey.cases {
-        for (m, answer) in result.answers.iter().enumerate() {
-            csv.write_record(row(survey, result, m, answer))?;
+        for (m, (entrant, answer)) in survey.plan.entrants().zip(&result.answers).enumerate() {
+            csv.write_record(row(survey, result, (m, entrant.label()), answer))?;
         }
     }
     csv.flush()
@@ -41,17 +42,16 @@ fn header() -> Vec<String> {
     names
 }
 
-fn row(survey: &SurveyResult<'_>, result: &CaseResult, m: usize, answer: &Answer) -> Vec<String> {
+fn row(survey: &SurveyResult<'_>, result: &CaseResult, (m, label): (usize, &str), answer: &Answer) -> Vec<String> {
     let case = &survey.suite.cases[result.index];
-    let mut fields = vec![
-        case.id().to_string(),
-        survey.plan.methods[m].label().to_string(),
-        case.marginal().law().dimension().to_string(),
-    ];
+    let mut fields = vec![case.id().to_string(), label.to_string(), case.marginal().law().dimension().to_string()];
     match answer {
         Ok(answered) => {
-            let e = &answered.evaluations;
-            fields.extend([e.values, e.jacobians, e.hessians].map(|n| n.to_string()));
+            fields.extend(
+                answered
+                    .evaluations
+                    .map_or_else(Default::default, |e| [e.values, e.jacobians, e.hessians].map(|n| n.to_string())),
+            );
             let verdict = &answered.verdict;
             fields.extend([verdict.trust.name().to_string(), verdict.reason.clone()]);
         }
@@ -86,7 +86,7 @@ fn number(value: f64) -> String {
 fn timed(survey: &SurveyResult<'_>, case: usize, m: usize) -> Option<Cost> {
     let timing = survey.timing.as_ref()?;
     let place = timing.cases.binary_search_by_key(&case, |(index, _)| *index).ok()?;
-    timing.cases[place].1[m]
+    timing.cases[place].1.get(m).copied().flatten()
 }
 
 fn cost(cost: Option<Cost>) -> [String; 6] {

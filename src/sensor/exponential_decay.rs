@@ -4,6 +4,7 @@ use super::kinds::{Kind, built};
 use super::parameter::{above_zero, finite};
 use super::single::Single;
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "exponential-decay",
@@ -81,6 +82,10 @@ impl Formula for ExponentialDecay {
 
     fn outputs(&self) -> &[Output] {
         &self.single.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        Some(prior.largest_sd(&[0])? / self.scale.abs())
     }
 
     #[inline(always)]

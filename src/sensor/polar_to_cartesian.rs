@@ -3,6 +3,7 @@ use serde::{Deserialize, Serialize};
 use super::kinds::{Kind, built};
 use super::parameter::checked_component;
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "polar-to-cartesian",
@@ -75,6 +76,10 @@ impl Formula for PolarToCartesian {
 
     fn outputs(&self) -> &[Output] {
         &self.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        prior.largest_sd(&[1])
     }
 
     #[inline(always)]

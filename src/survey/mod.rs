@@ -1,6 +1,7 @@
-//! Surveys: every case of a suite sampled, every method scored and judged, cases over threads.
+//! Surveys: every case of a suite sampled, every method and outside implementation scored and judged, cases over threads.
 
 mod case_run;
+mod entrant;
 mod kept;
 mod run;
 mod settings;
@@ -10,6 +11,7 @@ mod timing;
 
 pub use crate::shard::{Shard, ShardError};
 pub use case_run::{Answer, Answered, CaseResult, Stop};
+pub use entrant::Entrant;
 pub use run::{SurveyResult, Unwatched, Watch, survey};
 pub use settings::{SurveyError, SurveyPlan, SurveySettings};
 pub use share::{ShareResult, sample_share};

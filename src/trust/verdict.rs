@@ -164,11 +164,11 @@ impl Judge {
         let scores = match scores {
             Ok(scores) => scores,
             Err(invalid) => {
-                return Verdict {
-                    trust: Trust::Rejected,
-                    finding: None,
-                    reason: format!("no Gaussian: {invalid}"),
+                let reason = match invalid {
+                    Invalid::NoAnswer(why) => why.clone(),
+                    _ => format!("no Gaussian: {invalid}"),
                 };
+                return Verdict { trust: Trust::Rejected, finding: None, reason };
             }
         };
         let findings = self.findings(scores);

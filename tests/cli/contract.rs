@@ -372,6 +372,32 @@ pub struct Manifest {
     pub times: Times,
     /// Only where methods were timed.
     pub cost: Option<Vec<Cost>>,
+    /// Only where implementations outside were scored.
+    pub answers: Option<Vec<Answers>>,
+}
+
+/// An implementation outside: a command, or a file of answers.
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Outside {
+    pub name: String,
+    pub command: Option<Vec<String>>,
+    pub timeout_seconds: Option<f64>,
+    pub file: Option<String>,
+    pub sha256: Option<String>,
+}
+
+#[derive(Debug, Deserialize, PartialEq, Eq)]
+#[serde(deny_unknown_fields)]
+pub struct Answers {
+    pub name: String,
+    pub asked: u64,
+    pub valid: u64,
+    pub invalid: u64,
+    pub missing: u64,
+    pub unknown: u64,
+    pub unreadable: u64,
+    pub failure: Option<String>,
 }
 
 #[derive(Debug, Deserialize)]
@@ -397,6 +423,8 @@ pub struct Settings {
     pub cap: u64,
     pub replicates: u64,
     pub methods: Vec<String>,
+    /// Only where there are any.
+    pub outside: Option<Vec<Outside>>,
     pub limits: HashMap<String, f64>,
 }
 
