@@ -59,13 +59,18 @@ pub(crate) fn plain(message: &str) -> String {
 }
 
 fn plain_type(words: &str) -> String {
-    let words = words.replace("floating point", "the number").replace("integer `", "the number `");
+    let words = words
+        .replace("floating point", "the number")
+        .replace("integer `", "the number `")
+        .replace("boolean `", "`");
     match words.as_str() {
         "f64" => "a number".into(),
         "usize" | "u32" | "u64" => "a whole number, 0 or above".into(),
         "sequence" | "a sequence" => "a list".into(),
         "fewer elements in array" => "fewer entries".into(),
         "map" | "a map" => "a table".into(),
+        "a boolean" => "true or false".into(),
+        "a string" => "a text in quotes".into(),
         "null" | "unit value" => "null".into(),
         _ => match words.strip_prefix("string ") {
             Some(text) => format!("the text {text}"),
@@ -145,6 +150,8 @@ mod tests {
                 "invalid type: floating point `0.5`, expected usize",
                 "is the number `0.5`; give a whole number, 0 or above",
             ),
+            ("invalid type: integer `1`, expected a boolean", "is the number `1`; give true or false"),
+            ("invalid type: boolean `true`, expected a string", "is `true`; give a text in quotes"),
             ("invalid length 1, expected an array of length 2", "has length 1; give a list of length 2"),
             ("anything else", "anything else"),
         ] {

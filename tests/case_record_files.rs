@@ -60,6 +60,11 @@ fn case_records_that_cannot_be_meant_are_refused() {
             second("\"prior\"", "\"piror\""),
             "r.jsonl:3: piror: unknown key `piror`; did you mean `prior`? allowed: case, sensor, prior, noise",
         ),
+        (
+            second("\"mean\":", "\"mean\":[1,2],\"mean\":"),
+            "r.jsonl:3: prior.mean: the key stands twice; delete one",
+        ),
+        (second("\"prior\":", "\"case\":\"k-3\",\"prior\":"), "r.jsonl:3: case: the key stands twice; delete one"),
         (second("\"mean\":[30,10],", ""), "r.jsonl:3: prior: `mean` is missing"),
         (second("[30,10]", "[30,\"x\"]"), "r.jsonl:3: prior.mean[1]: is the text \"x\"; give a number"),
         (second("[30,10]", "[30,NaN]"), "r.jsonl:3: is not JSON: expected value (column 85)"),

@@ -123,7 +123,7 @@ fn every_mistake_is_answered_with_its_key() {
         (("/sensor", json!(null)), "", "`sensor` is missing"),
         (("/prior", json!(null)), "", "`prior` is missing"),
         (("/colour", json!(1)), "colour", "unknown key `colour`"),
-        (("/case", json!(17)), "case", "string"),
+        (("/case", json!(17)), "case", "text in quotes"),
         (("/prior/mean", json!(null)), "prior", "`mean` is missing"),
         (("/prior/sd", json!([1])), "prior.sd", "unknown key `sd`"),
         (("/prior/mean/1", json!("ten")), "prior.mean[1]", "give a number"),

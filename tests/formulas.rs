@@ -91,6 +91,22 @@ fn formulas_mean_what_mathematics_means() {
     }
 }
 
+/// A definition may be a condition, alone and joined.
+#[test]
+fn conditions_have_names() {
+    let spec = sensor(
+        json!({"state": ["x"], "definitions": {"low": "x < 1", "odd": "low or not (x < 2)"},
+               "outputs": [{"name": "out", "formula": "if(odd, 1, 0) + if(not low and x < 5, 10, 0)"}]}),
+        1,
+    )
+    .unwrap();
+    for (x, expected) in [(0.0, 1.0), (1.5, 10.0), (3.0, 11.0), (7.0, 1.0)] {
+        let mut y = [0.0];
+        spec.sensor().value(&[x], &mut y);
+        assert_eq!(y, [expected], "{x}");
+    }
+}
+
 /// x^2 y + exp(x) / z where x is positive, else 3 x y; closed forms by hand.
 #[test]
 fn derivatives_are_exact() {
@@ -189,7 +205,23 @@ fn a_flaw_is_shown_where_it_is() {
         ("if(x, 1, 2)", "is a number where a condition is needed; compare it, as in x > 0", 3),
         ("if(x < y, 1)", "`if` takes a condition and two numbers, 2 are given", 0),
         ("1 + (x < y)", "is a condition where a number is needed; write if(condition, a, b)", 4),
-        ("x < y < z", "`<` cannot stand here; an operator or the end is needed", 6),
+        ("x < y < z", "comparisons do not chain; join two, as in 0 < x and x < 3", 6),
+        ("if(0<x<3, 1, 2)", "comparisons do not chain; join two, as in 0 < x and x < 3", 6),
+        ("x**2", "a power is written with `^`, as in x^2", 2),
+        ("if(x > 0 && y > 0, 1, 2)", "a condition is joined by `and`, as in x > 0 and y > 0", 9),
+        ("if(x > 0 || y > 0, 1, 2)", "a condition is joined by `or`, as in x > 0 or y > 0", 9),
+        ("if(!(x > 0), 1, 2)", "a condition is turned round by `not`, as in not x > 0", 3),
+        ("if(x = 0, 1, 2)", "two numbers are compared by `==`", 5),
+        (
+            "sin(3 deg)",
+            "a number in a formula has no unit; make the quantity a parameter, as in parameters = { limit = \"3 m\" }, or",
+            6,
+        ),
+        (
+            "2.5km * x",
+            "a number in a formula has no unit; make the quantity a parameter, as in parameters = { limit",
+            3,
+        ),
         ("1e999", "is too large for a number", 0),
         ("2 * \u{fc}", "`\u{fc}` cannot stand here; a number, a name, a function or `(` is needed", 4),
     ] {
@@ -202,6 +234,16 @@ fn a_flaw_is_shown_where_it_is() {
             [format!("    {text}"), format!("    {}^", " ".repeat(caret))],
             "{error}"
         );
+    }
+    // Of a formula longer than a line of a terminal, the part around the flaw.
+    let long = format!("{}w{}", "x + ".repeat(100), " + y".repeat(100));
+    for (text, before, after) in [(&long[..], true, true), (&long[360..], false, true), (&long[..401], true, false)]
+    {
+        let error = formula(text).unwrap_err();
+        let [.., line, caret] = error.lines().collect::<Vec<_>>()[..] else { panic!("{error}") };
+        assert_eq!((line.starts_with("    .. "), line.ends_with(" ..")), (before, after), "{error}");
+        assert_eq!(line.chars().nth(caret.chars().count() - 1), Some('w'), "{error}");
+        assert!(line.len() < 100, "{error}");
     }
     let error = formula("x +\n  y * w").unwrap_err();
     assert!(error.contains("line 2, column 7 of the formula: there is no name `w`"), "{error}");
@@ -226,6 +268,18 @@ fn what_is_around_a_formula_is_checked() {
         (json!({"state": ["x"], "outputs": outputs, "unit": "m"}), "unit: unknown key `unit`; "),
         (json!({"state": ["x"], "outputs": [{"name": "out"}]}), "outputs[0]: `formula` is missing"),
         (
+            json!({"state": ["x"], "outputs": [{"name": "out", "formula": "x", "angular": 1}]}),
+            "outputs[0].angular: is the number `1`; give true or false",
+        ),
+        (
+            json!({"state": ["x"], "outputs": [{"name": "out", "formula": 2}]}),
+            "outputs[0].formula: is the number `2`; give a text in quotes",
+        ),
+        (
+            json!({"state": ["x"], "definitions": {"near": "x < 1"}, "outputs": [{"name": "out", "formula": "near + 1"}]}),
+            "outputs[0].formula: column 1: is a condition where a number is needed; write if(condition, a, b)",
+        ),
+        (
             json!({"state": ["x"], "outputs": [{"name": "out", "formula": "x", "unit": "deg", "angular": true}]}),
             "outputs[0].unit: is \"deg\", but an angular output is in \"rad\"",
         ),
@@ -236,6 +290,30 @@ fn what_is_around_a_formula_is_checked() {
         (
             json!({"state": ["x"], "definitions": {"a": "q"}, "outputs": outputs}),
             "definitions.a: column 1: there is no",
+        ),
+        (
+            json!({"state": ["x"], "parameters": {"mats": 1, "mast": 2}, "outputs": [{"name": "out", "formula": "x + mast"}]}),
+            "parameters.mats: the parameter `mats` is named in no formula; did you mean `mast`? name it, or delete it",
+        ),
+        (
+            json!({"state": ["x"], "definitions": {"twice": "2 * x"}, "outputs": outputs}),
+            "definitions.twice: the definition `twice` is named in no formula; name it, or delete it",
+        ),
+        (
+            json!({"state": ["x"], "noise": ["haze"], "outputs": outputs}),
+            "noise[0]: the noise variable `haze` is named in no formula; name it, or delete it",
+        ),
+        (
+            json!({"state": ["x"]}),
+            "`outputs` is missing; a sensor that is written out as formulas needs `state`, a list",
+        ),
+        (
+            json!({"kind": "formula", "outputs": outputs}),
+            "`state` is missing; a sensor that is written out as formulas",
+        ),
+        (
+            json!({"kind": "range-bearing", "station": [0, 0], "state": ["x"]}),
+            "state: `state` belongs to a sensor that is written out as formulas, which has no `kind`; leave out one",
         ),
     ] {
         let error = sensor(described.clone(), 1).unwrap_err();
@@ -314,19 +392,19 @@ fn moments_of(method: &str, case: &Case) -> Moments {
     Moments { cross_covariance: case.marginal().lift(moments.cross_covariance), ..moments }
 }
 
-/// y = x (1 + v) + w v: E y = m, Var y = P (1 + q) + q (m + w)^2, Cov(x, y) = P (products of independent Gaussians, by
+/// y = x (1 + v) + w v + u: E y = m, Var y = P (1 + q) + q (m + w)^2 + Var u, Cov(x, y) = P (products of independent Gaussians, by
 /// hand). Third-degree rules know the mean and the cross-covariance of this second-degree form; five nodes know all.
 #[test]
 fn noise_inside_reaches_references_and_methods() {
     let (m, p, q, w) = (3.0, 0.5, 0.04, 2.0);
     let case = case(
-        json!({"state": ["x", "other"], "noise": ["idle", "v"], "parameters": {"w": w},
-               "outputs": [{"name": "y", "formula": "x * (1 + v) + w * v"}]}),
+        json!({"state": ["x", "other"], "noise": ["u", "v"], "parameters": {"w": w},
+               "outputs": [{"name": "y", "formula": "x * (1 + v) + w * v + u"}]}),
         json!({"mean": [m, 0], "covariance": [[p, 0.2], [0.2, 1]]}),
-        json!({"inside": {"covariance": [[1, 0], [0, q]]}, "covariance": 0.01}),
+        json!({"inside": {"covariance": [[0.03, 0], [0, q]]}, "covariance": 0.01}),
     );
-    let exact = p * (1.0 + q) + q * (m + w) * (m + w) + 0.01;
-    assert_eq!(Sensor::reads(case.sensor()), [0, 3], "noise k is component n + k");
+    let exact = p * (1.0 + q) + q * (m + w) * (m + w) + 0.03 + 0.01;
+    assert_eq!(Sensor::reads(case.sensor()), [0, 2, 3], "noise k is component n + k");
     let reference = Sampler::new(&case, SamplerSettings { seed: 3, ..SamplerSettings::default() }).unwrap().run();
     assert_eq!(reference.soundness, Soundness::Sound);
     for found in [&reference.moments, &moments_of("gauss-hermite:order=5", &case)] {
@@ -339,7 +417,7 @@ fn noise_inside_reaches_references_and_methods() {
         );
     }
     let taylor = moments_of("taylor-1", &case);
-    assert!((taylor.covariance[(0, 0)] - (p + q * (m + w) * (m + w) + 0.01)).abs() < 1e-12);
+    assert!((taylor.covariance[(0, 0)] - (p + q * (m + w) * (m + w) + 0.03 + 0.01)).abs() < 1e-12);
 }
 
 /// Noise that is added inside is noise that is added outside.
@@ -391,7 +469,14 @@ fn noise_inside_must_fit() {
         let record = json!({"case": "k", "sensor": sensor, "prior": prior, "noise": noise});
         Case::from_json(record).unwrap_err().to_string()
     };
-    let with = |names: Value| json!({"state": ["x"], "noise": names, "outputs": [{"name": "y", "formula": "x"}]});
+    let with = |names: Value| {
+        let sum = names
+            .as_array()
+            .unwrap()
+            .iter()
+            .fold("x".to_owned(), |sum, v| format!("{sum} + {}", v.as_str().unwrap()));
+        json!({"state": ["x"], "noise": names, "outputs": [{"name": "y", "formula": sum}]})
+    };
     assert_eq!(
         record(with(json!(["v"])), json!(null)),
         "noise: `inside` is missing; the sensor has noise inside: v"

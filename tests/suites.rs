@@ -59,7 +59,7 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
     const FORMS: &str = "give exactly one form: `mean` and `covariance`; `mean` and `sd`, perhaps `correlation`; \
         or `range`, `bearing`, `along_sd` and `across_sd`, perhaps `elevation` and `up_sd`, `speed` and `course`, \
         `seen_from`, `rest_mean` and `rest_sd`";
-    const UNITS: &str = "a length in m, km, cm, mm; an angle in deg, rad, mrad; a time in s, ms, us, ns, min, h; \
+    const UNITS: &str = "a length in m, km, cm, mm, nmi; an angle in deg, rad, mrad, °; a time in s, ms, us, ns, min, h; \
         a speed in m/s, km/h, kn; an angular rate in deg/s, rad/s; a frequency in Hz, kHz, MHz, GHz; a share in %";
     let forms = |start: &str| format!("{start}; {FORMS}");
     let table: Vec<(String, String)> = [
@@ -68,7 +68,7 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         ("# only a comment\n".into(), "x.toml:1: is empty; a suite needs [sensor] and [prior], and perhaps [noise] and [[family]]".into()),
         ("title = \"x\"\n[sensor\n".into(), "x.toml:2: is not TOML: unclosed table, expected `]`".into()),
         ("title = \"x\"\n".into(), "x.toml:1: [sensor] is missing; say what measures, as [sensor] with `kind = \"range-bearing\"`".into()),
-        (with("", "[prior]\n"), "x.toml:10: is not TOML: duplicate key".into()),
+        (with("", "[prior]\n"), "x.toml:10: is not TOML: duplicate key `prior`; delete one".into()),
         // Unknown keys, with the nearest known one.
         (with("[noise]", "[nosie]"), "x.toml:8: nosie: unknown key `nosie`; did you mean `noise`? allowed: title, note, seed, precision, cap, draws, limits, method, family, sensor, prior, noise".into()),
         (with("covariance", "covarience"), "x.toml:7: prior.covarience: unknown key `covarience`; did you mean `covariance`? allowed: mean, covariance, sd, correlation, frame_bearing, frame_elevation, range, bearing, elevation, along_sd, across_sd, up_sd, frame_covariance, seen_from, speed, speed_sd, course, course_sd, climb, climb_sd, rest_mean, rest_sd".into()),
@@ -81,7 +81,7 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (with("kind = \"range-bearing\"", ""), "x.toml:2: sensor: `kind` is missing; give one of KINDS".into()),
         (with("station = [0, 0]", ""), "x.toml:2: sensor: `station` is missing; give `station` [x, y] or `stations` [[x, y], ...]".into()),
         (with("station = [0, 0]", "station = [0]"), "x.toml:4: sensor.station: has length 1; give a list of length 2".into()),
-        (with("station = [0, 0]", "station = [0, \"3 deg\"]"), "x.toml:4: sensor.station[1]: \"3 deg\" is an angle; a length is needed: m, km, cm, mm".into()),
+        (with("station = [0, 0]", "station = [0, \"3 deg\"]"), "x.toml:4: sensor.station[1]: \"3 deg\" is an angle; a length is needed: m, km, cm, mm, nmi".into()),
         (with("station = [0, 0]", "station = [0, 0]\nposition = [0, 2]"), "x.toml:5: sensor.position[1]: 2 is outside the state, which has 2 components counted from 0".into()),
         (with("station = [0, 0]", "station = [0, inf]"), "x.toml:4: sensor.station[1]: is inf; give a finite number".into()),
         // Priors.
@@ -96,7 +96,7 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (with("[[900, 0], [0, 400]]", "[[900, 0], [0, nan]]"), "x.toml:7: prior.covariance[1][1]: is nan; give a finite number".into()),
         (with("mean = [3000, 400]", "mean = []"), "x.toml:6: prior.mean: is empty; give at least one number".into()),
         (with("mean = [3000, 400]", "mean = 3000"), "x.toml:6: prior.mean: is 3000; give a list [..]".into()),
-        (with("mean = [3000, 400]", "mean = [3000, \"4 deg\"]"), "x.toml:6: prior.mean[1]: \"4 deg\" is an angle; a length is needed: m, km, cm, mm".into()),
+        (with("mean = [3000, 400]", "mean = [3000, \"4 deg\"]"), "x.toml:6: prior.mean[1]: \"4 deg\" is an angle; a length is needed: m, km, cm, mm, nmi".into()),
         (spread("sd = [30, -20]"), "x.toml:7: prior.sd[1]: -20 is below 0; a standard deviation is 0 or above".into()),
         (spread("sd = [30]"), "x.toml:7: prior.sd: has 1 entries, but `mean` has 2".into()),
         (spread("sd = [30, 20]\ncorrelation = [[0, 1, 1.5]]"), "x.toml:8: prior.correlation: components 0 and 1: 1.5 is outside -1 to 1".into()),
@@ -104,8 +104,8 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (spread("sd = [30, 20]\ncorrelation = [[1, 0.5], [0.4, 1]]"), "x.toml:8: prior.correlation[0][1]: is 0.5, but [1][0] is 0.4; the matrix is symmetric".into()),
         (spread("sd = [30, 20]\ncorrelation = [[1, 0.5], [0.5, 2]]"), "x.toml:8: prior.correlation[1][1]: is 2; a correlation matrix has 1 here".into()),
         (planar("bearing = \"30 deg\"", "bearing = 30"), "x.toml:7: prior.bearing: 30 has no unit; an angle needs one: \"30 deg\" or \"30 rad\"".into()),
-        (planar("range = \"2 km\"", "range = \"3 deg\""), "x.toml:6: prior.range: \"3 deg\" is an angle; a length is needed: m, km, cm, mm".into()),
-        (planar("range = \"2 km\"", "range = \"2 furlong\""), format!("x.toml:6: prior.range: there is no unit `furlong` (\"2 furlong\"); give {UNITS}")),
+        (planar("range = \"2 km\"", "range = \"3 deg\""), "x.toml:6: prior.range: \"3 deg\" is an angle; a length is needed: m, km, cm, mm, nmi".into()),
+        (planar("range = \"2 km\"", "range = \"2 furlong\""), format!("x.toml:6: prior.range: there is no unit `furlong` (\"2 furlong\"); give {UNITS} (what is measured in another unit is a bare number in it)")),
         (planar("range = \"2 km\"", "range = \"far\""), format!("x.toml:6: prior.range: \"far\" is not a quantity; give a number and a unit: {UNITS}")),
         (planar("range = \"2 km\"", "range = 0"), "x.toml:6: prior.range: 0 is not above 0, as a range is".into()),
         (planar("along_sd = \"20 m\"", "along_sd = \"2 deg\""), "x.toml:8: prior.along_sd: \"2 deg\" is an angle; along the line of sight give a length or a share".into()),
@@ -114,8 +114,8 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (planar("", "rest_mean = [1, 2]"), "x.toml:5: prior: `rest_sd` is missing; `rest_mean` stands without it".into()),
         (planar("", "rest_mean = [1, 2]\nrest_sd = [1]"), "x.toml:11: prior.rest_sd: has 1 entries, but `rest_mean` has 2".into()),
         (planar("", "").replace("kind = \"range-bearing\"\nstation = [0, 0]", "kind = \"linear\"\nH = [[1, 0]]"), "x.toml:5: prior: the sensor `linear` has no station to see range and bearing from; give `seen_from = [x, y]`, or the prior by `mean` and `sd`".into()),
-        (planar("range = \"2 km\"", "range = \"2 min\""), "x.toml:6: prior.range: \"2 min\" is a time; a length is needed: m, km, cm, mm".into()),
-        (planar("bearing = \"30 deg\"", "bearing = \"3 deg/s\""), "x.toml:7: prior.bearing: \"3 deg/s\" is an angular rate; an angle is needed: deg, rad, mrad".into()),
+        (planar("range = \"2 km\"", "range = \"2 min\""), "x.toml:6: prior.range: \"2 min\" is a time; a length is needed: m, km, cm, mm, nmi".into()),
+        (planar("bearing = \"30 deg\"", "bearing = \"3 deg/s\""), "x.toml:7: prior.bearing: \"3 deg/s\" is an angular rate; an angle is needed: deg, rad, mrad, °".into()),
         (planar("across_sd = \"3 deg\"", "across_sd = \"3 kn\""), "x.toml:9: prior.across_sd: \"3 kn\" is a speed; across the line of sight give a length, an angle or a share".into()),
         (planar("", "rest_mean = [\"3 %\"]\nrest_sd = [1]"), "x.toml:10: prior.rest_mean[0]: \"3 %\" is a share; a number is needed, or a quantity such as \"3 m\" or \"3 deg\"".into()),
         // Priors in space.
@@ -144,18 +144,18 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (moving("speed_sd = \"10 %\"\n", ""), "x.toml:5: prior: `speed_sd` is missing; give a speed, as \"0.5 m/s\", or a share of `speed`, as \"10 %\"".into()),
         (moving("course_sd = \"5 deg\"", ""), "x.toml:5: prior: `course_sd` is missing; give an angle, as \"5 deg\"".into()),
         (moving("\"8 kn\"", "\"8 km\""), "x.toml:10: prior.speed: \"8 km\" is a length; a speed is needed: m/s, km/h, kn".into()),
-        (moving("\"8 kn\"", "\"8 knots\""), format!("x.toml:10: prior.speed: there is no unit `knots` (\"8 knots\"); give {UNITS}")),
+        (moving("\"8 kn\"", "\"8 knots\""), format!("x.toml:10: prior.speed: there is no unit `knots` (\"8 knots\"); did you mean `kn`? give {UNITS} (what is measured in another unit is a bare number in it)")),
         (moving("\"8 kn\"", "0"), "x.toml:10: prior.speed: 0 is not above 0, and without way there is no course; give the velocity by `rest_mean` and `rest_sd`".into()),
         (moving("\"200 deg\"", "200"), "x.toml:11: prior.course: 200 has no unit; an angle needs one: \"200 deg\" or \"200 rad\"".into()),
         (moving("\"10 %\"", "\"-1 m/s\""), "x.toml:12: prior.speed_sd: \"-1 m/s\" is below 0; a standard deviation is 0 or above".into()),
         (moving("\"10 %\"", "\"5 deg\""), "x.toml:12: prior.speed_sd: \"5 deg\" is an angle; a speed is needed: m/s, km/h, kn".into()),
-        (moving("course_sd = \"5 deg\"", "course_sd = \"0.5 m/s\""), "x.toml:13: prior.course_sd: \"0.5 m/s\" is a speed; an angle is needed: deg, rad, mrad".into()),
+        (moving("course_sd = \"5 deg\"", "course_sd = \"0.5 m/s\""), "x.toml:13: prior.course_sd: \"0.5 m/s\" is a speed; an angle is needed: deg, rad, mrad, °".into()),
         (moving("", "climb = 1\nclimb_sd = 1"), "x.toml:14: prior.climb: stands without `elevation`; a position in the plane has no climb".into()),
         (moving("", "climb = 1"), "x.toml:5: prior: `climb_sd` is missing; give a speed, as \"0.5 m/s\"".into()),
         // Noise.
         (with("\"0.3 deg\"", "0.3"), "x.toml:9: noise.sd[1]: 0.3 has no unit; an angle needs one: \"0.3 deg\" or \"0.3 rad\"; output 1 is the bearing".into()),
-        (with("\"0.3 deg\"", "\"0.3 m\""), "x.toml:9: noise.sd[1]: \"0.3 m\" is a length; an angle is needed: deg, rad, mrad; output 1 is the bearing".into()),
-        (with("sd = [\"10 m\", \"0.3 deg\"]", "sd = \"10 m\""), "x.toml:9: noise.sd: \"10 m\" is a length; an angle is needed: deg, rad, mrad; output 1 is the bearing".into()),
+        (with("\"0.3 deg\"", "\"0.3 m\""), "x.toml:9: noise.sd[1]: \"0.3 m\" is a length; an angle is needed: deg, rad, mrad, °; output 1 is the bearing".into()),
+        (with("sd = [\"10 m\", \"0.3 deg\"]", "sd = \"10 m\""), "x.toml:9: noise.sd: \"10 m\" is a length; an angle is needed: deg, rad, mrad, °; output 1 is the bearing".into()),
         (with("[\"10 m\", \"0.3 deg\"]", "[\"10 m\"]"), "x.toml:9: noise.sd: has 1 entries; the sensor has 2 outputs: range, bearing".into()),
         (with("\"10 m\"", "\"-10 m\""), "x.toml:9: noise.sd[0]: \"-10 m\" is below 0; a standard deviation is 0 or above; output 0 is the range".into()),
         (with("sd = [\"10 m\", \"0.3 deg\"]", "covariance = [[1, 2], [2, 1]]"), "x.toml:9: noise.covariance: the covariance is indefinite: its correlation matrix has the eigenvalue -1.000e0; none may be negative".into()),
@@ -191,6 +191,8 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (with("title = \"sound\"", "title = \"\"\"two\nlines\"\"\""), "x.toml:1: title: has several lines; give one".into()),
         (with("", "[limits]\nmean_eror = 1\n"), "x.toml:11: limits.mean_eror: unknown key `mean_eror`; did you mean `mean_error`? allowed: mean_error, variance_ratio_low, variance_ratio_high, cross_covariance_error, nees_ratio_low, nees_ratio_high, excess, floor, confidence".into()),
         (with("", "[limits]\nmean_error = -1\n"), "x.toml:11: limits.mean_error: is -1; a limit is a number above 0".into()),
+        (with("", "[limits]\nnees_ratio_high = 0.5\n"), "x.toml:10: limits: `nees_ratio_low` is 0.9, not below `nees_ratio_high`, which is 0.5".into()),
+        (with("", "[limits]\nvariance_ratio_low = 2\n"), "x.toml:11: limits.variance_ratio_low: is 2, not below `variance_ratio_high`, which is 1.25".into()),
         (with("", "[limits]\nfloor = \"much\"\n"), "x.toml:11: limits.floor: is the text \"much\"; give a number".into()),
         (with("", "[method]\nid = \"taylor-1\"\n"), "x.toml:10: method: is a table; give a list [..], as [[method]]".into()),
         (with("", "[[method]]\nid = \"taylor-1\"\n[[method]]\nid = \"taylor-1\"\n"), "x.toml:12: method[1]: `taylor-1` stands on line 10 already; delete one".into()),

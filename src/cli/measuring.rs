@@ -7,10 +7,10 @@ use anyhow::{Context, anyhow};
 use clap::Args;
 use gaussworthy::method::MethodSpec;
 use gaussworthy::outside::Outside;
-use gaussworthy::reference::Store;
+use gaussworthy::reference::{SamplerError, Store};
 use gaussworthy::report::{CAUTION, ResultsFolder, printable, write_envelopes, write_summary};
 use gaussworthy::suite::Suite;
-use gaussworthy::survey::{Shard, SurveyPlan, SurveySettings, summarise, survey};
+use gaussworthy::survey::{Shard, SurveyError, SurveyPlan, SurveySettings, summarise, survey};
 
 use super::Failure;
 use super::progress::{Progress, heed_interrupts};
@@ -63,11 +63,20 @@ impl Measuring {
             .into_iter()
             .map(|suite| {
                 let plan = SurveyPlan::new(&suite, &settings)
-                    .with_context(|| format!("suite `{}`", suite.name))
-                    .map_err(Failure::Input)?;
+                    .map_err(|e| Failure::Input(anyhow!("{}: {e}", self.blamed(&e, &suite))))?;
                 Ok((suite, plan))
             })
             .collect()
+    }
+
+    /// Who said what cannot be meant: the option, where there is one, else the suite.
+    fn blamed(&self, error: &SurveyError, suite: &Suite) -> String {
+        match error {
+            SurveyError::Precision(_) if self.precision.is_some() => "--precision".into(),
+            SurveyError::Sampler(SamplerError::CapTooSmall { .. }) if self.cap.is_some() => "--cap".into(),
+            SurveyError::MethodTwice(_) if self.methods.is_some() => "--methods".into(),
+            _ => format!("suite `{}`", suite.name),
+        }
     }
 
     /// Sets the threads and heeds interrupts.
@@ -104,6 +113,16 @@ impl Measuring {
                 Ok((suite, plan, folder))
             })
             .collect::<Result<Vec<_>, Failure>>()?;
+        for (suite, _, folder) in &jobs {
+            if folder.holds_another(suite) {
+                // With standard error gone there is nobody left to tell.
+                let _ = writeln!(
+                    std::io::stderr(),
+                    "{}: holds results of another suite of this name, or of this one before it was changed; they are replaced",
+                    folder.path().display()
+                );
+            }
+        }
         let store = self.store()?;
         self.make_ready()?;
         for (suite, plan, _) in &mut jobs {

@@ -1,6 +1,7 @@
 use comfy_table::Table;
+use serde_json::{Map, Value};
 
-use super::table::{keep_whole, labelled, lines, plain_table, wrapped};
+use super::table::{WIDTH, keep_whole, labelled, lines, plain_table, wrapped};
 use crate::method::{Degree, Evaluations, MethodSpec};
 use crate::score::ScoreKind;
 use crate::sensor::Output;
@@ -26,8 +27,8 @@ pub fn sensor_table() -> String {
     )
 }
 
-/// All about one sensor: formula, parameters, outputs, components read, source, and an example case record alone on its
-/// line.
+/// All about one sensor: formula, parameters, outputs, components read, source, and an example as a suite and as a case
+/// record alone on its line.
 ///
 /// # Errors
 /// What to say where no sensor has this name.
@@ -61,15 +62,17 @@ pub fn sensor_page(name: &str) -> Result<String, String> {
     for paragraph in SENSOR_LEGEND {
         page.push_str(&format!("\n\n{}", wrapped(paragraph, 2)));
     }
-    let how = "A case to start from, one line of a file for `survey --cases FILE`:";
+    let how = "A suite to start from, a file that ends in .toml:";
+    page.push_str(&format!("\n\n{}\n{}", wrapped(how, 2), as_suite(kind).trim_end()));
+    let how = "The same as a case record, one line of a file for `survey --cases FILE`:";
     page.push_str(&format!("\n\n{}\n{}", wrapped(how, 2), kind.example));
     Ok(page)
 }
 
 /// What the symbols of the sensors' formulas mean.
 const SENSOR_LEGEND: [&str; 1] = [
-    "x: the state, n components, counted from 0; (x, y), (x, y, z) its position; (sx, sy) a station; p: number of outputs; \
-     y_j, theta_j: output j; ': transposed. n x n and the like: rows x columns, a list of rows. A value after = is the \
+    "x: the state, n components, counted from 0; q: its position, (x, y) or (x, y, z); v: its velocity; s_j: station j, \
+     (sx, sy) in the plane; p: number of outputs; y_j, theta_j: output j; ': transposed. n x n and the like: rows x columns, a list of rows. A value after = is the \
      default. [rad, angular]: counter-clockwise from the x axis, on the circle.",
 ];
 
@@ -78,6 +81,35 @@ fn example(kind: &sensor::Kind) -> Case {
     let record = serde_json::from_str(kind.example).map_err(|e| e.to_string());
     let case = record.and_then(|record| Case::from_json(record).map_err(|e| e.to_string()));
     case.unwrap_or_else(|e| unreachable!("a test holds that every example is a case: {}: {e}", kind.name))
+}
+
+/// The example as the sections of a suite; parameters that a suite wants with their unit have it.
+fn as_suite(kind: &sensor::Kind) -> String {
+    let written = serde_json::from_str::<Map<String, Value>>(kind.example).map_err(|e| e.to_string());
+    let written = written.and_then(|mut example| {
+        example.shift_remove("case");
+        for (key, unit) in kind.quantities.iter().filter(|(_, unit)| unit.starts_with("rad")) {
+            if let Some(value) = example.get_mut("sensor").and_then(|sensor| sensor.get_mut(*key)) {
+                give_unit(value, unit);
+            }
+        }
+        toml::to_string(&example).map_err(|e| e.to_string())
+    });
+    let text =
+        written.unwrap_or_else(|e| unreachable!("a test holds that every example is a suite: {}: {e}", kind.name));
+    // Rows of wide matrices, each on a line of its own.
+    let fold =
+        |line: &str| if line.len() > usize::from(WIDTH) { line.replace("], [", "],\n    [") } else { line.into() };
+    text.lines().map(fold).collect::<Vec<_>>().join("\n")
+}
+
+/// Numbers, alone or in lists, as texts with their unit.
+fn give_unit(value: &mut Value, unit: &str) {
+    match value {
+        Value::Array(list) => list.iter_mut().for_each(|entry| give_unit(entry, unit)),
+        Value::Number(number) => *value = format!("{number} {unit}").into(),
+        _ => {}
+    }
 }
 
 /// `range [m], bearing [rad, angular]`.

@@ -6,6 +6,7 @@ use tempfile::NamedTempFile;
 
 use super::{choices, envelopes, manifest, records, scores_csv};
 use crate::guidance::{Conclusions, Scores};
+use crate::suite::Suite;
 use crate::survey::SurveyResult;
 use crate::trust::Claim;
 use crate::whole_file::WholeFile;
@@ -42,6 +43,14 @@ impl ResultsFolder {
     /// Where it is.
     pub fn path(&self) -> &Path {
         &self.0
+    }
+
+    /// Whether it holds results of a suite with another text, which [`ResultsFolder::write`] will replace.
+    pub fn holds_another(&self, suite: &Suite) -> bool {
+        let manifest = std::fs::read(self.0.join("manifest.json")).ok();
+        let manifest = manifest.and_then(|bytes| serde_json::from_slice::<serde_json::Value>(&bytes).ok());
+        let hash = manifest.as_ref().and_then(|manifest| manifest["suite"]["hash"].as_str());
+        hash.is_some_and(|hash| hash != suite.hash)
     }
 
     /// Writes what a survey found: `cases.jsonl`, `references.jsonl`, `scores.csv`, what follows from them

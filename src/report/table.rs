@@ -13,7 +13,7 @@ anything, your own verification process, the applicable standards and codes, and
 responsible engineers decide.";
 
 /// Columns that a table may take.
-const WIDTH: u16 = 100;
+pub(super) const WIDTH: u16 = 100;
 
 /// A table without borders that fits [`WIDTH`] columns; `right` are the columns of numbers.
 pub(super) fn plain_table(header: &[&str], right: std::ops::Range<usize>) -> Table {
@@ -45,8 +45,11 @@ pub(super) fn keep_whole(table: &mut Table, columns: std::ops::Range<usize>) {
 pub fn write_summary(survey: &SurveyResult<'_>, summary: &Summary, to: &mut dyn Write) -> io::Result<()> {
     let suite = survey.suite;
     writeln!(to, "{}", wrapped(&format!("{} - {}", suite.name, suite.title), 0))?;
+    let reached = summary
+        .worst_error
+        .map_or("none can be believed".into(), |worst| format!("worst standardised standard error {worst:.1e}"));
     let facts = format!(
-        "{}{} of {} cases, {:.3e} samples in {:.1} s; references to {:e} (worst standardised standard error)",
+        "{}{} of {} cases, {:.3e} samples in {:.1} s; {reached} ({:e} asked)",
         survey.plan.shard.map_or(String::new(), |shard| format!("part {shard}: ")),
         summary.cases,
         survey.asked(),

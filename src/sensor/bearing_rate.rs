@@ -7,7 +7,7 @@ pub(super) const KIND: Kind = Kind {
     name: "bearing-rate",
     summary: "bearing and bearing rate of a moving planar position from one or several stations",
     formula: "theta_j = atan2(y - sy_j, x - sx_j) [rad, angular], \
-              rate_j = ((x - sx_j) vy - (y - sy_j) vx) / |p - s_j|^2 [rad/s]",
+              rate_j = ((x - sx_j) vy - (y - sy_j) vx) / |q - s_j|^2 [rad/s]",
     parameters: "station [x, y] m or stations [[x, y], ...] m; position [i, j] = [0, 1]; \
                  velocity = the components after the position",
     quantities: &[("station", "m"), ("stations", "m")],

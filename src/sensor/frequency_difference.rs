@@ -9,7 +9,7 @@ use crate::gaussian::Gaussian;
 pub(super) const KIND: Kind = Kind {
     name: "frequency-difference",
     summary: "differences of the frequency heard of a moving emitter between a reference station and others",
-    formula: "y_j = -(f0 / c) (rate_j - rate_0) [Hz], rate_j = (p - s_j)' v / |p - s_j|, j = 1, 2, ...",
+    formula: "y_j = -(f0 / c) (rate_j - rate_0) [Hz], rate_j = (q - s_j)' v / |q - s_j|, j = 1, 2, ...",
     parameters: "stations [[x, y(, z)], ...] m, at least 2, the first is the reference; carrier f0 Hz; wave_speed c \
                  m/s; position [i, j(, k)] = [0, 1(, 2)]; velocity = the components after the position",
     quantities: &[("stations", "m"), ("carrier", "Hz"), ("wave_speed", "m/s")],
@@ -21,7 +21,7 @@ pub(super) const KIND: Kind = Kind {
 /// Differences of the Doppler-shifted frequency of a moving emitter at several stations at rest, in the plane or in
 /// space.
 ///
-/// y_j = -(f0 / c) (rate_j - rate_0) \[Hz\], rate_j = (p - s_j)' v / |p - s_j|, j = 1, 2, ..: the first station s_0 is
+/// y_j = -(f0 / c) (rate_j - rate_0) \[Hz\], rate_j = (q - s_j)' v / |q - s_j|, j = 1, 2, ..: the first station s_0 is
 /// the reference of all others; f0 is the carrier \[Hz\], c the speed of the wave \[m/s\], large beside that of the
 /// emitter. Undefined at a station itself.
 ///

@@ -98,13 +98,31 @@ impl SensorSpec {
     pub fn from_json(mut described: Map<String, Value>, n: usize) -> Result<Self, BuildError> {
         let names = || KINDS.iter().map(|k| k.name).collect::<Vec<_>>().join(", ");
         let error = |key: &str, message: String| BuildError { key: key.into(), message };
+        let formulas = ["outputs", "state", "definitions"].into_iter().find(|key| described.contains_key(*key));
         let kind = match described.shift_remove("kind") {
-            Some(Value::String(kind)) => kind,
+            Some(Value::String(kind)) => {
+                if let Some(key) = formulas.filter(|_| kind != written::KIND.name) {
+                    let message = format!(
+                        "`{key}` belongs to a sensor that is written out as formulas, which has no `kind`; leave out one of the two"
+                    );
+                    return Err(error(key, message));
+                }
+                kind
+            }
             Some(other) => return Err(error("kind", format!("is {other}; give one of {}", names()))),
             // A sensor that is written out says so by what it holds.
-            None if described.contains_key("outputs") => written::KIND.name.to_owned(),
+            None if formulas.is_some() => written::KIND.name.to_owned(),
             None => return Err(error("", format!("`kind` is missing; give one of {}", names()))),
         };
+        if let Some(missing) = ["state", "outputs"].into_iter().find(|key| !described.contains_key(*key))
+            && kind == written::KIND.name
+        {
+            let message = format!(
+                "`{missing}` is missing; a sensor that is written out as formulas needs `state`, a list of names, and `outputs`, \
+                 each with `name` and `formula`"
+            );
+            return Err(error("", message));
+        }
         let kind = KINDS.iter().find(|k| k.name == kind).ok_or_else(|| {
             let names: Vec<_> = KINDS.iter().map(|k| k.name).collect();
             error("kind", unknown_name("sensor", &kind, &names))

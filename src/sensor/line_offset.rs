@@ -11,8 +11,8 @@ use super::{ExactMoments, Formula, Number, Output, ParameterError};
 pub(super) const KIND: Kind = Kind {
     name: "line-offset",
     summary: "signed distance of a planar position from a fixed line, as of a leading line; linear",
-    formula: "y = n'(p - p0) [m], n the unit normal to the left of the way from p0 to p1",
-    parameters: "through [[x0, y0], [x1, y1]] m; position [i, j] = [0, 1]",
+    formula: "y = u'(q - q0) [m], u the unit normal to the left of the way from q0 to q1, the points of `through`",
+    parameters: "through [q0, q1] = [[x0, y0], [x1, y1]] m; position [i, j] = [0, 1]",
     quantities: &[("through", "m")],
     source: "Hesse normal form",
     example: r#"{"case":"fairway","sensor":{"kind":"line-offset","through":[[0,0],[900,300]]},"prior":{"mean":[2500,800],"covariance":[[400,100],[100,900]]},"noise":{"covariance":9}}"#,
@@ -21,7 +21,7 @@ pub(super) const KIND: Kind = Kind {
 
 /// Signed distance of a planar position from a fixed line through two points, as of a ship from a leading line.
 ///
-/// y = n'(p - p0) \[m\] with n the unit normal to the left of the way from p0 to p1: positive on that side. Linear: every
+/// y = u'(q - q0) \[m\] with u the unit normal to the left of the way from q0 to q1: positive on that side. Linear: every
 /// method is exact on it.
 ///
 /// Source: the Hesse normal form of a line.

@@ -276,7 +276,7 @@ pub(super) fn seen_from<T: Number>(position: &[T], station: &[f64; 3]) -> (T, T)
     (position[0] - T::constant(station[0]), position[1] - T::constant(station[1]))
 }
 
-/// |p - s|^2 of a position in the plane or in space.
+/// |q - s|^2 of a position in the plane or in space.
 #[inline(always)]
 pub(super) fn squared_range<T: Number>(position: &[T], station: &[f64; 3]) -> T {
     let mut sum = T::constant(0.0);
@@ -287,7 +287,7 @@ pub(super) fn squared_range<T: Number>(position: &[T], station: &[f64; 3]) -> T 
     sum
 }
 
-/// |p - s| and its rate (p - s)'v / |p - s| of a state that holds p, then v.
+/// |q - s| and its rate (q - s)'v / |q - s| of a state that holds q, then v.
 #[inline(always)]
 pub(super) fn range_and_rate<T: Number>(state: &[T], station: &[f64; 3]) -> (T, T) {
     let (position, velocity) = state.split_at(state.len() / 2);

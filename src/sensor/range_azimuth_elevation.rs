@@ -6,7 +6,7 @@ use crate::gaussian::Gaussian;
 pub(super) const KIND: Kind = Kind {
     name: "range-azimuth-elevation",
     summary: "range, azimuth and elevation of a position in space from one or several stations",
-    formula: "r_j = |p - s_j| [m], azimuth_j = atan2(y - sy_j, x - sx_j) [rad, angular], \
+    formula: "r_j = |q - s_j| [m], azimuth_j = atan2(y - sy_j, x - sx_j) [rad, angular], \
               elevation_j = atan2(z - sz_j, hypot(x - sx_j, y - sy_j)) [rad]",
     parameters: "station [x, y, z] m or stations [[x, y, z], ...] m; position [i, j, k] = [0, 1, 2]",
     quantities: &[("station", "m"), ("stations", "m")],
@@ -17,7 +17,7 @@ pub(super) const KIND: Kind = Kind {
 
 /// Range, azimuth and elevation of a position in space from one or several stations.
 ///
-/// r_j = |p - s_j| \[m\], azimuth_j = atan2(y - sy_j, x - sx_j) \[rad\], counter-clockwise from the x axis, angular,
+/// r_j = |q - s_j| \[m\], azimuth_j = atan2(y - sy_j, x - sx_j) \[rad\], counter-clockwise from the x axis, angular,
 /// elevation_j = atan2(z - sz_j, hypot(x - sx_j, y - sy_j)) \[rad\] in \[-pi/2, pi/2\], an ordinary number; three of
 /// the first station, then of the next. Undefined derivatives of both angles straight above and below a station.
 ///

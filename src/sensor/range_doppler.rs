@@ -6,7 +6,7 @@ use crate::gaussian::Gaussian;
 pub(super) const KIND: Kind = Kind {
     name: "range-doppler",
     summary: "range and range rate of a moving position in the plane or in space from one or several stations",
-    formula: "r_j = |p - s_j| [m], rate_j = (p - s_j)' v / r_j [m/s]",
+    formula: "r_j = |q - s_j| [m], rate_j = (q - s_j)' v / r_j [m/s]",
     parameters: "station [x, y(, z)] m or stations [[x, y(, z)], ...] m; position [i, j(, k)] = [0, 1(, 2)]; \
                  velocity = the components after the position",
     quantities: &[("station", "m"), ("stations", "m")],
@@ -17,7 +17,7 @@ pub(super) const KIND: Kind = Kind {
 
 /// Range and range rate of a moving position from one or several stations at rest, in the plane or in space.
 ///
-/// r_j = |p - s_j| \[m\], rate_j = (p - s_j)' v / r_j \[m/s\], positive when receding; range and rate of the first
+/// r_j = |q - s_j| \[m\], rate_j = (q - s_j)' v / r_j \[m/s\], positive when receding; range and rate of the first
 /// station, then of the next. The rate is what a Doppler shift measures. Undefined at a station itself.
 ///
 /// Source: S. Blackman, R. Popoli, Design and Analysis of Modern Tracking Systems (Artech House, 1999), radar

@@ -6,7 +6,7 @@ use crate::gaussian::Gaussian;
 pub(super) const KIND: Kind = Kind {
     name: "range-only",
     summary: "ranges of a position in the plane or in space from one or several stations",
-    formula: "r_j = |p - s_j| [m]",
+    formula: "r_j = |q - s_j| [m]",
     parameters: "station [x, y(, z)] m or stations [[x, y(, z)], ...] m; position [i, j(, k)] = [0, 1(, 2)]",
     quantities: &[("station", "m"), ("stations", "m")],
     source: "Bar-Shalom, Li, Kirubarajan 2001",
@@ -16,7 +16,7 @@ pub(super) const KIND: Kind = Kind {
 
 /// Ranges of a position from one or several stations, in the plane or in space.
 ///
-/// r_j = |p - s_j| \[m\], p the position and s_j a station, both with two or three coordinates.
+/// r_j = |q - s_j| \[m\], p the position and s_j a station, both with two or three coordinates.
 /// Undefined derivatives at a station itself.
 ///
 /// Source: Y. Bar-Shalom, X. R. Li, T. Kirubarajan, Estimation with Applications to Tracking and Navigation

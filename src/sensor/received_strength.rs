@@ -11,7 +11,7 @@ use crate::gaussian::Gaussian;
 pub(super) const KIND: Kind = Kind {
     name: "received-strength",
     summary: "strength received of an emitter in the plane or in space at one or several stations, by log-distance path loss",
-    formula: "y_j = strength - 10 exponent log10(|p - s_j| / d0) [dB]",
+    formula: "y_j = strength - 10 exponent log10(|q - s_j| / d0) [dB]",
     parameters: "station [x, y(, z)] m or stations [[x, y(, z)], ...] m; strength dB received at reference_distance \
                  d0 m; exponent (2 in free space); position [i, j(, k)] = [0, 1(, 2)]",
     quantities: &[("station", "m"), ("stations", "m"), ("reference_distance", "m")],
@@ -22,7 +22,7 @@ pub(super) const KIND: Kind = Kind {
 
 /// Strength received of an emitter at one or several stations by the log-distance law, in the plane or in space.
 ///
-/// y_j = strength - 10 exponent log10(|p - s_j| / d0) \[dB\]: what is received at the reference distance d0, less
+/// y_j = strength - 10 exponent log10(|q - s_j| / d0) \[dB\]: what is received at the reference distance d0, less
 /// 10 exponent dB a decade of distance. Infinite at a station itself.
 ///
 /// Source: T. S. Rappaport, Wireless Communications: Principles and Practice, 2nd ed. (Prentice Hall, 2002),

@@ -9,7 +9,7 @@ use crate::gaussian::Gaussian;
 pub(super) const KIND: Kind = Kind {
     name: "time-difference",
     summary: "differences of a wave's arrival times between a reference station and others, in the plane or in space",
-    formula: "y_j = (|p - s_j| - |p - s_0|) / c [s], j = 1, 2, ...",
+    formula: "y_j = (|q - s_j| - |q - s_0|) / c [s], j = 1, 2, ...",
     parameters: "stations [[x, y(, z)], ...] m, at least 2, the first is the reference; wave_speed c m/s; \
                  position [i, j(, k)] = [0, 1(, 2)]",
     quantities: &[("stations", "m"), ("wave_speed", "m/s")],
@@ -20,7 +20,7 @@ pub(super) const KIND: Kind = Kind {
 
 /// Differences of the arrival times of one wave at several stations, in the plane or in space.
 ///
-/// y_j = (|p - s_j| - |p - s_0|) / c \[s\], j = 1, 2, ..: the first station s_0 is the reference of all others; c is
+/// y_j = (|q - s_j| - |q - s_0|) / c \[s\], j = 1, 2, ..: the first station s_0 is the reference of all others; c is
 /// the speed of the wave \[m/s\]. A constant difference is a branch of a hyperbola with the two stations as foci.
 /// Undefined derivatives at a station itself. Independent errors of the arrivals make correlated ones of the differences,
 /// for they share the reference.

@@ -6,7 +6,7 @@ use crate::wording::printable;
 /// below it perhaps an excerpt of a formula.
 ///
 /// ```text
-/// harbour.toml:12: prior.range: "3 deg" is an angle; a length is needed: m, km, cm, mm
+/// harbour.toml:12: prior.range: "3 deg" is an angle; a length is needed: m, km, cm, mm, nmi
 /// ```
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct SuiteError {

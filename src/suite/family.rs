@@ -94,8 +94,8 @@ impl Family {
         let prior = Prior::read(prior_section)?;
         let sensor = sensor::read(sensor_section, prior.dimension()?)?;
         let gaussian = prior.gaussian(&sensor)?;
-        let r = noise_section.as_ref().map(|section| noise::read(section, sensor.sensor())).transpose()?;
-        Case::new(id, sensor, gaussian, r.unwrap_or_default()).map_err(|CaseError { key, message }| {
+        let r = noise_section.as_ref().map(|section| noise::read(section, &sensor)).transpose()?;
+        Case::new(id, sensor.spec, gaussian, r.unwrap_or_default()).map_err(|CaseError { key, message }| {
             let section = SECTIONS.iter().position(|name| key.starts_with(name));
             match section.and_then(|i| sections[i].as_ref()) {
                 Some(node) => node.error(message),

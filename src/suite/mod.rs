@@ -49,9 +49,10 @@
 //! | `[noise]` | `sd`, one an output or one for all; or `covariance`, a matrix or one number for its diagonal |
 //! | `[[family]]` | `name`, perhaps `draws`, and its own sections in place of those above |
 //!
-//! - Quantity: a bare number, or a text with a unit: m, km, cm, mm; deg, rad, mrad; s, ms, us, ns, min, h; m/s, km/h,
-//!   kn; deg/s, rad/s; Hz, kHz, MHz, GHz; % of the range or of the speed. A bare number is in m, s, m/s or Hz; an angle
-//!   or an angular rate must have its unit. What is measured in another unit (dB, nT, pixels) is a bare number in it.
+//! - Quantity: a bare number, or a text with a unit: m, km, cm, mm, nmi (of 1852 m); deg (or °), rad, mrad; s, ms, us, ns,
+//!   min, h; m/s, km/h, kn; deg/s, rad/s; Hz, kHz, MHz, GHz; % of the range or of the speed. A bare number is in m, s, m/s or
+//!   Hz; an angle or an angular rate must have its unit. What is measured in another unit (dB, nT, pixels) is a bare number in
+//!   it; noise of an output in such a unit may have it, too.
 //!   Covariances are bare numbers, in m^2, rad^2 and so on.
 //! - Sweep: `{ from, to, steps }`, with `scale = "log"` for equal ratios, or `{ list = [..] }`, whose values may
 //!   be whole lists.
@@ -102,11 +103,68 @@
 //!   C there is 90 deg - C here, if x points east and y north.
 //! - The position takes the components that the sensor reads as its `position`, else the first; the velocity those that
 //!   it reads as its `velocity`, else the first that are not of the position, so it stands right in `[x, y, vx, vy]` and in
-//!   `[x, vx, y, vy]`.
+//!   `[x, vx, y, vy]`. Formulas do not tell: see below.
 //! - An angle across is one at the observer's eye: at elevation e, a bearing known to s is `across_sd` = s cos e.
 //! - `frame_bearing`, perhaps with `frame_elevation`, goes with `mean` too: `covariance` or `sd` is then along the axes
 //!   of that direction as far as the position is concerned, P = T P T' where T turns the position's components and
 //!   leaves the others.
+//!
+//! # A sensor written out as formulas
+//!
+//! ```
+//! # fn main() -> Result<(), gaussworthy::suite::SuiteError> {
+//! # let text = r#"
+//! [sensor]                            # the mast of Brackmoor Sound off the bow of a boat under way
+//! state = ["x", "vx", "y", "vy", { name = "heading", unit = "rad" }]
+//! position = ["x", "y"]
+//! velocity = ["vx", "vy"]
+//! parameters = { mast = "1.2 km" }
+//! [sensor.definitions]
+//! ahead = "mast - x"
+//! [[sensor.outputs]]
+//! name = "bearing off the bow"
+//! formula = "atan2(-y, ahead) - heading"
+//! angular = true
+//!
+//! [prior]
+//! seen_from = [0, 0]                  # formulas have no station
+//! range = "900 m"
+//! bearing = "35 deg"
+//! along_sd = "20 m"
+//! across_sd = "3 deg"
+//! speed = "12 kn"
+//! speed_sd = "5 %"
+//! course = "200 deg"
+//! course_sd = "4 deg"
+//! rest_mean = ["198 deg"]
+//! rest_sd = ["2 deg"]
+//!
+//! [noise]
+//! sd = "0.5 deg"
+//! # "#;
+//! # let suite = gaussworthy::suite::Suite::from_text("bow", "bow.toml", text, None)?;
+//! # let (m, heading) = (suite.cases[0].prior().mean(), 198_f64.to_radians());
+//! # assert!((m[0].hypot(m[2]) - 900.0).abs() < 1e-9 && (m[4] - heading).abs() < 1e-15);
+//! # Ok(())
+//! # }
+//! ```
+//!
+//! | key | meaning |
+//! | --- | --- |
+//! | `state` | the components of the state, each a name or `{ name, unit }` |
+//! | `outputs` | tables of `name`, `formula`, perhaps `unit`, or `angular = true` for an angle on the circle in rad |
+//! | `parameters` | numbers by name; a quantity comes to the formulas in its base unit (m, rad, s, m/s, rad/s, Hz) |
+//! | `definitions` | formulas by name, in any order; a condition may have a name, too |
+//! | `noise` | the variables v of noise inside, y = h(x, v), each a name or `{ name, unit }`; their spread is `inside` of `[noise]` |
+//! | `position`, `velocity` | the components that are meant by a prior in range and bearing, by `frame_bearing`, and by `speed` and `course`: two or three names, or indices from 0. In m and m/s |
+//!
+//! - `position` must be given with such a prior unless the state has no other components, `velocity` with every speed.
+//! - Formulas work with bare numbers. A component with a unit takes bare numbers in that unit, and quantities that fit it,
+//!   converted; with a unit that is not known here, texts in just that unit. One without takes bare numbers alone (noise
+//!   inside also a share). The same holds for the noise of outputs.
+//! - Units, `position` and `velocity` speak of the suite's texts. A case record is bare numbers and has none of the three;
+//!   `{ name, unit }` may stand in one, and comes back as the name.
+//! - A parameter, a definition or a noise variable that no formula names is refused.
 
 mod bundled;
 mod case;
@@ -121,6 +179,7 @@ mod name;
 mod node;
 mod noise;
 mod numbers;
+mod outline;
 mod prior;
 mod quantity;
 mod records;
@@ -130,6 +189,7 @@ mod settings;
 mod sighting;
 mod source;
 mod sweep;
+mod unique;
 mod unit;
 mod velocity;
 

@@ -56,7 +56,11 @@ impl Node {
         let lines = Lines::of(text);
         let root = DeTable::parse(text).map_err(|e| {
             let line = e.span().map_or(1, |span| lines.line(span.start));
-            SuiteError::at(line, "", format!("is not TOML: {}", e.message().replace('\n', "; ")))
+            let mut message = format!("is not TOML: {}", e.message().replace('\n', "; "));
+            if let Some(key) = e.span().filter(|_| e.message() == "duplicate key").and_then(|span| text.get(span)) {
+                message.push_str(&format!(" `{key}`; delete one"));
+            }
+            SuiteError::at(line, "", message)
         })?;
         let place = Place { key: "".into(), line: 1, offset: 0 };
         let item = lines.table(root.get_ref(), &place)?;
@@ -273,7 +277,9 @@ mod tests {
             ("b = [1, -inf]", ":1: b[1]: is -inf; give a finite number"),
             ("b = 1e999", ":1: b: is 1e999; give a finite number"),
             ("b = 2020-01-01", ":1: b: is the date 2020-01-01; a suite has no use for dates"),
-            ("a = 1\n\na = 2", ":3: is not TOML: duplicate key"),
+            ("a = 1\n\na = 2", ":3: is not TOML: duplicate key `a`; delete one"),
+            ("[s]\n\"a b\" = 1\n\"a b\" = 2", ":3: is not TOML: duplicate key `\"a b\"`; delete one"),
+            ("[s]\nx = 1\n[s]\nx = 2", ":3: is not TOML: duplicate key `s`; delete one"),
         ] {
             assert_eq!(Node::parse(text).unwrap_err().to_string(), expected);
         }

@@ -5,27 +5,30 @@ use nalgebra::DMatrix;
 
 use super::node::{Item, Node};
 use super::numbers::{covariance_error, matrix};
-use super::quantity::{Quantity, Wanted, checked_sd};
+use super::outline::Outline;
+use super::quantity::{Owner, Wanted};
+use super::sensor::Described;
 use super::{Noise, SuiteError};
 use crate::gaussian::checked_covariance;
-use crate::sensor::{Output, Sensor};
+use crate::sensor::Output;
 
 /// The noise of the section.
-pub(super) fn read(section: &Node, sensor: &dyn Sensor) -> Result<Noise, SuiteError> {
+pub(super) fn read(section: &Node, described: &Described) -> Result<Noise, SuiteError> {
     section.table(&["sd", "covariance", "inside"])?;
+    let (sensor, outline) = (described.spec.sensor(), described.outline.as_ref());
     let outputs = sensor.outputs();
     let names = || outputs.iter().map(|o| o.name.as_str()).collect::<Vec<_>>().join(", ");
     let additive = match (section.get("sd"), section.get("covariance")) {
         (Some(sd), None) => {
             let entries =
                 entries(sd, outputs.len(), || format!("the sensor has {} outputs: {}", outputs.len(), names()))?;
-            Some(from_sd(&entries, outputs)?)
+            Some(from_sd(&entries, outputs, outline.is_some())?)
         }
         (None, Some(covariance)) => Some(from_covariance(covariance, outputs.len())?),
         (Some(_), Some(covariance)) => return Err(covariance.error("stands beside `sd`; give one of the two")),
         (None, None) => None,
     };
-    let inside = section.get("inside").map(|inside| read_inside(inside, sensor.noise())).transpose()?;
+    let inside = section.get("inside").map(|inside| read_inside(inside, sensor.noise(), outline)).transpose()?;
     if additive.is_none() && inside.is_none() {
         return Err(section.error("says nothing; give `sd` or `covariance`, or leave the noise out"));
     }
@@ -33,7 +36,7 @@ pub(super) fn read(section: &Node, sensor: &dyn Sensor) -> Result<Noise, SuiteEr
 }
 
 /// The covariance (q x q) of the noise variables inside.
-fn read_inside(section: &Node, names: &[String]) -> Result<DMatrix<f64>, SuiteError> {
+fn read_inside(section: &Node, names: &[String], outline: Option<&Outline>) -> Result<DMatrix<f64>, SuiteError> {
     section.table(&["sd", "covariance"])?;
     let q = names.len();
     if q == 0 {
@@ -44,7 +47,8 @@ fn read_inside(section: &Node, names: &[String]) -> Result<DMatrix<f64>, SuiteEr
             let entries = entries(sd, q, || format!("the sensor has {q} noise variables: {}", names.join(", ")))?;
             let mut covariance = DMatrix::zeros(q, q);
             for (k, node) in entries.into_iter().enumerate() {
-                covariance[(k, k)] = inside_sd(node)?.powi(2);
+                let wanted = outline.map_or(Wanted::Any, |outline| outline.wanted_inside(k));
+                covariance[(k, k)] = wanted.read_sd(node)?.powi(2);
             }
             Ok(covariance)
         }
@@ -52,11 +56,6 @@ fn read_inside(section: &Node, names: &[String]) -> Result<DMatrix<f64>, SuiteEr
         (Some(_), Some(covariance)) => Err(covariance.error("stands beside `sd`; give one of the two")),
         (None, None) => Err(section.error("says nothing; give `sd` or `covariance`")),
     }
-}
-
-/// A standard deviation in whatever unit the formula is meant in; a share is a number.
-fn inside_sd(node: &Node) -> Result<f64, SuiteError> {
-    checked_sd(node, Quantity::of(node)?.value)
 }
 
 /// One node for each of `count`, or one for all.
@@ -68,13 +67,17 @@ fn entries(node: &Node, count: usize, what: impl Fn() -> String) -> Result<Vec<&
     }
 }
 
-fn from_sd(nodes: &[&Node], outputs: &[Output]) -> Result<DMatrix<f64>, SuiteError> {
+/// `written`: whether the outputs are those of formulas, which have no unit but what is said of them.
+fn from_sd(nodes: &[&Node], outputs: &[Output], written: bool) -> Result<DMatrix<f64>, SuiteError> {
     let p = outputs.len();
     let mut r = DMatrix::zeros(p, p);
     for (j, (node, output)) in nodes.iter().zip(outputs).enumerate() {
-        let wanted = Wanted::in_unit(&output.unit);
+        let wanted = match output.unit.as_ref() {
+            "" if written => Wanted::Bare(Owner::Output(&output.name)),
+            unit => Wanted::in_unit(unit),
+        };
         let sd = wanted.read_sd(node).map_err(|mut e| {
-            let unit = if wanted == Wanted::Bare { format!(", in {}", output.unit) } else { String::new() };
+            let unit = if let Wanted::In(unit) = wanted { format!(", in {unit}") } else { String::new() };
             e.message.push_str(&format!("; output {j} is the {}{unit}", output.name));
             e
         })?;
@@ -103,7 +106,7 @@ mod tests {
         let read = |sd: &str| {
             let root = Node::parse(&format!("sd = {sd}")).unwrap();
             let nodes = entries(root.get("sd").unwrap(), outputs.len(), String::new).unwrap();
-            from_sd(&nodes, &outputs).map_err(|e| e.to_string())
+            from_sd(&nodes, &outputs, false).map_err(|e| e.to_string())
         };
         let r = read("[\"250 ms\", \"7.2 km/h\", \"0.5 rad/s\", \"1 kHz\", 3, \"4 m\"]").unwrap();
         assert_eq!(r.diagonal().as_slice(), [0.0625, 4.0, 0.25, 1e6, 9.0, 16.0]);
@@ -117,8 +120,8 @@ mod tests {
                 ":1: sd[0]: \"1 m\" is a length; a time is needed: s, ms, us, ns, min, h; output 0 is the time",
             ),
             (
-                "[1, 1, \"1 deg/s\", 1, \"3 dB\", 1]",
-                ":1: sd[4]: is \"3 dB\"; give a bare number; output 4 is the level, in dB",
+                "[1, 1, \"1 deg/s\", 1, \"3 lux\", 1]",
+                ":1: sd[4]: is \"3 lux\"; give a bare number, or a text in dB, as \"2 dB\"; output 4 is the level, in dB",
             ),
             (
                 "[1, 1, \"1 deg/s\", 1, -3, 1]",

@@ -4,13 +4,13 @@ use nalgebra::{DMatrix, DVector};
 
 use super::SuiteError;
 use super::frame::Frame;
-use super::layout::{Layout, free};
+use super::layout::Layout;
 use super::node::Node;
 use super::numbers::{covariance_error, matrix};
 use super::quantity::Wanted;
+use super::sensor::Described;
 use super::sighting::Sighting;
 use crate::gaussian::Gaussian;
-use crate::sensor::SensorSpec;
 
 const FORMS: &str = "`mean` and `covariance`; `mean` and `sd`, perhaps `correlation`; \
     or `range`, `bearing`, `along_sd` and `across_sd`, perhaps `elevation` and `up_sd`, `speed` and `course`, \
@@ -96,8 +96,8 @@ impl<'a> Prior<'a> {
     }
 
     /// The Gaussian; a position that `sensor` reads is a length, a velocity a speed.
-    pub(super) fn gaussian(&self, sensor: &SensorSpec) -> Result<Gaussian, SuiteError> {
-        let layout = Layout::of(sensor);
+    pub(super) fn gaussian(&self, sensor: &Described) -> Result<Gaussian, SuiteError> {
+        let layout = Layout::of(&sensor.spec, sensor.outline.as_ref());
         match self {
             Self::Full { mean, covariance, frame } => {
                 let m = components(mean, layout, Wanted::read)?;
@@ -134,7 +134,10 @@ fn turned(
 ) -> Result<Gaussian, SuiteError> {
     let Some(frame) = frame else { return Ok(given) };
     let n = given.dimension();
-    let position = layout.position().unwrap_or_else(|| free(2 + usize::from(frame.elevation.is_some()), &[]));
+    let position = match layout.position() {
+        Some(named) => named,
+        None => layout.unnamed_position(2 + usize::from(frame.elevation.is_some()), n, frame.bearing)?,
+    };
     if position.iter().any(|&i| i >= n) || !(2..=3).contains(&position.len()) {
         return Err(frame.bearing.error(format!(
             "turns a position, components {position:?}, but the state has {n} components; leave it out"
@@ -158,10 +161,10 @@ pub(super) fn law(
     })
 }
 
-fn components(
+fn components<'a>(
     list: &Node,
-    layout: Layout<'_>,
-    read: fn(Wanted, &Node) -> Result<f64, SuiteError>,
+    layout: Layout<'a>,
+    read: fn(Wanted<'a>, &Node) -> Result<f64, SuiteError>,
 ) -> Result<Vec<f64>, SuiteError> {
     list.list()?.iter().enumerate().map(|(i, node)| read(layout.wanted(i), node)).collect()
 }

@@ -2,7 +2,7 @@
 
 use super::SuiteError;
 use super::node::{Item, Node};
-use super::unit::{Dimension, UNITS};
+use super::unit::{Dimension, UNITS, meant};
 
 /// A number in the base unit of its dimension; a bare number has none.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -15,7 +15,7 @@ impl Quantity {
     /// Reads `NUMBER UNIT`; the error is the message for the reader.
     fn parse(text: &str) -> Result<Self, String> {
         let all = || Dimension::ALL.map(|d| format!("{} in {}", d.name(), d.units())).join("; ");
-        let number = text.trim().trim_end_matches(|c: char| c.is_alphabetic() || matches!(c, '%' | '/'));
+        let number = text.trim().trim_end_matches(|c: char| c.is_alphabetic() || matches!(c, '%' | '/' | '°'));
         let unit = &text.trim()[number.len()..];
         let value: f64 = match number.trim().parse() {
             Ok(value) if f64::is_finite(value) => value,
@@ -32,7 +32,11 @@ impl Quantity {
                 Ok(Self { value: value * size, dimension: Some(dimension) })
             }
             Some(_) => Err(format!("\"{text}\" is too large for a number")),
-            None => Err(format!("there is no unit `{unit}` (\"{text}\"); give {}", all())),
+            None => Err(format!(
+                "there is no unit `{unit}` (\"{text}\"); {}give {} (what is measured in another unit is a bare number in it)",
+                meant(unit),
+                all()
+            )),
         }
     }
 
@@ -64,52 +68,91 @@ impl Quantity {
 
 /// What a key takes.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub(super) enum Wanted {
+pub(super) enum Wanted<'a> {
     /// A quantity of this dimension; a bare number is in its base unit, but an angle or an angular rate must say
     /// its unit.
     Of(Dimension),
+    /// What is measured in this unit of the author's choice, known here or not: a bare number is in it, and so is the value.
+    In(&'a str),
     /// A quantity of any dimension but a share, or a bare number in a unit of the author's own.
     Any,
-    /// A bare number, for the unit is none that is known here.
-    Bare,
+    /// A bare number, for its owner has no unit that a text could be in.
+    Bare(Owner<'a>),
 }
 
-impl Wanted {
-    /// What is measured in `unit`: a base unit, one that is not known here, or none (empty).
-    pub(super) fn in_unit(unit: &str) -> Self {
+/// What could have a unit and has none, by its name in a sensor that is written out.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Owner<'a> {
+    State(&'a str),
+    Noise(&'a str),
+    Output(&'a str),
+}
+
+impl Owner<'_> {
+    /// What to say of a quantity that is given for it, in a unit like `unit`.
+    fn refuses(self, given: &str, unit: &str) -> String {
+        let (what, name, list) = match self {
+            Self::State(name) => ("state component", name, "state"),
+            Self::Noise(name) => ("noise variable", name, "noise"),
+            Self::Output(name) => {
+                return format!(
+                    "{given} has a unit, but the output `{name}` has none; give a bare number, or the output its `unit`"
+                );
+            }
+        };
+        format!(
+            "{given} has a unit, but the {what} `{name}` has none; give a bare number, or its unit in the sensor's `{list}`: \
+             {{ name = \"{name}\", unit = \"{unit}\" }}"
+        )
+    }
+}
+
+impl<'a> Wanted<'a> {
+    /// What is measured in `unit`: a base unit, another one, or none (empty).
+    pub(super) fn in_unit(unit: &'a str) -> Self {
         match Dimension::of_base(unit) {
             Some(dimension) => Self::Of(dimension),
             None if unit.is_empty() => Self::Any,
-            None => Self::Bare,
+            None => Self::In(unit),
         }
     }
 
-    /// The value at the node in base units.
+    /// The value at the node in base units, or in the unit that was asked for.
     pub(super) fn read(self, node: &Node) -> Result<f64, SuiteError> {
-        if self == Self::Bare {
-            return node.number();
-        }
-        let quantity = Quantity::of(node)?;
         let given = || node.describe();
-        match (self, quantity.dimension) {
-            (Self::Of(wanted), None) if wanted.needs_unit() => Err(node.error(format!(
-                "{0} has no unit; {1} needs one: {2}",
-                given(),
-                wanted.name(),
-                wanted.examples(&given())
-            ))),
-            (Self::Of(wanted), Some(is)) if is != wanted => Err(node.error(format!(
-                "{} is {}; {} is needed: {}",
-                given(),
-                is.name(),
-                wanted.name(),
-                wanted.units()
-            ))),
-            (Self::Any, Some(Dimension::Share)) => Err(node.error(format!(
-                "{} is a share; a number is needed, or a quantity such as \"3 m\" or \"3 deg\"",
-                given()
-            ))),
-            _ => Ok(quantity.value),
+        match self {
+            Self::In(unit) => read_in(unit, node),
+            Self::Bare(owner) => {
+                let quantity = Quantity::of(node)?;
+                match (owner, quantity.dimension) {
+                    // A share is a pure number, which is what noise without a unit is.
+                    (_, None) | (Owner::Noise(_), Some(Dimension::Share)) => Ok(quantity.value),
+                    (_, Some(is)) => Err(node.error(owner.refuses(&given(), is.base().unwrap_or("%")))),
+                }
+            }
+            Self::Of(wanted) => {
+                let quantity = Quantity::of(node)?;
+                match quantity.dimension {
+                    None if wanted.needs_unit() => Err(node.error(format!(
+                        "{0} has no unit; {1} needs one: {2}",
+                        given(),
+                        wanted.name(),
+                        wanted.examples(&given())
+                    ))),
+                    Some(is) if is != wanted => Err(unlike(node, is, wanted)),
+                    _ => Ok(quantity.value),
+                }
+            }
+            Self::Any => {
+                let quantity = Quantity::of(node)?;
+                match quantity.dimension {
+                    Some(Dimension::Share) => Err(node.error(format!(
+                        "{} is a share; a number is needed, or a quantity such as \"3 m\" or \"3 deg\"",
+                        given()
+                    ))),
+                    _ => Ok(quantity.value),
+                }
+            }
         }
     }
 
@@ -118,6 +161,38 @@ impl Wanted {
         let sd = self.read(node)?;
         checked_sd(node, sd)
     }
+}
+
+/// The value in `unit` at a node: a bare number is in it, a quantity of the same dimension is converted. Of a unit that is not
+/// known here only itself is understood.
+fn read_in(unit: &str, node: &Node) -> Result<f64, SuiteError> {
+    if let Item::Text(text) = &node.item {
+        // As it is written, without a factor that rounds.
+        let own = text.trim().strip_suffix(unit).and_then(|number| number.trim().parse().ok());
+        if let Some(value) = own.filter(|value: &f64| value.is_finite()) {
+            return Ok(value);
+        }
+    }
+    let Some(&(_, dimension, size)) = UNITS.iter().find(|u| u.0 == unit) else {
+        return match node.item {
+            Item::Text(_) | Item::Quantity(_) => {
+                let given = node.describe();
+                Err(node.error(format!("is {given}; give a bare number, or a text in {unit}, as \"2 {unit}\"")))
+            }
+            _ => node.number(),
+        };
+    };
+    let quantity = Quantity::of(node)?;
+    match quantity.dimension {
+        None => Ok(quantity.value),
+        Some(is) if is == dimension => Ok(quantity.value / size),
+        Some(is) => Err(unlike(node, is, dimension)),
+    }
+}
+
+fn unlike(node: &Node, is: Dimension, wanted: Dimension) -> SuiteError {
+    let given = node.describe();
+    node.error(format!("{given} is {}; {} is needed: {}", is.name(), wanted.name(), wanted.units()))
 }
 
 /// The standard deviation, unless it is below zero.

@@ -4,12 +4,11 @@ use std::collections::HashMap;
 use std::io::{BufRead, BufReader, Read};
 use std::path::Path;
 
-use serde_json::Value;
 use sha2::{Digest, Sha256};
 
 use super::definition::hex;
 use super::grid::MOST_CASES;
-use super::{Case, SuiteError, source};
+use super::{Case, SuiteError, source, unique};
 
 /// The longest line, in bytes: 8 MiB.
 const LONGEST_LINE: u64 = 8 << 20;
@@ -75,12 +74,7 @@ pub(super) fn read(path: &Path) -> Result<Records, SuiteError> {
 }
 
 fn record(bytes: &[u8]) -> Result<Case, (String, String)> {
-    let value: Value = serde_json::from_slice(bytes).map_err(|e| {
-        // The parser knows this one line only; its column is of use, its line number is not.
-        let (column, text) = (e.column(), e.to_string());
-        let what = text.split(" at line ").next().unwrap_or(&text);
-        (String::new(), format!("is not JSON: {what} (column {column})"))
-    })?;
+    let value = unique::from_line(bytes)?;
     if !value.is_object() {
         return Err((
             String::new(),

@@ -2,17 +2,29 @@
 
 use super::SuiteError;
 use super::node::{Item, Node};
+use super::outline::{self, Outline};
 use super::quantity::{Quantity, Wanted};
 use crate::sensor::{KINDS, SensorSpec, Written};
 
+/// A sensor, and what a suite says of one written out as formulas beside them.
+#[derive(Debug)]
+pub(super) struct Described {
+    pub spec: SensorSpec,
+    pub outline: Option<Outline>,
+}
+
 /// Makes the sensor of the section for a state of `n` components.
-pub(super) fn read(section: &Node, n: usize) -> Result<SensorSpec, SuiteError> {
+pub(super) fn read(section: &Node, n: usize) -> Result<Described, SuiteError> {
     let kind = section.get("kind").and_then(|kind| kind.text().ok());
     let quantities = KINDS.iter().find(|k| Some(k.name) == kind).map_or(&[][..], |k| k.quantities);
-    let written = kind == Some(Written::KIND) || section.get("outputs").is_some();
+    let written = match section.get("kind") {
+        Some(_) => kind == Some(Written::KIND),
+        None => ["outputs", "state", "definitions"].iter().any(|key| section.get(key).is_some()),
+    };
     let entries = section
         .entries()?
         .iter()
+        .filter(|(name, _)| !(written && outline::KEYS.contains(&name.as_str())))
         .map(|(name, node)| {
             let node = match quantities.iter().find(|(key, _)| key == name) {
                 Some((_, unit)) => in_base_units(node, Wanted::in_unit(unit))?,
@@ -23,12 +35,14 @@ pub(super) fn read(section: &Node, n: usize) -> Result<SensorSpec, SuiteError> {
         })
         .collect::<Result<_, SuiteError>>()?;
     let described = Node { place: section.place.clone(), item: Item::Table(entries) };
-    SensorSpec::from_json(described.object()?, n).map_err(|e| {
+    let spec = SensorSpec::from_json(described.object()?, n).map_err(|e| {
         let at = section.at(&e.key);
         let missing_below = format!("{}.{}", section.place.key, e.key) != *at.place.key && !e.key.is_empty();
         // A parameter that is only there by default, or not at all, is named in the message.
         at.error(if missing_below { format!("`{}` {}", e.key, e.message) } else { e.message })
-    })
+    })?;
+    let outline = written.then(|| Outline::read(section)).transpose()?;
+    Ok(Described { spec, outline })
 }
 
 /// The parameters of formulas, each in the base unit of whatever it is.
@@ -46,7 +60,7 @@ fn parameters_of_formulas(node: &Node) -> Result<Node, SuiteError> {
 
 /// The numbers at a node, alone or in lists, as bare numbers in the base unit of what is wanted. What is no number
 /// at all is left for the sensor to refuse.
-fn in_base_units(node: &Node, wanted: Wanted) -> Result<Node, SuiteError> {
+fn in_base_units(node: &Node, wanted: Wanted<'_>) -> Result<Node, SuiteError> {
     let item = match &node.item {
         Item::List(list) => {
             Item::List(list.iter().map(|entry| in_base_units(entry, wanted)).collect::<Result<_, _>>()?)
@@ -92,7 +106,7 @@ mod tests {
             ("b", "rad/s", ":2: b: \"90 deg\" is an angle; an angular rate is needed: deg/s, rad/s"),
             ("c", "m/s", ":3: c[0]: \"250 ms\" is a time; a speed is needed: m/s, km/h, kn"),
             ("d", "Hz", ":4: d: \"36 km/h\" is a speed; a frequency is needed: Hz, kHz, MHz, GHz"),
-            ("e", "nT", ":5: e: is \"5 kHz\"; give a bare number"),
+            ("e", "nT", ":5: e: is \"5 kHz\"; give a bare number, or a text in nT, as \"2 nT\""),
             ("g", "rad/s", ":7: g: 3 has no unit; an angular rate needs one: \"3 deg/s\" or \"3 rad/s\""),
         ] {
             assert_eq!(read(key, unit).unwrap_err().to_string(), said);

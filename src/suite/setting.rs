@@ -21,7 +21,7 @@ impl Setting {
     /// What stands at a key, if it is a number: a list can also hold texts and lists.
     pub(super) fn of(key: &Arc<str>, value: &Node, swept: bool) -> Option<Self> {
         let Quantity { value, dimension } = Quantity::of(value).ok()?;
-        let unit = dimension.and_then(Dimension::base_unit).unwrap_or_default();
+        let unit = dimension.and_then(Dimension::base).unwrap_or_default();
         Some(Self { key: Arc::clone(key), value, unit, swept })
     }
 

@@ -30,7 +30,11 @@ pub(super) fn limits(root: &Node) -> Result<Limits, SuiteError> {
         let at = section.at(&e.path().to_string());
         at.error(plain(&e.inner().to_string()))
     })?;
-    limits.check().map_err(|(key, message)| section.at(key).error(message))?;
+    limits.check().map_err(|(key, message)| match section.get(key) {
+        Some(node) => node.error(message),
+        // The default of a limit that is not written, against one that is.
+        None => section.error(format!("`{key}` {message}")),
+    })?;
     Ok(limits)
 }
 

@@ -14,7 +14,7 @@ use super::unit::Dimension;
 use super::velocity::Velocity;
 use crate::gaussian::{Gaussian, checked_covariance};
 
-const LENGTH: Wanted = Wanted::Of(Dimension::Length);
+const LENGTH: Wanted<'_> = Wanted::Of(Dimension::Length);
 
 /// `range`, `bearing`, a spread, and what may go with them.
 #[derive(Debug)]
@@ -141,7 +141,7 @@ impl<'a> Sighting<'a> {
     fn position(&self, layout: Layout<'_>) -> Result<Vec<usize>, SuiteError> {
         let (sensor, places) = (layout.sensor, self.places());
         match (layout.position(), self.elevation) {
-            (None, _) => Ok(free(places, &[])),
+            (None, _) => layout.unnamed_position(places, self.dimension()?, self.range),
             (Some(named), _) if named.len() == places => Ok(named),
             (Some(named), None) => Err(self.section.error(format!(
                 "`elevation` is missing; the sensor `{sensor}` reads a position in space, components {named:?}"
@@ -157,7 +157,7 @@ impl<'a> Sighting<'a> {
         let Some(velocity) = &self.velocity else { return Ok(Vec::new()) };
         let (sensor, speeds) = (layout.sensor, self.speeds());
         match (layout.velocity(), velocity.climb()) {
-            (None, _) => Ok(free(speeds, position)),
+            (None, _) => layout.unnamed_velocity(speeds, position, velocity.place()),
             (Some(named), _) if named.len() == speeds => Ok(named),
             (Some(named), None) => Err(self.section.error(format!(
                 "`climb` is missing; the sensor `{sensor}` reads a velocity in space, components {named:?}"
@@ -278,7 +278,7 @@ mod tests {
             "range = 10\nbearing = \"90 deg\"\nspeed = 4\ncourse = \"180 deg\"\nspeed_sd = 1\ncourse_sd = \"0.5 rad\"\n{more}"
         );
         let root = Node::parse(&text).unwrap();
-        let layout = Layout { sensor: "invented", parameters: &parameters };
+        let layout = Layout { sensor: "invented", parameters: &parameters, outline: None };
         Sighting::read(&root).and_then(|sighting| sighting.gaussian(layout)).map_err(|e| e.to_string())
     }
 

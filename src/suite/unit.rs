@@ -2,6 +2,8 @@
 
 use std::f64::consts::PI;
 
+use crate::wording::proposal;
+
 /// What a quantity measures.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub(super) enum Dimension {
@@ -27,9 +29,12 @@ pub(super) const UNITS: &[(&str, Dimension, f64)] = &[
     ("km", Dimension::Length, 1e3),
     ("cm", Dimension::Length, 1e-2),
     ("mm", Dimension::Length, 1e-3),
+    // The international nautical mile.
+    ("nmi", Dimension::Length, 1852.0),
     ("deg", Dimension::Angle, PI / 180.0),
     ("rad", Dimension::Angle, 1.0),
     ("mrad", Dimension::Angle, 1e-3),
+    ("°", Dimension::Angle, PI / 180.0),
     ("s", Dimension::Time, 1.0),
     ("ms", Dimension::Time, 1e-3),
     ("us", Dimension::Time, 1e-6),
@@ -49,19 +54,40 @@ pub(super) const UNITS: &[(&str, Dimension, f64)] = &[
     ("%", Dimension::Share, 1e-2),
 ];
 
+/// What units are called elsewhere, and what they are here.
+const ELSEWHERE: &[(&str, &[&str])] = &[
+    ("m", &["meter", "meters", "metre", "metres"]),
+    ("nmi", &["NM", "nm", "M", "sm"]),
+    ("deg", &["degree", "degrees", "degs"]),
+    ("rad", &["radian", "radians", "rads"]),
+    ("s", &["sec", "secs", "second", "seconds"]),
+    ("min", &["mins", "minute", "minutes"]),
+    ("h", &["hr", "hrs", "hour", "hours"]),
+    ("m/s", &["mps"]),
+    ("km/h", &["kmh", "kph", "kmph"]),
+    ("kn", &["knot", "knots", "kt", "kts"]),
+    ("%", &["percent", "pct"]),
+];
+
+/// `did you mean `kn`? ` or nothing, of a unit that is not known.
+pub(super) fn meant(unit: &str) -> String {
+    let called = ELSEWHERE.iter().find(|(_, names)| names.contains(&unit)).map(|(known, _)| *known);
+    called.map_or_else(|| proposal(unit, UNITS.iter().map(|u| u.0)), |known| format!("did you mean `{known}`? "))
+}
+
 impl Dimension {
     /// Every one, in the order of [`UNITS`].
     pub(super) const ALL: [Self; 7] =
         [Self::Length, Self::Angle, Self::Time, Self::Speed, Self::AngularRate, Self::Frequency, Self::Share];
 
-    /// The unit in which its numbers are kept; a share has none.
-    pub(super) fn base_unit(self) -> Option<&'static str> {
-        UNITS.iter().find(|u| u.1 == self && u.2 == 1.0).map(|u| u.0)
-    }
-
     /// The dimension that `unit` is the base unit of.
     pub(super) fn of_base(unit: &str) -> Option<Self> {
         UNITS.iter().find(|u| u.0 == unit && u.2 == 1.0).map(|u| u.1)
+    }
+
+    /// Its base unit; a share has none.
+    pub(super) fn base(self) -> Option<&'static str> {
+        UNITS.iter().find(|u| u.1 == self && u.2 == 1.0).map(|u| u.0)
     }
 
     /// Its name with an article.
@@ -98,7 +124,7 @@ impl Dimension {
 
     /// A value in base units, written with a unit.
     pub(super) fn write(self, value: f64) -> String {
-        match self.base_unit() {
+        match self.base() {
             Some(unit) => format!("\"{value} {unit}\""),
             None => format!("\"{} %\"", 100.0 * value),
         }
@@ -125,5 +151,16 @@ mod tests {
         for (i, unit) in UNITS.iter().enumerate() {
             assert!(UNITS[..i].iter().all(|other| other.0 != unit.0), "{}", unit.0);
         }
+    }
+
+    #[test]
+    fn what_units_are_called_elsewhere_is_none_of_them() {
+        for (unit, names) in ELSEWHERE {
+            assert!(UNITS.iter().any(|u| u.0 == *unit), "{unit}");
+            assert!(names.iter().all(|name| UNITS.iter().all(|u| u.0 != *name)), "{names:?}");
+        }
+        assert_eq!(meant("knots"), "did you mean `kn`? ");
+        assert_eq!(meant("m/ss"), "did you mean `m/s`? ");
+        assert_eq!(meant("furlong"), "");
     }
 }

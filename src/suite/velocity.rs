@@ -9,8 +9,8 @@ use super::quantity::{Quantity, Wanted, checked_sd};
 use super::unit::Dimension;
 
 const KEYS: [&str; 6] = ["speed", "speed_sd", "course", "course_sd", "climb", "climb_sd"];
-const SPEED: Wanted = Wanted::Of(Dimension::Speed);
-const ANGLE: Wanted = Wanted::Of(Dimension::Angle);
+const SPEED: Wanted<'_> = Wanted::Of(Dimension::Speed);
+const ANGLE: Wanted<'_> = Wanted::Of(Dimension::Angle);
 
 /// `speed`, `course`, their standard deviations, and perhaps a climb.
 #[derive(Debug)]
@@ -41,6 +41,11 @@ impl<'a> Velocity<'a> {
             )),
         };
         Ok(Some(Self { speed, course, speed_sd, course_sd, climb }))
+    }
+
+    /// Where it stands.
+    pub(super) fn place(&self) -> &'a Node {
+        self.speed
     }
 
     /// Where the climb stands, if there is one.

@@ -18,6 +18,8 @@ pub struct Summary {
     pub floor_open: usize,
     /// Cases whose reference fell short of the asked precision at the cap.
     pub wide: usize,
+    /// Largest standardised standard error of a reference that bears verdicts; `None` if none does.
+    pub worst_error: Option<f64>,
     /// Cases whose reference is refused: a moment does not exist, or cannot be had by sampling.
     pub refused: usize,
     /// Cases whose reference an independent plain estimate disputes.
@@ -73,6 +75,12 @@ pub fn summarise(survey: &SurveyResult<'_>) -> Summary {
         beyond_gaussian: count(&|c| c.floor_standing == Standing::Broken),
         floor_open: count(&|c| c.floor_standing == Standing::Open && c.floor != Floor::NoiseInside),
         wide: count(&|c| c.reference.soundness == Soundness::Wide),
+        worst_error: survey
+            .cases
+            .iter()
+            .filter(|c| c.reference.soundness.bears_verdicts())
+            .map(|c| c.reference.worst_error)
+            .max_by(f64::total_cmp),
         refused: count(&|c| c.reference.soundness == Soundness::Refused),
         disputed: count(&|c| c.reference.soundness == Soundness::Disputed),
         heavy_tailed: count(&|c| c.reference.soundness == Soundness::HeavyTailed),

@@ -12,6 +12,10 @@ use crate::suite::{Case, Suite};
 const ROUNDS: usize = 11;
 /// A batch of transforms lasts at least this long, well above the clock's step.
 const BATCH: Duration = Duration::from_micros(10);
+/// One transform for so many of a batch is run before it.
+const WARM_UP_SHARE: u32 = 8;
+/// A transform that takes this long warms itself: what cold caches add is lost in it.
+const WARMS_ITSELF: Duration = Duration::from_micros(100);
 /// Cases timed in a suite, evenly chosen where there are more.
 const TIMED_CASES: usize = 240;
 /// How long the transforms of one method run on all threads.
@@ -124,36 +128,80 @@ impl<'a> Bench<'a> {
         clock.elapsed().as_secs_f64() * 1e9 / f64::from(batch)
     }
 
-    /// A batch long enough for the clock; warms caches and branch predictors on the way.
-    fn batch(&mut self) -> u32 {
-        let mut batch = 1;
-        while self.time(batch) * f64::from(batch) < BATCH.as_secs_f64() * 1e9 && batch < 1 << 20 {
-            batch *= 2;
+    /// As [`Bench::time`], after transforms that are not timed: what ran before has left caches and branch predictors to
+    /// itself, and with a rule of many nodes before it a first-order Taylor transform alone took eighteen times its time.
+    fn warmed(&mut self, pace: Pace) -> f64 {
+        for _ in 0..pace.warm_up {
+            self.once();
         }
-        batch
+        self.time(pace.batch)
+    }
+
+    /// How to time it, found by trying; the better of two tries, for the first is a cold one.
+    fn pace(&mut self) -> Pace {
+        Pace::of(|batch| self.time(batch).min(self.time(batch)))
+    }
+}
+
+/// How many transforms are run before a batch, and in it.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+struct Pace {
+    warm_up: u32,
+    batch: u32,
+}
+
+impl Pace {
+    /// For transforms of which each takes `time` \[ns\] in a batch of so many: the batch is long enough for the clock. One
+    /// that is long warms itself.
+    fn of(mut time: impl FnMut(u32) -> f64) -> Self {
+        let nanoseconds = |duration: Duration| duration.as_secs_f64() * 1e9;
+        let mut batch = 1;
+        let each = loop {
+            let each = time(batch);
+            if each * f64::from(batch) >= nanoseconds(BATCH) || batch >= 1 << 20 {
+                break each;
+            }
+            batch *= 2;
+        };
+        let warm_up = if each >= nanoseconds(WARMS_ITSELF) { 0 } else { batch.div_ceil(WARM_UP_SHARE) };
+        Self { warm_up, batch }
     }
 }
 
 fn time_case(case: &Case, methods: &[MethodSpec]) -> Vec<Option<Cost>> {
-    let baseline = MethodSpec::parse(BASELINE).ok().and_then(|m| Bench::new(case, &m));
-    let Some(mut baseline) = baseline else { return vec![None; methods.len()] };
-    let baseline_batch = baseline.batch();
-    let mut benches: Vec<Option<(Bench<'_>, u32)>> = methods
+    let Ok(baseline) = MethodSpec::parse(BASELINE) else { return vec![None; methods.len()] };
+    // The baseline once: where it is among the methods, what is measured of it is the unit, too.
+    let mut timed = methods.to_vec();
+    let unit = timed.iter().position(|m| m.label() == baseline.label()).unwrap_or_else(|| {
+        timed.push(baseline);
+        methods.len()
+    });
+    let mut benches: Vec<Option<(Bench<'_>, Pace)>> = timed
         .iter()
-        .map(|m| {
-            let mut bench = Bench::new(case, m)?;
-            let batch = bench.batch();
-            Some((bench, batch))
+        .map(|method| {
+            let mut bench = Bench::new(case, method)?;
+            let pace = bench.pace();
+            Some((bench, pace))
         })
         .collect();
-    let mut times = vec![Vec::with_capacity(ROUNDS); methods.len()];
+    let mut costs = in_turn(benches.len(), unit, |m| {
+        let (bench, pace) = benches[m].as_mut()?;
+        Some(bench.warmed(*pace))
+    });
+    costs.truncate(methods.len());
+    costs
+}
+
+/// Costs by `time` \[ns\] of each of `count`, asked in turn, round by round, as a ratio to that of `unit` in the same round;
+/// `None` where either has no time.
+fn in_turn(count: usize, unit: usize, mut time: impl FnMut(usize) -> Option<f64>) -> Vec<Option<Cost>> {
+    let mut times = vec![Vec::with_capacity(ROUNDS); count];
     let mut ratios = times.clone();
     for _ in 0..ROUNDS {
-        let unit = baseline.time(baseline_batch);
-        for (m, bench) in benches.iter_mut().enumerate() {
-            if let Some((bench, batch)) = bench {
-                let time = bench.time(*batch);
-                times[m].push(time);
+        let round: Vec<Option<f64>> = (0..count).map(&mut time).collect();
+        for (m, time) in round.iter().enumerate() {
+            if let (Some(time), Some(unit)) = (time, round[unit]) {
+                times[m].push(*time);
                 ratios[m].push(time / unit);
             }
         }
@@ -218,5 +266,59 @@ mod tests {
         let found = Quartiles::of((1..=10).rev().map(f64::from).collect());
         assert_eq!(found, Some(Quartiles { lower: 3.25, median: 5.5, upper: 7.75 }));
         assert_eq!(Quartiles::of(Vec::new()), None);
+    }
+
+    /// A machine on which method `m` takes `times[m]` in a batch, all of them longer from round to round.
+    fn slowing(times: &[Option<f64>]) -> impl FnMut(usize) -> Option<f64> + '_ {
+        let mut asked = 0;
+        move |m| {
+            let round = asked / times.len();
+            asked += 1;
+            times[m].map(|time| time * (1.0 + round as f64))
+        }
+    }
+
+    #[test]
+    fn a_ratio_is_to_the_unit_of_its_round_in_any_order() {
+        let orders = [[0, 1, 2, 3], [3, 2, 1, 0], [2, 0, 3, 1]];
+        for order in orders {
+            let times = order.map(|method| [Some(8.0), Some(32.0), Some(8e6), None][method]);
+            let unit = order.iter().position(|&method| method == 0).unwrap();
+            let costs = in_turn(4, unit, slowing(&times));
+            let alike = |v| Quartiles { lower: v, median: v, upper: v };
+            for (method, ratio) in [Some(1.0), Some(4.0), Some(1e6), None].into_iter().enumerate() {
+                let place = order.iter().position(|&m| m == method).unwrap();
+                assert_eq!(costs[place].map(|cost| cost.ratio), ratio.map(alike), "{order:?}: method {method}");
+            }
+            // Rounds 1 to 11 times 8 ns: the sixth.
+            assert_eq!(costs[unit].unwrap().nanoseconds.median, 48.0);
+        }
+        assert_eq!(in_turn(2, 1, |m| (m == 0).then_some(1.0)), [None, None], "no unit, no ratio");
+    }
+
+    #[test]
+    fn first_order_taylor_is_its_own_unit_wherever_it_stands() {
+        let text = "[sensor]\nkind = \"range-only\"\nstation = [0, 0]\n[prior]\nmean = [3, 4]\nsd = [1, 1]\n";
+        let suite = Suite::from_text("near", "near.toml", text, None).unwrap();
+        for labels in [&["taylor-1", "gauss-hermite:order=15"][..], &["gauss-hermite:order=15", "taylor-1"]] {
+            let methods: Vec<_> = labels.iter().map(|label| MethodSpec::parse(label).unwrap()).collect();
+            let timing = time_methods(&suite, &methods);
+            let at = labels.iter().position(|&label| label == BASELINE).unwrap();
+            let one = Quartiles { lower: 1.0, median: 1.0, upper: 1.0 };
+            assert_eq!(timing.cases[0].1[at].unwrap().ratio, one, "the same measurement, not one like it");
+            assert_eq!(timing.ratio[at], Some(one));
+        }
+        let without = time_methods(&suite, &[MethodSpec::parse("unscented").unwrap()]);
+        assert!(without.cases[0].1.len() == 1 && without.ratio[0].is_some());
+    }
+
+    #[test]
+    fn what_is_short_is_warmed_and_repeated() {
+        let pace = |each: f64| Pace::of(move |_| each);
+        assert_eq!(pace(100.0), Pace { warm_up: 16, batch: 128 });
+        assert_eq!(pace(9e3), Pace { warm_up: 1, batch: 2 });
+        assert_eq!(pace(5e4), Pace { warm_up: 1, batch: 1 });
+        assert_eq!(pace(3e6), Pace { warm_up: 0, batch: 1 });
+        assert_eq!(Pace::of(|_| 0.0), Pace { warm_up: 1 << 17, batch: 1 << 20 }, "a clock that stands still");
     }
 }

@@ -63,12 +63,12 @@ impl Limits {
         if let Some((key, value)) = positive.into_iter().find(|(_, v)| !(*v > 0.0 && v.is_finite())) {
             return Err((key, format!("is {value}; a limit is a number above 0")));
         }
-        for (key, low, high) in [
-            ("variance_ratio_low", self.variance_ratio_low, self.variance_ratio_high),
-            ("nees_ratio_low", self.nees_ratio_low, self.nees_ratio_high),
+        for (key, low, upper, high) in [
+            ("variance_ratio_low", self.variance_ratio_low, "variance_ratio_high", self.variance_ratio_high),
+            ("nees_ratio_low", self.nees_ratio_low, "nees_ratio_high", self.nees_ratio_high),
         ] {
             if low >= high {
-                return Err((key, format!("is {low}, not below its upper limit {high}")));
+                return Err((key, format!("is {low}, not below `{upper}`, which is {high}")));
             }
         }
         if !(self.confidence > 0.5 && self.confidence < 1.0) {

@@ -112,11 +112,11 @@ fn suites_and_files_that_are_not_there_are_named() {
 fn options_that_cannot_be_meant_are_refused() {
     let desk = Desk::new();
     for (option, value, start, word) in [
-        ("--precision", "0", "suite `smoke`: precision 0 ", "above 0 and below 1"),
-        ("--precision", "-1", "suite `smoke`: precision -1 ", "above 0 and below 1"),
-        ("--precision", "nan", "suite `smoke`: precision NaN ", "above 0 and below 1"),
-        ("--precision", "1", "suite `smoke`: precision 1 ", "above 0 and below 1"),
-        ("--cap", "1000", "suite `smoke`: a cap of 1000 samples ", "at least 8192"),
+        ("--precision", "0", "--precision: precision 0 ", "above 0 and below 1"),
+        ("--precision", "-1", "--precision: precision -1 ", "above 0 and below 1"),
+        ("--precision", "nan", "--precision: precision NaN ", "above 0 and below 1"),
+        ("--precision", "1", "--precision: precision 1 ", "above 0 and below 1"),
+        ("--cap", "1000", "--cap: a cap of 1000 samples ", "at least 8192"),
         (
             "--methods",
             "tailor-1",
@@ -125,7 +125,7 @@ fn options_that_cannot_be_meant_are_refused() {
         ),
         ("--methods", "unscented:kapa=1", "--methods unscented:kapa=1: kapa: ", "`kappa`"),
         ("--methods", "gauss-hermite:order=21", "--methods gauss-hermite:order=21: order: ", "2 to 20"),
-        ("--methods", "taylor-1,taylor-1", "suite `smoke`: method `taylor-1` stands twice", ""),
+        ("--methods", "taylor-1,taylor-1", "--methods: method `taylor-1` stands twice", ""),
     ] {
         let option = format!("{option}={value}");
         assert_said(&desk.refuse(&["survey", "smoke", "--out", "out", &option]), start, word);

@@ -1,6 +1,7 @@
 //! The catalogue lists everything that can be named.
 
 use gaussworthy::score::ScoreKind;
+use gaussworthy::suite::{Case, Suite};
 use gaussworthy::{method, sensor};
 
 use crate::contract::{CaseRecord, MomentsRecord};
@@ -65,7 +66,7 @@ fn a_sensor_is_shown_whole() {
         for (key, unit) in kind.quantities {
             assert!(flat.contains(&format!("{key} in {unit}")), "{key} is missing in {page}");
         }
-        for symbol in ["x:", "p:", "':", "rows x columns", "[rad, angular]:"] {
+        for symbol in ["x:", "q:", "p:", "':", "rows x columns", "[rad, angular]:"] {
             assert!(flat.contains(symbol), "{} does not say what {symbol} is: {page}", kind.name);
         }
     }
@@ -155,6 +156,22 @@ fn a_name_that_is_not_there_is_answered_with_the_nearest() {
     ] {
         let said = desk.refuse(&["catalogue", shelf, name]);
         assert!(said.starts_with(start) && said.ends_with(end), "{said}");
+    }
+}
+
+/// The suite to start from is the case to start from.
+#[test]
+fn every_example_is_a_suite_too() {
+    let desk = Desk::new();
+    for kind in sensor::KINDS {
+        let page = desk.succeed(&["catalogue", "sensors", kind.name]);
+        let start = page.find("\n[sensor]\n").unwrap_or_else(|| panic!("{page}"));
+        let end = page[start..].find("\n\n  The same as a case record").unwrap_or_else(|| panic!("{page}"));
+        let suite = Suite::from_text("pasted", "pasted.toml", &page[start..start + end], None);
+        let suite = suite.unwrap_or_else(|e| panic!("{}: {e}\n{page}", kind.name));
+        let example = Case::from_json(serde_json::from_str(kind.example).unwrap()).unwrap();
+        assert_eq!(suite.cases.len(), 1);
+        assert_eq!(suite.cases[0].question(), example.question(), "{}", kind.name);
     }
 }
 

@@ -168,3 +168,29 @@ fn the_cases_of_a_survey_fed_back_give_the_same_answers() {
     assert_eq!(names(&desk.path("again")), [".references", "cases"]);
     assert_same(&desk, "first/smoke", "again/cases");
 }
+
+/// Two suites of one name share a folder: what is replaced is said, and it is no error, for a suite that is edited has its name.
+#[test]
+fn results_of_another_suite_of_the_name_are_replaced_with_a_word() {
+    let desk = Desk::new();
+    let suite = |sd: f64| {
+        format!("[sensor]\nkind = \"linear\"\nH = [[1]]\n[prior]\nmean = [0]\nsd = [{sd}]\n[noise]\nsd = 1\n")
+    };
+    for (folder, sd) in [("a", 1.0), ("b", 2.0)] {
+        std::fs::create_dir_all(desk.path(folder)).unwrap();
+        desk.write(&format!("{folder}/mine.toml"), &suite(sd));
+    }
+    let said = |path: &str| desk.run(&["survey", path, "--no-timing", "--out", "out"]).err;
+    let word =
+        "holds results of another suite of this name, or of this one before it was changed; they are replaced";
+    for (path, replaced) in
+        [("a/mine.toml", false), ("a/mine.toml", false), ("b/mine.toml", true), ("b/mine.toml", false)]
+    {
+        let said = said(path);
+        assert_eq!(
+            said.lines().filter(|line| line.ends_with(word)).count(),
+            usize::from(replaced),
+            "{path}: {said}"
+        );
+    }
+}

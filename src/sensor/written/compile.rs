@@ -14,6 +14,8 @@ struct Grammar;
 
 /// Longest formula, in bytes: a longer one wants definitions.
 const LONGEST: usize = 4096;
+/// Most characters of a formula that are shown of a line.
+const WIDEST: usize = 80;
 /// Deepest nesting of parentheses.
 const DEEPEST: usize = 48;
 /// Largest size of a whole exponent that is worked by multiplication.
@@ -38,10 +40,24 @@ impl Flaw {
             0 => format!("column {}", column + 1),
             lines => format!("line {}, column {} of the formula", lines + 1, column + 1),
         };
-        let line: String = line.chars().map(|c| if is_line_breaking(c) { ' ' } else { c }).collect();
+        let line: Vec<char> = line.chars().map(|c| if is_line_breaking(c) { ' ' } else { c }).collect();
+        let (line, column) = around(&line, column);
         let blank = " ".repeat(column);
         format!("{place}: {}{EXCERPT}{line}{EXCERPT}{blank}^", self.message)
     }
+}
+
+/// The part of a line around a column of it that fits a terminal, and where the column is there.
+fn around(line: &[char], column: usize) -> (String, usize) {
+    if line.len() <= WIDEST {
+        return (line.iter().collect(), column);
+    }
+    let start = column.saturating_sub(WIDEST / 2).min(line.len() - WIDEST);
+    let end = start + WIDEST;
+    // Two dots stand for what is not shown.
+    let (before, after) = (if start > 0 { ".. " } else { "" }, if end < line.len() { " .." } else { "" });
+    let part: String = line[start..end].iter().collect();
+    (format!("{before}{part}{after}"), before.len() + column - start)
 }
 
 /// Every name in a formula, functions and constants included.
@@ -54,6 +70,12 @@ pub(super) fn names_in(text: &str) -> Result<BTreeSet<String>, Flaw> {
 fn parse(text: &str) -> Result<Pairs<'_, Rule>, Flaw> {
     check_size(text)?;
     Grammar::parse(Rule::formula, text).map_err(|e| flaw_of(text, &e))
+}
+
+/// The expression of a parsed formula, which holds it and the end.
+fn expression(mut parsed: Pairs<'_, Rule>) -> Result<Pair<'_, Rule>, Flaw> {
+    let expression = parsed.next().and_then(|formula| formula.into_inner().next());
+    expression.ok_or_else(|| Flaw { at: 0, message: "is empty".into() })
 }
 
 /// What a name or a part of a formula stands for.
@@ -77,21 +99,25 @@ enum Condition {
 #[derive(Debug, Default)]
 pub(super) struct Compiler {
     pub program: Program,
-    names: HashMap<String, usize>,
+    names: HashMap<String, Value>,
 }
 
 impl Compiler {
     /// Makes `name` stand for the value at `place`.
     pub fn define(&mut self, name: &str, place: usize) {
-        self.names.insert(name.into(), place);
+        self.names.insert(name.into(), Value::Number(place));
+    }
+
+    /// Makes `name` stand for a formula, or for a condition.
+    pub fn definition(&mut self, name: &str, text: &str) -> Result<(), Flaw> {
+        let value = self.value(expression(parse(text)?)?)?;
+        self.names.insert(name.into(), value);
+        Ok(())
     }
 
     /// Compiles a formula and returns the place of its value.
     pub fn formula(&mut self, text: &str) -> Result<usize, Flaw> {
-        let mut parsed = parse(text)?;
-        // `formula` holds one expression and the end.
-        let whole = parsed.next().and_then(|formula| formula.into_inner().next());
-        whole.map_or_else(|| Err(Flaw { at: 0, message: "is empty".into() }), |whole| self.number(whole))
+        self.number(expression(parse(text)?)?)
     }
 
     fn number(&mut self, pair: Pair<'_, Rule>) -> Result<usize, Flaw> {
@@ -124,7 +150,7 @@ impl Compiler {
                 let value = value.ok_or_else(|| Flaw { at, message: "is too large for a number".into() })?;
                 Ok(Value::Number(self.program.push(Step::Constant(value))))
             }
-            Rule::name => self.name(pair.as_str(), at).map(Value::Number),
+            Rule::name => self.name(pair.as_str(), at),
             Rule::call => self.call(pair).map(Value::Number),
             Rule::power => self.power(pair),
             Rule::negation | Rule::signed | Rule::exponent => self.prefixed(pair),
@@ -132,12 +158,12 @@ impl Compiler {
         }
     }
 
-    fn name(&mut self, name: &str, at: usize) -> Result<usize, Flaw> {
-        if let Some(&place) = self.names.get(name) {
-            return Ok(place);
+    fn name(&mut self, name: &str, at: usize) -> Result<Value, Flaw> {
+        if let Some(value) = self.names.get(name) {
+            return Ok(value.clone());
         }
         if let Some((_, value)) = CONSTANTS.iter().find(|(constant, _)| *constant == name) {
-            return Ok(self.program.push(Step::Constant(*value)));
+            return Ok(Value::Number(self.program.push(Step::Constant(*value))));
         }
         if name == IF || FUNCTIONS.iter().any(|f| f.name == name) {
             return Err(Flaw { at, message: format!("`{name}` is a function; give its arguments in parentheses") });
@@ -361,6 +387,10 @@ fn flaw_of(text: &str, e: &pest::error::Error<Rule>) -> Flaw {
     let wants_operand = matches!(&e.variant, ErrorVariant::ParsingError { positives, .. }
         if !positives.iter().all(is_operator));
     let open = text[..at].matches('(').count() > text[..at].matches(')').count();
+    let start = text.len() - rest.len();
+    if let Some(message) = foreign(&text[..start], rest, wants_operand) {
+        return Flaw { at: start, message };
+    }
     let found = match rest.chars().next() {
         None if text.trim().is_empty() => "is empty".to_owned(),
         None => "the formula ends here".to_owned(),
@@ -375,5 +405,29 @@ fn flaw_of(text: &str, e: &pest::error::Error<Rule>) -> Flaw {
         (false, true) => "an operator, `,` or `)` is needed",
         (false, false) => "an operator or the end is needed",
     };
-    Flaw { at: text.len() - rest.len(), message: format!("{found}; {wanted}") }
+    Flaw { at: start, message: format!("{found}; {wanted}") }
+}
+
+/// What to say of the spelling of another language at the beginning of `rest`, if it is one; `before` is what could be read.
+fn foreign(before: &str, rest: &str, wants_operand: bool) -> Option<String> {
+    let comparator = rest.starts_with(['<', '>']) || rest.starts_with("==") || rest.starts_with("!=");
+    let word = rest.starts_with(|c: char| c.is_alphabetic() || c == '_');
+    let number = before.trim_end().rsplit(|c: char| !(c.is_alphanumeric() || "_.".contains(c))).next();
+    let number = number.filter(|token| token.starts_with(|c: char| c.is_ascii_digit() || c == '.'));
+    Some(match rest {
+        _ if rest.starts_with('*') && before.ends_with('*') => "a power is written with `^`, as in x^2".into(),
+        _ if rest.starts_with('&') => "a condition is joined by `and`, as in x > 0 and y > 0".into(),
+        _ if rest.starts_with('|') => "a condition is joined by `or`, as in x > 0 or y > 0".into(),
+        _ if rest.starts_with('!') && !comparator => "a condition is turned round by `not`, as in not x > 0".into(),
+        _ if rest.starts_with('=') && !comparator => "two numbers are compared by `==`".into(),
+        _ if comparator && !wants_operand => "comparisons do not chain; join two, as in 0 < x and x < 3".into(),
+        _ if word && !wants_operand => {
+            let number = number?;
+            format!(
+                "a number in a formula has no unit; make the quantity a parameter, as in parameters = {{ limit = \"{number} m\" }}, \
+                 or write a product with `*`"
+            )
+        }
+        _ => return None,
+    })
 }

@@ -1,6 +1,7 @@
 //! Sensors that are written out as formulas in a suite or a case record.
 
 mod compile;
+mod component;
 mod functions;
 mod program;
 
@@ -8,13 +9,15 @@ use std::collections::{BTreeMap, BTreeSet};
 
 use serde::{Deserialize, Serialize};
 
-use self::compile::{Compiler, names_in};
+use self::compile::{Compiler, Flaw, names_in};
+use self::component::Component;
 use self::functions::{CONSTANTS, FUNCTIONS, IF};
 use self::program::{Program, Step};
 use super::kinds::{Kind, built};
 use super::parameter::read_components;
 use super::{Formula, Number, Output, ParameterError};
 use crate::lanes::Simd;
+use crate::wording::proposal;
 
 pub(super) const KIND: Kind = Kind {
     name: "formula",
@@ -24,7 +27,9 @@ pub(super) const KIND: Kind = Kind {
               atan, atan2, hypot, exp, ln, log10, sinh, cosh, tanh, abs, min, max, if(condition, a, b). Constants: pi, e. \
               Angles are radians",
     parameters: "state: n names; outputs: p of {name, formula, unit = \"\", angular = false}; parameters {name = number} = \
-                 none; definitions {name = formula} = none, in any order; noise: q names = none",
+                 none; definitions {name = formula or condition} = none, in any order; noise: q names = none. In a suite a \
+                 component of state or noise may be {name, unit}, and position and velocity name the components that are \
+                 meant by a prior in range, bearing, speed and course",
     quantities: &[],
     source: "the author's own",
     example: r#"{"case":"echo","sensor":{"state":["x","y"],"parameters":{"sx":0,"sy":0},"noise":["haze"],"definitions":{"dx":"x - sx","dy":"y - sy","r":"hypot(dx, dy)"},"outputs":[{"name":"range","formula":"r * (1 + haze)","unit":"m"},{"name":"bearing","formula":"atan2(dy, dx)","angular":true}]},"prior":{"mean":[3000,1000],"covariance":[[2500,0],[0,40000]]},"noise":{"covariance":[[4,0],[0,2.7e-5]],"inside":{"covariance":0.0004}}}"#,
@@ -32,7 +37,8 @@ pub(super) const KIND: Kind = Kind {
 };
 
 /// A sensor written out as formulas: y_j = f_j(x, v) of named state components x, named noise v inside, parameters and
-/// definitions.
+/// definitions. A definition may be a condition. What no formula names is refused, but for state components, of which a
+/// sensor may read a few.
 ///
 /// Operators by rising strength: `or`; `and`; `not`; `< <= > >= == !=`; `+ -`; `* /`; signs; `^`. Functions: sqrt, sin, cos,
 /// tan, asin, acos, atan, atan2, hypot, exp, ln, log10, sinh, cosh, tanh, abs, min, max, and if(condition, a, b). Constants:
@@ -53,11 +59,11 @@ pub struct Written {
 #[derive(Debug, Clone, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub(super) struct Parameters {
-    state: Vec<String>,
+    state: Vec<Component>,
     #[serde(default, skip_serializing_if = "BTreeMap::is_empty")]
     parameters: BTreeMap<String, f64>,
     #[serde(default, skip_serializing_if = "Vec::is_empty")]
-    noise: Vec<String>,
+    noise: Vec<Component>,
     #[serde(default, skip_serializing_if = "BTreeMap::is_empty")]
     definitions: BTreeMap<String, String>,
     outputs: Vec<WrittenOutput>,
@@ -89,12 +95,15 @@ impl Written {
         let mut names = Names::default();
         let mut compiler = Compiler::default();
         for (key, list, first) in [("state", &p.state, 0), ("noise", &p.noise, n)] {
-            for (k, name) in list.iter().enumerate() {
-                names.take(name, format!("{key}[{k}]"))?;
+            for (k, Component { name, unit }) in list.iter().enumerate() {
+                let key = format!("{key}[{k}]");
+                check_unit(unit).map_err(|message| ParameterError::new(format!("{key}.unit"), message))?;
+                names.take(name, key)?;
                 let place = compiler.program.push(Step::Input(first + k));
                 compiler.define(name, place);
             }
         }
+        let mut used = Used::default();
         for (name, &value) in &p.parameters {
             let key = format!("parameters.{name}");
             names.take(name, key.clone())?;
@@ -104,15 +113,24 @@ impl Written {
             let place = compiler.program.push(Step::Constant(value));
             compiler.define(name, place);
         }
-        define(&p.definitions, &mut names, &mut compiler)?;
+        define(&p.definitions, &mut names, &mut compiler, &mut used)?;
         let mut results = Vec::with_capacity(p.outputs.len());
         let mut outputs: Vec<Output> = Vec::with_capacity(p.outputs.len());
         for (j, output) in p.outputs.into_iter().enumerate() {
-            let place = compiler.formula(&output.formula).map_err(|flaw| {
-                ParameterError::new(format!("outputs[{j}].formula"), flaw.shown_in(&output.formula))
-            })?;
-            results.push(place);
+            let flawed =
+                |flaw: Flaw| ParameterError::new(format!("outputs[{j}].formula"), flaw.shown_in(&output.formula));
+            used.0.extend(names_in(&output.formula).map_err(flawed)?);
+            results.push(compiler.formula(&output.formula).map_err(flawed)?);
             outputs.push(checked_output(j, output, &outputs)?);
+        }
+        for name in p.parameters.keys() {
+            used.check("parameter", name, format!("parameters.{name}"))?;
+        }
+        for name in p.definitions.keys() {
+            used.check("definition", name, format!("definitions.{name}"))?;
+        }
+        for (k, variable) in p.noise.iter().enumerate() {
+            used.check("noise variable", &variable.name, format!("noise[{k}]"))?;
         }
         let mut program = compiler.program;
         let mut reads = program.finish(&results);
@@ -120,7 +138,7 @@ impl Written {
             // A sensor needs an input.
             reads = read_components(n, |_| false);
         }
-        Ok(Self { program, reads, noise: p.noise, outputs })
+        Ok(Self { program, reads, noise: p.noise.into_iter().map(|v| v.name).collect(), outputs })
     }
 }
 
@@ -129,12 +147,14 @@ fn define(
     definitions: &BTreeMap<String, String>,
     names: &mut Names,
     compiler: &mut Compiler,
+    used: &mut Used,
 ) -> Result<(), ParameterError> {
     let key = |name: &str| format!("definitions.{name}");
     let mut waiting = Vec::new();
     for (name, formula) in definitions {
         names.take(name, key(name))?;
         let needs = names_in(formula).map_err(|flaw| ParameterError::new(key(name), flaw.shown_in(formula)))?;
+        used.0.extend(needs.iter().cloned());
         waiting.push((name, formula, needs));
     }
     while !waiting.is_empty() {
@@ -148,9 +168,9 @@ fn define(
             return Err(ParameterError::new(key(name), message));
         }
         for (name, formula, _) in ready {
-            let place =
-                compiler.formula(formula).map_err(|flaw| ParameterError::new(key(name), flaw.shown_in(formula)))?;
-            compiler.define(name, place);
+            compiler
+                .definition(name, formula)
+                .map_err(|flaw| ParameterError::new(key(name), flaw.shown_in(formula)))?;
         }
         waiting = rest;
     }
@@ -166,13 +186,18 @@ fn checked_output(j: usize, output: WrittenOutput, before: &[Output]) -> Result<
     if before.iter().any(|known| known.name == name) {
         return Err(error("name", format!("an output `{name}` stands before it already; rename one")));
     }
-    if unit.chars().any(char::is_control) {
-        return Err(error("unit", format!("{unit:?} is no unit; give printable characters")));
-    }
+    check_unit(&unit).map_err(|message| error("unit", message))?;
     match (angular, unit.as_str()) {
         (true, "" | "rad") => Ok(Output::angle(name)),
         (true, _) => Err(error("unit", format!("is \"{unit}\", but an angular output is in \"rad\""))),
         (false, _) => Ok(Output::plain(name, unit)),
+    }
+}
+
+fn check_unit(unit: &str) -> Result<(), String> {
+    match unit.chars().any(char::is_control) {
+        true => Err(format!("{unit:?} is no unit; give printable characters")),
+        false => Ok(()),
     }
 }
 
@@ -198,6 +223,24 @@ impl Names {
             }
             None => Ok(()),
         }
+    }
+}
+
+/// Every name that a formula uses.
+#[derive(Debug, Default)]
+struct Used(BTreeSet<String>);
+
+impl Used {
+    /// What nobody uses was meant to be used: a parameter with a slip in its name, a noise that is forgotten.
+    fn check(&self, what: &str, name: &str, key: String) -> Result<(), ParameterError> {
+        if self.0.contains(name) {
+            return Ok(());
+        }
+        let near = proposal(name, self.0.iter().map(String::as_str));
+        Err(ParameterError::new(
+            key,
+            format!("the {what} `{name}` is named in no formula; {near}name it, or delete it"),
+        ))
     }
 }
 
