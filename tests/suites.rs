@@ -194,7 +194,7 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         (with("", "[limits]\nnees_ratio_high = 0.5\n"), "x.toml:10: limits: `nees_ratio_low` is 0.9, not below `nees_ratio_high`, which is 0.5".into()),
         (with("", "[limits]\nvariance_ratio_low = 2\n"), "x.toml:11: limits.variance_ratio_low: is 2, not below `variance_ratio_high`, which is 1.25".into()),
         (with("", "[limits]\nfloor = \"much\"\n"), "x.toml:11: limits.floor: is the text \"much\"; give a number".into()),
-        (with("", "[method]\nid = \"taylor-1\"\n"), "x.toml:10: method: is a table; give a list [..], as [[method]]".into()),
+        (with("", "[method]\nid = \"taylor-1\"\n"), "x.toml:10: method: is a table; give a list [..], as [[method]], or method = \"every\"".into()),
         (with("", "[[method]]\nid = \"taylor-1\"\n[[method]]\nid = \"taylor-1\"\n"), "x.toml:12: method[1]: `taylor-1` stands on line 10 already; delete one".into()),
     ]
     .into();

@@ -5,7 +5,7 @@ use std::path::PathBuf;
 
 use anyhow::{Context, anyhow};
 use clap::Args;
-use gaussworthy::method::MethodSpec;
+use gaussworthy::method::{MethodSpec, every_kind};
 use gaussworthy::outside::Outside;
 use gaussworthy::reference::{SamplerError, Store};
 use gaussworthy::report::{CAUTION, ResultsFolder, printable, write_envelopes, write_summary};
@@ -31,7 +31,7 @@ pub struct Measuring {
     /// Most samples a case may take
     #[arg(long, value_name = "N", value_parser = whole)]
     cap: Option<u64>,
-    /// Methods, such as taylor-1,gauss-hermite:order=5 (see `catalogue methods`)
+    /// Methods, such as taylor-1,gauss-hermite:order=5, or every (see `catalogue methods`)
     #[arg(long, value_name = "M,...", value_delimiter = ',')]
     methods: Option<Vec<String>>,
     /// Do part K of N of every suite's cases, to be joined by `merge`; parts are not timed
@@ -167,6 +167,9 @@ pub fn admit(suite: &Suite, plan: &mut SurveyPlan, outside: Outside) -> Result<(
 }
 
 fn methods(labels: &[String]) -> Result<Vec<MethodSpec>, Failure> {
+    if labels == ["every"] {
+        return Ok(every_kind());
+    }
     labels
         .iter()
         .map(|label| MethodSpec::parse(label).with_context(|| format!("--methods {label}")).map_err(Failure::Input))

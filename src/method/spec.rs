@@ -143,6 +143,12 @@ pub(crate) fn check_own_label(label: &str) -> Result<(), BuildError> {
     flaw(label).map_or(Ok(()), |flaw| Err(BuildError::new("id", flaw)))
 }
 
+/// Every kind with its defaults, and Gauss-Hermite of order 5: what `every` stands for where methods are named.
+pub fn every_kind() -> Vec<MethodSpec> {
+    let labels = KINDS.iter().map(|kind| kind.id).chain(["gauss-hermite:order=5"]);
+    labels.map(|label| MethodSpec::parse(label).expect("every kind has defaults")).collect()
+}
+
 /// What is measured when nobody names methods: the usual seven, so that a survey stays quick.
 pub fn default_methods() -> Vec<MethodSpec> {
     let labels = [

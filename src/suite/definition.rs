@@ -62,6 +62,11 @@ impl Suite {
         bundled::ALL
     }
 
+    /// The suites of regimes that come with the program: one sensor each, thousands of drawn cases, for envelopes.
+    pub fn regimes() -> &'static [Bundled] {
+        bundled::REGIMES
+    }
+
     /// Reads a bundled suite by its name, or a file by its path, which ends in `.toml`.
     ///
     /// `seed_override` takes the place of the suite's own seed, which drives its draws.
@@ -75,10 +80,11 @@ impl Suite {
             let text = source::read_text(path)?;
             return Self::from_text(&source::stem(path)?, name_or_path, &text, seed_override);
         }
-        if let Some(suite) = bundled::ALL.iter().find(|suite| suite.name == name_or_path) {
+        let all = || bundled::ALL.iter().chain(bundled::REGIMES);
+        if let Some(suite) = all().find(|suite| suite.name == name_or_path) {
             return Self::from_text(suite.name, &format!("{}.toml", suite.name), suite.text, seed_override);
         }
-        let names: Vec<_> = bundled::ALL.iter().map(|suite| suite.name).collect();
+        let names: Vec<_> = all().map(|suite| suite.name).collect();
         let near = proposal(name_or_path, names.iter().copied());
         let message = format!(
             "there is no bundled suite of this name; {near}give one of {}, or the path of a file that ends in .toml \

@@ -43,7 +43,7 @@
 //! | `draws` | cases drawn at every grid point; needed when a value is drawn |
 //! | `[limits]` | see [`Limits`](crate::trust::Limits) |
 //! | `[envelope]` | asks for envelopes, see [`Claim`](crate::trust::Claim) |
-//! | `[[method]]` | `id` and parameters, see [`method`](crate::method) |
+//! | `[[method]]` | `id` and parameters, see [`method`](crate::method); or `method = "every"` for every kind with its defaults |
 //! | `[sensor]` | `kind` and parameters, see [`sensor`](crate::sensor) |
 //! | `[prior]` | `mean` and `covariance`; or `mean`, `sd` and perhaps `correlation`, a matrix or triples `[i, j, rho]`; or as an observer sees it, by `range`, `bearing` and what goes with them, below |
 //! | `[noise]` | `sd`, one an output or one for all; or `covariance`, a matrix or one number for its diagonal |

@@ -4,7 +4,7 @@ use serde_json::Value;
 
 use super::SuiteError;
 use super::node::Node;
-use crate::method::MethodSpec;
+use crate::method::{MethodSpec, every_kind};
 use crate::trust::{Claim, Limits};
 use crate::wording::plain;
 
@@ -49,11 +49,17 @@ pub(super) fn envelope(root: &Node) -> Result<Option<Claim>, SuiteError> {
     Ok(Some(claim))
 }
 
-/// `[[method]]` tables; `None` if there is none.
+/// `[[method]]` tables, or `method = "every"`; `None` if there is none.
 pub(super) fn methods(root: &Node) -> Result<Option<Vec<MethodSpec>>, SuiteError> {
     let Some(list) = root.get("method") else { return Ok(None) };
+    if list.text().is_ok_and(|text| text == "every") {
+        return Ok(Some(every_kind()));
+    }
     let mut made: Vec<(MethodSpec, usize)> = Vec::new();
-    for table in list.list().map_err(|e| SuiteError { message: format!("{}, as [[method]]", e.message), ..e })? {
+    for table in list
+        .list()
+        .map_err(|e| SuiteError { message: format!("{}, as [[method]], or method = \"every\"", e.message), ..e })?
+    {
         let spec = MethodSpec::from_json(table.object()?).map_err(|e| table.at(&e.key).error(e.message))?;
         if let Some((_, line)) = made.iter().find(|(other, _)| other.label() == spec.label()) {
             return Err(table.error(format!("`{}` stands on line {line} already; delete one", spec.label())));
