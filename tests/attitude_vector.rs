@@ -23,11 +23,11 @@ fn tolerance(t: f64) -> f64 {
 }
 
 #[test]
-fn it_is_the_rotation_from_nothing_to_sixty_radians() {
+fn it_is_the_rotation_from_nothing_to_a_million_radians() {
     let d = Vector3::from(DIRECTION).normalize();
     let mut rng = random::stream(3);
     for _ in 0..20_000 {
-        let t = 10f64.powf(rng.random_range(-12.0..60f64.log10()));
+        let t = 10f64.powf(rng.random_range(-12.0..6.0));
         let phi = Vector3::from_iterator(random::normal_vector(3, &mut rng).iter().copied()).normalize() * t;
         let rotated = UnitQuaternion::from_scaled_axis(phi) * d;
         let y = seen(phi).value;

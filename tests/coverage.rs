@@ -332,6 +332,7 @@ fn looking_again_and_again_does_not_inflate_the_error() {
         precision: Some(0.1),
         cap: Some(1 << 19),
         limits,
+        envelope: None,
         methods: Some(vec![MethodSpec::parse("taylor-1").unwrap()]),
         cases: vec![case],
     };

@@ -184,7 +184,9 @@ fn a_state_known_exactly() {
         assert_eq!(moments.cross_covariance.amax(), 0.0);
         for answer in &result.answers {
             let answer = answer.as_ref().unwrap();
-            assert!((&answer.moments.mean - &moments.mean).amax() <= ROUNDING * moments.mean.amax());
+            assert!(
+                (&answer.moments.as_ref().unwrap().mean - &moments.mean).amax() <= ROUNDING * moments.mean.amax()
+            );
         }
     }
     all_undecided(&found[0], "the prior knows the state exactly: no measurement updates it");

@@ -75,6 +75,8 @@ fn formulas_mean_what_mathematics_means() {
         ("max(x, y, z)", z),
         ("max(x, ln(y))", f64::NAN),
         ("min(ln(y), x)", f64::NAN),
+        // Zero has two signs, and directions from it lie half a turn apart.
+        ("atan2(0, -1) + atan2(-0, -1) + 0*x", 0.0),
         ("pi + e", std::f64::consts::PI + std::f64::consts::E),
         ("if(x < y, 1, 2)", 2.0),
         ("if(x >= y and not z < 0, 1, 2)", 1.0),

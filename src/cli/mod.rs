@@ -1,9 +1,12 @@
 //! The commands, one file each. Exit codes are decided here and nowhere else.
 
 mod catalogue;
-
+mod hand_out;
+mod mark;
+mod measuring;
 mod merge;
 mod progress;
+mod questions;
 mod stdout;
 mod survey;
 
@@ -23,6 +26,10 @@ struct Arguments {
 enum Command {
     /// Measure suites: sample references, score and judge methods, write the results folder
     Survey(survey::Arguments),
+    /// Write the cases of a suite as case records, for an outside implementation to answer
+    HandOut(hand_out::Arguments),
+    /// Score the answers of an outside implementation beside the methods, as a survey does
+    Mark(mark::Arguments),
     /// Join the parts of a survey that were made with --shard
     Merge(merge::Arguments),
     /// List sensors, methods and scores with formulas and sources
@@ -58,7 +65,9 @@ impl From<std::io::Error> for Failure {
 /// Runs the command and turns its end into an exit code: 0 done, 2 bad input or use, 3 could not finish.
 pub fn main() -> ExitCode {
     let done = match Arguments::parse().command {
-        Command::Survey(arguments) => survey::run(arguments),
+        Command::Survey(arguments) => survey::run(&arguments),
+        Command::HandOut(arguments) => hand_out::run(&arguments),
+        Command::Mark(arguments) => mark::run(&arguments),
         Command::Merge(arguments) => merge::run(&arguments),
         Command::Catalogue(arguments) => catalogue::run(&arguments),
     };

@@ -1,134 +1,86 @@
 use std::io::Write;
-use std::path::PathBuf;
+use std::time::Duration;
 
 use anyhow::{Context, anyhow};
 use clap::Args;
-use gaussworthy::method::MethodSpec;
-use gaussworthy::reference::Store;
-use gaussworthy::report::{CAUTION, ResultsFolder, write_summary};
+use gaussworthy::outside::{AskError, OutsideCommand};
 use gaussworthy::suite::Suite;
-use gaussworthy::survey::{Shard, SurveyPlan, SurveySettings, sample_share, summarise, survey};
+use gaussworthy::survey::{Shard, SurveyPlan, sample_share};
 
 use super::Failure;
-use super::progress::{Progress, heed_interrupts};
+use super::measuring::Measuring;
+use super::progress::Progress;
+use super::questions::Questions;
 use super::stdout::Stdout;
 
 #[derive(Debug, Args)]
+#[command(after_help = "Without a suite, the three demonstration suites are measured.")]
 pub struct Arguments {
-    /// Bundled suites by name, or suite files ending in .toml; the three demonstration suites unless told
-    suites: Vec<String>,
-    /// Case records (JSON Lines) in place of a suite
-    #[arg(long, value_name = "FILE", conflicts_with = "suites")]
-    cases: Option<PathBuf>,
-    /// Where results folders go
-    #[arg(long, value_name = "DIR", default_value = "results")]
-    out: PathBuf,
-    /// Seed of draws and samples; the suite's, or 1, unless told
-    #[arg(long, value_name = "N")]
-    seed: Option<u64>,
-    /// Threads; all cores unless told. Results do not depend on it
-    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=1024))]
-    threads: Option<u16>,
-    /// Largest standardised standard error of every reference moment, such as 1e-3
-    #[arg(long, value_name = "X")]
-    precision: Option<f64>,
-    /// Most samples a case may take
-    #[arg(long, value_name = "N", value_parser = whole)]
-    cap: Option<u64>,
-    /// Methods, such as taylor-1,gauss-hermite:order=5 (see `catalogue methods`)
-    #[arg(long, value_name = "M,...", value_delimiter = ',')]
-    methods: Option<Vec<String>>,
-    /// Do part K of N of every suite's cases, to be joined by `merge`; parts are not timed
-    #[arg(long, value_name = "K/N")]
-    shard: Option<Shard>,
+    #[command(flatten)]
+    questions: Questions,
+    #[command(flatten)]
+    measuring: Measuring,
     /// Only sample part K of N of the replicates of every case, up to the cap, into the store; when all parts are there,
     /// a survey with this store and cap takes them from it
     #[arg(long, value_name = "K/N", conflicts_with = "shard")]
     replicates: Option<Shard>,
-    /// Where sampled references are kept and found again; `.references` in the --out folder unless told
-    #[arg(long, value_name = "DIR")]
-    store: Option<PathBuf>,
-    /// Sample everything anew and write over what is stored
-    #[arg(long)]
-    fresh: bool,
-    /// Leave the timing phase out
-    #[arg(long)]
-    no_timing: bool,
+    /// Score an implementation outside of this program too: a command that reads case records on standard input and
+    /// writes moments records on standard output, in any order. Split into words as a shell does; no shell is run
+    #[arg(long, value_name = "NAME=COMMAND ARG..", conflicts_with = "replicates")]
+    outside: Vec<String>,
+    /// Longest time without a new answer from such a command; then it is stopped and counts with the answers it gave
+    #[arg(long, value_name = "SECONDS", default_value = "60", value_parser = seconds)]
+    outside_timeout: Duration,
 }
 
-pub fn run(arguments: Arguments) -> Result<(), Failure> {
-    let settings = SurveySettings {
-        seed: arguments.seed,
-        precision: arguments.precision,
-        cap: arguments.cap,
-        methods: arguments.methods.as_deref().map(methods).transpose()?,
-        shard: arguments.shard,
-        store: None,
-    };
-    let plans = suites(&arguments)?
-        .into_iter()
-        .map(|suite| {
-            let plan = SurveyPlan::new(&suite, &settings)
-                .with_context(|| format!("suite `{}`", suite.name))
-                .map_err(Failure::Input)?;
-            Ok((suite, plan))
-        })
-        .collect::<Result<Vec<_>, Failure>>()?;
+pub fn run(arguments: &Arguments) -> Result<(), Failure> {
+    let commands = commands(arguments)?;
+    let measuring = &arguments.measuring;
+    let plans = measuring.plans(arguments.questions.suites()?, arguments.questions.seed)?;
     if let Some(share) = arguments.replicates {
-        return replicates(&arguments, &plans, share);
+        return replicates(measuring, &plans, share);
     }
-    let mut jobs = plans
-        .into_iter()
-        .map(|(suite, plan)| {
-            let folder = ResultsFolder::open(&arguments.out, &suite.name)
-                .context("results folder")
-                .map_err(Failure::Input)?;
-            Ok((suite, plan, folder))
-        })
-        .collect::<Result<Vec<_>, Failure>>()?;
-    let store = store(&arguments)?;
-    for (_, plan, _) in &mut jobs {
-        plan.store = Some(store.clone());
-    }
-    make_ready(&arguments)?;
-
-    let mut out = Stdout::new();
-    for (suite, plan, folder) in &jobs {
-        let asked = plan.shard.map_or(suite.cases.len(), |shard| shard.share(suite.cases.len()));
-        let progress = Progress::new(&suite.name, asked);
-        let result = survey(suite, plan, !arguments.no_timing, &progress);
+    measuring.measure(plans, |suite, plan| {
+        let progress = Progress::new(&suite.name, 0);
+        let answers = commands.iter().map(|command| {
+            command.ask(suite, plan.shard, &progress).map_err(|e| match e {
+                AskError::Interrupted => {
+                    Failure::Unfinished(anyhow!("{}: {e}; nothing was measured", command.name()))
+                }
+                _ => Failure::Input(anyhow::Error::new(e).context(format!("--outside {}", command.name()))),
+            })
+        });
+        let answers = answers.collect();
         progress.finish();
-        folder.write(&result).map_err(Failure::unfinished)?;
-        write_summary(&result, &summarise(&result), &mut out)?;
-        writeln!(out, "  Written to {}\n", folder.path().display())?;
-        if Progress::interrupted() {
-            return Err(Failure::Unfinished(anyhow!(
-                "interrupted in suite `{}`: {} of {} cases are finished and written",
-                suite.name,
-                result.cases.len(),
-                asked
+        answers
+    })
+}
+
+/// The outside commands, each under a name of its own.
+fn commands(arguments: &Arguments) -> Result<Vec<OutsideCommand>, Failure> {
+    let mut commands: Vec<OutsideCommand> = Vec::new();
+    for text in &arguments.outside {
+        let command = OutsideCommand::parse(text, arguments.outside_timeout)
+            .with_context(|| format!("--outside {text}"))
+            .map_err(Failure::Input)?;
+        if commands.iter().any(|other| other.name() == command.name()) {
+            return Err(Failure::Input(anyhow!(
+                "--outside {text}: the name `{}` is taken; give another",
+                command.name()
             )));
         }
+        commands.push(command);
     }
-    writeln!(out, "{CAUTION}")?;
-    Ok(())
-}
-
-/// Sets the threads and heeds interrupts.
-fn make_ready(arguments: &Arguments) -> Result<(), Failure> {
-    if let Some(threads) = arguments.threads {
-        rayon::ThreadPoolBuilder::new().num_threads(threads.into()).build_global().map_err(Failure::unfinished)?;
-    }
-    heed_interrupts().map_err(Failure::unfinished)
+    Ok(commands)
 }
 
 /// Samples a part of the replicates into the store.
-fn replicates(arguments: &Arguments, plans: &[(Suite, SurveyPlan)], share: Shard) -> Result<(), Failure> {
+fn replicates(measuring: &Measuring, plans: &[(Suite, SurveyPlan)], share: Shard) -> Result<(), Failure> {
     for (_, plan) in plans {
         plan.sampler.check_share(share).context("--replicates").map_err(Failure::Input)?;
     }
-    let store = store(arguments)?;
-    make_ready(arguments)?;
+    let store = measuring.store()?;
+    measuring.make_ready()?;
     let mut out = Stdout::new();
     for (suite, plan) in plans {
         let progress = Progress::new(&suite.name, suite.cases.len());
@@ -146,50 +98,10 @@ fn replicates(arguments: &Arguments, plans: &[(Suite, SurveyPlan)], share: Shard
     Ok(())
 }
 
-fn store(arguments: &Arguments) -> Result<Store, Failure> {
-    let folder = arguments.store.clone().unwrap_or_else(|| arguments.out.join(".references"));
-    let store = Store::open(&folder).context("store of references").map_err(Failure::Input)?;
-    Ok(if arguments.fresh { store.fresh() } else { store })
-}
-
-fn suites(arguments: &Arguments) -> Result<Vec<Suite>, Failure> {
-    if let Some(path) = &arguments.cases {
-        return Ok(vec![Suite::from_case_records(path).map_err(Failure::input)?]);
-    }
-    let names: Vec<String> = if arguments.suites.is_empty() {
-        gaussworthy::suite::DEMONSTRATION.iter().map(ToString::to_string).collect()
-    } else {
-        arguments.suites.clone()
-    };
-    let suites = names
-        .iter()
-        .map(|name| Suite::load(name, arguments.seed).map_err(Failure::input))
-        .collect::<Result<Vec<_>, _>>()?;
-    for (i, suite) in suites.iter().enumerate() {
-        if suites[..i].iter().any(|s| s.name == suite.name) {
-            return Err(Failure::Input(anyhow!(
-                "two suites are called `{}`: their results would share a folder",
-                suite.name
-            )));
-        }
-    }
-    Ok(suites)
-}
-
-fn methods(labels: &[String]) -> Result<Vec<MethodSpec>, Failure> {
-    labels
-        .iter()
-        .map(|label| MethodSpec::parse(label).with_context(|| format!("--methods {label}")).map_err(Failure::Input))
-        .collect()
-}
-
-/// A whole number, also written as 1e6.
-fn whole(text: &str) -> Result<u64, String> {
-    // Beyond 2^53 a double does not count any more.
-    const MOST: f64 = 9_007_199_254_740_992.0;
-    match (text.parse::<u64>(), text.parse::<f64>()) {
-        (Ok(number), _) => Ok(number),
-        (_, Ok(number)) if number.fract() == 0.0 && (0.0..MOST).contains(&number) => Ok(number as u64),
-        _ => Err("give a whole number, such as 1000000 or 1e6".into()),
-    }
+fn seconds(text: &str) -> Result<Duration, String> {
+    let seconds = text.parse().ok().filter(|seconds: &f64| *seconds > 0.0);
+    // A year: no one waits longer, and the clock can still count it.
+    const MOST: f64 = 3.2e7;
+    let seconds = seconds.filter(|seconds| *seconds <= MOST);
+    seconds.map(Duration::from_secs_f64).ok_or_else(|| "give a number of seconds above 0, such as 60 or 0.5".into())
 }

@@ -70,6 +70,16 @@ impl Gaussian {
         &self.covariance
     }
 
+    /// The largest standard deviation in any direction of the components `of`: the root of the largest eigenvalue of their block
+    /// of the covariance. `None` of no component.
+    ///
+    /// # Panics
+    /// If a component is outside the law.
+    pub fn largest_sd(&self, of: &[usize]) -> Option<f64> {
+        let block = DMatrix::from_fn(of.len(), of.len(), |i, j| self.covariance[(of[i], of[j])]);
+        (!block.is_empty()).then(|| block.symmetric_eigenvalues().max().max(0.0).sqrt())
+    }
+
     /// The square root that this law was made from, if it was.
     pub fn given_root(&self) -> Option<&DMatrix<f64>> {
         self.given_root.as_ref()

@@ -87,6 +87,10 @@ impl Sensor for Counted<'_> {
         self.sensor.outputs()
     }
 
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        self.sensor.natural_spread(prior)
+    }
+
     fn exact_moments(&self) -> Option<&dyn ExactMoments> {
         self.sensor.exact_moments().map(|_| self as &dyn ExactMoments)
     }

@@ -43,6 +43,7 @@ pub use points::{PointSet, PointTransform};
 pub use rule::PointRule;
 pub use simplex::{MinimalSkewSimplex, SphericalSimplex};
 pub use sparse_grid::SparseGaussHermite;
+pub(crate) use spec::check_own_label;
 pub use spec::{MethodSpec, default_methods, every_method};
 pub use stochastic::{FifthDegreeStochastic, ThirdDegreeStochastic};
 pub use taylor::{FirstOrderTaylor, SecondOrderTaylor};

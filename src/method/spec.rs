@@ -100,14 +100,8 @@ impl MethodSpec {
     /// # Errors
     /// [`BuildError`] if the label is that of a built-in method, or would break a table.
     pub fn own(label: &str, method: Arc<dyn Method>) -> Result<Self, BuildError> {
-        let id = label.split(':').next().unwrap_or_default();
-        if KINDS.iter().any(|kind| kind.id == id) {
-            return Err(BuildError::new("id", format!("`{id}` is a built-in method; give another label")));
-        }
-        match flaw(label) {
-            Some(flaw) => Err(BuildError::new("id", flaw)),
-            None => Ok(Self { kind: None, label: label.into(), arithmetic: Arithmetic::Double, method }),
-        }
+        check_own_label(label)?;
+        Ok(Self { kind: None, label: label.into(), arithmetic: Arithmetic::Double, method })
     }
 
     /// The command-line form of what was written, in a fixed order and without what was left to its default;
@@ -138,6 +132,15 @@ impl MethodSpec {
     pub fn method(&self) -> &dyn Method {
         self.method.as_ref()
     }
+}
+
+/// Whether a label that is not ours can stand beside ours in tables and files.
+pub(crate) fn check_own_label(label: &str) -> Result<(), BuildError> {
+    let id = label.split(':').next().unwrap_or_default();
+    if KINDS.iter().any(|kind| kind.id == id) {
+        return Err(BuildError::new("id", format!("`{id}` is a built-in method; give another label")));
+    }
+    flaw(label).map_or(Ok(()), |flaw| Err(BuildError::new("id", flaw)))
 }
 
 /// What is measured when nobody names methods: the usual seven, so that a survey stays quick.

@@ -1,10 +1,13 @@
+use std::fs::File;
 use std::io::{self, Write};
 use std::path::{Path, PathBuf};
 
 use tempfile::NamedTempFile;
 
-use super::{manifest, records, scores_csv};
+use super::{choices, envelopes, manifest, records, scores_csv};
+use crate::guidance::{Conclusions, Scores};
 use crate::survey::SurveyResult;
+use crate::trust::Claim;
 use crate::whole_file::WholeFile;
 
 /// The results folder of one suite, `<out>/<suite>/`.
@@ -41,16 +44,58 @@ impl ResultsFolder {
         &self.0
     }
 
-    /// Writes what a survey found: `cases.jsonl`, `references.jsonl`, `scores.csv`, and last `manifest.json`,
-    /// each whole or not at all.
+    /// Writes what a survey found: `cases.jsonl`, `references.jsonl`, `scores.csv`, what follows from them
+    /// ([`ResultsFolder::conclude`]) if the survey is whole, and last `manifest.json`; each whole or not at all.
     ///
     /// # Errors
     /// [`FolderError`] with the file that could not be written; files written before it stay.
-    pub fn write(&self, survey: &SurveyResult<'_>) -> Result<(), FolderError> {
+    pub fn write(&self, survey: &SurveyResult<'_>) -> Result<Conclusions, FolderError> {
         self.file("cases.jsonl", |to| records::write_cases(survey, to))?;
         self.file("references.jsonl", |to| records::write_references(survey, to))?;
         self.file("scores.csv", |to| scores_csv::write(survey, to))?;
-        self.file("manifest.json", |to| manifest::write(survey, to))
+        let conclusions = if survey.is_complete() && survey.plan.shard.is_none() {
+            self.conclude(survey.plan.sampler.seed, survey.suite.envelope)?
+        } else {
+            // What an earlier survey concluded does not follow from these scores.
+            self.without("envelopes.json")?;
+            self.without("choices.csv")?;
+            Conclusions::default()
+        };
+        self.file("manifest.json", |to| manifest::write(survey, to))?;
+        Ok(conclusions)
+    }
+
+    /// Draws what follows from `scores.csv`: `envelopes.json` if `claim` is given, and `choices.csv` if a family has two
+    /// sweeps. `seed` is the survey's.
+    ///
+    /// # Errors
+    /// [`FolderError`] with the file that could not be read or written.
+    pub(super) fn conclude(&self, seed: u64, claim: Option<Claim>) -> Result<Conclusions, FolderError> {
+        let path = self.0.join("scores.csv");
+        let read = || {
+            let scores = Scores::new(File::open(&path)?).map_err(io::Error::other)?;
+            Conclusions::of(scores, seed, claim).map_err(io::Error::other)
+        };
+        let conclusions = read().map_err(|source| FolderError { path: path.clone(), source })?;
+        match &conclusions.envelopes {
+            Some(found) => self.file("envelopes.json", |to| envelopes::write(found, to))?,
+            None => self.without("envelopes.json")?,
+        }
+        if conclusions.choices.is_empty() {
+            self.without("choices.csv")?;
+        } else {
+            self.file("choices.csv", |to| choices::write(&conclusions.choices, to))?;
+        }
+        Ok(conclusions)
+    }
+
+    /// Takes a file away that does not belong to these results.
+    fn without(&self, name: &str) -> Result<(), FolderError> {
+        let path = self.0.join(name);
+        match std::fs::remove_file(&path) {
+            Err(source) if source.kind() != io::ErrorKind::NotFound => Err(FolderError { path, source }),
+            _ => Ok(()),
+        }
     }
 
     fn file(&self, name: &str, fill: impl FnOnce(&mut dyn Write) -> io::Result<()>) -> Result<(), FolderError> {

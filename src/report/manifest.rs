@@ -2,8 +2,9 @@ use std::io::{self, Write};
 
 use serde::Serialize;
 
+use crate::outside::{Origin, Outside, Tally};
 use crate::survey::{Quartiles, SurveyResult};
-use crate::trust::Limits;
+use crate::trust::{Claim, Limits};
 
 /// What a results folder is: enough to make it again and to know what its times mean.
 #[derive(Serialize)]
@@ -21,6 +22,9 @@ struct Manifest<'a> {
     times: Times,
     #[serde(skip_serializing_if = "Option::is_none")]
     cost: Option<Vec<MethodCost<'a>>>,
+    /// One an outside implementation.
+    #[serde(skip_serializing_if = "Vec::is_empty")]
+    answers: Vec<AnswersEntry<'a>>,
 }
 
 #[derive(Serialize)]
@@ -44,7 +48,76 @@ struct Settings<'a> {
     cap: u64,
     replicates: usize,
     methods: Vec<&'a str>,
+    /// Implementations outside of the program; their rows come after those of the methods.
+    #[serde(skip_serializing_if = "Vec::is_empty")]
+    outside: Vec<OutsideEntry<'a>>,
     limits: &'a Limits,
+    /// What envelopes are asked to promise.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    envelope: Option<Claim>,
+}
+
+/// An outside implementation: where its answers come from.
+#[derive(Serialize)]
+struct OutsideEntry<'a> {
+    name: &'a str,
+    /// The words of its command, as they were typed.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    command: Option<&'a [String]>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    timeout_seconds: Option<f64>,
+    /// The file of its answers, without its folder.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    file: Option<&'a str>,
+    /// SHA-256 of that file.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    sha256: Option<&'a str>,
+}
+
+impl<'a> OutsideEntry<'a> {
+    fn of(outside: &'a Outside) -> Self {
+        let name = outside.name();
+        let nothing = Self { name, command: None, timeout_seconds: None, file: None, sha256: None };
+        match outside.origin() {
+            Origin::Command { words, timeout } => {
+                Self { command: Some(words), timeout_seconds: Some(timeout.as_secs_f64()), ..nothing }
+            }
+            Origin::File { name: file, sha256 } => Self { file: Some(file), sha256: Some(sha256), ..nothing },
+        }
+    }
+}
+
+/// Its answers counted, over all cases asked.
+#[derive(Serialize)]
+struct AnswersEntry<'a> {
+    name: &'a str,
+    asked: usize,
+    valid: usize,
+    invalid: usize,
+    missing: usize,
+    /// For cases that are not in the suite.
+    unknown: u64,
+    /// Lines that name no case.
+    unreadable: u64,
+    /// How its command failed.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    failure: Option<&'a str>,
+}
+
+impl<'a> AnswersEntry<'a> {
+    fn of(outside: &'a Outside) -> Self {
+        let Tally { asked, usable, unusable, missing, unknown, unreadable, .. } = outside.tally();
+        Self {
+            name: outside.name(),
+            asked,
+            valid: usable,
+            invalid: unusable,
+            missing,
+            unknown,
+            unreadable,
+            failure: outside.failure(),
+        }
+    }
 }
 
 #[derive(Serialize)]
@@ -104,7 +177,9 @@ pub(super) fn write(survey: &SurveyResult<'_>, to: &mut dyn Write) -> io::Result
             cap: plan.sampler.cap,
             replicates: plan.sampler.replicates,
             methods: labels.clone(),
+            outside: plan.outside.iter().map(OutsideEntry::of).collect(),
             limits: &plan.limits,
+            envelope: survey.suite.envelope,
         },
         machine: Machine {
             threads: rayon::current_num_threads(),
@@ -135,6 +210,7 @@ pub(super) fn write(survey: &SurveyResult<'_>, to: &mut dyn Write) -> io::Result
                 })
                 .collect()
         }),
+        answers: plan.outside.iter().map(AnswersEntry::of).collect(),
     };
     serde_json::to_writer_pretty(&mut *to, &manifest)?;
     writeln!(to)

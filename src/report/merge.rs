@@ -7,7 +7,9 @@ use std::path::{Path, PathBuf};
 
 use super::folder::{FolderError, ResultsFolder};
 use super::part::{Part, Records, Rows};
+use crate::trust::Claim;
 use crate::whole_file::WholeFile;
+use serde::Deserialize;
 use serde_json::{Value, json};
 
 /// One suite whose parts were joined.
@@ -116,7 +118,7 @@ fn join(suite: String, parts: &[Part], out: &Path) -> Result<Merged, MergeError>
     let mut scores = parts.iter().map(Part::scores).collect::<Vec<_>>();
     let header = same_header(&mut scores)?;
     score_file.write_byte_record(&header).map_err(|e| failed("scores.csv")(e.into()))?;
-    let rows = parts[0].methods();
+    let rows = parts[0].rows();
     for index in 0..cases {
         let k = index % parts.len();
         let name = records[k].copy_next(None, &mut case_file).map_err(|e| e.or_in(failed("cases.jsonl")))?;
@@ -135,6 +137,13 @@ fn join(suite: String, parts: &[Part], out: &Path) -> Result<Merged, MergeError>
     reference_file.finish_on_disk().map_err(failed("references.jsonl"))?;
     let score_file = score_file.into_inner().map_err(|e| failed("scores.csv")(e.into_error()))?;
     score_file.finish_on_disk().map_err(failed("scores.csv"))?;
+    let seed = parts[0].manifest["seed"].as_u64();
+    let claim = &parts[0].manifest["settings"]["envelope"];
+    let claim = if claim.is_null() { None } else { Claim::deserialize(claim).ok() };
+    let Some(seed) = seed else {
+        return Err(MergeError::at(&parts[0].folder, "its manifest names no seed"));
+    };
+    folder.conclude(seed, claim)?;
     let write_manifest = || {
         let mut file = WholeFile::create(&folder.path().join("manifest.json"))?;
         serde_json::to_writer_pretty(&mut file, &manifest(parts))?;
@@ -175,5 +184,29 @@ fn manifest(parts: &[Part]) -> Value {
         "sampling_seconds": seconds("sampling_seconds"),
         "timing_seconds": seconds("timing_seconds"),
     });
+    if let Some(entries) = fields.get_mut("answers").and_then(Value::as_array_mut) {
+        for (k, entry) in entries.iter_mut().enumerate() {
+            join_answers(entry, k, parts);
+        }
+    }
     whole
+}
+
+/// The answers of the outside implementation number `k`, counted over all parts. Each part has read a file of answers whole,
+/// so lines that belong to no case are the same ones in all; a command has run once a part.
+fn join_answers(entry: &mut Value, k: usize, parts: &[Part]) {
+    let of_file = parts[0].manifest["settings"]["outside"][k].get("file").is_some();
+    let in_parts = |key: &'static str| parts.iter().map(move |part| &part.manifest["answers"][k][key]);
+    let sum = |key: &'static str| in_parts(key).filter_map(Value::as_u64).sum::<u64>();
+    for key in ["asked", "valid", "invalid", "missing"] {
+        entry[key] = json!(sum(key));
+    }
+    if !of_file {
+        for key in ["unknown", "unreadable"] {
+            entry[key] = json!(sum(key));
+        }
+    }
+    if let Some(failure) = in_parts("failure").find(|failure| failure.is_string()) {
+        entry["failure"] = failure.clone();
+    }
 }

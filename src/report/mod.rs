@@ -1,7 +1,10 @@
 //! Reports: what surveys found, as files for machines and tables for people. Nothing is computed here.
 
 mod catalogue;
+mod choices;
+mod envelopes;
 mod folder;
+mod hand_out;
 mod manifest;
 mod merge;
 mod part;
@@ -11,6 +14,8 @@ mod table;
 
 pub use crate::wording::printable;
 pub use catalogue::{method_page, method_table, score_table, sensor_page, sensor_table};
+pub use envelopes::{envelope_sentence, envelope_sentences, write_envelopes};
 pub use folder::{FolderError, ResultsFolder};
+pub use hand_out::{hand_out, hand_out_file};
 pub use merge::{MergeError, Merged, merge};
 pub use table::{CAUTION, write_summary};

@@ -76,9 +76,10 @@ impl Part {
         self.manifest["suite"]["name"].as_str().unwrap_or_default()
     }
 
-    /// Rows that each case has.
-    pub fn methods(&self) -> usize {
-        self.manifest["settings"]["methods"].as_array().map_or(0, Vec::len)
+    /// Rows that each case has: one a method, one an outside implementation.
+    pub fn rows(&self) -> usize {
+        let count = |key: &str| self.manifest["settings"][key].as_array().map_or(0, Vec::len);
+        count("methods") + count("outside")
     }
 
     /// In what `other` is of another survey, if it is.

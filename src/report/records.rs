@@ -65,7 +65,7 @@ pub(super) fn write_references(survey: &SurveyResult<'_>, to: &mut dyn Write) ->
     Ok(())
 }
 
-fn line(value: &impl Serialize, to: &mut dyn Write) -> io::Result<()> {
+pub(super) fn line(value: &impl Serialize, to: &mut dyn Write) -> io::Result<()> {
     serde_json::to_writer(&mut *to, value)?;
     writeln!(to)
 }

@@ -3,6 +3,7 @@ use std::io::{self, Write};
 use comfy_table::{CellAlignment, ColumnConstraint, ContentArrangement, Table, presets};
 
 use crate::method::Evaluations;
+use crate::outside::Outside;
 use crate::survey::{MethodSummary, Summary, SurveyResult};
 
 /// What every published page says.
@@ -159,6 +160,33 @@ fn notes(survey: &SurveyResult<'_>, summary: &Summary) -> Vec<String> {
         if let Some(reason) = &method.skip_reason {
             notes.push(format!("{} was skipped in {} cases: {reason}.", method.label, method.skipped));
         }
+    }
+    notes.extend(survey.plan.outside.iter().flat_map(outside_notes));
+    notes
+}
+
+/// What an outside implementation left undone; its answers are counted over all cases asked.
+fn outside_notes(outside: &Outside) -> Vec<String> {
+    let (name, tally) = (outside.name(), outside.tally());
+    let mut notes = Vec::new();
+    if let Some(failure) = outside.failure() {
+        notes.push(format!("{name}: {failure}."));
+    }
+    if tally.missing + tally.unusable > 0 {
+        notes.push(format!(
+            "{name} gave no valid answer to {} of {} cases ({} missing, {} invalid); they count as rejected, scores.csv \
+             says why.",
+            tally.missing + tally.unusable,
+            tally.asked,
+            tally.missing,
+            tally.unusable
+        ));
+    }
+    if tally.unknown + tally.unreadable > 0 {
+        notes.push(format!(
+            "{name}: {} answers are for cases that are not in this suite, {} lines name no case; none of them is scored.",
+            tally.unknown, tally.unreadable
+        ));
     }
     notes
 }

@@ -10,6 +10,9 @@ const ROUNDING: f64 = 1e-9;
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
 #[non_exhaustive]
 pub enum Invalid {
+    /// There is no answer that could be scored; it is said why.
+    #[error("{0}")]
+    NoAnswer(String),
     /// A value is NaN or infinite.
     #[error("a value is not finite")]
     NotFinite,

@@ -3,6 +3,7 @@ use serde::{Deserialize, Serialize};
 use super::kinds::{Kind, built};
 use super::parameter::{checked_components, checked_row};
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "attitude-vector",
@@ -15,6 +16,8 @@ pub(super) const KIND: Kind = Kind {
     build: |map, n| built(map, n, AttitudeVector::from_parameters),
 };
 
+/// Up to here the series holds \[rad\].
+const REACH: f64 = 60.0;
 /// Halvings of the half angle before its series is summed.
 const HALVINGS: usize = 6;
 /// (-1)^k / (2k + 2)!: (1 - cos h) / h^2 in powers of h^2.
@@ -47,8 +50,8 @@ const SINC: [f64; 8] = [
 ///
 /// Both factors are smooth in t^2, but written in t they have no derivative at phi = 0. So they are worked from
 /// t^2 / 4^7 by their power series and brought back by doubling the angle: 1 - cos 2h = 2 (1 - cos h)(2 - (1 - cos h)),
-/// sin(2h) / (2h) = sin(h)/h cos h. Exact to rounding for any rotation vector up to 60 rad, derivatives at zero
-/// included; beyond, which is no attitude error, it is no rotation any more.
+/// sin(2h) / (2h) = sin(h)/h cos h. That is exact to rounding up to 60 rad, derivatives at zero included; beyond, the two
+/// factors are worked as they are written.
 ///
 /// Source: M. D. Shuster, "A survey of attitude representations", J. Astronautical Sciences 41 (1993) 439-517 (from
 /// memory); series and doubling as in scaling and squaring, C. Moler, C. Van Loan, "Nineteen dubious ways to compute
@@ -118,7 +121,12 @@ fn rodrigues<T: Number>(square: T) -> (T, T) {
         versine = two * versine * (two - versine);
     }
     // Now of the half angle: sin t = 2 sin(t/2) cos(t/2) and 1 - cos t = 2 sin^2(t/2).
-    (sinc * (one - versine), T::constant(0.5) * sinc * sinc)
+    let near = (sinc * (one - versine), T::constant(0.5) * sinc * sinc);
+    let t = square.sqrt();
+    let half = (T::constant(0.5) * t).sin();
+    let far = (t.sin() / t, two * half * half / square);
+    let reach = T::constant(REACH * REACH);
+    (square.if_at_most(reach, near.0, far.0), square.if_at_most(reach, near.1, far.1))
 }
 
 #[inline(always)]
@@ -135,6 +143,10 @@ impl Formula for AttitudeVector {
 
     fn outputs(&self) -> &[Output] {
         &self.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        prior.largest_sd(&[0, 1, 2])
     }
 
     #[inline(always)]

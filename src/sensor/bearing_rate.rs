@@ -1,6 +1,7 @@
 use super::kinds::{Kind, built};
 use super::lookout::{Coordinates, Lookout, MovingParameters, seen_from, with_motion};
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "bearing-rate",
@@ -68,6 +69,10 @@ impl Formula for BearingRate {
 
     fn outputs(&self) -> &[Output] {
         &self.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        self.lookout.spread(prior, self.lookout.reads.len() / 2)
     }
 
     #[inline(always)]

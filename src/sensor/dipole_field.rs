@@ -4,6 +4,7 @@ use super::kinds::{Kind, built};
 use super::parameter::{checked_components, checked_row};
 use super::position::first_three;
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "dipole-field",
@@ -86,6 +87,11 @@ impl Formula for DipoleField {
 
     fn outputs(&self) -> &[Output] {
         &self.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        let distance = (0..3).map(|i| (prior.mean()[i] - self.place[i]).powi(2)).sum::<f64>().sqrt();
+        Some(prior.largest_sd(&[0, 1, 2])? / distance)
     }
 
     #[inline(always)]

@@ -85,6 +85,10 @@ impl Formula for ExponentialDecay {
         &self.single.outputs
     }
 
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        Some(prior.largest_sd(&[0])? / self.scale.abs())
+    }
+
     fn exact_moments(&self) -> Option<&dyn ExactMoments> {
         Some(self)
     }

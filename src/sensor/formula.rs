@@ -4,6 +4,7 @@ use nalgebra::DMatrix;
 use smallvec::SmallVec;
 
 use super::{Derivatives, ExactMoments, Number, Output, Real, derivatives};
+use crate::gaussian::Gaussian;
 use crate::lanes::{Lanes, Level, Simd, Task, dispatch};
 
 /// A measurement function as its author writes it: once, generic over the number.
@@ -27,6 +28,14 @@ pub trait Formula: Debug + Send + Sync {
 
     /// The p outputs, in order.
     fn outputs(&self) -> &[Output];
+
+    /// The prior's spread against the sensor's own length, without unit: such as the largest standard deviation of a position
+    /// over its range. It sees a singularity of h that lies a few standard deviations away and that no derivative at the mean
+    /// can see. `prior` is that of the read components; `None`, unless told, where the sensor has no such length.
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        let _ = prior;
+        None
+    }
 
     /// Writes h at the read components `x` into `y` (p).
     ///
@@ -77,6 +86,9 @@ pub trait Sensor: Debug + Send + Sync {
     /// The p outputs, in order.
     fn outputs(&self) -> &[Output];
 
+    /// The prior's spread against the sensor's own length, as [`Formula::natural_spread`].
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64>;
+
     /// Its moments in closed form, if it has them.
     fn exact_moments(&self) -> Option<&dyn ExactMoments>;
 
@@ -122,6 +134,10 @@ impl<F: Formula> Sensor for F {
 
     fn outputs(&self) -> &[Output] {
         Formula::outputs(self)
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        Formula::natural_spread(self, prior)
     }
 
     fn exact_moments(&self) -> Option<&dyn ExactMoments> {

@@ -4,6 +4,7 @@ use super::kinds::{Kind, built};
 use super::lookout::{Coordinates, Lookout, range_and_rate, with_motion};
 use super::parameter::{given, positive};
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "frequency-difference",
@@ -96,6 +97,10 @@ impl Formula for FrequencyDifference {
 
     fn outputs(&self) -> &[Output] {
         &self.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        self.lookout.spread(prior, self.lookout.reads.len() / 2)
     }
 
     #[inline(always)]

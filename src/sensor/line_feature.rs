@@ -4,6 +4,7 @@ use super::kinds::{Kind, built};
 use super::parameter::checked_components;
 use super::position::first_two;
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "line-feature",
@@ -77,6 +78,10 @@ impl Formula for LineFeature {
 
     fn outputs(&self) -> &[Output] {
         &self.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        prior.largest_sd(&[3])
     }
 
     #[inline(always)]

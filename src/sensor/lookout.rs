@@ -2,6 +2,7 @@ use serde::{Deserialize, Serialize};
 use serde_json::{Map, Value, json};
 
 use super::{Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 /// Stations and the components of the state that they see: what all sensors of a position share.
 #[derive(Debug, Clone, PartialEq)]
@@ -138,6 +139,17 @@ impl MovingParameters {
 }
 
 impl Lookout {
+    /// Largest standard deviation of the position, the first `coordinates` components read, over its distance from the nearest
+    /// station.
+    pub fn spread(&self, prior: &Gaussian, coordinates: usize) -> Option<f64> {
+        let position: Vec<usize> = (0..coordinates).collect();
+        let distance = |station: &[f64; 3]| {
+            position.iter().map(|&i| (prior.mean()[i] - station[i]).powi(2)).sum::<f64>().sqrt()
+        };
+        let nearest = self.stations.iter().map(distance).fold(f64::INFINITY, f64::min);
+        Some(prior.largest_sd(&position)? / nearest)
+    }
+
     /// Stations \[m\] that see the position at the components `position` of a state of `n`.
     ///
     /// # Errors

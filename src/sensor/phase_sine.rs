@@ -93,6 +93,10 @@ impl Formula for PhaseSine {
         &self.single.outputs
     }
 
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        Some(prior.largest_sd(&[0])? * self.frequency.abs())
+    }
+
     fn exact_moments(&self) -> Option<&dyn ExactMoments> {
         Some(self)
     }

@@ -80,6 +80,10 @@ impl Formula for PolarToCartesian {
         &self.outputs
     }
 
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        prior.largest_sd(&[1])
+    }
+
     fn exact_moments(&self) -> Option<&dyn ExactMoments> {
         Some(self)
     }

@@ -1,6 +1,7 @@
 use super::kinds::{Kind, built};
 use super::lookout::{Coordinates, Lookout, Parameters, azimuth_and_elevation, squared_range, with_position};
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "range-azimuth-elevation",
@@ -65,6 +66,10 @@ impl Formula for RangeAzimuthElevation {
 
     fn outputs(&self) -> &[Output] {
         &self.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        self.lookout.spread(prior, self.lookout.reads.len())
     }
 
     #[inline(always)]

@@ -1,6 +1,7 @@
 use super::kinds::{Kind, built};
 use super::lookout::{Coordinates, Lookout, Parameters, seen_from, with_position};
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "range-bearing",
@@ -58,6 +59,10 @@ impl Formula for RangeBearing {
 
     fn outputs(&self) -> &[Output] {
         &self.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        self.lookout.spread(prior, self.lookout.reads.len())
     }
 
     #[inline(always)]

@@ -1,6 +1,7 @@
 use super::kinds::{Kind, built};
 use super::lookout::{Coordinates, Lookout, MovingParameters, range_and_rate, with_motion};
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "range-doppler",
@@ -65,6 +66,10 @@ impl Formula for RangeDoppler {
 
     fn outputs(&self) -> &[Output] {
         &self.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        self.lookout.spread(prior, self.lookout.reads.len() / 2)
     }
 
     #[inline(always)]

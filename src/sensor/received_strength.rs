@@ -6,6 +6,7 @@ use super::kinds::{Kind, built};
 use super::lookout::{self, Coordinates, Lookout, squared_range, with_position};
 use super::parameter::{given, positive};
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "received-strength",
@@ -116,6 +117,10 @@ impl Formula for ReceivedStrength {
 
     fn outputs(&self) -> &[Output] {
         &self.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        self.lookout.spread(prior, self.lookout.reads.len())
     }
 
     #[inline(always)]

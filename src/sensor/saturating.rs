@@ -4,6 +4,7 @@ use super::kinds::{Kind, built};
 use super::parameter::{above_zero, finite};
 use super::single::Single;
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "saturating",
@@ -83,6 +84,10 @@ impl Formula for Saturating {
 
     fn outputs(&self) -> &[Output] {
         &self.single.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        Some(prior.largest_sd(&[0])? * (self.gain / self.limit).abs())
     }
 
     #[inline(always)]

@@ -4,6 +4,7 @@ use super::kinds::{Kind, built};
 use super::parameter::{above_zero, checked_components, checked_row};
 use super::position::first_three;
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "stereo-disparity",
@@ -83,6 +84,10 @@ impl Formula for StereoDisparity {
 
     fn outputs(&self) -> &[Output] {
         &self.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        Some(prior.largest_sd(&[0, 1, 2])? / prior.mean()[2].abs())
     }
 
     #[inline(always)]

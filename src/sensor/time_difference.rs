@@ -4,6 +4,7 @@ use super::kinds::{Kind, built};
 use super::lookout::{Coordinates, Lookout, squared_range, with_position};
 use super::parameter::{given, positive};
 use super::{Formula, Number, Output, ParameterError};
+use crate::gaussian::Gaussian;
 
 pub(super) const KIND: Kind = Kind {
     name: "time-difference",
@@ -78,6 +79,10 @@ impl Formula for TimeDifference {
 
     fn outputs(&self) -> &[Output] {
         &self.outputs
+    }
+
+    fn natural_spread(&self, prior: &Gaussian) -> Option<f64> {
+        self.lookout.spread(prior, self.lookout.reads.len())
     }
 
     #[inline(always)]

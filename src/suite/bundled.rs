@@ -65,6 +65,11 @@ pub(super) const ALL: &[Bundled] = &[
         text: include_str!("../../suites/hull-watch.toml"),
     },
     Bundled {
+        name: "buoy-controllers",
+        summary: "Buoy controllers of Brackmoor Sound: the same methods in double and in single precision",
+        text: include_str!("../../suites/buoy-controllers.toml"),
+    },
+    Bundled {
         name: "smoke",
         summary: "A few cases of every sensor, measured in seconds",
         text: include_str!("../../suites/smoke.toml"),

@@ -1,3 +1,5 @@
+use std::sync::Arc;
+
 use nalgebra::{DMatrix, DVector};
 use serde::{Deserialize, Serialize};
 use serde_json::{Map, Value};
@@ -5,6 +7,7 @@ use serde_json::{Map, Value};
 use crate::gaussian::{Gaussian, GaussianError, Marginal, checked_covariance};
 use crate::sensor::{self, Sensor, SensorSpec, Written};
 
+use super::Setting;
 use crate::wording::{flaw, plain};
 
 /// One question: one sensor with its parameters, one prior, one noise.
@@ -15,6 +18,8 @@ pub struct Case {
     prior: Gaussian,
     marginal: Marginal,
     noise: Noise,
+    family: Arc<str>,
+    settings: Vec<Setting>,
 }
 
 /// The noise of a case: what is added to the outputs, and what acts inside the sensor.
@@ -133,7 +138,22 @@ impl Case {
             }
         };
         let noise = Noise { additive, inside };
-        Ok(Self { id, sensor, prior, marginal, noise })
+        Ok(Self { id, sensor, prior, marginal, noise, family: "".into(), settings: Vec::new() })
+    }
+
+    /// The same case, as one of a family of a suite.
+    pub(super) fn in_family(self, family: Arc<str>, settings: Vec<Setting>) -> Self {
+        Self { family, settings, ..self }
+    }
+
+    /// The family of a suite that it comes from; empty for a case record.
+    pub fn family(&self) -> &str {
+        &self.family
+    }
+
+    /// The values that its family sweeps or draws, as they stand in this case; none for a case record.
+    pub fn settings(&self) -> &[Setting] {
+        &self.settings
     }
 
     /// Reads a case record: an object with `case`, `sensor`, `prior` and perhaps `noise`.

@@ -9,11 +9,11 @@ use super::grid::MOST_CASES;
 use super::node::{Item, Node};
 use super::{Bundled, Case, SuiteError, bundled, name, records, settings, source};
 use crate::method::MethodSpec;
-use crate::trust::Limits;
+use crate::trust::{Claim, Limits};
 use crate::wording::{flaw, proposal};
 
 /// Everything at the top of a suite.
-const KEYS: [&str; 12] = [
+const KEYS: [&str; 13] = [
     "title",
     "note",
     "seed",
@@ -21,6 +21,7 @@ const KEYS: [&str; 12] = [
     "cap",
     "draws",
     "limits",
+    "envelope",
     "method",
     "family",
     "sensor",
@@ -47,6 +48,8 @@ pub struct Suite {
     pub cap: Option<u64>,
     /// What a method must keep to be trusted.
     pub limits: Limits,
+    /// What envelopes are asked to promise, if it asks for any.
+    pub envelope: Option<Claim>,
     /// The methods to measure, if it names any.
     pub methods: Option<Vec<MethodSpec>>,
     /// Its cases, at least one, with different names.
@@ -121,6 +124,7 @@ impl Suite {
             precision: settings::precision(&root)?,
             cap: settings::whole(&root, "cap", 1)?,
             limits: settings::limits(&root)?,
+            envelope: settings::envelope(&root)?,
             methods: settings::methods(&root)?,
             cases: cases(&root, name, seed.unwrap_or(1))?,
         })
@@ -151,6 +155,7 @@ impl Suite {
             precision: None,
             cap: None,
             limits: Limits::default(),
+            envelope: None,
             methods: None,
             cases,
         })
@@ -174,6 +179,7 @@ impl Suite {
             precision: None,
             cap: None,
             limits: Limits::default(),
+            envelope: None,
             methods: None,
             cases: records.cases,
         })

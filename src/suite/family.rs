@@ -1,5 +1,7 @@
 //! A family of cases: its sections, its grid, its draws.
 
+use std::sync::Arc;
+
 use super::case::{Case, CaseError};
 use super::grid::{Grid, Sections};
 use super::node::{Node, Place};
@@ -73,9 +75,12 @@ impl Family {
     pub(super) fn cases(&self, seed: u64) -> Result<Vec<Case>, SuiteError> {
         // Three digits at least, so that a family that grows keeps the names of its cases.
         let width = (self.size - 1).to_string().len().max(3);
+        let name: Arc<str> = self.name.as_str().into();
         let case = |index| {
             let id = format!("{}-{index:0width$}", self.name);
             let made = self.case(&id, self.grid.case(index, seed, &self.name));
+            let settings = self.grid.settings(index, seed, &self.name);
+            let made = made.map(|case| case.in_family(Arc::clone(&name), settings));
             // What is wrong in the first case is hardly the grid's doing.
             if index == 0 { made } else { made.map_err(|e| e.in_case(&id)) }
         };

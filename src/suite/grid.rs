@@ -1,8 +1,11 @@
 //! Sweeps combine as a grid, draws are made anew at every point of it.
 
+use std::sync::Arc;
+
 use super::SuiteError;
 use super::draw::{Draw, stream};
 use super::node::{Item, Node, Place};
+use super::setting::Setting;
 use super::sweep::Sweep;
 
 /// The most cases that one suite may hold.
@@ -25,6 +28,8 @@ enum Variation {
 pub(super) struct Grid {
     sections: Sections,
     variations: Vec<(Place, Variation)>,
+    /// Their keys in the family, shared by all its cases.
+    keys: Vec<Arc<str>>,
     /// Numbers of the variations in the order in which they were written: the first one runs slowest.
     order: Vec<usize>,
     draws: u64,
@@ -42,7 +47,8 @@ impl Grid {
         }
         let mut order: Vec<usize> = (0..variations.len()).collect();
         order.sort_by_key(|&i| variations[i].0.offset);
-        Ok(Self { sections: taken, variations, order, draws: 1 })
+        let keys = variations.iter().map(|(place, _)| own_key(place)).collect();
+        Ok(Self { sections: taken, variations, keys, order, draws: 1 })
     }
 
     /// The grid with `draws` cases (at least 1) drawn at every point.
@@ -83,6 +89,21 @@ impl Grid {
 
     /// The sections of case `index`, with every value in place.
     pub(super) fn case(&self, index: u64, seed: u64, family: &str) -> Sections {
+        let values = self.values(index, seed, family);
+        self.sections.each_ref().map(|section| section.as_ref().map(|node| put(node, &values)))
+    }
+
+    /// The numbers that make case `index` another than its neighbours, in the order in which they were written.
+    pub(super) fn settings(&self, index: u64, seed: u64, family: &str) -> Vec<Setting> {
+        let values = self.values(index, seed, family);
+        let setting = |&i: &usize| {
+            let swept = matches!(self.variations[i].1, Variation::Sweep(_));
+            Setting::of(&self.keys[i], values[i].as_ref()?, swept)
+        };
+        self.order.iter().filter_map(setting).collect()
+    }
+
+    fn values(&self, index: u64, seed: u64, family: &str) -> Vec<Option<Node>> {
         let mut point = index / self.draws;
         let mut values: Vec<Option<Node>> = vec![None; self.variations.len()];
         for &i in self.order.iter().rev() {
@@ -97,7 +118,15 @@ impl Grid {
                 values[i] = Some(draw.value(&mut stream));
             }
         }
-        self.sections.each_ref().map(|section| section.as_ref().map(|node| put(node, &values)))
+        values
+    }
+}
+
+/// `family[2].prior.range` is the family's own `prior.range`.
+fn own_key(place: &Place) -> Arc<str> {
+    match place.key.strip_prefix("family[").and_then(|rest| rest.split_once("].")) {
+        Some((_, own)) => own.into(),
+        None => (&*place.key).into(),
     }
 }
 

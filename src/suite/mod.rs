@@ -42,6 +42,7 @@
 //! | `precision`, `cap` | standardised standard error asked, most samples a case may take |
 //! | `draws` | cases drawn at every grid point; needed when a value is drawn |
 //! | `[limits]` | see [`Limits`](crate::trust::Limits) |
+//! | `[envelope]` | asks for envelopes, see [`Claim`](crate::trust::Claim) |
 //! | `[[method]]` | `id` and parameters, see [`method`](crate::method) |
 //! | `[sensor]` | `kind` and parameters, see [`sensor`](crate::sensor) |
 //! | `[prior]` | `mean` and `covariance`; or `mean`, `sd` and perhaps `correlation`, a matrix or triples `[i, j, rho]`; or as an observer sees it, by `range`, `bearing` and what goes with them, below |
@@ -124,6 +125,7 @@ mod prior;
 mod quantity;
 mod records;
 mod sensor;
+mod setting;
 mod settings;
 mod sighting;
 mod source;
@@ -137,3 +139,4 @@ pub use case::{Case, CaseError, Noise};
 pub use definition::Suite;
 pub(crate) use definition::hex;
 pub use error::SuiteError;
+pub use setting::Setting;

@@ -5,7 +5,7 @@ use serde_json::Value;
 use super::SuiteError;
 use super::node::Node;
 use crate::method::MethodSpec;
-use crate::trust::Limits;
+use crate::trust::{Claim, Limits};
 use crate::wording::plain;
 
 /// The whole number of a key, if it stands there.
@@ -32,6 +32,17 @@ pub(super) fn limits(root: &Node) -> Result<Limits, SuiteError> {
     })?;
     limits.check().map_err(|(key, message)| section.at(key).error(message))?;
     Ok(limits)
+}
+
+/// `[envelope]`: what envelopes are asked to promise; `None` if none is asked for.
+pub(super) fn envelope(root: &Node) -> Result<Option<Claim>, SuiteError> {
+    let Some(section) = root.get("envelope") else { return Ok(None) };
+    let claim: Claim = serde_path_to_error::deserialize(Value::Object(section.object()?)).map_err(|e| {
+        let at = section.at(&e.path().to_string());
+        at.error(plain(&e.inner().to_string()))
+    })?;
+    claim.check().map_err(|(key, message)| section.at(key).error(message))?;
+    Ok(Some(claim))
 }
 
 /// `[[method]]` tables; `None` if there is none.

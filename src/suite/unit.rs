@@ -54,6 +54,11 @@ impl Dimension {
     pub(super) const ALL: [Self; 7] =
         [Self::Length, Self::Angle, Self::Time, Self::Speed, Self::AngularRate, Self::Frequency, Self::Share];
 
+    /// The unit in which its numbers are kept; a share has none.
+    pub(super) fn base_unit(self) -> Option<&'static str> {
+        UNITS.iter().find(|u| u.1 == self && u.2 == 1.0).map(|u| u.0)
+    }
+
     /// The dimension that `unit` is the base unit of.
     pub(super) fn of_base(unit: &str) -> Option<Self> {
         UNITS.iter().find(|u| u.0 == unit && u.2 == 1.0).map(|u| u.1)
@@ -93,8 +98,8 @@ impl Dimension {
 
     /// A value in base units, written with a unit.
     pub(super) fn write(self, value: f64) -> String {
-        match UNITS.iter().find(|u| u.1 == self && u.2 == 1.0) {
-            Some((unit, ..)) => format!("\"{value} {unit}\""),
+        match self.base_unit() {
+            Some(unit) => format!("\"{value} {unit}\""),
             None => format!("\"{} %\"", 100.0 * value),
         }
     }

@@ -1,13 +1,17 @@
 use serde::Serialize;
 
 use crate::gaussian::Moments;
-use crate::method::{Counted, Evaluations, MethodSpec, Problem, Refusal};
+use crate::method::{Evaluations, Refusal};
+use crate::outside::Flaw;
 use crate::reference::{Reference, Sampler, Soundness};
 use crate::score::{Floor, Invalid, Scorer, Scores};
 use crate::suite::Case;
 use crate::trust::{Standing, Trust, Verdict};
 
 use super::SurveyPlan;
+use super::cause::leading_cause;
+use super::entrant::Candidate;
+use super::regime::{Indices, OpinionsOf, Panel, indices};
 
 /// What a survey found on one case.
 #[derive(Debug, Clone)]
@@ -22,7 +26,9 @@ pub struct CaseResult {
     pub floor: Floor,
     /// The floor against its limit.
     pub floor_standing: Standing,
-    /// One a method, in the plan's order.
+    /// Where the case lies.
+    pub indices: Indices,
+    /// One an entrant, in the plan's order.
     pub answers: Vec<Answer>,
 }
 
@@ -44,33 +50,18 @@ pub type Answer = Result<Answered, Refusal>;
 /// A method's answer on one case.
 #[derive(Debug, Clone)]
 pub struct Answered {
-    /// Its moments of the whole state.
-    pub moments: Moments,
-    /// What it evaluated, counted.
-    pub evaluations: Evaluations,
-    /// Its scores, or why it is no Gaussian.
+    /// Its moments of the whole state, or why an outside implementation has none.
+    pub moments: Result<Moments, Flaw>,
+    /// What richer rules say of it.
+    pub opinions: OpinionsOf,
+    /// What it evaluated, counted; `None` for an outside implementation.
+    pub evaluations: Option<Evaluations>,
+    /// Its scores, or why it has none.
     pub scores: Result<Scores, Invalid>,
     /// The verdict.
     pub verdict: Verdict,
-}
-
-/// A method's moments of the whole state, yet to be scored.
-struct Candidate {
-    moments: Moments,
-    evaluations: Evaluations,
-}
-
-fn candidate(case: &Case, method: &MethodSpec) -> Result<Candidate, Refusal> {
-    let prior = case.marginal().law();
-    let (a, p) = (prior.dimension(), case.sensor().outputs().len());
-    method.method().serves(case.sensor())?;
-    let mut transform = method.plan(a, p)?;
-    let counted = Counted::new(case.sensor());
-    let noise = case.noise_or_zero();
-    let mut moments = Moments::zeros(a, p);
-    transform.apply(Problem { sensor: &counted, prior, noise: &noise }, &mut moments);
-    moments.cross_covariance = case.marginal().lift(moments.cross_covariance);
-    Ok(Candidate { moments, evaluations: counted.evaluations() })
+    /// The leading cause of a rejection, in one sentence.
+    pub cause: Option<String>,
 }
 
 /// Samples, scores and judges one case: deepens the reference until it is as precise as asked and every
@@ -82,7 +73,7 @@ pub(super) fn run_case(
     sampler: &mut Sampler<'_>,
     stop: &dyn Fn() -> bool,
 ) -> Option<CaseResult> {
-    let candidates: Vec<Result<Candidate, Refusal>> = plan.methods.iter().map(|m| candidate(case, m)).collect();
+    let candidates: Vec<Result<Candidate, Refusal>> = plan.entrants().map(|e| e.candidate(case, index)).collect();
     loop {
         if stop() {
             return None;
@@ -113,14 +104,25 @@ pub(super) fn run_case(
         // What no verdict can rest on says nothing, of the case no more than of a method.
         let doubt = reference.reason.as_ref().map(|reason| format!("no verdict rests on this reference: {reason}"));
         let floor_standing = if doubt.is_some() { Standing::Open } else { floor_standing };
+        let panel = Panel::of(case);
         let answers = candidates
             .into_iter()
             .zip(judged)
-            .map(|(candidate, judged)| {
+            .zip(plan.entrants())
+            .map(|((candidate, judged), entrant)| {
                 let Candidate { moments, evaluations } = candidate?;
                 let (scores, verdict) = judged?;
-                let verdict = doubt.clone().map_or(verdict, self::undecided);
-                Ok(Answered { moments, evaluations, scores, verdict })
+                // That there is no answer needs no reference.
+                let doubt = doubt.clone().filter(|_| moments.is_ok());
+                let verdict = doubt.map_or(verdict, self::undecided);
+                let opinions = moments.as_ref().map(|m| panel.on(case, entrant.label(), m)).unwrap_or_default();
+                let cause = match (&verdict, &moments) {
+                    (Verdict { trust: Trust::Rejected, finding: Some(finding), .. }, Ok(moments)) => {
+                        leading_cause(case, &reference, moments, finding)
+                    }
+                    _ => None,
+                };
+                Ok(Answered { moments, opinions, evaluations, scores, verdict, cause })
             })
             .collect();
         let stop = match reference.soundness {
@@ -130,11 +132,24 @@ pub(super) fn run_case(
             _ => Stop::Decided,
         };
         let reference = Reference { replicates: Vec::new(), ..reference };
-        return Some(CaseResult { index, reference, stop, floor, floor_standing, answers });
+        let indices = indices(case);
+        return Some(CaseResult { index, reference, stop, floor, floor_standing, indices, answers });
     }
 }
 
-fn judge(scorer: &Scorer<'_>, moments: &Moments, plan: &SurveyPlan) -> (Result<Scores, Invalid>, Verdict) {
+fn judge(
+    scorer: &Scorer<'_>,
+    moments: &Result<Moments, Flaw>,
+    plan: &SurveyPlan,
+) -> (Result<Scores, Invalid>, Verdict) {
+    let moments = match moments {
+        Ok(moments) => moments,
+        Err(flaw) => {
+            let scores = Err(Invalid::NoAnswer(flaw.to_string()));
+            let verdict = plan.judge.verdict(&scores);
+            return (scores, verdict);
+        }
+    };
     let scores = scorer.score(moments);
     let verdict = if !scorer.is_defined() {
         undecided("the covariance of the measurement is singular: add noise or drop an output".into())

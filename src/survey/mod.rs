@@ -1,7 +1,10 @@
-//! Surveys: every case of a suite sampled, every method scored and judged, cases over threads.
+//! Surveys: every case of a suite sampled, every method and outside implementation scored and judged, cases over threads.
 
 mod case_run;
+mod cause;
+mod entrant;
 mod kept;
+mod regime;
 mod run;
 mod settings;
 mod share;
@@ -10,6 +13,9 @@ mod timing;
 
 pub use crate::shard::{Shard, ShardError};
 pub use case_run::{Answer, Answered, CaseResult, Stop};
+pub use entrant::Entrant;
+pub use regime::{Indices, OpinionsOf};
+pub(crate) use regime::{excess_over, regime_columns};
 pub use run::{SurveyResult, Unwatched, Watch, survey};
 pub use settings::{SurveyError, SurveyPlan, SurveySettings};
 pub use share::{ShareResult, sample_share};

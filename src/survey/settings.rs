@@ -1,5 +1,6 @@
 use super::Shard;
 use crate::method::{MethodSpec, default_methods};
+use crate::outside::Outside;
 use crate::reference::{SamplerError, SamplerSettings, Store};
 use crate::suite::Suite;
 use crate::trust::{Judge, Limits};
@@ -28,6 +29,8 @@ pub struct SurveyPlan {
     pub sampler: SamplerSettings,
     /// Methods, in the order of rows.
     pub methods: Vec<MethodSpec>,
+    /// Outside implementations, whose rows come after; see [`SurveyPlan::admit`].
+    pub outside: Vec<Outside>,
     /// Limits of trust.
     pub limits: Limits,
     /// Who judges.
@@ -87,6 +90,18 @@ impl SurveyPlan {
         }
         let judge = Judge::new(suite.limits, sampler.replicates, sampler.looks());
         let (shard, store) = (settings.shard, settings.store.clone());
-        Ok(Self { sampler, methods, limits: suite.limits, judge, shard, store })
+        Ok(Self { sampler, methods, outside: Vec::new(), limits: suite.limits, judge, shard, store })
+    }
+
+    /// Takes an outside implementation in, with its answers to this plan's suite and part of it.
+    ///
+    /// # Errors
+    /// [`SurveyError::MethodTwice`] if its name is taken.
+    pub fn admit(&mut self, outside: Outside) -> Result<(), SurveyError> {
+        if self.entrants().any(|entrant| entrant.label() == outside.name()) {
+            return Err(SurveyError::MethodTwice(outside.name().into()));
+        }
+        self.outside.push(outside);
+        Ok(())
     }
 }

@@ -30,16 +30,17 @@ pub struct Summary {
     pub noise_inside: usize,
     /// Cases sampled by plain streams, for want of nets in so many dimensions.
     pub streamed: usize,
-    /// One a method, in the plan's order.
+    /// One an entrant, in the plan's order.
     pub methods: Vec<MethodSummary>,
 }
 
-/// How one method fared in a suite.
+/// How one method or outside implementation fared in a suite.
 #[derive(Debug, Clone, PartialEq)]
 pub struct MethodSummary {
     /// The method's label.
     pub label: String,
-    /// What a transform evaluates at the least and at the most; `None` if it was skipped everywhere.
+    /// What a transform evaluates at the least and at the most; `None` if it was skipped everywhere, or is
+    /// outside and not counted.
     pub evaluations: Option<(Evaluations, Evaluations)>,
     /// Time of a transform as a ratio to first-order Taylor, quartiles over cases.
     pub time_ratio: Option<Quartiles>,
@@ -78,15 +79,15 @@ pub fn summarise(survey: &SurveyResult<'_>) -> Summary {
         noiseless: count(&|c| survey.suite.cases[c.index].noise().is_none() && c.floor != Floor::NoiseInside),
         noise_inside: count(&|c| c.floor == Floor::NoiseInside),
         streamed: count(&|c| c.reference.source == PointSource::Streams),
-        methods: (0..survey.plan.methods.len()).map(|m| summarise_method(survey, m)).collect(),
+        methods: survey.plan.entrants().enumerate().map(|(m, e)| summarise_method(survey, m, e.label())).collect(),
     }
 }
 
-fn summarise_method(survey: &SurveyResult<'_>, m: usize) -> MethodSummary {
+fn summarise_method(survey: &SurveyResult<'_>, m: usize, label: &str) -> MethodSummary {
     let mut summary = MethodSummary {
-        label: survey.plan.methods[m].label().into(),
+        label: label.into(),
         evaluations: None,
-        time_ratio: survey.timing.as_ref().and_then(|t| t.ratio[m]),
+        time_ratio: survey.timing.as_ref().and_then(|t| t.ratio.get(m).copied().flatten()),
         trusted: 0,
         rejected: 0,
         undecided: 0,
@@ -104,18 +105,23 @@ fn summarise_method(survey: &SurveyResult<'_>, m: usize) -> MethodSummary {
                 continue;
             }
         };
-        let here = answered.evaluations;
-        let (least, most) = summary.evaluations.unwrap_or((here, here));
-        summary.evaluations = Some((
-            if here.values < least.values { here } else { least },
-            if here.values > most.values { here } else { most },
-        ));
+        if let Some(here) = answered.evaluations {
+            let (least, most) = summary.evaluations.unwrap_or((here, here));
+            summary.evaluations = Some((
+                if here.values < least.values { here } else { least },
+                if here.values > most.values { here } else { most },
+            ));
+        }
         match answered.verdict.trust {
             Trust::Trusted => summary.trusted += 1,
             Trust::Undecided => summary.undecided += 1,
             Trust::Rejected => {
                 summary.rejected += 1;
-                let fault = answered.verdict.finding.map_or("no Gaussian", |f| f.fault());
+                let fault = match (&answered.verdict.finding, &answered.moments) {
+                    (Some(finding), _) => finding.fault(),
+                    (None, Ok(_)) => "no Gaussian",
+                    (None, Err(_)) => "no valid answer",
+                };
                 *faults.entry(fault).or_default() += 1;
             }
         }

@@ -36,6 +36,17 @@ pub enum Standing {
     Open,
 }
 
+impl Standing {
+    /// Its name in files.
+    pub fn name(self) -> &'static str {
+        match self {
+            Self::Kept => "kept",
+            Self::Broken => "broken",
+            Self::Open => "open",
+        }
+    }
+}
+
 /// Which side of a limit is forbidden.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum Side {
@@ -164,11 +175,11 @@ impl Judge {
         let scores = match scores {
             Ok(scores) => scores,
             Err(invalid) => {
-                return Verdict {
-                    trust: Trust::Rejected,
-                    finding: None,
-                    reason: format!("no Gaussian: {invalid}"),
+                let reason = match invalid {
+                    Invalid::NoAnswer(why) => why.clone(),
+                    _ => format!("no Gaussian: {invalid}"),
                 };
+                return Verdict { trust: Trust::Rejected, finding: None, reason };
             }
         };
         let findings = self.findings(scores);

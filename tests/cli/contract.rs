@@ -287,11 +287,12 @@ pub enum Verdict {
     Skipped,
 }
 
-/// A row of `scores.csv`: an empty field is a value that does not exist.
+/// A row of `scores.csv`: an empty field is a value that does not exist. Behind these columns come the second opinions and what
+/// the suite sweeps and draws.
 #[derive(Debug, Deserialize)]
-#[serde(deny_unknown_fields)]
 pub struct Row {
     pub case: String,
+    pub family: String,
     pub method: String,
     pub inputs: u64,
     pub values: Option<u64>,
@@ -299,6 +300,7 @@ pub struct Row {
     pub hessians: Option<u64>,
     pub verdict: Verdict,
     pub reason: String,
+    pub cause: String,
     pub mean_error: Option<f64>,
     pub mean_error_standard_error: Option<f64>,
     pub covariance_error: Option<f64>,
@@ -320,12 +322,17 @@ pub struct Row {
     /// A number, or `unbounded`.
     pub floor: String,
     pub floor_standard_error: Option<f64>,
+    pub floor_standing: String,
     pub time_ns: Option<f64>,
     pub time_ns_lower_quartile: Option<f64>,
     pub time_ns_upper_quartile: Option<f64>,
     pub time_ratio: Option<f64>,
     pub time_ratio_lower_quartile: Option<f64>,
     pub time_ratio_upper_quartile: Option<f64>,
+    pub curvature: Option<f64>,
+    pub bend_over_noise: Option<f64>,
+    pub information: Option<f64>,
+    pub spread: Option<f64>,
 }
 
 impl Row {
@@ -372,6 +379,32 @@ pub struct Manifest {
     pub times: Times,
     /// Only where methods were timed.
     pub cost: Option<Vec<Cost>>,
+    /// Only where implementations outside were scored.
+    pub answers: Option<Vec<Answers>>,
+}
+
+/// An implementation outside: a command, or a file of answers.
+#[derive(Debug, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Outside {
+    pub name: String,
+    pub command: Option<Vec<String>>,
+    pub timeout_seconds: Option<f64>,
+    pub file: Option<String>,
+    pub sha256: Option<String>,
+}
+
+#[derive(Debug, Deserialize, PartialEq, Eq)]
+#[serde(deny_unknown_fields)]
+pub struct Answers {
+    pub name: String,
+    pub asked: u64,
+    pub valid: u64,
+    pub invalid: u64,
+    pub missing: u64,
+    pub unknown: u64,
+    pub unreadable: u64,
+    pub failure: Option<String>,
 }
 
 #[derive(Debug, Deserialize)]
@@ -397,6 +430,8 @@ pub struct Settings {
     pub cap: u64,
     pub replicates: u64,
     pub methods: Vec<String>,
+    /// Only where there are any.
+    pub outside: Option<Vec<Outside>>,
     pub limits: HashMap<String, f64>,
 }
 

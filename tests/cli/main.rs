@@ -6,8 +6,11 @@ mod catalogue;
 mod contract;
 mod desk;
 mod endings;
+mod mark;
 mod odd_input;
 mod options;
+#[cfg(unix)]
+mod outside;
 mod results;
 mod shards;
 mod store;

@@ -49,8 +49,12 @@ impl Program {
         {
             return a;
         }
-        // A constant that is not a number equals nothing, itself included: it would only be kept twice.
-        if let Some(place) = self.steps.iter().position(|&known| known == step) {
+        // Constants by their bits: zero has two signs.
+        let same = |known: Step| match (known, step) {
+            (Step::Constant(a), Step::Constant(b)) => a.to_bits() == b.to_bits(),
+            _ => known == step,
+        };
+        if let Some(place) = self.steps.iter().position(|&known| same(known)) {
             return place;
         }
         self.steps.push(step);
