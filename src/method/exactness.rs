@@ -51,7 +51,7 @@ impl Display for Degree {
     fn fmt(&self, f: &mut Formatter<'_>) -> fmt::Result {
         match self {
             Self::UpTo(degree) => degree.fmt(f),
-            Self::Every => f.write_str("every"),
+            Self::Every => f.write_str("all"),
         }
     }
 }

@@ -149,7 +149,8 @@ pub fn method_table() -> String {
             "a: number of state components that the sensor reads, for points are laid in these alone.",
             "evaluations: of the sensor in one transform with the default parameters, at a = 2, 4, 6 and 10 (once where all are \
              equal), where no output is angular. J: a Jacobian; H: a set of Hessians; M: a set of exact moments, which only some sensors know; -: not served.",
-            "exact: up to which degree of a polynomial sensor, in the mean, the cross-covariance and the covariance.",
+            "exact: up to which degree of a polynomial sensor, in the mean, the cross-covariance and the covariance; all: for \
+             every sensor that is served.",
             "negative: at which of these a a weight is below zero, so that a covariance can come out indefinite; \
              nothing: no weighted point set.",
             "`catalogue methods NAME` shows all of one: parameters with their defaults, other parameters to try, source.",
@@ -209,7 +210,7 @@ fn negative(method: &MethodSpec) -> String {
     }
     let at: Vec<_> =
         SHOWN.into_iter().filter(|&a| has_negative_weights(method, a)).map(|a| a.to_string()).collect();
-    if at.is_empty() { "none".into() } else { format!("a = {}", at.join(", ")) }
+    if at.is_empty() { "none".into() } else { at.join(", ") }
 }
 
 fn has_negative_weights(method: &MethodSpec, a: usize) -> bool {

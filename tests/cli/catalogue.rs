@@ -127,9 +127,7 @@ fn a_method_is_shown_whole() {
     }
     let table = desk.succeed(&["catalogue", "methods"]);
     let flat = table.split_whitespace().collect::<Vec<_>>().join(" ");
-    for row in
-        ["5, 9, 13, 21 3, 2, 1 a = 4, 6, 10", "9, 33, 73, 201 5, 4, 2 a = 6, 10", "4, 8, 12, 20 3, 2, 1 none"]
-    {
+    for row in ["5, 9, 13, 21 3, 2, 1 4, 6, 10", "9, 33, 73, 201 5, 4, 2 6, 10", "4, 8, 12, 20 3, 2, 1 none"] {
         assert!(flat.contains(row), "{row} is missing in {table}");
     }
 }
