@@ -16,12 +16,12 @@ use super::Failure;
 use super::progress::{Progress, heed_interrupts};
 use super::stdout::Stdout;
 
-/// How suites are measured and where results go.
+/// How cases are sampled, and where what is found goes.
 #[derive(Debug, Args)]
-pub struct Measuring {
+pub struct Sampling {
     /// Where results folders go
     #[arg(long, value_name = "DIR", default_value = "results")]
-    out: PathBuf,
+    pub out: PathBuf,
     /// Threads; all cores unless told. Results do not depend on it
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=1024))]
     threads: Option<u16>,
@@ -34,9 +34,6 @@ pub struct Measuring {
     /// Methods, such as taylor-1,gauss-hermite:order=5, or every (see `catalogue methods`)
     #[arg(long, value_name = "M,...", value_delimiter = ',')]
     methods: Option<Vec<String>>,
-    /// Do part K of N of every suite's cases, to be joined by `merge`; parts are not timed
-    #[arg(long, value_name = "K/N")]
-    shard: Option<Shard>,
     /// Where sampled references are kept and found again; `.references` in the --out folder unless told
     #[arg(long, value_name = "DIR")]
     store: Option<PathBuf>,
@@ -45,28 +42,30 @@ pub struct Measuring {
     fresh: bool,
     /// Leave the timing phase out
     #[arg(long)]
-    no_timing: bool,
+    pub no_timing: bool,
 }
 
-impl Measuring {
-    /// The plan of every suite.
-    pub fn plans(&self, suites: Vec<Suite>, seed: Option<u64>) -> Result<Vec<(Suite, SurveyPlan)>, Failure> {
-        let settings = SurveySettings {
+/// How suites are measured.
+#[derive(Debug, Args)]
+pub struct Measuring {
+    #[command(flatten)]
+    pub sampling: Sampling,
+    /// Do part K of N of every suite's cases, to be joined by `merge`; parts are not timed
+    #[arg(long, value_name = "K/N")]
+    shard: Option<Shard>,
+}
+
+impl Sampling {
+    /// What is asked for beyond what a suite says.
+    pub fn settings(&self, seed: Option<u64>) -> Result<SurveySettings, Failure> {
+        Ok(SurveySettings {
             seed,
             precision: self.precision,
             cap: self.cap,
             methods: self.methods.as_deref().map(methods).transpose()?,
-            shard: self.shard,
+            shard: None,
             store: None,
-        };
-        suites
-            .into_iter()
-            .map(|suite| {
-                let plan = SurveyPlan::new(&suite, &settings)
-                    .map_err(|e| Failure::Input(anyhow!("{}: {e}", self.blamed(&e, &suite))))?;
-                Ok((suite, plan))
-            })
-            .collect()
+        })
     }
 
     /// Who said what cannot be meant: the option, where there is one, else the suite.
@@ -96,6 +95,21 @@ impl Measuring {
         let store = Store::open(&folder).context("store of references").map_err(Failure::Input)?;
         Ok(if self.fresh { store.fresh() } else { store })
     }
+}
+
+impl Measuring {
+    /// The plan of every suite.
+    pub fn plans(&self, suites: Vec<Suite>, seed: Option<u64>) -> Result<Vec<(Suite, SurveyPlan)>, Failure> {
+        let settings = SurveySettings { shard: self.shard, ..self.sampling.settings(seed)? };
+        suites
+            .into_iter()
+            .map(|suite| {
+                let plan = SurveyPlan::new(&suite, &settings)
+                    .map_err(|e| Failure::Input(anyhow!("{}: {e}", self.sampling.blamed(&e, &suite))))?;
+                Ok((suite, plan))
+            })
+            .collect()
+    }
 
     /// Measures every suite and writes its results folder. `outside` gives the outside implementations that have answered
     /// a suite; all of them have before anything is sampled.
@@ -107,7 +121,7 @@ impl Measuring {
         let mut jobs = plans
             .into_iter()
             .map(|(suite, plan)| {
-                let folder = ResultsFolder::open(&self.out, &suite.name)
+                let folder = ResultsFolder::open(&self.sampling.out, &suite.name)
                     .context("results folder")
                     .map_err(Failure::Input)?;
                 Ok((suite, plan, folder))
@@ -123,8 +137,8 @@ impl Measuring {
                 );
             }
         }
-        let store = self.store()?;
-        self.make_ready()?;
+        let store = self.sampling.store()?;
+        self.sampling.make_ready()?;
         for (suite, plan, _) in &mut jobs {
             plan.store = Some(store.clone());
             for answered in outside(suite, plan)? {
@@ -136,7 +150,7 @@ impl Measuring {
         for (suite, plan, folder) in &jobs {
             let asked = plan.shard.map_or(suite.cases.len(), |shard| shard.share(suite.cases.len()));
             let progress = Progress::new(&suite.name, asked);
-            let result = survey(suite, plan, !self.no_timing, &progress);
+            let result = survey(suite, plan, !self.sampling.no_timing, &progress);
             progress.finish();
             let conclusions = folder.write(&result).map_err(Failure::unfinished)?;
             write_summary(&result, &summarise(&result), &mut out)?;

@@ -1,5 +1,6 @@
 //! The commands, one file each. Exit codes are decided here and nowhere else.
 
+mod advise;
 mod catalogue;
 mod hand_out;
 mod mark;
@@ -26,6 +27,8 @@ struct Arguments {
 enum Command {
     /// Measure suites: sample references, score and judge methods, write the results folder
     Survey(survey::Arguments),
+    /// Say which method to take for a case, at what price, and what to do where none can be trusted
+    Advise(advise::Arguments),
     /// Write the cases of a suite as case records, for an outside implementation to answer
     HandOut(hand_out::Arguments),
     /// Score the answers of an outside implementation beside the methods, as a survey does
@@ -66,6 +69,7 @@ impl From<std::io::Error> for Failure {
 pub fn main() -> ExitCode {
     let done = match Arguments::parse().command {
         Command::Survey(arguments) => survey::run(&arguments),
+        Command::Advise(arguments) => advise::run(&arguments),
         Command::HandOut(arguments) => hand_out::run(&arguments),
         Command::Mark(arguments) => mark::run(&arguments),
         Command::Merge(arguments) => merge::run(&arguments),

@@ -79,8 +79,8 @@ fn replicates(measuring: &Measuring, plans: &[(Suite, SurveyPlan)], share: Shard
     for (_, plan) in plans {
         plan.sampler.check_share(share).context("--replicates").map_err(Failure::Input)?;
     }
-    let store = measuring.store()?;
-    measuring.make_ready()?;
+    let store = measuring.sampling.store()?;
+    measuring.sampling.make_ready()?;
     let mut out = Stdout::new();
     for (suite, plan) in plans {
         let progress = Progress::new(&suite.name, suite.cases.len());

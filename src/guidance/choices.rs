@@ -2,13 +2,16 @@
 
 use serde::{Deserialize, Serialize};
 
+use crate::method::Evaluations;
+
 /// The work of a transform in numbers that a sensor would have to compute, without unit: 1 a value, 1 + a a Jacobian, 1 + a +
-/// a (a + 1) / 2 a set of Hessians, with a inputs.
+/// a (a + 1) / 2 a set of Hessians or of exact moments, with a inputs.
 ///
 /// Common practice, no source: what differences would cost. Times never decide, for they are of one machine.
-pub fn work(values: u64, jacobians: u64, hessians: u64, inputs: u64) -> u64 {
-    let jacobian = 1 + inputs;
-    values + jacobians * jacobian + hessians * (jacobian + inputs * (inputs + 1) / 2)
+pub fn work(evaluations: Evaluations, inputs: usize) -> u64 {
+    let a = inputs as u64;
+    let Evaluations { values, jacobians, hessians, exact_moments } = evaluations;
+    values + jacobians * (1 + a) + (hessians + exact_moments) * (1 + a + a * (a + 1) / 2)
 }
 
 /// What a method did on one case of a grid.
@@ -116,10 +119,11 @@ mod tests {
 
     #[test]
     fn work_counts_what_differences_would_cost() {
-        assert_eq!(work(5, 0, 0, 2), 5);
-        assert_eq!(work(0, 1, 0, 2), 3);
-        assert_eq!(work(0, 0, 1, 2), 6);
-        assert_eq!(work(0, 0, 1, 6), 28);
+        let none = Evaluations::default();
+        assert_eq!(work(Evaluations { values: 5, ..none }, 2), 5);
+        assert_eq!(work(Evaluations { jacobians: 1, ..none }, 2), 3);
+        assert_eq!(work(Evaluations { hessians: 1, ..none }, 2), 6);
+        assert_eq!(work(Evaluations { exact_moments: 1, ..none }, 6), 28);
     }
 
     fn case(first: f64, trusted: [bool; 3]) -> GridCase {

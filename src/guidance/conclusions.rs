@@ -1,6 +1,7 @@
 use std::io::Read;
 
 use super::{Choice, ChoiceMap, Entry, Evidence, GridCase, MethodEnvelopes, ScoreRow, Scores, ScoresError, work};
+use crate::method::Evaluations;
 use crate::suite::Setting;
 use crate::survey::{Indices, OpinionsOf, regime_columns};
 use crate::trust::{Claim, RegimeIndex};
@@ -25,10 +26,10 @@ struct Fared {
 impl Fared {
     fn read(row: &ScoreRow<'_>, columns: &[String]) -> Result<Self, ScoresError> {
         let count = |column: &str| Ok::<_, ScoresError>(row.number(column)?.map(|n| n as u64));
-        let counts = [count("values")?, count("jacobians")?, count("hessians")?, count("inputs")?];
-        let work = match counts {
-            [Some(values), Some(jacobians), Some(hessians), Some(inputs)] => {
-                Some(work(values, jacobians, hessians, inputs))
+        let counts = [count("values")?, count("jacobians")?, count("hessians")?, count("exact_moments")?];
+        let work = match (counts, count("inputs")?) {
+            ([Some(values), Some(jacobians), Some(hessians), Some(exact_moments)], Some(inputs)) => {
+                Some(work(Evaluations { values, jacobians, hessians, exact_moments }, inputs as usize))
             }
             _ => None,
         };

@@ -1,5 +1,6 @@
 //! Reports: what surveys found, as files for machines and tables for people. Nothing is computed here.
 
+mod advice;
 mod catalogue;
 mod choices;
 mod envelopes;
@@ -13,6 +14,7 @@ mod scores_csv;
 mod table;
 
 pub use crate::wording::printable;
+pub use advice::write_advice;
 pub use catalogue::{method_page, method_table, score_table, sensor_page, sensor_table};
 pub use envelopes::{envelope_sentence, envelope_sentences, write_envelopes};
 pub use folder::{FolderError, ResultsFolder};

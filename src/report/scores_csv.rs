@@ -37,10 +37,21 @@ fn headings(survey: &SurveyResult<'_>) -> Vec<String> {
 }
 
 fn header(headings: &[String]) -> Vec<String> {
-    let mut names: Vec<String> =
-        ["case", "family", "method", "inputs", "values", "jacobians", "hessians", "verdict", "reason", "cause"]
-            .map(String::from)
-            .to_vec();
+    let mut names: Vec<String> = [
+        "case",
+        "family",
+        "method",
+        "inputs",
+        "values",
+        "jacobians",
+        "hessians",
+        "exact_moments",
+        "verdict",
+        "reason",
+        "cause",
+    ]
+    .map(String::from)
+    .to_vec();
     for kind in ScoreKind::ALL {
         names.push(kind.id().into());
         names.push(format!("{}_standard_error", kind.id()));
@@ -76,17 +87,15 @@ fn row(
     let mut fields = vec![case.id().to_string(), case.family().to_string(), label.to_string(), dimension];
     match answer {
         Ok(answered) => {
-            fields.extend(
-                answered
-                    .evaluations
-                    .map_or_else(Default::default, |e| [e.values, e.jacobians, e.hessians].map(|n| n.to_string())),
-            );
+            fields.extend(answered.evaluations.map_or_else(Default::default, |e| {
+                [e.values, e.jacobians, e.hessians, e.exact_moments].map(|n| n.to_string())
+            }));
             let verdict = &answered.verdict;
             fields.extend([verdict.trust.name().to_string(), verdict.reason.clone()]);
             fields.push(answered.cause.clone().unwrap_or_default());
         }
         Err(refusal) => {
-            fields.extend(["", "", "", "skipped"].map(String::from));
+            fields.extend(["", "", "", "", "skipped"].map(String::from));
             fields.extend([refusal.to_string(), String::new()]);
         }
     }

@@ -1,5 +1,5 @@
 /// A number known by sampling, with its standard error.
-#[derive(Debug, Clone, Copy, PartialEq)]
+#[derive(Debug, Clone, Copy, PartialEq, serde::Serialize)]
 pub struct Estimate {
     /// The estimate.
     pub value: f64,

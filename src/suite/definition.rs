@@ -136,6 +136,17 @@ impl Suite {
         })
     }
 
+    /// The case of this name.
+    ///
+    /// # Errors
+    /// [`SuiteError`] if there is none, with a name that is near.
+    pub fn case(&self, id: &str) -> Result<&Case, SuiteError> {
+        self.cases.iter().find(|case| case.id() == id).ok_or_else(|| {
+            let near = proposal(id, self.cases.iter().map(Case::id));
+            SuiteError::of_file(&self.name, format!("has no case `{id}`; {near}`hand-out` lists all"))
+        })
+    }
+
     /// A suite of cases that a program has made.
     ///
     /// # Errors

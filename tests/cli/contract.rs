@@ -298,6 +298,7 @@ pub struct Row {
     pub values: Option<u64>,
     pub jacobians: Option<u64>,
     pub hessians: Option<u64>,
+    pub exact_moments: Option<u64>,
     pub verdict: Verdict,
     pub reason: String,
     pub cause: String,

@@ -12,6 +12,9 @@ pub const CAUTION: &str = "Results guide a choice, they certify nothing";
 pub const WIDTH: usize = 100;
 /// Files of a results folder.
 pub const FILES: [&str; 4] = ["cases.jsonl", "manifest.json", "references.jsonl", "scores.csv"];
+/// The same of a suite in which a family has two sweeps.
+pub const FILES_WITH_CHOICES: [&str; 5] =
+    ["cases.jsonl", "choices.csv", "manifest.json", "references.jsonl", "scores.csv"];
 
 /// A folder that is removed in the end.
 #[derive(Debug)]
@@ -102,12 +105,35 @@ pub fn names(folder: &Path) -> Vec<String> {
 
 /// Asserts that files which hold no time are the same to the byte in two results folders.
 pub fn assert_same(desk: &Desk, one: &str, other: &str) {
-    for name in ["cases.jsonl", "references.jsonl", "scores.csv"] {
+    let all = ["cases.jsonl", "references.jsonl", "scores.csv", "choices.csv"];
+    for name in all.into_iter().filter(|name| *name != "choices.csv" || desk.path(one).join(name).exists()) {
         // Not assert_eq: megabytes help nobody.
         let (left, right) = (desk.read(&format!("{one}/{name}")), desk.read(&format!("{other}/{name}")));
         let line = left.lines().zip(right.lines()).position(|(a, b)| a != b);
         assert!(left == right, "{one} and {other} differ in {name}, first in line {line:?}");
     }
+}
+
+/// Asserts that the columns of a table which stand in both are the same to the byte, but for the family: a case record has none.
+pub fn assert_shared_columns_are_same(desk: &Desk, one: &str, other: &str) {
+    let table = |name: &str| {
+        let text = desk.read(name);
+        let mut reader = csv::Reader::from_reader(text.as_bytes());
+        let header = reader.headers().unwrap().clone();
+        (header, reader.records().map(Result::unwrap).collect::<Vec<_>>())
+    };
+    let ((header, rows), (others, other_rows)) = (table(one), table(other));
+    assert_eq!(rows.len(), other_rows.len());
+    let shared = others.iter().enumerate().filter(|(_, name)| *name != "family");
+    let mut compared = 0;
+    for (place, name) in shared {
+        let Some(here) = header.iter().position(|known| known == name) else { continue };
+        compared += 1;
+        for (row, other) in rows.iter().zip(&other_rows) {
+            assert_eq!(row.get(here), other.get(place), "column {name} of {one} and {other:?}");
+        }
+    }
+    assert!(compared > 40, "{compared} columns");
 }
 
 /// Asserts that no line is wider than a report may be; the path of the results is as long as it is.

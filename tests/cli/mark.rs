@@ -7,7 +7,7 @@ use serde_json::{Value, json};
 use sha2::{Digest, Sha256};
 
 use crate::contract::{Answers, CaseRecord, Manifest, Row, Verdict};
-use crate::desk::{CAUTION, Desk, FILES, assert_narrow, assert_same, names, smoke_cases};
+use crate::desk::{CAUTION, Desk, FILES_WITH_CHOICES, assert_narrow, assert_same, names, smoke_cases};
 
 /// Four readings of one component: m = 1 to 4, P = 1, R = 1/4.
 pub const READINGS: &str = "precision = 1e-1\n[sensor]\nkind = \"linear\"\nH = [[1]]\n[prior]\n\
@@ -93,7 +93,7 @@ fn the_references_of_a_survey_pass_as_answers() {
     let fields: Vec<&str> = row["mine: v2 ".len()..].split_whitespace().collect();
     assert_eq!(fields, ["-", "-", "100", "%", "0", "%", "0", "%", "-"], "neither counted nor timed: {row}");
 
-    assert_eq!(names(&desk.path("marked/smoke")), FILES);
+    assert_eq!(names(&desk.path("marked/smoke")), FILES_WITH_CHOICES);
     let rows = rows_of(&desk, "marked/smoke", "mine: v2");
     assert_eq!(rows.len(), smoke_cases());
     for row in rows {

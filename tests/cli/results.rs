@@ -5,7 +5,10 @@ use std::collections::{HashMap, HashSet};
 use gaussworthy::method::default_methods;
 
 use crate::contract::{CaseRecord, Manifest, MomentsRecord, Row, Soundness, Verdict};
-use crate::desk::{CAUTION, Desk, FILES, assert_narrow, assert_same, names, smoke_cases};
+use crate::desk::{
+    CAUTION, Desk, FILES, FILES_WITH_CHOICES, assert_narrow, assert_same, assert_shared_columns_are_same, names,
+    smoke_cases,
+};
 
 /// The shape of a matrix of optional numbers, all of which must be there.
 fn full_shape(rows: &[Vec<Option<f64>>]) -> (usize, usize) {
@@ -24,7 +27,7 @@ fn smoke_leaves_every_file_as_the_formats_say() {
     assert!(out.contains(CAUTION) && out.contains(&format!("{all} of {all} cases")), "{out}");
     assert!(out.contains("Written to found/smoke") || cfg!(windows), "{out}");
     assert_eq!(names(&desk.path("found")), [".references", "smoke"]);
-    assert_eq!(names(&desk.path("found/smoke")), FILES);
+    assert_eq!(names(&desk.path("found/smoke")), FILES_WITH_CHOICES);
 
     let cases: Vec<CaseRecord> = desk.lines("found/smoke/cases.jsonl");
     let by_name: HashMap<&str, &CaseRecord> = cases.iter().map(|c| (c.case.as_str(), c)).collect();
@@ -166,7 +169,10 @@ fn the_cases_of_a_survey_fed_back_give_the_same_answers() {
         "again",
     ]);
     assert_eq!(names(&desk.path("again")), [".references", "cases"]);
-    assert_same(&desk, "first/smoke", "again/cases");
+    for name in ["cases.jsonl", "references.jsonl"] {
+        assert!(desk.read(&format!("first/smoke/{name}")) == desk.read(&format!("again/cases/{name}")), "{name}");
+    }
+    assert_shared_columns_are_same(&desk, "first/smoke/scores.csv", "again/cases/scores.csv");
 }
 
 /// Two suites of one name share a folder: what is replaced is said, and it is no error, for a suite that is edited has its name.

@@ -7,7 +7,7 @@ use std::process::Stdio;
 use serde_json::Value;
 
 use crate::contract::Manifest;
-use crate::desk::{Desk, FILES, assert_same, names, smoke_cases};
+use crate::desk::{Desk, FILES_WITH_CHOICES, assert_same, names, smoke_cases};
 
 fn part(desk: &Desk, shard: &str, out: &str, more: &[&str]) {
     desk.succeed(&[&["survey", "smoke", "--shard", shard, "--out", out], more].concat());
@@ -46,7 +46,7 @@ fn joined_parts_are_the_files_of_a_single_run() {
         );
         assert_same(&desk, "single/smoke", "merged/smoke");
         assert_eq!(names(&desk.path("merged")), ["smoke"]);
-        assert_eq!(names(&desk.path("merged/smoke")), FILES);
+        assert_eq!(names(&desk.path("merged/smoke")), FILES_WITH_CHOICES);
 
         let (mut single, mut merged) = (manifest(&desk, "single/smoke"), manifest(&desk, "merged/smoke"));
         let sum = |key: &str| -> f64 {
