@@ -70,7 +70,7 @@ fn every_mistake_gets_its_line_and_what_would_be_right() {
         ("title = \"x\"\n".into(), "x.toml:1: [sensor] is missing; say what measures, as [sensor] with `kind = \"range-bearing\"`".into()),
         (with("", "[prior]\n"), "x.toml:10: is not TOML: duplicate key `prior`; delete one".into()),
         // Unknown keys, with the nearest known one.
-        (with("[noise]", "[nosie]"), "x.toml:8: nosie: unknown key `nosie`; did you mean `noise`? allowed: title, note, seed, precision, cap, draws, limits, method, family, sensor, prior, noise".into()),
+        (with("[noise]", "[nosie]"), "x.toml:8: nosie: unknown key `nosie`; did you mean `noise`? allowed: title, note, seed, precision, cap, draws, limits, envelope, method, family, sensor, prior, noise".into()),
         (with("covariance", "covarience"), "x.toml:7: prior.covarience: unknown key `covarience`; did you mean `covariance`? allowed: mean, covariance, sd, correlation, frame_bearing, frame_elevation, range, bearing, elevation, along_sd, across_sd, up_sd, frame_covariance, seen_from, speed, speed_sd, course, course_sd, climb, climb_sd, rest_mean, rest_sd".into()),
         (with("station =", "statoin ="), "x.toml:4: sensor.statoin: unknown key `statoin`; did you mean `station`? allowed: station, stations, position".into()),
         (with("sd =", "std ="), "x.toml:9: noise.std: unknown key `std`; did you mean `sd`? allowed: sd, covariance, inside".into()),
@@ -581,6 +581,21 @@ fn file(folder: &Path, name: &str, bytes: &[u8]) -> std::path::PathBuf {
     path
 }
 
+/// What a suite of regimes is for: thousands of cases, all drawn, each with the seed's own draw, and envelopes asked for.
+#[test]
+fn suites_of_regimes_draw_thousands_of_cases() {
+    for bundled in Suite::regimes() {
+        let suite = Suite::load(bundled.name, None).unwrap_or_else(|e| panic!("{e}"));
+        assert_eq!(suite.title, bundled.summary);
+        assert!(suite.cases.len() >= 2000 && suite.envelope.is_some(), "{}", bundled.name);
+        assert!(suite.methods.as_ref().is_some_and(|methods| methods.len() > 20), "{}", bundled.name);
+        assert!(suite.note.starts_with("Invented numbers"), "{}", bundled.name);
+        for case in &suite.cases {
+            assert!(case.settings().len() >= 3 && case.settings().iter().all(|s| !s.swept), "{}", case.id());
+        }
+    }
+}
+
 #[test]
 fn files_that_are_no_suite_are_refused() {
     let folder = tempfile::tempdir().unwrap();
@@ -600,11 +615,14 @@ fn files_that_are_no_suite_are_refused() {
     std::fs::File::options().write(true).open(&huge).unwrap().set_len(100_000_000).unwrap();
     assert_eq!(said(&huge), "DIR/huge.toml: has 100000000 bytes; a suite has at most 8 MiB (8388608 bytes)");
     let names = Suite::bundled().iter().map(|suite| suite.name).collect::<Vec<_>>().join(", ");
+    let sensors = Suite::regimes().iter().map(|suite| suite.name.strip_prefix("regimes-").unwrap());
+    let sensors = sensors.collect::<Vec<_>>().join(", ");
     assert_eq!(
         Suite::load("harbor-radar", None).unwrap_err().to_string(),
         format!(
             "harbor-radar: there is no bundled suite of this name; did you mean `harbour-radar`? give one of \
-             {names}, or the path of a file that ends in .toml (case records go to --cases)"
+             {names}, a suite of regimes, regimes- and one of {sensors}, or the path of a file that ends in .toml (case records \
+             go to --cases)"
         )
     );
 }

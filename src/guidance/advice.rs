@@ -2,7 +2,7 @@
 
 use serde::Serialize;
 
-use super::{Budget, MethodEnvelopes, work};
+use super::{Budget, MethodEnvelopes};
 use crate::gaussian::Gaussian;
 use crate::method::MethodSpec;
 use crate::reference::Soundness;
@@ -70,7 +70,7 @@ pub struct MethodAdvice {
     pub beyond_budget: Option<String>,
     /// Evaluations of any sort.
     pub evaluations: Option<u64>,
-    /// Numbers that the sensor computes in one transform, see [`work`].
+    /// Numbers that the sensor computes in one transform, see [`Evaluations::work`](crate::method::Evaluations::work).
     pub work: Option<u64>,
     /// Time of a transform as a ratio to first-order Taylor.
     pub time: Option<f64>,
@@ -308,7 +308,7 @@ impl MethodAdvice {
             cause: answered.cause.clone(),
             beyond_budget: counted.and_then(|e| budget.objection(spec, e, inputs, time)),
             evaluations: counted.map(|e| e.values + e.jacobians + e.hessians + e.exact_moments),
-            work: counted.map(|e| work(e, inputs)),
+            work: counted.map(|e| e.work(inputs)),
             time,
             excess: answered.scores.as_ref().ok().and_then(|s| s.get(ScoreKind::Excess)),
             envelopes: all.map(|e| EnvelopeAdvice::of(e, &result.indices, &answered.opinions)).collect(),

@@ -2,24 +2,12 @@
 
 use serde::{Deserialize, Serialize};
 
-use crate::method::Evaluations;
-
-/// The work of a transform in numbers that a sensor would have to compute, without unit: 1 a value, 1 + a a Jacobian, 1 + a +
-/// a (a + 1) / 2 a set of Hessians or of exact moments, with a inputs.
-///
-/// Common practice, no source: what differences would cost. Times never decide, for they are of one machine.
-pub fn work(evaluations: Evaluations, inputs: usize) -> u64 {
-    let a = inputs as u64;
-    let Evaluations { values, jacobians, hessians, exact_moments } = evaluations;
-    values + jacobians * (1 + a) + (hessians + exact_moments) * (1 + a + a * (a + 1) / 2)
-}
-
 /// What a method did on one case of a grid.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Entry {
     /// Its label.
     pub method: String,
-    /// Its [`work`]; `None` where it is not known, as of an outside implementation.
+    /// Its work, see [`Evaluations::work`](crate::method::Evaluations::work); `None` where it is not known, as of an outside implementation.
     pub work: Option<u64>,
     /// Whether it is trusted.
     pub trusted: bool,
@@ -116,15 +104,6 @@ fn cheapest(entries: &[Entry]) -> Option<&Entry> {
 #[cfg(test)]
 mod tests {
     use super::*;
-
-    #[test]
-    fn work_counts_what_differences_would_cost() {
-        let none = Evaluations::default();
-        assert_eq!(work(Evaluations { values: 5, ..none }, 2), 5);
-        assert_eq!(work(Evaluations { jacobians: 1, ..none }, 2), 3);
-        assert_eq!(work(Evaluations { hessians: 1, ..none }, 2), 6);
-        assert_eq!(work(Evaluations { exact_moments: 1, ..none }, 6), 28);
-    }
 
     fn case(first: f64, trusted: [bool; 3]) -> GridCase {
         let entries = ["dear", "cheap", "outside"].into_iter().zip([Some(9), Some(3), None]).zip(trusted);

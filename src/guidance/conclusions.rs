@@ -1,6 +1,6 @@
 use std::io::Read;
 
-use super::{Choice, ChoiceMap, Entry, Evidence, GridCase, MethodEnvelopes, ScoreRow, Scores, ScoresError, work};
+use super::{Choice, ChoiceMap, Entry, Evidence, GridCase, MethodEnvelopes, ScoreRow, Scores, ScoresError};
 use crate::method::Evaluations;
 use crate::suite::Setting;
 use crate::survey::{Indices, OpinionsOf, regime_columns};
@@ -29,7 +29,7 @@ impl Fared {
         let counts = [count("values")?, count("jacobians")?, count("hessians")?, count("exact_moments")?];
         let work = match (counts, count("inputs")?) {
             ([Some(values), Some(jacobians), Some(hessians), Some(exact_moments)], Some(inputs)) => {
-                Some(work(Evaluations { values, jacobians, hessians, exact_moments }, inputs as usize))
+                Some(Evaluations { values, jacobians, hessians, exact_moments }.work(inputs as usize))
             }
             _ => None,
         };

@@ -10,7 +10,7 @@ mod scores;
 
 pub use advice::{Advice, AdviceError, EnvelopeAdvice, IndexValue, MethodAdvice, TermAdvice, advise};
 pub use budget::Budget;
-pub use choices::{Choice, ChoiceMap, Entry, GridCase, work};
+pub use choices::{Choice, ChoiceMap, Entry, GridCase};
 pub use conclusions::Conclusions;
 pub use envelopes::{Evidence, MethodEnvelopes};
 pub use scores::{ScoreRow, Scores, ScoresError};

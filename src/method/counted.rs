@@ -21,6 +21,15 @@ pub struct Evaluations {
 }
 
 impl Evaluations {
+    /// What it takes in numbers that a sensor of `inputs` inputs would have to compute, without unit: 1 a value, 1 + a a Jacobian,
+    /// 1 + a + a (a + 1) / 2 a set of Hessians or of exact moments.
+    ///
+    /// Common practice, no source: what differences would cost. Unlike a time it is the same on every machine.
+    pub fn work(&self, inputs: usize) -> u64 {
+        let a = inputs as u64;
+        self.values + self.jacobians * (1 + a) + (self.hessians + self.exact_moments) * (1 + a + a * (a + 1) / 2)
+    }
+
     /// What one transform of `method` asks of a sensor that reads `a` components and has no angular output, counted on one.
     ///
     /// # Errors
@@ -141,5 +150,19 @@ impl ExactMoments for Counted<'_> {
             self.exact_moments.fetch_add(1, Ordering::Relaxed);
             exact.write_exact(prior, moments);
         }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn work_counts_what_differences_would_cost() {
+        let none = Evaluations::default();
+        assert_eq!(Evaluations { values: 5, ..none }.work(2), 5);
+        assert_eq!(Evaluations { jacobians: 1, ..none }.work(2), 3);
+        assert_eq!(Evaluations { hessians: 1, ..none }.work(2), 6);
+        assert_eq!(Evaluations { exact_moments: 1, ..none }.work(6), 28);
     }
 }

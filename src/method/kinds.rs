@@ -33,7 +33,9 @@ pub struct Kind {
 pub(super) type Built = (Map<String, Value>, Arc<dyn Method>);
 
 /// Every built-in method. A new one is one line here.
-pub const KINDS: &[Kind] = &[
+///
+/// A static, not a constant: what is constant is compiled again, with every formula in it, in each program that names it.
+pub static KINDS: &[Kind] = &[
     taylor::FIRST,
     taylor::SECOND,
     central_differences::FIRST,

@@ -116,6 +116,19 @@ fn notes(survey: &SurveyResult<'_>, summary: &Summary) -> Vec<String> {
             summary.beyond_gaussian, summary.cases, limits.floor
         ));
     }
+    if summary.gaussian > 0 && summary.gaussian < summary.cases {
+        let most = summary.methods.iter().max_by_key(|m| m.trusted_where_gaussian);
+        let of_them = match (summary.cheapest_where_gaussian(), most) {
+            (Some(method), _) => format!("the cheapest method that is trusted in all of them is {}", method.label),
+            (None, Some(method)) => format!(
+                "no method is trusted in all of them; {} is in {}",
+                method.label, method.trusted_where_gaussian
+            ),
+            (None, None) => "nobody was asked".into(),
+        };
+        notes
+            .push(format!("Where a Gaussian will do, {} of {} cases, {of_them}.", summary.gaussian, summary.cases));
+    }
     if summary.floor_open > 0 {
         notes.push(format!(
             "Whether any Gaussian can be trusted cannot be told in {} of {} cases: their floor is too near its limit, \

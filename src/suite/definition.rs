@@ -84,12 +84,15 @@ impl Suite {
         if let Some(suite) = all().find(|suite| suite.name == name_or_path) {
             return Self::from_text(suite.name, &format!("{}.toml", suite.name), suite.text, seed_override);
         }
-        let names: Vec<_> = all().map(|suite| suite.name).collect();
-        let near = proposal(name_or_path, names.iter().copied());
+        let names: Vec<_> = bundled::ALL.iter().map(|suite| suite.name).collect();
+        let sensors: Vec<_> =
+            bundled::REGIMES.iter().filter_map(|suite| suite.name.strip_prefix("regimes-")).collect();
+        let near = proposal(name_or_path, all().map(|suite| suite.name));
         let message = format!(
-            "there is no bundled suite of this name; {near}give one of {}, or the path of a file that ends in .toml \
-             (case records go to --cases)",
-            names.join(", ")
+            "there is no bundled suite of this name; {near}give one of {}, a suite of regimes, regimes- and one of {}, or the \
+             path of a file that ends in .toml (case records go to --cases)",
+            names.join(", "),
+            sensors.join(", ")
         );
         Err(SuiteError::of_file(name_or_path, message))
     }

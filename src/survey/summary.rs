@@ -14,6 +14,8 @@ pub struct Summary {
     pub cases: usize,
     /// Cases in which the floor is above its limit: no Gaussian should be trusted there.
     pub beyond_gaussian: usize,
+    /// Cases whose floor is kept: there a Gaussian will do.
+    pub gaussian: usize,
     /// Cases in which it cannot be told whether the floor is above its limit.
     pub floor_open: usize,
     /// Cases whose reference fell short of the asked precision at the cap.
@@ -48,6 +50,10 @@ pub struct MethodSummary {
     pub time_ratio: Option<Quartiles>,
     /// Cases in which it is trusted.
     pub trusted: usize,
+    /// Those of them whose floor is kept.
+    pub trusted_where_gaussian: usize,
+    /// Most work of a transform, see [`Evaluations::work`]; `None` where evaluations are.
+    pub work: Option<u64>,
     /// Cases in which it is rejected.
     pub rejected: usize,
     /// Cases in which the reference cannot tell.
@@ -58,6 +64,16 @@ pub struct MethodSummary {
     pub skip_reason: Option<String>,
     /// What is broken by the largest factor most often, and in how many of the rejected cases.
     pub breaks_first: Option<(&'static str, usize)>,
+}
+
+impl Summary {
+    /// Of the methods that are trusted in every case whose floor is kept the one of least work; `None` where there is no such
+    /// case, or no such method.
+    pub fn cheapest_where_gaussian(&self) -> Option<&MethodSummary> {
+        let everywhere =
+            self.methods.iter().filter(|m| self.gaussian > 0 && m.trusted_where_gaussian == self.gaussian);
+        everywhere.filter(|m| m.work.is_some()).min_by_key(|m| m.work)
+    }
 }
 
 impl MethodSummary {
@@ -73,6 +89,7 @@ pub fn summarise(survey: &SurveyResult<'_>) -> Summary {
     Summary {
         cases: survey.cases.len(),
         beyond_gaussian: count(&|c| c.floor_standing == Standing::Broken),
+        gaussian: count(&|c| c.floor_standing == Standing::Kept),
         floor_open: count(&|c| c.floor_standing == Standing::Open && c.floor != Floor::NoiseInside),
         wide: count(&|c| c.reference.soundness == Soundness::Wide),
         worst_error: survey
@@ -97,6 +114,8 @@ fn summarise_method(survey: &SurveyResult<'_>, m: usize, label: &str) -> MethodS
         evaluations: None,
         time_ratio: survey.timing.as_ref().and_then(|t| t.ratio.get(m).copied().flatten()),
         trusted: 0,
+        trusted_where_gaussian: 0,
+        work: None,
         rejected: 0,
         undecided: 0,
         skipped: 0,
@@ -120,8 +139,13 @@ fn summarise_method(survey: &SurveyResult<'_>, m: usize, label: &str) -> MethodS
                 if here.values > most.values { here } else { most },
             ));
         }
+        let inputs = survey.suite.cases[case.index].marginal().law().dimension();
+        summary.work = summary.work.max(answered.evaluations.map(|e| e.work(inputs)));
         match answered.verdict.trust {
-            Trust::Trusted => summary.trusted += 1,
+            Trust::Trusted => {
+                summary.trusted += 1;
+                summary.trusted_where_gaussian += usize::from(case.floor_standing == Standing::Kept);
+            }
             Trust::Undecided => summary.undecided += 1,
             Trust::Rejected => {
                 summary.rejected += 1;

@@ -95,7 +95,7 @@ fn suites_and_files_that_are_not_there_are_named() {
     desk.write("smoke.toml", SUITE);
     for (arguments, start, word) in [
         (&["harbor-radar"][..], "harbor-radar: ", "did you mean `harbour-radar`?"),
-        (&["nowhere"], "nowhere: ", "smoke, or the path of a file"),
+        (&["nowhere"], "nowhere: ", "smoke, a suite of regimes"),
         (&["missing.toml"], "missing.toml: ", "cannot be read: "),
         (&["folder.toml"], "folder.toml: ", "is a folder; give a file"),
         (&["--cases", "missing.jsonl"], "missing.jsonl: ", "cannot be read: "),
