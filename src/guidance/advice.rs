@@ -406,13 +406,20 @@ fn shrink(
         let middle = 0.5 * (low + high);
         if trusted(middle.exp())? { low = middle } else { high = middle }
     }
+    // Rounded to the safe side: what is said to be trusted is.
+    let (low, high) = (three_digits(low.exp(), f64::floor), three_digits(high.exp(), f64::ceil));
     Ok(vec![format!(
-        "{label}, the cheapest method, would be trusted with every standard deviation of the prior at {:.3} of what it is or \
-         less (found by bisection: it is there at {:.3} and not at {:.3}).",
-        low.exp(),
-        low.exp(),
-        high.exp()
+        "{label}, the cheapest method, would be trusted with every standard deviation of the prior at {low} of what it is or less \
+         (found by bisection: trusted at {low}, not at {high})."
     )])
+}
+
+/// Three significant digits, rounded by `rounding`.
+fn three_digits(value: f64, rounding: impl Fn(f64) -> f64) -> f64 {
+    let step = 10_f64.powi(value.log10().floor() as i32 - 2);
+    let digits = rounding(value / step);
+    // By the inverse, which is whole: 221 / 1000 is the nearest number to 0.221, 221 * 0.001 is not.
+    digits / (1.0 / step).round()
 }
 
 /// The case with every standard deviation of its prior scaled; `None` where that leaves no prior.

@@ -102,7 +102,7 @@ fn envelopes_of_an_earlier_survey_are_held_against_the_case() {
 fn what_cannot_be_meant_is_refused() {
     let desk = Desk::new();
     for (arguments, word) in [
-        (vec!["advise", "smoke", "--case", "gauge-01"], "suite `smoke` has no case"),
+        (vec!["advise", "smoke", "--case", "gauge-01"], "smoke: has no case `gauge-01`; did you mean"),
         (vec!["advise", "smoke", "--case", "none"], "hand-out"),
         (vec!["advise", "--record", "{"], "--record: is not JSON"),
         (vec!["advise", "--record", r#"{"case":"x"}"#], "--record: "),
