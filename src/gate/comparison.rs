@@ -3,7 +3,7 @@ use std::collections::BTreeMap;
 use super::baseline::{Baseline, KeptAnswer, KeptCase, KeptReference, question};
 use super::change::{Change, Effect, Subject, Topic};
 use super::moments::{Units, in_order};
-use super::rules::{Rules, joint_error, score_rounding};
+use super::rules::{REFERENCE_ROUNDING, Rules, joint_error, score_rounding};
 use super::scores::{badness, figure, with_error};
 use crate::gaussian::Moments;
 use crate::method::Evaluations;
@@ -219,7 +219,7 @@ impl Gate<'_> {
                 .zip(old_errors.iter().zip(&new_errors))
                 .filter_map(|(pair, (old, new))| {
                     let error = old.hypot(*new);
-                    let allowed = self.rules.rounding * pair.coarseness + self.quantile * error / pair.unit;
+                    let allowed = REFERENCE_ROUNDING * pair.coarseness + self.quantile * error / pair.unit;
                     (pair.apart > allowed || (pair.apart > 0.0 && !allowed.is_finite() && error == 0.0))
                         .then_some((pair, old, new, pair.apart / allowed))
                 })

@@ -17,9 +17,12 @@ pub struct Rules {
 
 impl Default for Rules {
     fn default() -> Self {
-        Self { odds: 1e-4, rounding: 1e-10, time_margin: None }
+        Self { odds: 1e-4, rounding: REFERENCE_ROUNDING, time_margin: None }
     }
 }
+
+/// What rounding may do to a reference: under another seed an exact one is summed in another way.
+pub(super) const REFERENCE_ROUNDING: f64 = 1e-10;
 
 /// What no rules can be.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
