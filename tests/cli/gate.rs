@@ -1,6 +1,7 @@
 //! The gate as a check in CI: exit codes, the baseline's file, what is said and what is left for other programs.
 
 use quick_junit::{Report, TestCaseStatus};
+use quick_xml::events::Event;
 use serde_json::{Value, json};
 
 use crate::desk::{CAUTION, Desk, Outcome, assert_narrow, smoke_cases};
@@ -34,6 +35,67 @@ fn is(line: &Value, case: &str, method: Option<&str>) -> bool {
     line["case"] == case && line["method"].as_str() == method
 }
 
+/// Asserts that a report keeps to the schema of JUnit XML that build servers publish as `junit-10.xsd`: elements, what may stand in them,
+/// and their attributes, those that must be there first (the version that packages of test runners carry; whole reports were also
+/// validated against the file itself).
+fn assert_keeps_to_the_schema(report: &str) {
+    const TEXT: &[&str] = &[];
+    let rules = |element: &str| -> Option<(&[&str], usize, &[&str])> {
+        Some(match element {
+            "testsuites" => (&["name", "time", "tests", "failures", "errors"], 0, &["testsuite"]),
+            "testsuite" => (
+                &["name", "tests", "failures", "errors", "group", "time", "skipped", "timestamp", "hostname", "id"],
+                4,
+                &["testsuite", "properties", "testcase", "system-out", "system-err"],
+            ),
+            "testcase" => (
+                &["name", "time", "classname", "group"],
+                1,
+                &["skipped", "error", "failure", "system-out", "system-err"],
+            ),
+            "failure" => (&["type", "message"], 0, TEXT),
+            "system-out" => (TEXT, 0, TEXT),
+            _ => return None,
+        })
+    };
+    let mut reader = quick_xml::Reader::from_str(report);
+    let mut open: Vec<String> = Vec::new();
+    let mut seen = 0;
+    loop {
+        let event = reader.read_event().unwrap();
+        match &event {
+            Event::Start(tag) | Event::Empty(tag) => {
+                let name = String::from_utf8(tag.name().as_ref().to_vec()).unwrap();
+                let (attributes, needed, _) = rules(&name).unwrap_or_else(|| panic!("<{name}> is unknown"));
+                match open.last() {
+                    Some(parent) => {
+                        assert!(rules(parent).unwrap().2.contains(&name.as_str()), "<{name}> in <{parent}>")
+                    }
+                    None => assert!(name == "testsuites" && seen == 0, "<{name}> is the root"),
+                }
+                let given: Vec<String> = tag
+                    .attributes()
+                    .map(|a| String::from_utf8(a.unwrap().key.as_ref().to_vec()).unwrap())
+                    .collect();
+                assert!(given.iter().all(|a| attributes.contains(&a.as_str())), "<{name}>: {given:?}");
+                assert!(attributes[..needed].iter().all(|a| given.iter().any(|g| g == a)), "<{name}>: {given:?}");
+                seen += 1;
+                if matches!(event, Event::Start(_)) {
+                    open.push(name);
+                }
+            }
+            Event::End(_) => drop(open.pop()),
+            Event::Text(text) => {
+                let holds_text = open.last().is_some_and(|name| rules(name).unwrap().2.is_empty());
+                assert!(holds_text || text.iter().all(u8::is_ascii_whitespace), "text in {open:?}");
+            }
+            Event::Eof => break,
+            _ => {}
+        }
+    }
+    assert!(open.is_empty() && seen > 100, "{seen} elements");
+}
+
 fn in_one_line(text: &str) -> String {
     text.split_whitespace().collect::<Vec<_>>().join(" ")
 }
@@ -51,6 +113,7 @@ fn unchanged_code_passes_under_the_same_and_under_another_seed() {
     let sentence = format!("{compared} answers and references held against the baseline: nothing has changed");
     assert!(in_one_line(&said).contains(&sentence) && said.contains(CAUTION), "{said}");
     assert_narrow(&said);
+    assert_keeps_to_the_schema(&desk.read("gate.xml"));
     let report = Report::deserialize_from_str(&desk.read("gate.xml")).unwrap();
     assert_eq!((report.tests, report.failures, report.errors), (compared, 0, 0));
     assert!(desk.read("gate.md").contains("# Numerical accuracy: nothing worse"));
@@ -94,6 +157,7 @@ fn every_kind_of_change_is_told_apart() {
     assert_eq!(code, Some(1), "{out}{err}");
     assert!(err.starts_with("gaussworthy: regression in smoke; if it is meant, accept it by --accept"), "{err}");
     assert_narrow(&out);
+    assert_keeps_to_the_schema(&desk.read("gate.xml"));
     let report = Report::deserialize_from_str(&desk.read("gate.xml")).unwrap();
     let failures: Vec<(String, String)> = report.test_suites[0]
         .test_cases
