@@ -3,13 +3,15 @@
 //!
 //! Data flows one way: [`suite`] makes cases; [`reference`](mod@reference) samples their true moments
 //! beside the [`method`]s that approximate them, and the answers of implementations [`outside`]; [`score`] compares the two;
-//! [`trust`] judges; [`survey`] runs it all in parallel; [`guidance`] draws conclusions; [`report`] writes it down.
+//! [`trust`] judges; [`survey`] runs it all in parallel; [`guidance`] draws conclusions; [`gate`] holds it against a
+//! baseline; [`report`] writes it down.
 //! [`gaussian`] and [`sensor`] are the ground they stand on; [`net`] and [`lanes`] are what sampling is made of.
 //!
 //! Results guide a choice, they certify nothing: before an estimator steers, lands, stops or warns
 //! anything, the reader's own verification process, the applicable standards and codes, and licensed or
 //! responsible engineers decide.
 
+pub mod gate;
 pub mod gaussian;
 pub mod guidance;
 pub mod lanes;

@@ -6,6 +6,7 @@ use anyhow::{Context, anyhow};
 use clap::Args;
 use gaussworthy::outside::{Name, Outside};
 use gaussworthy::suite::Suite;
+use gaussworthy::survey::SurveyPlan;
 
 use super::Failure;
 use super::measuring::{Measuring, admit};
@@ -30,19 +31,29 @@ pub struct Arguments {
 }
 
 pub fn run(arguments: &Arguments) -> Result<(), Failure> {
-    let name =
-        Name::new(&arguments.name).with_context(|| format!("--as {}", arguments.name)).map_err(Failure::Input)?;
+    let name = called(&arguments.name)?;
     let suite = arguments.questions.suite()?;
     let mut plans = arguments.measuring.plans(vec![suite], arguments.questions.seed)?;
     for (suite, plan) in &mut plans {
-        let (file, from) = open(arguments.answers.as_deref())?;
-        let answers = Outside::read(name.clone(), suite, plan.shard, &file, from)
-            .with_context(|| format!("{file}: cannot be read"))
-            .map_err(Failure::Input)?;
-        check_meant(suite, &answers, &file)?;
+        let answers = answers(arguments.answers.as_deref(), &name, suite, plan)?;
         admit(suite, plan, answers)?;
     }
     arguments.measuring.measure(plans, |_, _| Ok(Vec::new()))
+}
+
+/// The name that is given with `--as`.
+pub fn called(name: &str) -> Result<Name, Failure> {
+    Name::new(name).with_context(|| format!("--as {name}")).map_err(Failure::Input)
+}
+
+/// The answers that a file, or standard input, holds for a suite.
+pub fn answers(path: Option<&Path>, name: &Name, suite: &Suite, plan: &SurveyPlan) -> Result<Outside, Failure> {
+    let (file, from) = open(path)?;
+    let answers = Outside::read(name.clone(), suite, plan.shard, &file, from)
+        .with_context(|| format!("{file}: cannot be read"))
+        .map_err(Failure::Input)?;
+    check_meant(suite, &answers, &file)?;
+    Ok(answers)
 }
 
 /// What answers are read from, and what it is called without its folder.

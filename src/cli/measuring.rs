@@ -68,6 +68,24 @@ impl Sampling {
         })
     }
 
+    /// The plan of every suite, or of a part of it.
+    pub fn plans(
+        &self,
+        suites: Vec<Suite>,
+        seed: Option<u64>,
+        shard: Option<Shard>,
+    ) -> Result<Vec<(Suite, SurveyPlan)>, Failure> {
+        let settings = SurveySettings { shard, ..self.settings(seed)? };
+        suites
+            .into_iter()
+            .map(|suite| {
+                let plan = SurveyPlan::new(&suite, &settings)
+                    .map_err(|e| Failure::Input(anyhow!("{}: {e}", self.blamed(&e, &suite))))?;
+                Ok((suite, plan))
+            })
+            .collect()
+    }
+
     /// Who said what cannot be meant: the option, where there is one, else the suite.
     fn blamed(&self, error: &SurveyError, suite: &Suite) -> String {
         match error {
@@ -100,15 +118,7 @@ impl Sampling {
 impl Measuring {
     /// The plan of every suite.
     pub fn plans(&self, suites: Vec<Suite>, seed: Option<u64>) -> Result<Vec<(Suite, SurveyPlan)>, Failure> {
-        let settings = SurveySettings { shard: self.shard, ..self.sampling.settings(seed)? };
-        suites
-            .into_iter()
-            .map(|suite| {
-                let plan = SurveyPlan::new(&suite, &settings)
-                    .map_err(|e| Failure::Input(anyhow!("{}: {e}", self.sampling.blamed(&e, &suite))))?;
-                Ok((suite, plan))
-            })
-            .collect()
+        self.sampling.plans(suites, seed, self.shard)
     }
 
     /// Measures every suite and writes its results folder. `outside` gives the outside implementations that have answered

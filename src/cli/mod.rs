@@ -2,10 +2,12 @@
 
 mod advise;
 mod catalogue;
+mod gate;
 mod hand_out;
 mod mark;
 mod measuring;
 mod merge;
+mod outside;
 mod progress;
 mod questions;
 mod stdout;
@@ -33,6 +35,8 @@ enum Command {
     HandOut(hand_out::Arguments),
     /// Score the answers of an outside implementation beside the methods, as a survey does
     Mark(mark::Arguments),
+    /// Hold what suites measure today against an accepted baseline, as a check in CI
+    Gate(gate::Arguments),
     /// Join the parts of a survey that were made with --shard
     Merge(merge::Arguments),
     /// List sensors, methods and scores with formulas and sources
@@ -44,6 +48,8 @@ enum Command {
 enum Failure {
     /// Bad input or use: nothing was done.
     Input(anyhow::Error),
+    /// The gate found a regression.
+    Regression(anyhow::Error),
     /// Could not finish: what was done is kept.
     Unfinished(anyhow::Error),
 }
@@ -65,18 +71,20 @@ impl From<std::io::Error> for Failure {
     }
 }
 
-/// Runs the command and turns its end into an exit code: 0 done, 2 bad input or use, 3 could not finish.
+/// Runs the command and turns its end into an exit code: 0 done, 1 the gate found a regression, 2 bad input or use, 3 could not finish.
 pub fn main() -> ExitCode {
     let done = match Arguments::parse().command {
         Command::Survey(arguments) => survey::run(&arguments),
         Command::Advise(arguments) => advise::run(&arguments),
         Command::HandOut(arguments) => hand_out::run(&arguments),
         Command::Mark(arguments) => mark::run(&arguments),
+        Command::Gate(arguments) => gate::run(&arguments),
         Command::Merge(arguments) => merge::run(&arguments),
         Command::Catalogue(arguments) => catalogue::run(&arguments),
     };
     match done {
         Ok(()) => ExitCode::SUCCESS,
+        Err(Failure::Regression(error)) => complain(&error, 1),
         Err(Failure::Input(error)) => complain(&error, 2),
         Err(Failure::Unfinished(error)) => complain(&error, 3),
     }

@@ -2,7 +2,7 @@
 ///
 /// mu, S, C are the reference's moments, hatted ones (^) the method's, b = mu - mu^ (wrapped), P the prior,
 /// R the noise, n the number of state components, p of outputs.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash)]
 pub enum ScoreKind {
     /// Bias of the mean.
     MeanError,

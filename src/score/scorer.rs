@@ -87,6 +87,27 @@ impl<'a> Scorer<'a> {
         })))
     }
 
+    /// By how much the scores of `method` are above those of `other`, both on this reference, each with the jackknife
+    /// standard error of the difference: what the reference leaves to chance shifts both alike and mostly falls out.
+    /// `None` where one of the two is no Gaussian.
+    pub fn difference(&self, method: &Moments, other: &Moments) -> Option<Scores> {
+        let at = |yardstick: &Yardstick, moments: &Moments| -> Option<[f64; ScoreKind::COUNT]> {
+            let (whitened, own) = self.compare(yardstick, moments)?;
+            validity(&own).ok()?;
+            Some(evaluate(whitened, &own))
+        };
+        let differences = |yardstick: &Yardstick| -> Option<[f64; ScoreKind::COUNT]> {
+            let (a, b) = (at(yardstick, method)?, at(yardstick, other)?);
+            Some(std::array::from_fn(|k| a[k] - b[k]))
+        };
+        let whole = differences(&self.whole)?;
+        let left_out: Vec<_> = self.left_out.iter().map(differences).collect::<Option<_>>()?;
+        Some(Scores(std::array::from_fn(|k| {
+            let column: Vec<f64> = left_out.iter().map(|row| row[k]).collect();
+            jackknife(whole[k], &column)
+        })))
+    }
+
     /// The floor of the case under the noise R (p x p).
     pub fn floor(&self, noise: Option<&DMatrix<f64>>) -> Floor {
         let Some(noise) = noise.filter(|r| definite_within_scale(r).is_some()) else {

@@ -62,6 +62,9 @@ pub struct Answered {
     pub verdict: Verdict,
     /// The leading cause of a rejection, in one sentence.
     pub cause: Option<String>,
+    /// By how much its scores differ from those of its answer in an earlier survey, both on this reference; see
+    /// [`SurveyPlan::earlier`].
+    pub change: Option<Scores>,
 }
 
 /// Samples, scores and judges one case: deepens the reference until it is as precise as asked and every
@@ -122,7 +125,12 @@ pub(super) fn run_case(
                     }
                     _ => None,
                 };
-                Ok(Answered { moments, opinions, evaluations, scores, verdict, cause })
+                let earlier = plan.earlier.get(case.id(), entrant.label());
+                let change = match (&moments, earlier) {
+                    (Ok(now), Some(before)) if now != before => scorer.difference(now, before),
+                    _ => None,
+                };
+                Ok(Answered { moments, opinions, evaluations, scores, verdict, cause, change })
             })
             .collect();
         let stop = match reference.soundness {

@@ -2,6 +2,7 @@
 
 mod case_run;
 mod cause;
+mod earlier;
 mod entrant;
 mod kept;
 mod regime;
@@ -13,6 +14,7 @@ mod timing;
 
 pub use crate::shard::{Shard, ShardError};
 pub use case_run::{Answer, Answered, CaseResult, Stop};
+pub use earlier::Earlier;
 pub use entrant::Entrant;
 pub use regime::{Indices, OpinionsOf};
 pub(crate) use regime::{excess_over, regime_columns};

@@ -1,4 +1,4 @@
-use super::Shard;
+use super::{Earlier, Shard};
 use crate::method::{MethodSpec, default_methods};
 use crate::outside::Outside;
 use crate::reference::{SamplerError, SamplerSettings, Store};
@@ -39,6 +39,8 @@ pub struct SurveyPlan {
     pub shard: Option<Shard>,
     /// Where references are kept.
     pub store: Option<Store>,
+    /// Answers of an earlier survey, which are scored on the same references for comparison; none unless given.
+    pub earlier: Earlier,
 }
 
 /// Why a survey cannot begin.
@@ -90,7 +92,8 @@ impl SurveyPlan {
         }
         let judge = Judge::new(suite.limits, sampler.replicates, sampler.looks());
         let (shard, store) = (settings.shard, settings.store.clone());
-        Ok(Self { sampler, methods, outside: Vec::new(), limits: suite.limits, judge, shard, store })
+        let (limits, outside, earlier) = (suite.limits, Vec::new(), Earlier::default());
+        Ok(Self { sampler, methods, outside, limits, judge, shard, store, earlier })
     }
 
     /// Takes an outside implementation in, with its answers to this plan's suite and part of it.

@@ -7,6 +7,7 @@ mod catalogue;
 mod contract;
 mod desk;
 mod endings;
+mod gate;
 mod mark;
 mod odd_input;
 mod options;
