@@ -3,7 +3,7 @@
 //!
 //! Data flows one way: [`suite`] makes cases; [`reference`](mod@reference) samples their true moments
 //! beside the [`method`]s that approximate them, and the answers of implementations [`outside`]; [`score`] compares the two;
-//! [`trust`] judges; [`survey`] runs it all in parallel; [`guidance`] draws conclusions; [`report`] writes it down.
+//! [`trust`] judges; [`survey`] runs it all in parallel; [`guidance`] draws conclusions; [`report`] writes it down and [`publish`] tells those who did not run it.
 //! [`gaussian`] and [`sensor`] are the ground they stand on; [`net`] and [`lanes`] are what sampling is made of.
 //!
 //! Results guide a choice, they certify nothing: before an estimator steers, lands, stops or warns
@@ -16,6 +16,7 @@ pub mod lanes;
 pub mod method;
 pub mod net;
 pub mod outside;
+pub mod publish;
 pub mod reference;
 pub mod report;
 pub mod score;

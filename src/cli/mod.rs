@@ -7,6 +7,7 @@ mod mark;
 mod measuring;
 mod merge;
 mod progress;
+mod publish;
 mod questions;
 mod stdout;
 mod survey;
@@ -35,6 +36,8 @@ enum Command {
     Mark(mark::Arguments),
     /// Join the parts of a survey that were made with --shard
     Merge(merge::Arguments),
+    /// Turn results folders into guidance for people who did not run them: a page, Markdown, pictures
+    Publish(publish::Arguments),
     /// List sensors, methods and scores with formulas and sources
     Catalogue(catalogue::Arguments),
 }
@@ -73,6 +76,7 @@ pub fn main() -> ExitCode {
         Command::HandOut(arguments) => hand_out::run(&arguments),
         Command::Mark(arguments) => mark::run(&arguments),
         Command::Merge(arguments) => merge::run(&arguments),
+        Command::Publish(arguments) => publish::run(&arguments),
         Command::Catalogue(arguments) => catalogue::run(&arguments),
     };
     match done {
