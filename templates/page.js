@@ -184,9 +184,9 @@
         const row = item * count + entrant;
         const verdict = found.verdicts[row];
         const work = Judge.work(suite, row);
-        body.append(make("tr", {}, make("th", { scope: "row" }, sign(suite, entrant), " ", method.label), make("td", {}, word(verdict.name)), make("td", { class: "n" }, work === null ? "–" : String(work)), ...scoreCells(suite, row), make("td", {}, suite.rows.reason[row] || decided(verdict))));
+        body.append(make("tr", {}, make("th", { scope: "row" }, sign(suite, entrant), " ", method.label), make("td", {}, word(verdict.name)), make("td", { class: "why" }, suite.rows.reason[row] || decided(verdict)), make("td", { class: "n" }, work === null ? "–" : String(work)), ...scoreCells(suite, row)));
       });
-      const head = ["Method", "Verdict", "Work", ...HEADINGS, "What decides"].map((text) => make("th", { scope: "col" }, text));
+      const head = ["Method", "Verdict", "What decides", "Work", ...HEADINGS].map((text) => make("th", { scope: "col" }, text));
       parts.push(make("p", {}, make("b", {}, suite.cases.id[item]), ` (${suite.cases.about[item]}). Reference ${suite.cases.soundness[item]}. Floor ${told}.`));
       parts.push(make("div", { class: "scroll", tabindex: 0, role: "region", "aria-label": "Numbers of case " + suite.cases.id[item] }, make("table", {}, make("thead", {}, make("tr", {}, ...head)), body)));
     }
@@ -195,7 +195,7 @@
     place.hidden = false;
   }
 
-  const COLUMNS = ["Case", "Family", "Method", "Verdict", ...HEADINGS, "Floor [nats]", "What decides"];
+  const COLUMNS = ["Case", "Family", "Method", "Verdict", "What decides", ...HEADINGS, "Floor [nats]"];
 
   function caseTable(suite) {
     const place = suite.node.querySelector(".cases");
@@ -225,8 +225,8 @@
       if (k === 1) return suite.families[suite.cases.family[item]];
       if (k === 2) return row % count;
       if (k === 3) return suite.found.verdicts[row].name;
-      if (k < 10) return Judge.estimate(suite, row, k - 4)[0];
-      return k === 10 ? suite.floors[2 * item] : decided(suite.found.verdicts[row]);
+      if (k === 4) return suite.rows.reason[row] || decided(suite.found.verdicts[row]);
+      return k < 11 ? Judge.estimate(suite, row, k - 5)[0] : suite.floors[2 * item];
     };
     function fill() {
       let rows = suite.found.verdicts.map((_, row) => row).filter((row) => {
@@ -242,7 +242,7 @@
       body.replaceChildren(...keyed.slice(0, state.shown).map(([, row]) => {
         const item = Math.floor(row / count);
         const verdict = suite.found.verdicts[row];
-        return make("tr", { "data-row": row }, make("th", { scope: "row", title: suite.cases.about[item] }, suite.cases.id[item]), make("td", {}, suite.families[suite.cases.family[item]]), make("td", {}, suite.methods[row % count].label), make("td", {}, word(verdict.name)), ...scoreCells(suite, row), make("td", { class: "n" }, number(suite.floors[2 * item]) + error(suite.floors[2 * item + 1])), make("td", {}, suite.rows.reason[row] || decided(verdict)));
+        return make("tr", { "data-row": row }, make("th", { scope: "row", title: suite.cases.about[item] }, suite.cases.id[item]), make("td", {}, suite.families[suite.cases.family[item]]), make("td", { class: "name" }, suite.methods[row % count].label), make("td", {}, word(verdict.name)), make("td", { class: "why" }, suite.rows.reason[row] || decided(verdict)), ...scoreCells(suite, row), make("td", { class: "n" }, number(suite.floors[2 * item]) + error(suite.floors[2 * item + 1])));
       }));
     }
     return fill;

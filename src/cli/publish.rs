@@ -20,6 +20,9 @@ pub struct Arguments {
     /// Title of the guidance; made of the suites unless told
     #[arg(long, value_name = "TEXT")]
     title: Option<String>,
+    /// Pictures as PNG too, beside SVG
+    #[arg(long)]
+    png: bool,
 }
 
 pub fn run(arguments: &Arguments) -> Result<(), Failure> {
@@ -27,7 +30,7 @@ pub fn run(arguments: &Arguments) -> Result<(), Failure> {
         if error.is_input() { Failure::input(error) } else { Failure::unfinished(error) }
     };
     let publication = Publication::read(arguments.title.as_deref(), &arguments.results).map_err(failure)?;
-    let written = publication.write(&arguments.to).map_err(failure)?;
+    let written = publication.with_png(arguments.png).write(&arguments.to).map_err(failure)?;
     let mut out = Stdout::new();
     for path in written {
         writeln!(out, "{}", path.display())?;

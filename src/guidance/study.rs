@@ -4,15 +4,18 @@ use std::fs::File;
 use std::io::{BufRead, BufReader, Read};
 use std::path::{Path, PathBuf};
 
+use nalgebra::DVector;
 use serde::Deserialize;
 use serde_json::Value;
 
-use super::{MethodEnvelopes, Provenance, ScoreRow, Scores, ScoresError, work};
+use super::scene::matrix;
+use super::{MethodEnvelopes, Provenance, ScoreRow, Scores, ScoresError, Spread, work};
+use crate::gaussian::Moments;
 use crate::method::Evaluations;
 use crate::score::{self, Estimate, Floor, Invalid, ScoreKind};
 use crate::suite::Setting;
-use crate::survey::{Indices, OpinionsOf, regime_columns};
-use crate::trust::{Judge, RegimeIndex, Standing, Trust, Verdict};
+use crate::survey::{Indices, OpinionsOf, excess_over, regime_columns};
+use crate::trust::{Judge, OPINIONS, RegimeIndex, Standing, Trust, Verdict};
 
 /// The results of one suite.
 #[derive(Debug, Clone)]
@@ -62,9 +65,27 @@ pub struct StudyReference {
     pub points: u64,
     /// How far it can be believed.
     pub soundness: String,
+    mean: Vec<Option<f64>>,
+    covariance: Vec<Vec<Option<f64>>>,
+    cross_covariance: Vec<Vec<Option<f64>>>,
 }
 
 impl StudyReference {
+    fn unread() -> Self {
+        let (mean, covariance, cross_covariance) = Default::default();
+        Self { case: String::new(), points: 0, soundness: String::new(), mean, covariance, cross_covariance }
+    }
+
+    /// Its moments, where all of them are finite.
+    pub fn moments(&self) -> Option<Moments> {
+        let moments = Moments {
+            mean: DVector::from_iterator(self.mean.len(), self.mean.iter().map(|m| m.unwrap_or(f64::NAN))),
+            covariance: matrix(&self.covariance),
+            cross_covariance: matrix(&self.cross_covariance),
+        };
+        moments.is_finite().then_some(moments)
+    }
+
     /// Whether a verdict can rest on it.
     pub fn bears_verdicts(&self) -> bool {
         matches!(self.soundness.as_str(), "sound" | "wide")
@@ -291,7 +312,7 @@ fn begin(row: &ScoreRow<'_>, columns: &[String], headings: &[String]) -> Result<
         id: row.text("case")?.into(),
         family: row.text("family")?.into(),
         record: Value::Null,
-        reference: StudyReference { case: String::new(), points: 0, soundness: String::new() },
+        reference: StudyReference::unread(),
         floor,
         floor_standing: floor_standing.into_iter().find(|s| s.name() == written).unwrap_or(Standing::Open),
         indices,
@@ -343,5 +364,32 @@ pub(super) fn floor_of(case: &StudyCase, judge: &Judge) -> Standing {
     match case.floor {
         Some(estimate) if case.reference.bears_verdicts() => judge.floor(&Floor::Known(estimate)),
         _ => Standing::Open,
+    }
+}
+
+impl Study {
+    /// Median and quartiles of a score of one entrant over the cases whose reference bears verdicts; `None` where it has none.
+    pub fn quartiles(&self, entrant: usize, kind: ScoreKind) -> Option<Spread> {
+        let sound = self.cases.iter().filter(|case| case.reference.bears_verdicts());
+        let mut values: Vec<f64> = sound
+            .filter_map(|case| case.entries[entrant].scores.get(kind))
+            .map(|estimate| estimate.value)
+            .collect();
+        values.sort_by(f64::total_cmp);
+        let at = |share: f64| values.get((share * (values.len() - 1) as f64).round() as usize).copied();
+        if values.is_empty() {
+            return None;
+        }
+        Some(Spread { lower: at(0.25)?, median: at(0.5)?, upper: at(0.75)? })
+    }
+
+    /// The value of a regime index or second opinion, by its name in envelopes, of an entrant on a case.
+    pub fn index(&self, case: usize, entrant: usize, name: &str) -> Option<f64> {
+        let case = &self.cases[case];
+        if let Some(k) = RegimeIndex::ALL.iter().position(|index| index.name() == name) {
+            return case.indices[k];
+        }
+        let k = OPINIONS.iter().position(|rule| excess_over(rule) == name)?;
+        case.entries[entrant].opinions[k]
     }
 }

@@ -21,15 +21,54 @@ pub(super) const COLOURS: [(&str, &str); 8] = [
     ("#59636e", "#b4bfca"),
 ];
 
-/// Outlines in a square from -8 to 8, by the names of what they show.
-const SHAPES: [&str; 7] = [
-    "M-6 0A6 6 0 1 0 6 0A6 6 0 1 0 -6 0Z",
-    "M-5.5-5.5H5.5V5.5H-5.5Z",
-    "M0-7L7 5.5H-7Z",
-    "M0-7.5L6.5 0L0 7.5L-6.5 0Z",
-    "M0 7L7-5.5H-7Z",
-    "M-2-7H2V-2H7V2H2V7H-2V2H-7V-2H-2Z",
-    "M-7-4.2L-4.2-7L0-2.8L4.2-7L7-4.2L2.8 0L7 4.2L4.2 7L0 2.8L-4.2 7L-7 4.2L-2.8 0Z",
+/// Corners of the outlines in a square from -8 to 8, y downwards: circle, square, triangles up and down, diamond, plus, cross.
+const SHAPES: [&[(f64, f64)]; 7] = [
+    &[
+        (6.3, 0.0),
+        (5.46, 3.15),
+        (3.15, 5.46),
+        (0.0, 6.3),
+        (-3.15, 5.46),
+        (-5.46, 3.15),
+        (-6.3, 0.0),
+        (-5.46, -3.15),
+        (-3.15, -5.46),
+        (0.0, -6.3),
+        (3.15, -5.46),
+        (5.46, -3.15),
+    ],
+    &[(-5.5, -5.5), (5.5, -5.5), (5.5, 5.5), (-5.5, 5.5)],
+    &[(0.0, -7.0), (7.0, 5.5), (-7.0, 5.5)],
+    &[(0.0, -7.5), (6.5, 0.0), (0.0, 7.5), (-6.5, 0.0)],
+    &[(0.0, 7.0), (7.0, -5.5), (-7.0, -5.5)],
+    &[
+        (-2.0, -7.0),
+        (2.0, -7.0),
+        (2.0, -2.0),
+        (7.0, -2.0),
+        (7.0, 2.0),
+        (2.0, 2.0),
+        (2.0, 7.0),
+        (-2.0, 7.0),
+        (-2.0, 2.0),
+        (-7.0, 2.0),
+        (-7.0, -2.0),
+        (-2.0, -2.0),
+    ],
+    &[
+        (-7.0, -4.2),
+        (-4.2, -7.0),
+        (0.0, -2.8),
+        (4.2, -7.0),
+        (7.0, -4.2),
+        (2.8, 0.0),
+        (7.0, 4.2),
+        (4.2, 7.0),
+        (0.0, 2.8),
+        (-4.2, 7.0),
+        (-7.0, 4.2),
+        (-2.8, 0.0),
+    ],
 ];
 
 impl Mark {
@@ -54,14 +93,20 @@ impl Mark {
         marks
     }
 
-    /// Its outline, as SVG path data.
-    pub fn path(&self) -> &'static str {
-        SHAPES[self.shape()]
+    /// Corners of its outline in a square from -8 to 8, y downwards.
+    pub fn outline(&self) -> &'static [(f64, f64)] {
+        SHAPES[self.place % SHAPES.len()]
     }
 
-    /// Which shape it has.
-    pub fn shape(&self) -> usize {
-        self.place % SHAPES.len()
+    /// Its outline, as SVG path data.
+    pub fn path(&self) -> String {
+        let corners: Vec<String> = self.outline().iter().map(|(x, y)| format!("{x} {y}")).collect();
+        format!("M{}Z", corners.join("L"))
+    }
+
+    /// Its colour on white paper.
+    pub fn on_paper(&self) -> &'static str {
+        COLOURS[self.colour()].0
     }
 
     /// Which colour it has.

@@ -6,6 +6,7 @@ mod data;
 mod markdown;
 mod marks;
 mod page;
+mod pictures;
 mod prepared;
 mod publication;
 mod views;

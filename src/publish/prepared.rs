@@ -1,6 +1,6 @@
 use std::borrow::Cow;
 
-use super::axes::{quantity, title};
+use super::axes::{parted, quantity};
 use super::marks::Mark;
 use crate::guidance::{Cell, FamilyMap, Study, View};
 
@@ -48,7 +48,7 @@ impl<'a> Prepared<'a> {
     pub fn about_cell(&self, map: &FamilyMap, cell: &Cell) -> String {
         let parts = map.axes.iter().zip(&cell.place).enumerate().map(|(k, (&axis, &place))| {
             let heading = &self.study.headings[axis];
-            let (name, _) = super::axes::parted(heading);
+            let (name, _) = parted(heading);
             format!("{name} {}", quantity(map.values[k][place], heading))
         });
         parts.collect::<Vec<_>>().join(", ")
@@ -58,7 +58,7 @@ impl<'a> Prepared<'a> {
     pub fn about_case(&self, case: usize) -> String {
         let settings = self.explored.cases[case].settings.iter().zip(&self.study.headings);
         let parts = settings.filter_map(|(value, heading)| {
-            let (name, _) = super::axes::parted(heading);
+            let (name, _) = parted(heading);
             value.map(|value| format!("{name} {}", quantity(value, heading)))
         });
         parts.collect::<Vec<_>>().join(", ")
@@ -71,7 +71,7 @@ impl<'a> Prepared<'a> {
 
     /// What stands in the corner of a map: what runs down and what runs across.
     pub fn corner(&self, map: &FamilyMap) -> String {
-        let of = |k: usize| title(&self.study.headings[map.axes[k]]);
+        let of = |k: usize| parted(&self.study.headings[map.axes[k]]).0;
         if map.axes.len() == 2 { format!("{} down, {} across", of(0), of(1)) } else { format!("{} across", of(0)) }
     }
 }

@@ -1,8 +1,13 @@
 use std::io::{self, Write};
 use std::path::{Path, PathBuf};
 
+use base64::Engine;
+use base64::prelude::BASE64_STANDARD;
+
+use super::markdown::{self, Linked};
+use super::page::{self, Shown};
+use super::pictures::Picture;
 use super::prepared::Prepared;
-use super::{markdown, page};
 use crate::guidance::{Study, StudyError};
 use crate::whole_file::WholeFile;
 
@@ -11,6 +16,7 @@ use crate::whole_file::WholeFile;
 pub struct Publication {
     title: String,
     studies: Vec<Study>,
+    png: bool,
 }
 
 /// Guidance could not be published.
@@ -65,7 +71,7 @@ impl Publication {
             studies.push(study);
         }
         let title = title.map_or_else(|| default_title(&studies), String::from);
-        Ok(Self { title, studies })
+        Ok(Self { title, studies, png: false })
     }
 
     /// Its studies.
@@ -73,21 +79,48 @@ impl Publication {
         &self.studies
     }
 
-    /// Writes `index.html` and `guidance.md` to a folder, which is made if it is not there; each file whole or not at all. Gives
+    /// Writes `index.html`, `guidance.md` and `pictures/` to a folder, which is made if it is not there; each file whole or not at all. Gives
     /// back what was written.
     ///
     /// # Errors
     /// [`PublishError`] with the file that could not be written.
     pub fn write(&self, to: &Path) -> Result<Vec<PathBuf>, PublishError> {
+        let failed = PublishError::Rendering;
         let prepared = Prepared::all(&self.studies);
-        let page = page::render(&self.title, &prepared, Vec::new()).map_err(PublishError::Rendering)?;
-        let text =
-            markdown::render(&self.title, &prepared, Vec::new()).map_err(|e| PublishError::Rendering(e.into()))?;
-        std::fs::create_dir_all(to).map_err(|source| PublishError::Write { path: to.into(), source })?;
-        [("index.html", page), ("guidance.md", text)]
-            .into_iter()
-            .map(|(name, text)| file(to, name, text.as_bytes()))
-            .collect()
+        let pictures: Vec<Picture<'_>> = prepared.iter().flat_map(Picture::all).collect();
+        let drawn = pictures.iter().map(Picture::svg).collect::<Result<Vec<_>, _>>().map_err(failed)?;
+        let files: Vec<String> = pictures.iter().map(|picture| format!("pictures/{}.svg", picture.name)).collect();
+        let shown = pictures.iter().zip(&drawn).map(|(picture, svg)| Shown {
+            alt: &picture.alt,
+            caption: &picture.caption,
+            data: format!("data:image/svg+xml;base64,{}", BASE64_STANDARD.encode(svg)),
+            width: picture.size.0,
+            height: picture.size.1,
+        });
+        let linked = pictures.iter().zip(&files).map(|(picture, file)| Linked {
+            alt: &picture.alt,
+            caption: &picture.caption,
+            file,
+        });
+        let page = page::render(&self.title, &prepared, shown.collect()).map_err(failed)?;
+        let text = markdown::render(&self.title, &prepared, linked.collect()).map_err(|e| failed(e.into()))?;
+        let folder = to.join("pictures");
+        std::fs::create_dir_all(&folder).map_err(|source| PublishError::Write { path: folder, source })?;
+        let mut written = vec![file(to, "index.html", page.as_bytes())?, file(to, "guidance.md", text.as_bytes())?];
+        for ((picture, svg), name) in pictures.iter().zip(&drawn).zip(&files) {
+            written.push(file(to, name, svg.as_bytes())?);
+            if self.png {
+                let bytes = picture.png().map_err(failed)?;
+                written.push(file(to, &format!("pictures/{}.png", picture.name), &bytes)?);
+            }
+        }
+        Ok(written)
+    }
+
+    /// The same, with every picture as PNG too.
+    #[must_use]
+    pub fn with_png(self, png: bool) -> Self {
+        Self { png, ..self }
     }
 }
 

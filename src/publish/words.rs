@@ -45,6 +45,17 @@ pub(super) fn evaluations(of: Option<(Evaluations, Evaluations)>) -> String {
     of.map_or("–".into(), evaluations_text)
 }
 
+/// What one transform costs, in words.
+fn price(of: Option<(Evaluations, Evaluations)>) -> String {
+    match of.map(evaluations_text).as_deref() {
+        None => "evaluations that are not known".into(),
+        Some("1 J") => "one Jacobian".into(),
+        Some("1 H") => "one set of Hessians".into(),
+        Some("1 M") => "one set of exact moments".into(),
+        Some(counts) => format!("{counts} evaluations"),
+    }
+}
+
 /// The answer: which method where, with its evidence.
 pub(super) fn answer(study: &Study, view: &View<'_>) -> Vec<Rich> {
     let ranking = view.ranking();
@@ -87,7 +98,7 @@ pub(super) fn answer(study: &Study, view: &View<'_>) -> Vec<Rich> {
 
 /// What to take where one method is to serve the whole suite.
 fn one_for_all(study: &Study, best: &Ranked) -> String {
-    let price = evaluations(best.evaluations);
+    let price = price(best.evaluations);
     let drawn = study.cases.iter().all(|case| {
         case.settings.iter().zip(&study.headings).any(|(s, h)| s.is_some() && h.ends_with(Setting::DRAWN))
     });
@@ -102,8 +113,7 @@ fn one_for_all(study: &Study, best: &Ranked) -> String {
     };
     let which = if best.trusted == best.served() { "all".into() } else { format!("{} of", best.trusted) };
     format!(
-        "Where one method is to serve everywhere, take {}: trusted in {which} {} cases ({}{bound}), for {price} evaluations a \
-         transform.",
+        "Where one method is to serve everywhere, take {}: trusted in {which} {} cases ({}{bound}), for {price} a transform.",
         name(&study.labels[best.entrant]),
         best.served(),
         percent(best.trusted, best.served()),
@@ -125,9 +135,9 @@ fn cheaper(study: &Study, ranking: &[Ranked], best: &Ranked) -> Option<String> {
         .iter()
         .map(|r| {
             format!(
-                "{} ({} evaluations) in {}",
+                "{} ({}) in {}",
                 name(&study.labels[r.entrant]),
-                evaluations(r.evaluations),
+                price(r.evaluations),
                 percent(r.trusted, r.served())
             )
         })
@@ -137,7 +147,7 @@ fn cheaper(study: &Study, ranking: &[Ranked], best: &Ranked) -> Option<String> {
 
 fn in_family(study: &Study, view: &View<'_>, family: &str) -> String {
     let cases: Vec<usize> = (0..study.cases.len()).filter(|&k| study.cases[k].family == family).collect();
-    let among = format!("{}, {} cases{}", name(family), cases.len(), over(study, family, &cases));
+    let among = format!("In the family {} ({} cases{})", name(family), cases.len(), over(study, family, &cases));
     if let Some(entrant) = view.choice(&cases) {
         return format!(
             "{among}: {} is the cheapest that is trusted in all of them.",
@@ -220,8 +230,8 @@ pub(super) fn limits(study: &Study) -> String {
 /// How a method fared in a suite, in a sentence or two.
 pub(super) fn fared(study: &Study, view: &View<'_>, ranked: &Ranked) -> String {
     let mut text = format!(
-        "{} evaluations; trusted in {} of {} cases ({}), rejected in {}, undecided in {}",
-        evaluations(ranked.evaluations),
+        "{} a transform; trusted in {} of {} cases ({}), rejected in {}, undecided in {}",
+        price(ranked.evaluations),
         ranked.trusted,
         ranked.served(),
         percent(ranked.trusted, ranked.served()),
