@@ -47,7 +47,7 @@ name = "noiseless"
 mean = [500, 300]
 sd = [20, 20]
 [family.noise]
-sd = 0
+covariance = 0
 [[family]]
 name = "around"
 [family.sensor]

@@ -14,7 +14,7 @@ use crate::suite::Case;
 use crate::survey::transformed;
 
 /// Samples of a scene.
-const CLOUD: usize = 600;
+const CLOUD: usize = 400;
 /// Most samples of a reference whose sharpening is shown.
 const DEEPEST: u64 = 1 << 22;
 

@@ -7,6 +7,7 @@ use std::path::{Path, PathBuf};
 use nalgebra::DVector;
 use serde::Deserialize;
 use serde_json::Value;
+use sha2::{Digest, Sha256};
 
 use super::scene::matrix;
 use super::{MethodEnvelopes, Provenance, ScoreRow, Scores, ScoresError, Spread, work};
@@ -391,5 +392,16 @@ impl Study {
         }
         let k = OPINIONS.iter().position(|rule| excess_over(rule) == name)?;
         case.entries[entrant].opinions[k]
+    }
+
+    /// SHA-256 of every verdict, case by case and entrant by entrant: another one where any of them is another.
+    pub fn fingerprint(&self) -> String {
+        let mut hash = Sha256::new();
+        for case in &self.cases {
+            for (label, entry) in self.labels.iter().zip(&case.entries) {
+                hash.update(format!("{}\t{label}\t{}\n", case.id, entry.outcome.name()));
+            }
+        }
+        hash.finalize().iter().map(|byte| format!("{byte:02x}")).collect()
     }
 }

@@ -18,15 +18,6 @@ pub(super) fn shown(unit: &str) -> (&str, f64) {
     }
 }
 
-/// `prior.range [m]`, `prior.across_sd [deg]`.
-pub(super) fn title(heading: &str) -> String {
-    let (name, unit) = parted(heading);
-    match shown(unit).0 {
-        "" => name.into(),
-        unit => format!("{name} [{unit}]"),
-    }
-}
-
 /// A value with its unit.
 pub(super) fn quantity(value: f64, heading: &str) -> String {
     let (unit, factor) = shown(parted(heading).1);
@@ -60,7 +51,6 @@ mod tests {
         assert_eq!(quantity(20_000.0, "prior.range [m], drawn"), "20 km");
         assert_eq!(quantity(300.0, "prior.range [m]"), "300 m");
         assert_eq!(quantity(0.02, "prior.along_sd"), "0.02");
-        assert_eq!(title("prior.across_sd [rad]"), "prior.across_sd [deg]");
         assert_eq!([short(695.33), short(0.0012345), short(1.5e-7)], ["695", "0.00123", "1.50e-7"]);
     }
 }

@@ -5,7 +5,7 @@ use super::marks::Mark;
 use crate::guidance::{Cell, FamilyMap, Study, View};
 
 /// Rows of a suite that a page carries, so that it stays small; of a larger suite it has cases evenly spread.
-const MOST_ROWS: usize = 6000;
+const MOST_ROWS: usize = 4000;
 
 /// A study made ready to be shown.
 pub(super) struct Prepared<'a> {

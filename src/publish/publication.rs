@@ -3,6 +3,7 @@ use std::path::{Path, PathBuf};
 
 use base64::Engine;
 use base64::prelude::BASE64_STANDARD;
+use serde::{Deserialize, Serialize};
 
 use super::markdown::{self, Linked};
 use super::page::{self, Shown};
@@ -79,7 +80,7 @@ impl Publication {
         &self.studies
     }
 
-    /// Writes `index.html`, `guidance.md` and `pictures/` to a folder, which is made if it is not there; each file whole or not at all. Gives
+    /// Writes `index.html`, `guidance.md`, `verdicts.json` and `pictures/` to a folder, which is made if it is not there; each file whole or not at all. Gives
     /// back what was written.
     ///
     /// # Errors
@@ -106,7 +107,12 @@ impl Publication {
         let text = markdown::render(&self.title, &prepared, linked.collect()).map_err(|e| failed(e.into()))?;
         let folder = to.join("pictures");
         std::fs::create_dir_all(&folder).map_err(|source| PublishError::Write { path: folder, source })?;
-        let mut written = vec![file(to, "index.html", page.as_bytes())?, file(to, "guidance.md", text.as_bytes())?];
+        let verdicts =
+            serde_json::to_string_pretty(&Verdicts::of(&self.studies)).map_err(|e| failed(e.into()))? + "\n";
+        let mut written = Vec::new();
+        for (name, content) in [("index.html", &page), ("guidance.md", &text), (VERDICTS, &verdicts)] {
+            written.push(file(to, name, content.as_bytes())?);
+        }
         for ((picture, svg), name) in pictures.iter().zip(&drawn).zip(&files) {
             written.push(file(to, name, svg.as_bytes())?);
             if self.png {
@@ -117,10 +123,58 @@ impl Publication {
         Ok(written)
     }
 
+    /// Suites of which guidance that was published before says other verdicts than these results; suites that it does not hold
+    /// count as such.
+    ///
+    /// # Errors
+    /// [`PublishError::Study`] if the folder holds no guidance.
+    pub fn outdated(&self, guidance: &Path) -> Result<Vec<String>, PublishError> {
+        let path = guidance.join(VERDICTS);
+        let text = std::fs::read_to_string(&path)
+            .map_err(|source| StudyError::Unreadable { path: path.clone(), source })?;
+        let published: Verdicts = serde_json::from_str(&text)
+            .map_err(|e| StudyError::Content { path, message: format!("is not what publish writes: {e}") })?;
+        let now = Verdicts::of(&self.studies).suites.into_iter();
+        Ok(now.filter(|suite| !published.suites.contains(suite)).map(|suite| suite.suite).collect())
+    }
+
     /// The same, with every picture as PNG too.
     #[must_use]
     pub fn with_png(self, png: bool) -> Self {
         Self { png, ..self }
+    }
+}
+
+/// The file that says what was published.
+const VERDICTS: &str = "verdicts.json";
+
+/// What guidance rests on, in few words: enough to tell whether other results say the same.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+struct Verdicts {
+    suites: Vec<VerdictsOf>,
+}
+
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+struct VerdictsOf {
+    suite: String,
+    seed: u64,
+    /// SHA-256 of the suite's text.
+    hash: String,
+    cases: usize,
+    /// SHA-256 of all verdicts, see [`Study::fingerprint`].
+    verdicts: String,
+}
+
+impl Verdicts {
+    fn of(studies: &[Study]) -> Self {
+        let of = |study: &Study| VerdictsOf {
+            suite: study.provenance.suite.name.clone(),
+            seed: study.provenance.seed,
+            hash: study.provenance.suite.hash.clone(),
+            cases: study.cases.len(),
+            verdicts: study.fingerprint(),
+        };
+        Self { suites: studies.iter().map(of).collect() }
     }
 }
 

@@ -12,7 +12,7 @@ pub(super) type Area<DB> = DrawingArea<DB, Shift>;
 pub(super) type Drawn<DB> = Result<(), DrawingAreaErrorKind<<DB as DrawingBackend>::ErrorType>>;
 
 /// Letters that are read at half the size.
-pub(super) const LETTERS: u32 = 21;
+pub(super) const LETTERS: u32 = 26;
 pub(super) const INK: RGBColor = RGBColor(27, 35, 43);
 pub(super) const FAINT: RGBColor = RGBColor(205, 202, 194);
 pub(super) const YES: RGBColor = RGBColor(13, 110, 98);
@@ -85,4 +85,9 @@ pub(super) fn tick(value: &f64) -> String {
         return text.trim_end_matches('0').trim_end_matches('.').into();
     }
     format!("{value:.0e}")
+}
+
+/// Words so many pixels away from a place of a chart.
+pub(super) fn beside(words: &'static str, away: (i32, i32)) -> Text<'static, (i32, i32), &'static str> {
+    Text::new(words, away, letters(LETTERS - 3))
 }

@@ -80,8 +80,8 @@ impl Ellipses<'_> {
         };
         let mut chart = ChartBuilder::on(&plot)
             .margin(16)
-            .x_label_area_size(64)
-            .y_label_area_size(96)
+            .x_label_area_size(72)
+            .y_label_area_size(106)
             .build_cartesian_2d(range(|p| p.0), range(|p| p.1))?;
         chart
             .configure_mesh()

@@ -2,7 +2,7 @@
 
 use plotters::prelude::*;
 
-use super::canvas::{Area, Drawn, FAINT, INK, LETTERS, WARN, YES, decades, letters};
+use super::canvas::{Area, Drawn, FAINT, INK, LETTERS, WARN, YES, beside, decades, letters};
 use super::{Drawing, Picture};
 use crate::guidance::View;
 use crate::publish::prepared::Prepared;
@@ -51,8 +51,8 @@ impl Floors {
         let count = self.floors.len() as f64;
         let mut chart = ChartBuilder::on(area)
             .margin(16)
-            .x_label_area_size(64)
-            .y_label_area_size(96)
+            .x_label_area_size(72)
+            .y_label_area_size(106)
             .build_cartesian_2d(0.0..count + 1.0, (y.0..y.1).log_scale())?;
         chart
             .configure_mesh()
@@ -67,7 +67,7 @@ impl Floors {
             .draw()?;
         chart
             .draw_series([PathElement::new([(0.0, self.limit), (count + 1.0, self.limit)], INK.stroke_width(2))])?;
-        chart.draw_series([Text::new("limit", (0.6, self.limit * 1.25), letters(LETTERS - 3))])?;
+        chart.draw_series([EmptyElement::at((0.0, self.limit)) + beside("limit", (6, -26))])?;
         for (k, &(value, margin, standing)) in self.floors.iter().enumerate() {
             let x = k as f64 + 1.0;
             let ends = [(x, (value - margin).max(y.0)), (x, (value + margin).min(y.1))];

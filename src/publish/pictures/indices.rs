@@ -2,7 +2,7 @@
 
 use plotters::prelude::*;
 
-use super::canvas::{Area, Drawn, FAINT, INK, LETTERS, colour, corners, decades, letters, mark_at, tick};
+use super::canvas::{Area, Drawn, FAINT, INK, LETTERS, beside, colour, corners, decades, letters, mark_at, tick};
 use super::{Drawing, Picture};
 use crate::guidance::{Outcome, Study, View};
 use crate::publish::prepared::Prepared;
@@ -13,7 +13,7 @@ use crate::trust::RegimeIndex;
 const MOST: usize = 4;
 const PANEL: (u32, u32) = (640, 420);
 /// Cases on one panel.
-const CASES: usize = 250;
+const CASES: usize = 160;
 const LEAST: f64 = 1e-9;
 
 pub(super) struct Indices<'a> {
@@ -62,10 +62,12 @@ pub(super) fn of<'a>(prepared: &'a Prepared<'a>) -> Option<Picture<'a>> {
     })
 }
 
-/// Methods with an envelope by one index, those first that are trusted least often: for the others nobody needs one. Without
-/// envelopes the curvature.
+/// Methods with an envelope by one index, those of least work first: for what is dear nobody needs one. Without envelopes the
+/// curvature.
 fn chosen(study: &Study, view: &View<'_>) -> Vec<(usize, String, Option<f64>)> {
-    let mut order: Vec<usize> = view.ranking().iter().rev().map(|r| r.entrant).collect();
+    let mut ranking = view.ranking();
+    ranking.sort_by_key(|r| r.work.map_or(u64::MAX, |(_, most)| most));
+    let mut order: Vec<usize> = ranking.iter().map(|r| r.entrant).collect();
     if let Some(envelopes) = &study.envelopes {
         order.retain(|&k| {
             envelopes
@@ -115,8 +117,8 @@ impl Indices<'_> {
         let mut chart = ChartBuilder::on(area)
             .margin(14)
             .margin_top(40)
-            .x_label_area_size(60)
-            .y_label_area_size(92)
+            .x_label_area_size(72)
+            .y_label_area_size(106)
             .build_cartesian_2d((x.0..x.1).log_scale(), (y.0..y.1).log_scale())?;
         let unit = if panel.index.starts_with("excess")
             || panel.index == "bend over noise"
@@ -156,7 +158,7 @@ impl Indices<'_> {
         chart.draw_series([PathElement::new([(x.0, self.limit), (x.1, self.limit)], INK.stroke_width(2))])?;
         if let Some(end) = panel.envelope {
             chart.draw_series([PathElement::new([(end, y.0), (end, y.1)], INK.stroke_width(3))])?;
-            chart.draw_series([Text::new("envelope ends", (end * 1.06, y.0 * 3.0), letters(LETTERS - 3))])?;
+            chart.draw_series([EmptyElement::at((end, y.0)) + beside("envelope ends", (8, -30))])?;
         }
         Ok(())
     }

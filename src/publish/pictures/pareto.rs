@@ -2,7 +2,7 @@
 
 use plotters::prelude::*;
 
-use super::canvas::{Area, Drawn, FAINT, INK, LETTERS, colour, corners, decades, legend, letters, tick};
+use super::canvas::{Area, Drawn, FAINT, INK, LETTERS, beside, colour, corners, decades, legend, letters, tick};
 use super::{Drawing, Picture};
 use crate::guidance::{Spread, View};
 use crate::publish::prepared::Prepared;
@@ -61,8 +61,8 @@ impl Pareto<'_> {
         let Some(y) = decades(spread.chain([self.limit])) else { return Ok(()) };
         let mut chart = ChartBuilder::on(&plot)
             .margin(16)
-            .x_label_area_size(64)
-            .y_label_area_size(96)
+            .x_label_area_size(72)
+            .y_label_area_size(106)
             .build_cartesian_2d((x.0..x.1).log_scale(), (y.0..y.1).log_scale())?;
         chart
             .configure_mesh()
@@ -76,7 +76,7 @@ impl Pareto<'_> {
             .y_label_formatter(&|v| format!("{v:.0e}"))
             .draw()?;
         chart.draw_series([PathElement::new([(x.0, self.limit), (x.1, self.limit)], INK.stroke_width(2))])?;
-        chart.draw_series([Text::new("limit", (x.0 * 1.03, self.limit * 1.15), letters(LETTERS - 3))])?;
+        chart.draw_series([EmptyElement::at((x.0, self.limit)) + beside("limit", (6, -26))])?;
         let mut front: Vec<(f64, f64)> = Vec::new();
         let mut by_work: Vec<_> = self.points.iter().map(|(_, work, s)| (*work, s.median)).collect();
         by_work.sort_by(|a, b| a.0.total_cmp(&b.0).then(a.1.total_cmp(&b.1)));

@@ -2,7 +2,7 @@
 
 use plotters::prelude::*;
 
-use super::canvas::{Area, Drawn, FAINT, INK, LETTERS, YES, decades, letters};
+use super::canvas::{Area, Drawn, FAINT, INK, LETTERS, YES, beside, decades, letters};
 use super::ellipses::telling_case;
 use super::{Drawing, Picture};
 use crate::guidance::sharpening;
@@ -44,8 +44,8 @@ impl Sharpening {
         let Some(y) = decades(steps.iter().chain(&plain).map(|s| s.1)) else { return Ok(()) };
         let mut chart = ChartBuilder::on(area)
             .margin(16)
-            .x_label_area_size(64)
-            .y_label_area_size(96)
+            .x_label_area_size(72)
+            .y_label_area_size(106)
             .build_cartesian_2d((x.0..x.1).log_scale(), (y.0..y.1).log_scale())?;
         chart
             .configure_mesh()
@@ -69,18 +69,10 @@ impl Sharpening {
         chart.draw_series(dashes)?;
         chart.draw_series([PathElement::new(steps.clone(), YES.stroke_width(3))])?;
         chart.draw_series(steps.iter().map(|&step| Circle::new(step, 6, YES.filled())))?;
-        chart.draw_series([
-            Text::new(
-                "plain Monte Carlo would fall so",
-                (plain[1].0 / 30.0, plain[1].1 * 6.5),
-                letters(LETTERS - 3),
-            ),
-            Text::new(
-                "measured",
-                (steps[steps.len() / 2].0 / 8.0, steps[steps.len() / 2].1 / 1.4),
-                letters(LETTERS - 3),
-            ),
-        ])?;
+        let middle = steps[steps.len() / 2];
+        chart.draw_series([EmptyElement::at(middle) + beside("measured", (-110, 12))])?;
+        let above = (middle.0, first.1 * (first.0 / middle.0).sqrt());
+        chart.draw_series([EmptyElement::at(above) + beside("as plain Monte Carlo would fall", (14, -34))])?;
         Ok(())
     }
 }

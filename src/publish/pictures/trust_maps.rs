@@ -5,7 +5,7 @@ use plotters::prelude::*;
 use super::canvas::{Area, Drawn, FAINT, INK, LETTERS, WARN, YES, letters, mark_at};
 use super::{Drawing, Picture};
 use crate::guidance::{FamilyMap, Outcome, View};
-use crate::publish::axes::{quantity, title};
+use crate::publish::axes::{parted, quantity};
 use crate::publish::prepared::Prepared;
 use crate::trust::Trust;
 
@@ -31,7 +31,7 @@ pub(super) fn all<'a>(prepared: &'a Prepared<'a>) -> Vec<Picture<'a>> {
             let shown: Vec<usize> = view.ranking().iter().map(|r| r.entrant).take(MOST).collect();
             let rows = shown.len().div_ceil(COLUMNS) as u32;
             let suite = &prepared.study.provenance.suite.name;
-            let axes = [0, 1].map(|k| title(&prepared.study.headings[map.axes[k]]));
+            let axes = [0, 1].map(|k| parted(&prepared.study.headings[map.axes[k]]).0);
             Picture {
                 name: format!("{suite}-trust-map-{k}"),
                 alt: format!(
@@ -56,7 +56,7 @@ impl TrustMaps<'_> {
     pub fn draw<DB: DrawingBackend>(&self, area: &Area<DB>) -> Drawn<DB> {
         let study = self.prepared.study;
         let heading = |k: usize| &study.headings[self.map.axes[k]];
-        let text = format!("{}: down {}, across {}", self.map.family, title(heading(0)), title(heading(1)));
+        let text = format!("{}: down {}, across {}", self.map.family, parted(heading(0)).0, parted(heading(1)).0);
         area.draw(&Text::new(text, (16, 14), letters(LETTERS + 1)))?;
         // The key.
         let keys = [
@@ -69,7 +69,7 @@ impl TrustMaps<'_> {
             let place = ((x, 52), (x + 26, 76));
             cell(area, place, &[outcome.map_or(Outcome::Skipped, Outcome::Judged)])?;
             area.draw(&Text::new(name, (x + 34, 54), letters(LETTERS - 2)))?;
-            x += 60 + 12 * name.len() as i32;
+            x += 70 + 12 * name.len() as i32;
         }
         for (k, &entrant) in self.shown.iter().enumerate() {
             let corner =
@@ -93,7 +93,7 @@ impl TrustMaps<'_> {
         let (width, height) =
             ((PANEL.0 as i32 - 112) / across.len() as i32, (PANEL.1 as i32 - 84) / down.len() as i32);
         // Ticks as far apart as their letters need.
-        let (skip_down, skip_across) = ((24 / height.max(1) + 1) as usize, (74 / width.max(1) + 1) as usize);
+        let (skip_down, skip_across) = ((24 / height.max(1) + 1) as usize, (84 / width.max(1) + 1) as usize);
         for (i, &value) in down.iter().enumerate().filter(|(i, _)| i % skip_down == 0) {
             let y = y0 + i as i32 * height + height / 2 - 9;
             area.draw(&Text::new(quantity(value, heading(0)), (left + 6, y), letters(LETTERS - 4)))?;
