@@ -9,6 +9,7 @@ mod measuring;
 mod merge;
 mod outside;
 mod progress;
+mod publish;
 mod questions;
 mod stdout;
 mod survey;
@@ -39,6 +40,8 @@ enum Command {
     Gate(gate::Arguments),
     /// Join the parts of a survey that were made with --shard
     Merge(merge::Arguments),
+    /// Turn results folders into guidance for people who did not run them: a page, Markdown, pictures
+    Publish(publish::Arguments),
     /// List sensors, methods and scores with formulas and sources
     Catalogue(catalogue::Arguments),
 }
@@ -80,6 +83,7 @@ pub fn main() -> ExitCode {
         Command::Mark(arguments) => mark::run(&arguments),
         Command::Gate(arguments) => gate::run(&arguments),
         Command::Merge(arguments) => merge::run(&arguments),
+        Command::Publish(arguments) => publish::run(&arguments),
         Command::Catalogue(arguments) => catalogue::run(&arguments),
     };
     match done {

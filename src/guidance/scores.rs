@@ -89,10 +89,15 @@ impl ScoreRow<'_> {
         if text.is_empty() {
             return Ok(None);
         }
-        text.parse().map(Some).map_err(|_| ScoresError::Field {
+        text.parse().map(Some).map_err(|_| self.misplaced(column))
+    }
+
+    /// What to say of a field that is not what its column holds.
+    pub(super) fn misplaced(&self, column: &str) -> ScoresError {
+        ScoresError::Field {
             line: self.record.position().map_or(0, csv::Position::line),
             column: column.into(),
-            value: text.chars().take(60).collect(),
-        })
+            value: self.text(column).unwrap_or_default().chars().take(60).collect(),
+        }
     }
 }

@@ -238,22 +238,22 @@ pub fn score_table() -> String {
         "nats",
         "how far the true law is from any Gaussian: what no method can mend",
     ]);
-    with_legend(
-        &table,
-        &[
-            "n: number of state components; p: number of outputs; P: prior covariance (n x n); R: noise covariance \
-             (p x p); mu, S, C: the reference's mean, covariance (p x p, noise included) and cross-covariance \
-             (n x p) of the measurement.",
-            "A hat (mu^, S^, C^, and O^, B^, K^, P+^ made of them) marks the method's own; b = mu - mu^, wrapped where \
-             an output is angular.",
-            "B: regression of measurement on state; O: what of the measurement it leaves unexplained; K: gain; P+: \
-             covariance that the update claims; M: covariance that it truly has; M*: that of the best linear update.",
-            "': transposed; ^-1, ^-1/2: inverse and its square root; tr: trace; ||.||_F: Frobenius norm; KL: \
-             Kullback-Leibler divergence; nats: its unit, with natural logarithms; NEES: normalised estimation \
-             error squared.",
-        ],
-    )
+    with_legend(&table, &SCORE_LEGEND)
 }
+
+/// What the symbols of the scores' formulas mean.
+pub(crate) const SCORE_LEGEND: [&str; 4] = [
+    "n: number of state components; p: number of outputs; P: prior covariance (n x n); R: noise covariance \
+     (p x p); mu, S, C: the reference's mean, covariance (p x p, noise included) and cross-covariance \
+     (n x p) of the measurement.",
+    "A hat (mu^, S^, C^, and O^, B^, K^, P+^ made of them) marks the method's own; b = mu - mu^, wrapped where \
+     an output is angular.",
+    "B: regression of measurement on state; O: what of the measurement it leaves unexplained; K: gain; P+: \
+     covariance that the update claims; M: covariance that it truly has; M*: that of the best linear update.",
+    "': transposed; ^-1, ^-1/2: inverse and its square root; tr: trace; ||.||_F: Frobenius norm; KL: \
+     Kullback-Leibler divergence; nats: its unit, with natural logarithms; NEES: normalised estimation \
+     error squared.",
+];
 
 /// The table, and below it what its symbols mean.
 fn with_legend(table: &Table, legend: &[&str]) -> String {

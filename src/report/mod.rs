@@ -18,6 +18,7 @@ mod table;
 
 pub use crate::wording::printable;
 pub use advice::write_advice;
+pub(crate) use catalogue::SCORE_LEGEND;
 pub use catalogue::{method_page, method_table, score_table, sensor_page, sensor_table};
 pub use envelopes::{envelope_sentence, envelope_sentences, write_envelopes};
 pub use folder::{FolderError, ResultsFolder};
@@ -26,4 +27,5 @@ pub use gate_table::write_comparison;
 pub use hand_out::{hand_out, hand_out_file};
 pub use junit::write_junit;
 pub use merge::{MergeError, Merged, merge};
+pub(crate) use table::evaluations_text;
 pub use table::{CAUTION, write_summary};

@@ -78,7 +78,7 @@ fn row(m: &MethodSummary) -> Vec<String> {
     };
     vec![
         m.label.clone(),
-        m.evaluations.map_or("-".into(), evaluations),
+        m.evaluations.map_or("-".into(), evaluations_text),
         m.time_ratio.map_or("-".into(), |q| format!("{:.1}", q.median)),
         share(m.trusted),
         share(m.rejected),
@@ -89,8 +89,9 @@ fn row(m: &MethodSummary) -> Vec<String> {
     ]
 }
 
-/// Evaluations of h as a number, with a Jacobian as J, a set of Hessians as H and a set of exact moments as M beside it.
-fn evaluations((least, most): (Evaluations, Evaluations)) -> String {
+/// Evaluations of h, least and most, as a number, with a Jacobian as J, a set of Hessians as H and a set of exact moments as M
+/// beside it.
+pub(crate) fn evaluations_text((least, most): (Evaluations, Evaluations)) -> String {
     let mut parts = Vec::new();
     if most.values > 0 {
         parts.push(if least.values == most.values {

@@ -19,10 +19,15 @@ impl Scores {
         ScoreKind::ALL.iter().position(|&k| k == kind).and_then(|i| self.0[i])
     }
 
+    /// Scores given one by one, such as those read back from a table.
+    pub fn given(score: impl FnMut(ScoreKind) -> Option<Estimate>) -> Self {
+        Self(ScoreKind::ALL.map(score))
+    }
+
     /// Made-up scores, for tests of what is made of them.
     #[cfg(test)]
     pub(crate) fn made_up(score: impl Fn(ScoreKind) -> Option<Estimate>) -> Self {
-        Self(ScoreKind::ALL.map(score))
+        Self::given(score)
     }
 }
 

@@ -17,7 +17,7 @@ pub enum Entrant<'a> {
 }
 
 /// The answer to one case, yet to be scored.
-pub(super) struct Candidate {
+pub(crate) struct Candidate {
     /// Of the whole state.
     pub moments: Result<Moments, Flaw>,
     /// What was evaluated, where it could be counted.
@@ -50,7 +50,7 @@ impl<'a> Entrant<'a> {
 }
 
 /// The moments of a case by a method, of the whole state.
-pub(super) fn transformed(case: &Case, method: &MethodSpec) -> Result<Candidate, Refusal> {
+pub(crate) fn transformed(case: &Case, method: &MethodSpec) -> Result<Candidate, Refusal> {
     let prior = case.marginal().law();
     let (a, p) = (prior.dimension(), case.sensor().outputs().len());
     method.method().serves(case.sensor())?;

@@ -16,6 +16,7 @@ pub use crate::shard::{Shard, ShardError};
 pub use case_run::{Answer, Answered, CaseResult, Stop};
 pub use earlier::Earlier;
 pub use entrant::Entrant;
+pub(crate) use entrant::transformed;
 pub use regime::{Indices, OpinionsOf};
 pub(crate) use regime::{excess_over, regime_columns};
 pub use run::{SurveyResult, Unwatched, Watch, survey};

@@ -170,6 +170,17 @@ impl Judge {
         Self { limits, quantile }
     }
 
+    /// The one-sided t quantile that its bounds are made with, shared over the looks.
+    pub fn quantile(&self) -> f64 {
+        self.quantile
+    }
+
+    /// The same judge, by other limits.
+    #[must_use]
+    pub fn with(self, limits: Limits) -> Self {
+        Self { limits, ..self }
+    }
+
     /// The verdict on a method's scores.
     pub fn verdict(&self, scores: &Result<Scores, Invalid>) -> Verdict {
         let scores = match scores {
