@@ -46,7 +46,7 @@ impl Rules {
         if !(odds > 0.0 && odds < 1.0) {
             return Err(RulesError(format!("odds {odds} are not above 0 and below 1; give such as 1e-4")));
         }
-        if !(rounding >= 0.0 && rounding < 1.0) {
+        if !(0.0..1.0).contains(&rounding) {
             return Err(RulesError(format!(
                 "rounding {rounding} is not 0 or above and below 1; give such as 1e-10"
             )));
