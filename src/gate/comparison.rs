@@ -323,10 +323,12 @@ impl AnswerGate<'_> {
             return;
         };
         let moved = self.moved(units, before, now);
+        let (n, p) = now.cross_covariance.shape();
+        let entries = (p + p * (p + 1) / 2 + n * p) as f64;
         match (old_scores, scores) {
             (Ok(old), Ok(new)) => match &moved {
                 Some(moved) => self.scores_of_moved(old, new, difference, moved),
-                None => self.scores_of_unmoved(old, new),
+                None => self.scores_of_unmoved(old, new, entries),
             },
             (old, new) => {
                 let word = |s: &Result<_, String>| s.as_ref().err().map_or("a Gaussian".into(), Clone::clone);
@@ -428,12 +430,20 @@ impl AnswerGate<'_> {
     }
 
     /// The method stands still: only the reference, or what is made of it, can have changed a score.
-    fn scores_of_unmoved(&mut self, old: &BTreeMap<ScoreKind, Estimate>, new: &BTreeMap<ScoreKind, Estimate>) {
+    ///
+    /// A norm of errors that are all chance has a mean of up to the root of their number times its standard error, and two references
+    /// may have standard errors of different size: that bias is allowed on top of q.
+    fn scores_of_unmoved(
+        &mut self,
+        old: &BTreeMap<ScoreKind, Estimate>,
+        new: &BTreeMap<ScoreKind, Estimate>,
+        entries: f64,
+    ) {
         let both_sound = self.both_sound;
         for (kind, now) in new.iter().filter(|_| both_sound) {
             let Some(before) = old.get(kind) else { continue };
             let error = if self.sampled_alike { 0.0 } else { joint_error(*before, *now) };
-            let allowed = score_rounding(now.value) + self.quantile * error;
+            let allowed = score_rounding(now.value) + (self.quantile + entries.sqrt()) * error;
             if (now.value - before.value).abs() <= allowed {
                 continue;
             }

@@ -7,7 +7,7 @@
 //! | --- | --- |
 //! | moments of a method | no chance in them: beyond rounding ([`Rules::rounding`]) the method has moved |
 //! | scores of a method that has moved | today's and the accepted moments are scored on today's reference; the jackknife error of the difference decides ([`Scorer::difference`](crate::score::Scorer::difference)) |
-//! | scores of one that has not | the standard errors of both sides decide; on the very same reference, nothing but rounding is allowed |
+//! | scores of one that has not | the standard errors of both sides decide, and the bias that norms have (q + root of the number of moments in place of q); on the very same reference, nothing but rounding is allowed |
 //! | reference, floor | the standard errors of both sides decide |
 //! | verdicts | a worse one counts unless the method stands still and only the reference was sampled anew |
 //! | evaluations, validity, what is missing | counted |
