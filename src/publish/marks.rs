@@ -135,7 +135,7 @@ fn code(label: &str) -> String {
     // Names of parameters say nothing that their values do not.
     let parameters = label.split(':').skip(1).filter_map(|p| p.split('=').next());
     for name in parameters {
-        let initial = name.chars().next().map(|initial| initial.to_ascii_uppercase());
+        let initial = name.chars().next().map(|c| c.to_ascii_uppercase());
         if let Some(at) = initial.and_then(|initial| code.rfind(initial)).filter(|&at| at > 0) {
             code.remove(at);
         }

@@ -1,9 +1,10 @@
 use askama::Template;
 
+use super::data;
 use super::marks::{COLOURS, Mark};
 use super::prepared::Prepared;
 use super::views::{self, SuiteView};
-use super::{data, words};
+use super::words::{self, Rich};
 use crate::guidance::View;
 use crate::method::{self, Degree, MethodSpec};
 use crate::report::{CAUTION, SCORE_LEGEND};
@@ -44,7 +45,7 @@ struct MethodView<'a> {
 
 struct FaredView<'a> {
     suite: &'a str,
-    text: String,
+    text: Rich,
 }
 
 /// A picture inside the page.

@@ -228,7 +228,7 @@ pub(super) fn limits(study: &Study) -> String {
 }
 
 /// How a method fared in a suite, in a sentence or two.
-pub(super) fn fared(study: &Study, view: &View<'_>, ranked: &Ranked) -> String {
+pub(super) fn fared(study: &Study, view: &View<'_>, ranked: &Ranked) -> Rich {
     let mut text = format!(
         "{} a transform; trusted in {} of {} cases ({}), rejected in {}, undecided in {}",
         price(ranked.evaluations),
@@ -255,7 +255,7 @@ pub(super) fn fared(study: &Study, view: &View<'_>, ranked: &Ranked) -> String {
     if let Some((id, cause)) = worst {
         text.push_str(&format!(" For example {id}: {cause}."));
     }
-    text
+    Rich(text)
 }
 
 /// The case of greatest excess whose cause is known.
