@@ -75,7 +75,7 @@ def explore(page):
 
 def sort(suite, s):
     heading = suite.locator(".cases thead button", has_text="Excess")
-    column = 9
+    column = 10
     values = lambda: [float(td.inner_text().split(" ")[0]) for td in suite.locator(f".cases tbody tr > :nth-child({column + 1})").all() if td.inner_text()[0] not in "–"]
     heading.focus()
     heading.press("Enter")

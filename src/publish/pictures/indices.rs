@@ -117,6 +117,7 @@ impl Indices<'_> {
         let mut chart = ChartBuilder::on(area)
             .margin(14)
             .margin_top(40)
+            .margin_right(40)
             .x_label_area_size(72)
             .y_label_area_size(106)
             .build_cartesian_2d((x.0..x.1).log_scale(), (y.0..y.1).log_scale())?;
