@@ -104,7 +104,7 @@ pub struct StudyEntry {
     pub cause: String,
     /// What it evaluated, where it was counted.
     pub evaluations: Option<Evaluations>,
-    /// Its [`work`].
+    /// Its work, see [`Evaluations::work`].
     pub work: Option<u64>,
     /// Its scores.
     pub scores: score::Scores,

@@ -54,7 +54,7 @@ impl ResultsFolder {
     }
 
     /// Writes what a survey found: `cases.jsonl`, `references.jsonl`, `scores.csv`, what follows from them
-    /// ([`ResultsFolder::conclude`]) if the survey is whole, and last `manifest.json`; each whole or not at all.
+    /// (`envelopes.json`, `choices.csv`) if the survey is whole, and last `manifest.json`; each whole or not at all.
     ///
     /// # Errors
     /// [`FolderError`] with the file that could not be written; files written before it stay.
