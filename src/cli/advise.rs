@@ -66,6 +66,11 @@ pub fn run(arguments: &Arguments) -> Result<(), Failure> {
     let mut settings = arguments.sampling.settings(arguments.questions.seed)?;
     let methods = settings.methods.take().or_else(|| suite.methods.clone()).unwrap_or_else(every_kind);
     settings.methods = Some(if arguments.single_precision { in_single_precision(&methods)? } else { methods });
+    if arguments.most_time.is_some() && arguments.sampling.no_timing {
+        return Err(Failure::Input(anyhow!(
+            "--most-time: nothing is timed under --no-timing; give one of the two"
+        )));
+    }
     if arguments.most_time.is_some_and(|most| !(most > 0.0)) {
         return Err(Failure::Input(anyhow!("--most-time: give a ratio above 0")));
     }

@@ -1,5 +1,7 @@
 //! Advice for one case: which method to take, what it would cost, and what to do where none can be trusted.
 
+use std::cmp::Ordering;
+
 use serde::Serialize;
 
 use super::{Budget, MethodEnvelopes};
@@ -117,8 +119,10 @@ pub enum AdviceError {
 
 /// Least scale of a prior's standard deviations that is tried.
 const LEAST_SCALE: f64 = 1e-6;
-/// Halvings of the logarithm of the scale: to within 1 %.
-const HALVINGS: usize = 11;
+/// Steps down to it, equal in the logarithm.
+const STEPS: u32 = 24;
+/// Halvings of the step in which trust begins: to within 1 %.
+const HALVINGS: usize = 6;
 
 /// Samples a case, scores `methods` on it and draws conclusions; `envelopes` are those of the same sensor, if there are any.
 ///
@@ -189,7 +193,11 @@ impl Advice {
                 Err(refusal) => MethodAdvice::skipped(spec.label(), refusal.to_string()),
             });
         }
-        methods.sort_by_key(|m| (!m.can_be_recommended(), m.verdict != Trust::Trusted.name(), m.rank()));
+        // A stable sort: equal ones stay in the order in which they were named.
+        methods.sort_by(|a, b| {
+            let group = |m: &MethodAdvice| (!m.can_be_recommended(), m.verdict != Trust::Trusted.name());
+            group(a).cmp(&group(b)).then_with(|| a.compare(b))
+        });
         let recommendation = methods.first().filter(|m| m.can_be_recommended()).map(|m| m.method.clone());
         let indices = RegimeIndex::ALL
             .iter()
@@ -223,16 +231,12 @@ impl Advice {
             (Some(method), Some(first)) => {
                 let trusted = self.methods.iter().filter(|m| m.verdict == Trust::Trusted.name()).count();
                 reasons.push(format!(
-                    "Take {method}: of the {trusted} methods that keep every limit here it is the cheapest{}, at {}.",
+                    "Take {method}: of the methods that keep every limit here, {trusted} in all, it takes the least work{}: {}.",
                     if self.budget == Budget::default() { "" } else { " within the budget" },
                     first.price()
                 ));
-                if let Some(envelope) = first.envelopes.iter().find(|e| !e.inside) {
-                    let terms: Vec<String> = envelope.terms.iter().map(TermAdvice::against).collect();
-                    reasons.push(format!(
-                        "The case lies outside an envelope of it ({}): there it is trusted by luck of this case.",
-                        terms.join(", ")
-                    ));
+                if !first.envelopes.is_empty() && first.envelopes.iter().all(|e| !e.inside) {
+                    reasons.push("The case lies outside every envelope of it: they promise nothing here.".into());
                 }
             }
             _ if self.doubt.is_some() => {
@@ -246,10 +250,16 @@ impl Advice {
                         method.method,
                         method.beyond_budget.clone().unwrap_or_default()
                     ));
+                } else if let Some(open) = self.within_budget(Trust::Undecided) {
+                    reasons.push(format!(
+                        "No method within the budget is known to keep every limit. {} is undecided: {}; where the limit is near, \
+                         more samples (--cap) may tell.",
+                        open.method, open.reason
+                    ));
                 } else {
-                    reasons.push("No method keeps every limit.".into());
+                    reasons.push("No method within the budget keeps every limit.".into());
                 }
-                if let Some(nearest) = self.nearest() {
+                if let Some(nearest) = self.within_budget(Trust::Rejected) {
                     reasons.push(format!("The nearest is {}: {}.", nearest.method, nearest.reason));
                 }
             }
@@ -265,11 +275,11 @@ impl Advice {
         reasons
     }
 
-    /// The rejected one of least excess.
-    fn nearest(&self) -> Option<&MethodAdvice> {
-        let rejected = self.methods.iter().filter(|m| m.verdict == Trust::Rejected.name() && m.excess.is_some());
+    /// The one of least excess within the budget of which this is said.
+    fn within_budget(&self, trust: Trust) -> Option<&MethodAdvice> {
+        let of_them = self.methods.iter().filter(|m| m.verdict == trust.name() && m.beyond_budget.is_none());
         let excess = |m: &MethodAdvice| m.excess.map_or(f64::INFINITY, |e| e.value);
-        rejected.min_by(|a, b| excess(a).total_cmp(&excess(b)))
+        of_them.min_by(|a, b| excess(a).total_cmp(&excess(b)))
     }
 }
 
@@ -320,15 +330,18 @@ impl MethodAdvice {
         self.verdict == Trust::Trusted.name() && self.beyond_budget.is_none()
     }
 
-    /// By work, then by label, so that equal ones come in a fixed order on every machine.
-    fn rank(&self) -> (u64, String) {
-        (self.work.unwrap_or(u64::MAX), self.method.clone())
+    /// By work, and of equal work by excess; times are of one machine.
+    fn compare(&self, other: &Self) -> Ordering {
+        let key = |m: &Self| (m.work.unwrap_or(u64::MAX), m.excess.map_or(f64::INFINITY, |e| e.value));
+        let ((work, excess), (others_work, others_excess)) = (key(self), key(other));
+        work.cmp(&others_work).then(excess.total_cmp(&others_excess))
     }
 
     fn price(&self) -> String {
+        let work = self.work.map_or("unknown".into(), |n| n.to_string());
         let evaluations = self.evaluations.map_or("unknown".into(), |n| n.to_string());
         let time = self.time.map_or(String::new(), |t| format!(", {t:.1} times the time of first-order Taylor"));
-        format!("{evaluations} evaluations{time}")
+        format!("{work}, evaluations {evaluations}{time}")
     }
 }
 
@@ -385,7 +398,7 @@ fn shrink(
     advice: &Advice,
 ) -> Result<Vec<String>, AdviceError> {
     let within = advice.methods.iter().filter(|m| m.beyond_budget.is_none() && m.work.is_some());
-    let Some(cheapest) = within.min_by_key(|m| m.rank()) else { return Ok(Vec::new()) };
+    let Some(cheapest) = within.min_by(|a, b| a.compare(b)) else { return Ok(Vec::new()) };
     let Some(spec) = methods.iter().find(|m| m.label() == cheapest.method) else { return Ok(Vec::new()) };
     let settings = SurveySettings { methods: Some(vec![spec.clone()]), ..settings.clone() };
     let trusted = |scale: f64| -> Result<bool, AdviceError> {
@@ -397,11 +410,22 @@ fn shrink(
         Ok(matches!(answer, Some(Ok(a)) if a.verdict.trust == Trust::Trusted))
     };
     let label = spec.label();
-    if !trusted(LEAST_SCALE)? {
-        return Ok(vec![format!("No shrinking of the prior makes {label}, the cheapest method, trusted.")]);
+    // Trust need not grow with every step down (a method that rounds, or draws its points): walk, and stop at the first.
+    let (mut high, mut low) = (0.0_f64, None);
+    for step in 1..=STEPS {
+        let next = LEAST_SCALE.ln() * f64::from(step) / f64::from(STEPS);
+        if trusted(next.exp())? {
+            low = Some(next);
+            break;
+        }
+        high = next;
     }
-    // The largest scale found trusted, and the least found not: halved in the logarithm.
-    let (mut low, mut high) = (LEAST_SCALE.ln(), 0.0_f64);
+    let Some(mut low) = low else {
+        return Ok(vec![format!(
+            "{label}, the method of least work, is trusted at none of {STEPS} smaller scales of the prior, down to a \
+             millionth of its standard deviations."
+        )]);
+    };
     for _ in 0..HALVINGS {
         let middle = 0.5 * (low + high);
         if trusted(middle.exp())? { low = middle } else { high = middle }
@@ -409,7 +433,7 @@ fn shrink(
     // Rounded to the safe side: what is said to be trusted is.
     let (low, high) = (three_digits(low.exp(), f64::floor), three_digits(high.exp(), f64::ceil));
     Ok(vec![format!(
-        "{label}, the cheapest method, would be trusted with every standard deviation of the prior at {low} of what it is or less \
+        "{label}, the method of least work, would be trusted with every standard deviation of the prior at {low} of what it is \
          (found by bisection: trusted at {low}, not at {high})."
     )])
 }

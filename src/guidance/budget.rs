@@ -32,10 +32,13 @@ impl Budget {
         if let Some(most) = self.evaluations.filter(|most| all > *most) {
             return Some(format!("{all} evaluations, {most} are allowed"));
         }
-        if let (Some(most), Some(time)) = (self.time, time)
-            && time > most
-        {
-            return Some(format!("{time:.1} times the time of first-order Taylor, {most} are allowed"));
+        match (self.time, time) {
+            (Some(most), Some(time)) if time > most => {
+                return Some(format!("{time:.1} times the time of first-order Taylor, {most} are allowed"));
+            }
+            // What was not measured cannot be within a limit.
+            (Some(_), None) => return Some("its time was not measured".into()),
+            _ => {}
         }
         if self.no_derivatives && jacobians + hessians > 0 {
             return Some("needs derivatives".into());

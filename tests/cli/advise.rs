@@ -54,7 +54,7 @@ fn where_nothing_will_do_it_says_how_far_the_prior_must_shrink() {
     let found = advice(&desk, &["--record", CLOSE, "--methods", "taylor-1,unscented"]);
     assert_eq!(found["recommendation"], Value::Null);
     let reasons: Vec<&str> = found["reasons"].as_array().unwrap().iter().map(|r| r.as_str().unwrap()).collect();
-    assert!(reasons[0].contains("No method keeps every limit"), "{reasons:?}");
+    assert!(reasons[0].contains("No method within the budget keeps every limit"), "{reasons:?}");
     let shrink = reasons.last().unwrap();
     let scale: f64 = shrink
         .split_once("at ")
@@ -108,6 +108,7 @@ fn what_cannot_be_meant_is_refused() {
         (vec!["advise", "--record", r#"{"case":"x"}"#], "--record: "),
         (vec!["advise"], "name one"),
         (vec!["advise", "--record", FAR, "--most-time", "0"], "--most-time: give a ratio above 0"),
+        (vec!["advise", "--record", FAR, "--most-time", "2", "--no-timing"], "--most-time: nothing is timed"),
         (vec!["advise", "--record", FAR, "--envelopes", "nowhere"], "envelopes.json: cannot be read"),
     ] {
         let outcome = desk.run(&arguments);
