@@ -13,7 +13,7 @@ pub(super) struct Mark {
 pub(super) const COLOURS: [(&str, &str); 8] = [
     ("#1d4f91", "#7db2f0"),
     ("#c05a12", "#f2a364"),
-    ("#1c7c66", "#55c9ad"),
+    ("#1a7561", "#55c9ad"),
     ("#8b2f7f", "#dd8fd2"),
     ("#857000", "#d9c54f"),
     ("#2f86b0", "#9fdcf7"),
